@@ -1,0 +1,1 @@
+"""From a scene to what people take away: flight, margin, sight, picture, output."""

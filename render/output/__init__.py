@@ -1,0 +1,1 @@
+"""See DEVELOPERS.md, the house."""

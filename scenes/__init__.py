@@ -1,0 +1,1 @@
+"""What is flown: frozen scene types, units, reader, shipped scenes and airframes."""

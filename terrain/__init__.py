@@ -1,0 +1,1 @@
+"""What is under it: ground heights, recipes, elevation files. Imports nothing of ours."""
