@@ -22,8 +22,8 @@ UNITS = {
     "stick force": "ratio",
 }  # fmt: skip
 
-# Ground has detail at all scales; hedges, tracks and trees of this size are what carries flow (guess).
-TEXTURE_M = 15.0
+# Ground has detail at all scales; fields, woods and roads of this size are the coarsest that tell (guess).
+TEXTURE_M = 60.0
 # Image speed below which the threshold rises: 5 deg/s at the fovea, 30 deg/s at 40 deg (1.10, published).
 FLOW_BEST_FOVEA_RADPS = float(np.radians(5.0))
 FLOW_BEST_SLOPE = 25.0 / 40.0
@@ -130,7 +130,8 @@ def visual_cues(healthy: View, faulted: View) -> dict[str, Cue]:
     both = f.seen & h.seen
     any_seen = np.any(both, axis=-1)
     flow = geo.masked_median(np.log(np.maximum(f.flow_radps, 1e-6) / np.maximum(h.flow_radps, 1e-6)), both)
-    off = np.where(any_seen, geo.masked_median(f.eccentricity_rad, both), np.pi)
+    # Of the ground seen, the part nearest the gaze tells most: its eccentricity is the cue's.
+    off = np.min(np.where(both, f.eccentricity_rad, np.pi), axis=-1)
     speed = geo.masked_median(f.flow_radps, both)
     best = FLOW_BEST_FOVEA_RADPS + FLOW_BEST_SLOPE * off
     widening = np.maximum(1.0, best / np.maximum(speed, 1e-3)) ** FLOW_WIDENING_EXPONENT

@@ -128,9 +128,11 @@ def in_field(dir_c: Array) -> Mask:
 
     No canopy sill, wing, helmet or mask: there is no published value that fits all.
     """
-    side = np.abs(np.arctan2(dir_c[..., 0], dir_c[..., 2]))
-    drop = np.arctan2(dir_c[..., 1], np.hypot(dir_c[..., 0], dir_c[..., 2]))
-    return np.asarray((side <= FIELD_SIDE_RAD) & (drop <= FIELD_DOWN_RAD) & (drop >= -FIELD_UP_RAD))
+    x, y, z = dir_c[..., 0], dir_c[..., 1], dir_c[..., 2]
+    flat = np.sqrt(x * x + z * z)
+    # Angles compared by their cosine and tangent: this runs over every patch.
+    side = z >= np.cos(FIELD_SIDE_RAD) * flat
+    return np.asarray(side & (y <= np.tan(FIELD_DOWN_RAD) * flat) & (y >= -np.tan(FIELD_UP_RAD) * flat))
 
 
 def height_over_ground_m(eye_e_m: Array, height_at: HeightAt) -> Array:

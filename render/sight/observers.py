@@ -6,9 +6,12 @@ source exists, the number is remembered) or ``guess`` (an engineering bridge). P
 Inattention is described by three things there: K (a pilot who expects nothing), a (attention) and lapse.
 They must never be stacked at their worst, so one of them carries it here:
 
-- vision: attention a = 1, 0.5, 0.25 with K = 1 and no lapse. On the line of sight a = 0.25 widens a threshold
-  by four, which is what K = 4 (1.50, crash data against laboratory) would do; both together would count the
-  same thing twice, sixteen-fold.
+- ground seen off the gaze (flow, growth, closing) and the lead: attention a = 1, 0.5, 0.25 with K = 1 and no
+  lapse. On the line of sight a = 0.25 widens a threshold by four, which is what K = 4 (1.50, crash data
+  against laboratory) would do; both together would count the same thing twice, sixteen-fold.
+- tilt and turning: their rows (1, 3, 5 deg; 1, 2, 4 deg/s) are no laboratory fractions but bridges to a
+  horizon that isn't looked at (1.30: 1 deg in the fovea, 3 deg at 30 deg off it, 5 deg at 60 deg), so a and
+  K would count that again. The true eccentricity still widens them where it asks for more.
 - felt cues (load, felt rate, force on the hand): attention doesn't apply and K is for laboratory values of
   vision only, so neither; the spread of their thresholds holds it (active task: 2.7).
 - lapse is a probability (0.1, 0.3, 0.5), not a threshold. Detector A has no place for a coin; it serves
@@ -61,9 +64,9 @@ VISION_DELAY_S = 0.1  # section 6.1
 FELT_DELAY_S = 0.05  # section 6.1
 DWELL_S = 0.3  # detector A, section 6.3
 SIGMAS = 2.0  # detector A, section 6.3
+TILT_FOVEA_RAD, TILT_SLOPE = 1.0 * DEG, 4.0 / 60.0  # 1.30: 1, 3, 5 deg at 0, 30, 60 deg (bridge, guess)
 CLOSING_LIMIT_S = 10.0  # no credit above (1.8, published)
 
-_FELT = "deg/s as rad/s"
 _ROWS: dict[str, tuple[str, tuple[tuple[float, str, str], ...]]] = {
     "tilt": ("rad", ((1 * DEG, "1.29", "from memory"), (3 * DEG, "1.30", "guess"), (5 * DEG, "1.30", "guess"))),
     "turning": ("rad/s", ((1 * DEG, "1.26, 1.27", "from memory"), (2 * DEG, "1.27", "from memory"),
@@ -129,10 +132,16 @@ def attention_gain(eccentricity_rad: Array, observer: Observer) -> Array:
 def sensory_sigma(cue: str, observer: Observer, eccentricity_rad: Array | None, widening: Array | float = 1.0) -> Array:
     """Noise of the sense alone, W K / g(E) / sqrt(T_int/T_0), in the cue's unit (6.2).
 
-    eccentricity_rad: None for what isn't seen. widening: a further factor on W (slow flow: 1.10).
+    eccentricity_rad: None for what isn't seen. widening: a further factor on W (slow flow: 1.10). Tilt and
+    turning take no attention (see the head of this module): tilt the larger of its row and 1.30, turning
+    1/(1 - E/E0).
     """
-    weber = observer.weber[cue].value * widening
-    if eccentricity_rad is not None:
+    weber: Array | float = observer.weber[cue].value * widening
+    if cue == "tilt" and eccentricity_rad is not None:
+        weber = np.maximum(weber, TILT_FOVEA_RAD + TILT_SLOPE * eccentricity_rad)
+    elif cue == "turning" and eccentricity_rad is not None:
+        weber = weber / np.maximum(ATTENTION_FLOOR, 1.0 - eccentricity_rad / observer.reach.value)
+    elif eccentricity_rad is not None:
         weber = weber * observer.field_factor.value / attention_gain(eccentricity_rad, observer)
     return np.asarray(weber / np.sqrt(observer.integration.value / INTEGRATION_REFERENCE_S))
 
