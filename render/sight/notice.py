@@ -7,6 +7,7 @@ from collections.abc import Mapping, Sequence
 import numpy as np
 from numpy.typing import NDArray
 
+from render.frames import quat_rotate
 from render.sight import cues as c
 from render.sight.evidence import Evidence, first_notice, lead_evidence, wing_evidence
 from render.sight.geometry import HeightAt, Mask, eye_position
@@ -42,8 +43,9 @@ def notice_all(
         raise ValueError("healthy and faulted flights need one time axis")
     grid = _grid(faulted.time_s, faulted.fault_s)
     coarse = faulted.time_s[grid]
-    start = faulted.vel_e_mps[0, 0]
-    display_line = float(np.arctan2(start[1], start[0]))
+    # By the lead's wing, which is level even where the path stands upright.
+    wing_e = quat_rotate(faulted.quat_eb[0, 0], np.array([0.0, 1.0, 0.0]))
+    display_line = float(np.arctan2(wing_e[1], wing_e[0]) - np.pi / 2.0)
     histories: dict[str, tuple[CueHistory, ...]] = {}
     notices: dict[str, tuple[Notice, ...]] = {}
     called = np.full(len(OBSERVERS), np.inf)
