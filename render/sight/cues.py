@@ -72,11 +72,15 @@ class View:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Cue:
-    """One cue of one pilot: difference (..., T), eccentricity (None if not seen), widening of the threshold."""
+    """One cue of one pilot: difference (..., T), eccentricity (None if not seen), widening of the threshold.
+
+    ``there``: where the cue can be had at all (ground in view, eyes outside, less than 10 s to the ground).
+    """
 
     difference: Array
     eccentricity_rad: Array | None = None
     widening: Array | float = 1.0
+    there: geo.Mask | bool = True
 
 
 def view(seat: Seat, height_at: geo.HeightAt, display_line_rad: float | Array, look_at: str) -> View:
@@ -86,7 +90,7 @@ def view(seat: Seat, height_at: geo.HeightAt, display_line_rad: float | Array, l
     axes = geo.eye_axes(los, seat.quat_eb)
     height = geo.height_over_ground_m(eye, height_at)
     vec = geo.ground_patches(eye, height, height_at, display_line_rad)
-    distance = np.sqrt(np.sum(vec * vec, axis=-1))
+    distance = geo.length(vec)
     vec_c = np.matmul(vec, np.swapaxes(axes, -1, -2))
     off = np.arccos(np.clip(vec_c[..., 2] / distance, -1.0, 1.0))
     seen = geo.in_field(vec_c) & (TEXTURE_M / distance >= 2.0 * geo.mar_rad(off))
@@ -103,7 +107,7 @@ def view(seat: Seat, height_at: geo.HeightAt, display_line_rad: float | Array, l
         geo.scene_eccentricity_rad(los),
         geo.angle_between(los, seat.vel_e_mps),
         None if to_lead is None else geo.unit(geo.direction_b(to_lead, seat.quat_eb)),
-        None if to_lead is None else np.linalg.norm(to_lead, axis=-1),
+        None if to_lead is None else geo.length(to_lead),
         None if to_lead is None else geo.angle_between(los, to_lead),
     )
 
@@ -124,8 +128,8 @@ def visual_cues(healthy: View, faulted: View) -> dict[str, Cue]:
     lean = np.where(
         _wrap(geo.horizon_lean_rad(f.axes) - geo.horizon_lean_rad(h.axes)) < 0.0, -1.0, 1.0
     )  # only the sign; the amount is the whole angle, lean and rise of the ground's edge together
-    turned = np.linalg.norm(f.turning_c_radps - h.turning_c_radps, axis=-1)
-    slower = np.linalg.norm(f.turning_c_radps, axis=-1) < np.linalg.norm(h.turning_c_radps, axis=-1)
+    turned = geo.length(f.turning_c_radps - h.turning_c_radps)
+    slower = geo.length(f.turning_c_radps) < geo.length(h.turning_c_radps)
 
     both = f.seen & h.seen
     any_seen = np.any(both, axis=-1)
@@ -143,9 +147,9 @@ def visual_cues(healthy: View, faulted: View) -> dict[str, Cue]:
     cues = {
         "tilt": Cue(lean * geo.angle_between(down_f, down_h), f.horizon_eccentricity_rad),
         "turning": Cue(np.where(slower, -turned, turned), f.scene_eccentricity_rad),
-        "flow": Cue(flow, off, widening),
-        "closing": Cue(closing, off),
-        "growth": Cue(growth, off),
+        "flow": Cue(flow, off, widening, any_seen),
+        "closing": Cue(closing, off, 1.0, any_seen & (np.minimum(tau_f, tau_h) < CLOSING_LIMIT_S)),
+        "growth": Cue(growth, off, 1.0, any_seen),
     }
     if f.lead_dir_b is not None and h.lead_dir_b is not None:
         assert f.lead_range_m is not None and h.lead_range_m is not None

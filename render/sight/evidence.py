@@ -6,7 +6,7 @@ chunks: a view takes about 12 kB per instant and case.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -29,7 +29,9 @@ class Evidence:
     names: tuple[str, ...]
     difference: Array
     sigma: Array
+    there: Mask  # (..., C, T) where the cue can be had at all
     cues: dict[str, c.Cue]  # with eccentricity and widening, (..., T); the call isn't among them
+    time_to_ground_s: Array  # (..., T) first order; infinity for the lead, whose cues are not of the ground
 
 
 def wing_evidence(
@@ -41,25 +43,27 @@ def wing_evidence(
     height_at: HeightAt,
     display_line_rad: float | Array,
     called_s: Array | None = None,
+    healthy_view: c.View | None = None,
 ) -> Evidence:
-    """What a wing pilot has to go by.
+    """What a wing pilot has to go by. The healthy seat may lack the batch axis: one twin for many faults.
 
     time_s: (T,) even; counts: (..., T), true between the fault and contact; display_line_rad: the azimuth the
     ground patches are laid about; called_s: (..., 3), when the lead's three observers notice (infinity: never).
+    healthy_view: its view if it is at hand already, to save half the work.
     """
     step = float(time_s[1] - time_s[0])
-    found = c.visual_cues(
-        c.view(healthy, height_at, display_line_rad, watch.look_at),
-        c.view(faulted, height_at, display_line_rad, watch.look_at),
-    )
+    if healthy_view is None:
+        healthy_view = c.view(healthy, height_at, display_line_rad, watch.look_at)
+    faulted_view = c.view(faulted, height_at, display_line_rad, watch.look_at)
+    found = c.visual_cues(healthy_view, faulted_view)
     found = _late(found | c.felt_cues(healthy, faulted, step), step)
     if watch.gauges_every_s is not None:
         outside = ~eyes_inside(time_s, watch)
         for name in VISUAL:
             cue = found[name]
-            found[name] = c.Cue(cue.difference * outside, cue.eccentricity_rad, cue.widening)
+            found[name] = replace(cue, difference=cue.difference * outside, there=cue.there & outside)
         found["gauge"] = c.Cue(last_read(time_s, c.gauge_reading(healthy, faulted), watch))
-    ready = _ready(found, counts)
+    ready = _ready(found, counts, faulted_view.time_to_ground_s)
     if called_s is not None and watch.call_after_s is not None:
         ready = _with_call(ready, time_s, called_s + watch.call_after_s, counts)
     return ready
@@ -71,7 +75,7 @@ def lead_evidence(
 ) -> Evidence:  # fmt: skip
     """What the lead has to go by: load and stick force, healthy and faulted, (..., T)."""
     found = c.lead_cues(load_h, load_f, demand_h, demand_f, force_h_n, force_f_n)
-    return _ready(_late(found, float(time_s[1] - time_s[0])), counts)
+    return _ready(_late(found, float(time_s[1] - time_s[0])), counts, np.full(load_f.shape, np.inf))
 
 
 def first_notice(time_s: Array, evidence: Evidence) -> tuple[Array, Array]:
@@ -86,12 +90,12 @@ def first_notice(time_s: Array, evidence: Evidence) -> tuple[Array, Array]:
 def _late(found: dict[str, c.Cue], step_s: float) -> dict[str, c.Cue]:
     """Each cue by its delay later."""
     return {
-        name: c.Cue(detect.delayed(cue.difference, step_s, c.delay_of(name)), cue.eccentricity_rad, cue.widening)
+        name: replace(cue, difference=detect.delayed(cue.difference, step_s, c.delay_of(name)))
         for name, cue in found.items()
     }
 
 
-def _ready(found: dict[str, c.Cue], counts: Mask) -> Evidence:
+def _ready(found: dict[str, c.Cue], counts: Mask, time_to_ground_s: Array) -> Evidence:
     difference = np.stack([cue.difference * counts for cue in found.values()], axis=-2)
     shape = difference.shape[:-2] + difference.shape[-1:]
     sigma = [
@@ -101,7 +105,8 @@ def _ready(found: dict[str, c.Cue], counts: Mask) -> Evidence:
         ], axis=-2)
         for name, cue in found.items()
     ]  # fmt: skip
-    return Evidence(tuple(found), difference, np.stack(sigma, axis=-3), found)
+    there = np.stack([np.broadcast_to(cue.there & counts, shape) for cue in found.values()], axis=-2)
+    return Evidence(tuple(found), difference, np.stack(sigma, axis=-3), there, found, time_to_ground_s)
 
 
 def _with_call(ready: Evidence, time_s: Array, heard_s: Array, counts: Mask) -> Evidence:
@@ -117,5 +122,7 @@ def _with_call(ready: Evidence, time_s: Array, heard_s: Array, counts: Mask) -> 
         (*ready.names, "call"),
         np.concatenate([ready.difference, difference[..., None, :]], axis=-2),
         np.concatenate([ready.sigma, sigma[..., None, :, :]], axis=-3),
+        np.concatenate([ready.there, np.broadcast_to(counts, difference.shape)[..., None, :]], axis=-2),
         ready.cues,
+        ready.time_to_ground_s,
     )

@@ -25,9 +25,9 @@ HeightAt = Callable[[Array, Array], Array]
 """Ground height above the field datum (m) at north, east (m), arrays of any one shape."""
 
 # Depression of the patches under level ground. 45 deg is where sinking moves a point fastest (0.9); the
-# others span the ground a wing pilot has in view. Twelve azimuths: symmetric about the display line.
+# others span the ground a wing pilot has in view. Eight azimuths: symmetric about the display line.
 PATCH_DEPRESSION_RAD = np.radians([55.0, 35.0, 18.0])
-PATCH_AZIMUTHS = 12
+PATCH_AZIMUTHS = 8
 
 # Field of the two eyes together about the gaze: up 60, down 70-75, to each side 100-110 deg (1.36).
 FIELD_UP_RAD, FIELD_DOWN_RAD, FIELD_SIDE_RAD = np.radians([60.0, 72.0, 100.0])
@@ -38,9 +38,19 @@ MAR_SLOPE = 1.5 / 60.0  # rad per rad: 1.32-1.65 arcmin per degree (1.32), the m
 _DOWN = np.array([0.0, 0.0, 1.0])
 
 
+def dot(a: Array, b: Array) -> Array:
+    """Scalar products over the last axis, (...). ``einsum`` is several times faster here than a sum of products."""
+    return np.asarray(np.einsum("...i,...i->...", a, b))
+
+
+def length(vec: Array) -> Array:
+    """Lengths of vectors, (...)."""
+    return np.sqrt(dot(vec, vec))
+
+
 def unit(vec: Array) -> Array:
     """Unit vectors (..., 3); a zero vector stays zero."""
-    norm = np.sqrt(np.sum(vec * vec, axis=-1, keepdims=True))
+    norm = length(vec)[..., None]
     return np.asarray(vec / np.where(norm > 0.0, norm, 1.0))
 
 
@@ -50,7 +60,7 @@ def angle_between(a: Array, b: Array) -> Array:
     Source: W. Kahan, 2 atan2(|a - b|, |a + b|) for unit a, b. Formula 0.12.
     """
     a, b = unit(a), unit(b)
-    return np.asarray(2.0 * np.arctan2(np.linalg.norm(a - b, axis=-1), np.linalg.norm(a + b, axis=-1)))
+    return np.asarray(2.0 * np.arctan2(length(a - b), length(a + b)))
 
 
 def eye_position(pos_e_m: Array, quat_eb: Array, eye_forward_m: float, eye_up_m: float) -> Array:
@@ -73,11 +83,11 @@ def eye_axes(los_e: Array, quat_eb: Array) -> Array:
     """
     down_b = quat_rotate(quat_eb, _DOWN)
     forward_b = quat_rotate(quat_eb, np.array([1.0, 0.0, 0.0]))
-    along = np.sum(down_b * los_e, axis=-1, keepdims=True)
+    along = dot(down_b, los_e)[..., None]
     across = down_b - along * los_e
     # Looking up the image's down is forward, looking down it is aft.
     fallback = -np.sign(along) * forward_b
-    fallback = fallback - np.sum(fallback * los_e, axis=-1, keepdims=True) * los_e
+    fallback = fallback - dot(fallback, los_e)[..., None] * los_e
     y = unit(np.where(np.abs(along) > 0.9994, fallback, across))
     x = np.cross(y, los_e)
     return np.stack([x, y, los_e], axis=-2)
@@ -162,9 +172,9 @@ def translation_flow_radps(vec_e_m: Array, vel_e_mps: Array) -> Array:
 
     vec_e_m: (..., P, 3); vel_e_mps: (..., 3). Abeam in level flight it is (V/h) sin(depression) (0.7, 0.8).
     """
-    range2 = np.sum(vec_e_m * vec_e_m, axis=-1)
+    range2 = dot(vec_e_m, vec_e_m)
     along = np.einsum("...pi,...i->...p", vec_e_m, vel_e_mps)
-    speed2 = np.sum(vel_e_mps * vel_e_mps, axis=-1)[..., None]
+    speed2 = dot(vel_e_mps, vel_e_mps)[..., None]
     return np.asarray(np.sqrt(np.maximum(speed2 * range2 - along**2, 0.0)) / range2)
 
 
@@ -175,7 +185,7 @@ def elevation_drift_radps(vec_e_m: Array, vel_e_mps: Array) -> Array:
     """
     flat = np.hypot(vec_e_m[..., 0], vec_e_m[..., 1])
     toward = np.einsum("...pi,...i->...p", vec_e_m[..., :2], vel_e_mps[..., :2]) / flat
-    range2 = np.sum(vec_e_m * vec_e_m, axis=-1)
+    range2 = dot(vec_e_m, vec_e_m)
     return np.asarray((-flat * vel_e_mps[..., None, 2] + vec_e_m[..., 2] * toward) / range2)
 
 
