@@ -22,7 +22,7 @@ import numpy as np
 from render.frames import Array
 from render.sight.evidence import Evidence
 from render.sight.geometry import Mask
-from render.sight.observers import TABLE, TECHNIQUE, VISUAL, Observer
+from render.sight.observers import TABLE, VISUAL, Observer
 
 LEAK_S = 1.0  # guess
 DEAD_SIGMAS = 1.75  # 6.3
@@ -79,11 +79,11 @@ def first_reach(time_s: Array, gathered: Array, bound: float) -> Array:
 def drive(difference: Array, sensory: Array, technique: Array, offset: Array, there: Mask) -> Array:
     """The rate d at which evidence comes in, (N, T), per square root of a second.
 
-    difference, sensory: (C, T); technique: (C,) one sigma; offset: (N, C) of the pass; there: (N, C, T) or
+    difference, sensory, technique: (C, T); offset: (N, C) of the pass, in sigmas; there: (N, C, T) or
     broadcastable, false where a cue can't be had (eyes inside, lapse, outside the flight). The largest
     cue counts (6.4).
     """
-    seen = np.abs(difference + offset[:, :, None]) - DEAD_SIGMAS * technique[:, None]
+    seen = np.abs(difference + offset[:, :, None] * technique) - DEAD_SIGMAS * technique
     return np.asarray(np.max(np.maximum(seen, 0.0) / sensory * there, axis=1))
 
 
@@ -105,15 +105,15 @@ def accumulate(drive_: Array, step_s: float, noise: Array, leak_s: float = LEAK_
 
 def _run(time_s: Array, evidence: Evidence, who: Observer, passes: int, draws: np.random.Generator) -> Array:
     names = evidence.names
-    technique = np.array([TECHNIQUE[n].value for n in names])
     column = list(TABLE).index(who.name)
+    technique = evidence.technique
     # What is left of the effective noise without technique: the sense alone.
-    sensory = np.sqrt(evidence.sigma[:, column] ** 2 - technique[:, None] ** 2)
+    sensory = np.sqrt(evidence.sigma[:, column] ** 2 - technique**2)
     # The eye sees the lead move by an arcminute; what it is worth is set by how he is followed (1.51:
     # sigma = max(eye, technique)). Without this the hair's breadth beyond the dead zone would drive everything.
     followed = np.array([n == "lead" for n in names])[:, None]
-    sensory = np.where(followed, np.maximum(sensory, technique[:, None]), sensory)
-    offset = draws.normal(size=(passes, len(names))) * technique
+    sensory = np.where(followed, np.maximum(sensory, technique), sensory)
+    offset = draws.normal(size=(passes, len(names)))
     lapses = draws.random(passes) < who.lapse.value
     noise = draws.normal(size=(passes, time_s.size))
     peripheral = np.array([n in VISUAL and n != "lead" for n in names])

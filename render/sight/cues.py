@@ -14,7 +14,7 @@ import numpy as np
 from render.frames import Array
 from render.sight import geometry as geo
 from render.sight.canal import canal_filter
-from render.sight.observers import CLOSING_LIMIT_S, FELT_DELAY_S, VISION_DELAY_S, VISUAL
+from render.sight.observers import CLOSING_LIMIT_S, FELT_DELAY_S, HELD_M, VISION_DELAY_S, VISUAL
 
 UNITS = {
     "tilt": "rad", "turning": "rad/s", "flow": "ln ratio", "closing": "ln ratio", "growth": "ln ratio",
@@ -81,6 +81,7 @@ class Cue:
     eccentricity_rad: Array | None = None
     widening: Array | float = 1.0
     there: geo.Mask | bool = True
+    scatter: Array | float = 0.0  # technique at the time, where more than its row
 
 
 def view(seat: Seat, height_at: geo.HeightAt, display_line_rad: float | Array, look_at: str) -> View:
@@ -155,7 +156,8 @@ def visual_cues(healthy: View, faulted: View) -> dict[str, Cue]:
         assert f.lead_range_m is not None and h.lead_range_m is not None
         size = LEAD_RANGE_WEIGHT * np.abs(np.log(f.lead_range_m / h.lead_range_m))
         place = geo.angle_between(f.lead_dir_b, h.lead_dir_b)
-        cues["lead"] = Cue(np.maximum(place, size), f.lead_eccentricity_rad)
+        held = np.arctan2(HELD_M, h.lead_range_m)
+        cues["lead"] = Cue(np.maximum(place, size), f.lead_eccentricity_rad, scatter=held)
     return cues
 
 

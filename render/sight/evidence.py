@@ -15,7 +15,7 @@ from render.sight import cues as c
 from render.sight import detect
 from render.sight.geometry import HeightAt, Mask
 from render.sight.looks import eyes_inside, last_read
-from render.sight.observers import TABLE, VISUAL, effective_sigma
+from render.sight.observers import TABLE, TECHNIQUE, VISUAL, effective_sigma
 from render.types import OBSERVERS
 from scenes.model import Watch
 
@@ -29,8 +29,8 @@ class Evidence:
     names: tuple[str, ...]
     difference: Array
     sigma: Array
+    technique: Array  # (..., C, T) the part of sigma that is scatter from flight to flight
     there: Mask  # (..., C, T) where the cue can be had at all
-    cues: dict[str, c.Cue]  # with eccentricity and widening, (..., T); the call isn't among them
     time_to_ground_s: Array  # (..., T) first order; infinity for the lead, whose cues are not of the ground
 
 
@@ -100,13 +100,18 @@ def _ready(found: dict[str, c.Cue], counts: Mask, time_to_ground_s: Array) -> Ev
     shape = difference.shape[:-2] + difference.shape[-1:]
     sigma = [
         np.stack([
-            np.broadcast_to(effective_sigma(name, TABLE[o], cue.eccentricity_rad, cue.widening), shape)
+            np.broadcast_to(
+                effective_sigma(name, TABLE[o], cue.eccentricity_rad, cue.widening, cue.scatter), shape
+            )
             for o in OBSERVERS
         ], axis=-2)
         for name, cue in found.items()
     ]  # fmt: skip
     there = np.stack([np.broadcast_to(cue.there & counts, shape) for cue in found.values()], axis=-2)
-    return Evidence(tuple(found), difference, np.stack(sigma, axis=-3), there, found, time_to_ground_s)
+    technique = np.stack([
+        np.broadcast_to(np.maximum(TECHNIQUE[name].value, cue.scatter), shape) for name, cue in found.items()
+    ], axis=-2)  # fmt: skip
+    return Evidence(tuple(found), difference, np.stack(sigma, axis=-3), technique, there, time_to_ground_s)
 
 
 def _with_call(ready: Evidence, time_s: Array, heard_s: Array, counts: Mask) -> Evidence:
@@ -122,7 +127,7 @@ def _with_call(ready: Evidence, time_s: Array, heard_s: Array, counts: Mask) -> 
         (*ready.names, "call"),
         np.concatenate([ready.difference, difference[..., None, :]], axis=-2),
         np.concatenate([ready.sigma, sigma[..., None, :, :]], axis=-3),
+        np.concatenate([ready.technique, np.zeros_like(difference)[..., None, :]], axis=-2),
         np.concatenate([ready.there, np.broadcast_to(counts, difference.shape)[..., None, :]], axis=-2),
-        ready.cues,
         ready.time_to_ground_s,
     )

@@ -57,6 +57,9 @@ class Observer:
     reaction: Figure
 
 
+# A wing pilot holds his slot to so much, one sigma: "set by control, not eye, 0.3-1 m at 10-20 m" (1.51, from
+# memory); the upper value, since it is a loop. A smaller movement of the lead he flies out without a thought.
+HELD_M = 1.0
 VISUAL = ("tilt", "turning", "flow", "closing", "growth", "lead")  # off while the eyes are inside
 INTEGRATION_REFERENCE_S = 1.0  # T_0
 ATTENTION_FLOOR = 0.1  # g(E) never less (1.44: bounded below; the value a guess)
@@ -100,7 +103,7 @@ TECHNIQUE: MappingProxyType[str, Figure] = MappingProxyType({
     "closing": Figure(0.20, "ln ratio", "section 8", "guess"),
     "load": Figure(0.08, "ln ratio", "section 8", "guess"),
     "felt rate": Figure(2 * DEG, "rad/s", "section 8", "guess"),
-    "lead": Figure(1 * DEG, "rad", "1.51", "from memory"),
+    "lead": Figure(1 * DEG, "rad", "1.51, or 1 m at the lead's distance if more", "from memory"),
     "stick force": Figure(0.08, "ratio", "as load, section 8", "guess"),
     "gauge": Figure(0.0, "readings", "in the reading steps", "guess"),
     "call": Figure(0.0, "heard", "none", "guess"),
@@ -147,10 +150,18 @@ def sensory_sigma(cue: str, observer: Observer, eccentricity_rad: Array | None, 
 
 
 def effective_sigma(
-    cue: str, observer: Observer, eccentricity_rad: Array | None, widening: Array | float = 1.0
+    cue: str,
+    observer: Observer,
+    eccentricity_rad: Array | None,
+    widening: Array | float = 1.0,
+    scatter: Array | float = 0.0,
 ) -> Array:
-    """Sense and technique together: sigma^2 = (W K / g)^2 / (T_int/T_0) + sigma_tech^2 (6.2)."""
-    return np.hypot(sensory_sigma(cue, observer, eccentricity_rad, widening), TECHNIQUE[cue].value)
+    """Sense and technique together: sigma^2 = (W K / g)^2 / (T_int/T_0) + sigma_tech^2 (6.2).
+
+    scatter: what technique amounts to at the time, where that is more than its row (holding the slot).
+    """
+    technique = np.maximum(TECHNIQUE[cue].value, scatter)
+    return np.hypot(sensory_sigma(cue, observer, eccentricity_rad, widening), technique)
 
 
 def source(cue: str) -> str:

@@ -45,7 +45,7 @@ def test_never_below_zero() -> None:
 def test_drive_is_the_largest_cue_beyond_its_dead_zone() -> None:
     # d = max(0, |D| - 1.75 sigma_tech)/W: (0.5 - 0.35)/0.1 = 1.5 and (0.3 - 0.0175)/0.5 = 0.565.
     d = drive(
-        np.array([[0.5], [-0.3]]), np.array([[0.1], [0.5]]), np.array([0.2, 0.01]), np.zeros((1, 2)),
+        np.array([[0.5], [-0.3]]), np.array([[0.1], [0.5]]), np.array([[0.2], [0.01]]), np.zeros((1, 2)),
         np.array([[[True], [True]], [[False], [True]], [[False], [False]]]),
     )  # fmt: skip
     assert d[:, 0] == pytest.approx([1.5, 0.565, 0.0])

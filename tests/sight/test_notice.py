@@ -71,6 +71,20 @@ def test_formation_that_sags_together_keeps_its_sight_picture() -> None:
     assert np.abs(cue(cues["slot1"], "lead").difference).max() < 1e-9
 
 
+def test_lead_within_what_a_wing_pilot_holds_is_not_noticed() -> None:
+    # 1.51: scatter of a held slot 0.3-1 m at 10-20 m; 2 sigma at 14 m are 2 m. The lead 1.5 m too low isn't it,
+    # 2.5 m too low is.
+    def low_lead(by_m: float) -> Flight:
+        slots = ((0.0, 14.0, -by_m),)
+        return planar(lambda s: 4.0, slots=slots, fault_s=1.0)
+
+    twin = planar(lambda s: 4.0, slots=((0.0, 14.0, 0.0),))
+    _, notices = notice_all(twin, low_lead(1.5), Watch(), flat)
+    assert times(notices["slot1"]) == [np.inf] * 3
+    _, notices = notice_all(twin, low_lead(2.5), Watch(), flat)
+    assert {n.cue for n in notices["slot1"]} == {"lead"}
+
+
 def test_lead_alone_moves_in_the_canopy() -> None:
     h = planar(lambda s: 4.0, load_wings=lambda s: 4.0)
     f = planar(sagging(4.0, 3.2, 0.5), load_wings=lambda s: 4.0, fault_s=0.0)
