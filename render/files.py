@@ -86,6 +86,17 @@ def scratch_folder(path: str | Path) -> Iterator[Path]:
         shutil.rmtree(folder, ignore_errors=True)
 
 
+def move_whole(made: Path, target: Path) -> None:
+    """Move a finished file into place in one step, also from another disk (then it is copied beside first)."""
+    try:
+        os.replace(made, target)
+    except OSError as exc:
+        if exc.errno != errno.EXDEV:
+            raise output_error(exc, target) from exc
+        with whole_file(target, force=True) as part:
+            shutil.copyfile(made, part)
+
+
 def write_text(path: str | Path, text: str, *, force: bool = False) -> Path:
     """Write a text file (UTF-8) whole or not at all; raises as ``whole_file`` does."""
     with whole_file(path, force=force) as part:

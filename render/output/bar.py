@@ -17,9 +17,23 @@ from PIL import Image, ImageDraw
 
 from render.output.events import slot_index
 from render.output.ink import (
-    BACK, FAINT, ORANGE, PANEL, QUIET, SKY, VERMILION, WHITE, YELLOW, fit_text, font, hatch, mark, put_mark, spread,
+    BACK,
+    FAINT,
+    ORANGE,
+    PANEL,
+    QUIET,
+    SKY,
+    VERMILION,
+    WHITE,
+    YELLOW,
+    fit_text,
+    font,
+    hatch,
+    mark,
+    put_mark,
+    spread,
     text_width,
-)  # fmt: skip
+)
 from render.output.texts import OverlayTexts, margin_at
 from render.types import OBSERVERS, Study
 

@@ -12,8 +12,18 @@ from PIL import Image, ImageDraw
 
 from render.output.bar import MarginBar
 from render.output.ink import (
-    BACK, ORANGE, QUIET, SKY, VERMILION, WHITE, YELLOW, Colour, fit_text, font, text_width,
-)  # fmt: skip
+    BACK,
+    ORANGE,
+    QUIET,
+    SKY,
+    VERMILION,
+    WHITE,
+    YELLOW,
+    Colour,
+    fit_text,
+    font,
+    text_width,
+)
 from render.output.side_view import SideView
 from render.output.texts import OverlayTexts, overlay_texts
 from render.output.timeline import Timeline
@@ -99,7 +109,8 @@ class Overlay:
             rows = 3
         # to whole steps of 40 px, so that the panel doesn't breathe with the digits
         width = int(-(-(max(widths) + 28 * u) // (40 * u)) * (40 * u))
-        image = Image.new("RGB", (min(width, self._size[0] - round(28 * u)), round((48 + 24 * (rows - 1) + 4) * u)), BACK)
+        width, height = min(width, self._size[0] - round(28 * u)), round((28 + 24 * rows) * u)
+        image = Image.new("RGB", (width, height), BACK)
         draw = ImageDraw.Draw(image)
         draw.text((14 * u, 19 * u), title, fill=QUIET, font=small, anchor="lm")
         draw.text((14 * u, 51 * u), texts.since_fault, fill=WHITE, font=bold, anchor="lm")

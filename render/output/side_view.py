@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 from PIL import Image, ImageDraw
 
 from render.frames import Array
@@ -51,7 +52,7 @@ class SideView:
         return np.stack([self._x0 + np.asarray(x) * self._scale, self._y0 - np.asarray(y) * self._scale], axis=-1)
 
     def _resting(
-        self, study: Study, paths: list[tuple[Array, Array]], ground: tuple[Array, Array], shown: Array
+        self, study: Study, paths: list[tuple[Array, Array]], ground: tuple[Array, Array], shown: NDArray[np.bool_]
     ) -> Image.Image:
         u, big = self._u, (self._size[0] * SMOOTH, self._size[1] * SMOOTH)
         image = Image.new("RGB", big, BACK)
@@ -97,10 +98,11 @@ class SideView:
         x, y = sample(flight.time_s, self._along, at), sample(flight.time_s, flight.height_m[:, k], at)
         step = 0.2
         then = min(max(at, float(flight.time_s[0]) + step), self._end_s)
-        dx = x if then == at else sample(flight.time_s, self._along, then)
-        dx -= sample(flight.time_s, self._along, then - step)
-        dy = sample(flight.time_s, flight.height_m[:, k], then) - sample(flight.time_s, flight.height_m[:, k], then - step)
-        turn = int(round(np.degrees(np.arctan2(dy, dx)) / 5.0)) * 5 % 360  # in steps of 5 deg: few cached marks
+        dx, dy = (
+            sample(flight.time_s, values, then) - sample(flight.time_s, values, then - step)
+            for values in (self._along, flight.height_m[:, k])
+        )
+        turn = round(float(np.degrees(np.arctan2(dy, dx))) / 5.0) * 5 % 360  # in steps of 5 deg: few cached marks
         put_mark(image, mark("aircraft", round(24 * self._u), WHITE, True, turn), *self._px(x, y))
         return image
 

@@ -6,8 +6,21 @@ from PIL import Image, ImageDraw
 
 from render.output.events import Event, study_events
 from render.output.ink import (
-    BACK, FAINT, QUIET, SKY, VERMILION, WHITE, YELLOW, Colour, fit_text, font, mark, put_mark, spread, text_width,
-)  # fmt: skip
+    BACK,
+    FAINT,
+    QUIET,
+    SKY,
+    VERMILION,
+    WHITE,
+    YELLOW,
+    Colour,
+    fit_text,
+    font,
+    mark,
+    put_mark,
+    spread,
+    text_width,
+)
 from render.types import Study
 
 COLOURS: dict[str, Colour] = {"fault": VERMILION, "contact": VERMILION}
