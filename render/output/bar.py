@@ -31,6 +31,7 @@ from render.output.ink import (
     hatch,
     mark,
     put_mark,
+    put_words,
     spread,
     text_width,
 )
@@ -129,6 +130,7 @@ class MarginBar:
         dead = hatch((round(zero - self._pad), self._y1 - self._y0), (66, 52, 46), PANEL, 16 * u, 0.5)
         image.paste(dead, (round(self._pad), self._y0))
         draw.text(((zero + self._pad) / 2, middle), "too late", fill=QUIET, font=font(17 * u), anchor="mm")
+        self._reaction_frame(image, draw, zero)
         below = self._y1 + 5 * u
         step = 1 if scale.right_s - scale.left_s <= 8 else 2
         for value in range(math.ceil(scale.left_s), int(scale.right_s) + 1):
@@ -142,6 +144,17 @@ class MarginBar:
         end = self._size[0] - self._pad
         self._notes(image, draw, end)
         return image
+
+    def _reaction_frame(self, image: Image.Image, draw: ImageDraw.ImageDraw, zero: float) -> None:
+        """What reaction takes, as it stays visible once the bar has run past it: a frame, stripes up to late."""
+        if not self._scale.reaction_s:
+            return
+        early, likely, late = (self.x(r) for r in (self._scale.reaction_s * 3)[:3])
+        height = self._y1 - self._y0
+        stripes = hatch((max(round(late - early), 1), height), (96, 80, 44), PANEL, 11 * self._u, 0.4)
+        image.paste(stripes, (round(early), self._y0))
+        line = max(1, round(2 * self._u))
+        draw.rectangle((zero, self._y0, likely, self._y1 - 1), outline=ORANGE, width=line)
 
     def _notes(self, image: Image.Image, draw: ImageDraw.ImageDraw, end: float) -> None:
         """Words over the bar: who could notice where, with the marks hollow until that moment."""
@@ -191,7 +204,7 @@ class MarginBar:
         bold = font(17 * u, True)
         likely = self.x(self._scale.reaction_s[1]) if len(self._scale.reaction_s) > 1 else zero
         if left > 0 and min(x, likely) - zero > text_width("reaction", bold) + 10 * u:
-            draw.text(((zero + likely) / 2, middle), "reaction", fill=BACK, font=bold, anchor="mm")
+            put_words(image, (zero + likely - text_width("reaction", bold)) / 2, middle, "reaction", bold, BACK)
         marked = any(time_s >= noticed_s and left_then < 0 for noticed_s, left_then in self._scale.notices.values())
         if left < 0 and not marked and zero - x > text_width("too late", bold) + 10 * u:
             draw.text(((zero + x) / 2, middle), "too late", fill=WHITE, font=bold, anchor="mm",

@@ -59,7 +59,8 @@ def card_texts(study: Study, slot: str) -> CardTexts:
         if notice.time_s is None:
             observers.append((notice.observer, "never noticed", ""))
         else:
-            when = f"{seconds(notice.time_s - (fault_s or 0.0))} after the fault, by {cue_words(notice.cue)}"
+            since = seconds(notice.time_s - (fault_s or 0.0))
+            when = f"could notice {since} after the fault, by {cue_words(notice.cue)}"
             late = lateness_words(notice.lateness_s)
             late = "" if late == "-" else f"{late} with {seconds(notice.reaction_s)} reaction"
             observers.append((notice.observer, when, late))
@@ -111,7 +112,8 @@ def card_frame(study: Study, slot: str, size_px: tuple[int, int], *, plain: bool
             y += 34 * u
             draw.text((x, y), fit_text(late, bold, right - x), fill=WHITE, font=bold, anchor="lm")
         y += 40 * u
-    lines = wrap_text(texts.caution, small, right - left)
+    lines = [line for part in texts.caution.split(". ") for line in wrap_text(part, small, right - left)]
+    lines[0] += "."
     lines += wrap_text(texts.viewing, small, right - left) + wrap_text(texts.source, small, right - left)[:2]
     y = height - 34 * u - (len(lines) - 1) * 28 * u
     draw.line((left, y - 26 * u, right, y - 26 * u), fill=FAINT, width=max(1, round(2 * u)))

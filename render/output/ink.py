@@ -46,9 +46,32 @@ def font(size_px: float, bold: bool = False) -> Font:
         raise MachineError(f"the font {name} of matplotlib is missing; install matplotlib again") from exc
 
 
+@lru_cache(maxsize=1024)
 def text_width(text: str, face: Font) -> int:
     """Width of a line of text in whole pixels."""
     return int(face.getlength(text) + 0.999)
+
+
+@lru_cache(maxsize=1024)
+def _word(word: str, face: Font) -> tuple[Image.Image, float]:
+    """A word's mask and advance; its middle line is the mask's middle. Cached: running figures repeat their words."""
+    advance = face.getlength(word)
+    image = Image.new("L", (int(advance) + 4, 2 * round(face.size)), 0)
+    ImageDraw.Draw(image).text((1, image.height / 2), word, fill=255, font=face, anchor="lm")
+    return image, advance
+
+
+def put_words(
+    image: Image.Image, x: float, y: float, text: str, face: Font, colour: Colour, *, right: bool = False
+) -> None:
+    """Write a line centred on y, from x (or up to x if ``right``): a tenth of the cost of drawing running text anew."""
+    space = _word(" ", face)[1]
+    words = [_word(word, face) for word in text.split(" ")]
+    if right:
+        x -= sum(advance for _, advance in words) + space * (len(words) - 1)
+    for mask, advance in words:
+        image.paste(colour, (round(x) - 1, round(y) - mask.height // 2), mask)
+        x += advance + space
 
 
 def fit_text(text: str, face: Font, width_px: float) -> str:

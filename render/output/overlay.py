@@ -20,8 +20,10 @@ from render.output.ink import (
     WHITE,
     YELLOW,
     Colour,
+    Font,
     fit_text,
     font,
+    put_words,
     text_width,
 )
 from render.output.side_view import SideView
@@ -31,9 +33,9 @@ from render.types import Study
 
 Frame = NDArray[np.uint8]
 
-STATE_COLOURS: dict[str, Colour] = {
-    "left": SKY, "endless": SKY, "gone": VERMILION, "no_pull": VERMILION, "contact": VERMILION,
-}  # fmt: skip
+STATE_COLOURS: dict[str, Colour] = {"left": SKY, "endless": SKY}
+ENDED = ("gone", "no_pull", "contact")  # nothing is left: white on a block of vermilion
+GAP = "   "
 STRIP, BAR_HEIGHT, TEXT_WIDTH = 178, 114, 348  # of a 720-line picture
 
 
@@ -48,6 +50,7 @@ class Overlay:
         width, height = size_px
         self._u = u = height / 720.0
         self._text_width = round(TEXT_WIDTH * u)
+        self._panel = self._caption_panel(study, slot)
         strip, bar = round(STRIP * u), round(BAR_HEIGHT * u)
         self._strip_y, self._bar_height, self._line_height = height - strip, bar, strip - bar
         self._bar = MarginBar(study, slot, (width - self._text_width - round(14 * u), bar), u)
@@ -79,44 +82,51 @@ class Overlay:
         """The big number with its words."""
         u = self._u
         image = Image.new("RGB", (self._text_width, self._bar_height), BACK)
-        draw = ImageDraw.Draw(image)
-        colour = STATE_COLOURS[texts.state]
+        colour = STATE_COLOURS.get(texts.state, WHITE)
         if texts.state == "left" and texts.margin_s < self._reaction_s:
             colour = ORANGE  # what is left is less than the likely reaction takes
-        room = self._text_width - 26 * u
-        draw.text((16 * u, 18 * u), texts.margin_label, fill=WHITE, font=font(19 * u), anchor="lm")
-        big = font(58 * u, True)
-        if big.getlength(texts.margin_value) > room:
-            big = font(58 * u * room / big.getlength(texts.margin_value), True)
-        draw.text((14 * u, 57 * u), texts.margin_value, fill=colour, font=big, anchor="lm")
-        note = font(17 * u)
-        if note.getlength(texts.margin_note) > room:
-            note = font(17 * u * room / note.getlength(texts.margin_note))
-        draw.text((16 * u, 99 * u), texts.margin_note, fill=WHITE, font=note, anchor="lm")
+        if texts.state in ENDED:
+            # a block of colour under white figures: told apart by shape too, and bright in every kind of eye
+            width = text_width(texts.margin_value, self._fitted(texts.margin_value, 58 * u, True)) + 20 * u
+            ImageDraw.Draw(image).rectangle((8 * u, 32 * u, 8 * u + width, 85 * u), fill=VERMILION)
+        rows = (
+            (16, 18, texts.margin_label, 19.0, False, WHITE),
+            (14, 57, texts.margin_value, 58.0, True, colour),
+            (16, 99, texts.margin_note, 17.0, False, WHITE),
+        )
+        for x, y, text, size, bold, ink in rows:
+            put_words(image, x * u, y * u, text, self._fitted(text, size * u, bold), ink)
+        return image
+
+    def _fitted(self, text: str, size: float, bold: bool) -> Font:
+        """The font, smaller where the text would not fit beside the bar."""
+        room = self._text_width - 26 * self._u
+        width = text_width(text, font(size, bold))
+        return font(size if width <= room else size * room / width, bold)
+
+    def _caption_panel(self, study: Study, slot: str) -> Image.Image:
+        """The caption's resting picture, wide enough for any figures, with slot, scene and note."""
+        u, small = self._u, font(18 * self._u)
+        texts = overlay_texts(study, slot, float(study.faulted.time_s[0]))
+        title = fit_text(f"{texts.slot} · {texts.title}", small, self._size[0] * 0.62)
+        widest = text_width("88.8 s before the fault", font(26 * u, True))
+        widest += text_width(f"88,888 ft above ground{GAP}888 km/h", font(22 * u))
+        width = max(widest + round(24 * u), text_width(title, small), text_width(self._note, small))
+        rows = 3 if self._note else 2
+        size = (min(width + round(28 * u), self._size[0] - round(28 * u)), round((28 + 24 * rows) * u))
+        image = Image.new("RGB", size, BACK)
+        put_words(image, 14 * u, 19 * u, title, small, QUIET)
+        if self._note:
+            put_words(image, 14 * u, 80 * u, self._note, small, YELLOW)
         return image
 
     def _caption(self, texts: OverlayTexts) -> Image.Image:
-        """Slot and scene, time since the fault, height and speed."""
+        """Time since the fault, height and speed, on the caption's panel."""
         u = self._u
-        small, bold, plain = font(18 * u), font(26 * u, True), font(22 * u)
-        room = self._size[0] * 0.62
-        title = fit_text(f"{texts.slot} · {texts.title}", small, room)
-        second = f"{texts.height}   {texts.speed}"
-        widths = [text_width(title, small), text_width(texts.since_fault, bold) + text_width(second, plain) + 28 * u]
-        rows = 2
-        if self._note:
-            widths.append(text_width(self._note, small))
-            rows = 3
-        # to whole steps of 40 px, so that the panel doesn't breathe with the digits
-        width = int(-(-(max(widths) + 28 * u) // (40 * u)) * (40 * u))
-        width, height = min(width, self._size[0] - round(28 * u)), round((28 + 24 * rows) * u)
-        image = Image.new("RGB", (width, height), BACK)
-        draw = ImageDraw.Draw(image)
-        draw.text((14 * u, 19 * u), title, fill=QUIET, font=small, anchor="lm")
-        draw.text((14 * u, 51 * u), texts.since_fault, fill=WHITE, font=bold, anchor="lm")
-        draw.text((image.width - 14 * u, 52 * u), second, fill=WHITE, font=plain, anchor="rm")
-        if self._note:
-            draw.text((14 * u, 80 * u), self._note, fill=YELLOW, font=small, anchor="lm")
+        image = self._panel.copy()
+        put_words(image, 14 * u, 51 * u, texts.since_fault, font(26 * u, True), WHITE)
+        figures = f"{texts.height}{GAP}{texts.speed}"
+        put_words(image, image.width - 14 * u, 52 * u, figures, font(22 * u), WHITE, right=True)
         return image
 
     def _banner(self, caption: str) -> Image.Image:

@@ -78,16 +78,15 @@ class SideView:
         if fault_s is not None and 0 < split < len(times):
             put_mark(image, mark("fault", round(15 * u), VERMILION), *(line[split] / SMOOTH))
         face = font(15 * u)
-        draw.text((12 * u, 15 * u), "path", fill=WHITE, font=face, anchor="lm")
-        if fault_s is not None:
-            edge = 12 * u + draw.textlength("path  ", font=face)
-            draw.line((edge + 8 * u, 15 * u, edge + 32 * u, 15 * u), fill=VERMILION, width=max(2, round(4 * u)))
-            draw.text((edge + 38 * u, 15 * u), "fault", fill=WHITE, font=face, anchor="lm")
-            edge += 38 * u + draw.textlength("fault   ", font=face)
-            for i in range(3):
-                x = edge + i * 10 * u
-                draw.line((x, 15 * u, x + 6 * u, 15 * u), fill=QUIET, width=max(1, round(2 * u)))
-            draw.text((edge + 34 * u, 15 * u), "without", fill=WHITE, font=face, anchor="lm")
+        y = 16 * u
+        if fault_s is None:
+            draw.text((12 * u, y), "path", fill=WHITE, font=face, anchor="lm")
+            return image
+        draw.line((12 * u, y, 36 * u, y), fill=VERMILION, width=max(2, round(4 * u)))
+        draw.text((44 * u, y), "fault", fill=WHITE, font=face, anchor="lm")
+        for x in (116, 126, 136):
+            draw.line((x * u, y, (x + 6) * u, y), fill=QUIET, width=max(1, round(2 * u)))
+        draw.text((150 * u, y), "without", fill=WHITE, font=face, anchor="lm")
         return image
 
     def draw(self, time_s: float) -> Image.Image:
