@@ -47,9 +47,16 @@ def sample(time_s: Array, values: Array, at_s: float) -> float:
 
 
 def margin_at(study: Study, slot: str, time_s: float) -> float:
-    """Seconds left against the floor at an instant; NaN where it does not run out, negative once gone."""
+    """Seconds left against the floor at an instant; NaN where it does not run out, negative once gone.
+
+    Where the history has no value after the last pull (after contact), the time since it counts on.
+    """
     k = slot_index(study, slot)
-    return sample(study.margin.time_s, study.margin.seconds_floor_s[:, k], time_s)
+    left = sample(study.margin.time_s, study.margin.seconds_floor_s[:, k], time_s)
+    last = study.margin.last_pull_floor_s[k]
+    if math.isnan(left) and last is not None and time_s >= last:
+        return last - time_s
+    return left
 
 
 def overlay_texts(study: Study, slot: str, time_s: float) -> OverlayTexts:

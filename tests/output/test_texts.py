@@ -5,6 +5,7 @@ from __future__ import annotations
 import itertools
 import math
 import re
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -82,6 +83,16 @@ def test_margin_beside_a_gap_takes_the_nearer_sample() -> None:
     time, values = np.array([0.0, 1.0, 2.0]), np.array([3.0, np.nan, 1.0])
     assert sample(time, values, 0.4) == 3.0 and math.isnan(sample(time, values, 0.6))
     assert sample(time, values, 5.0) == 1.0 and sample(time, values, -1.0) == 3.0
+
+
+def test_after_contact_the_time_since_the_last_pull_counts_on(study: Study) -> None:
+    """A margin that has no value after contact must not read as one that does not run out."""
+    last, contact = study.margin.last_pull_floor_s[1], study.faulted.contact_s[1]
+    assert last is not None and contact is not None
+    left = np.where(study.margin.time_s[:, None] > contact - 0.5, np.nan, study.margin.seconds_floor_s)
+    gap = replace(study, margin=replace(study.margin, seconds_floor_s=left))
+    got = overlay_texts(gap, "right", contact - 0.2)
+    assert got.state == "gone" and got.margin_s == pytest.approx(last - contact + 0.2)
 
 
 def test_events_come_in_order_and_end_at_contact(study: Study) -> None:
