@@ -55,8 +55,8 @@ class SegmentWriter:
             encoder_path(), "-y", "-hide_banner", "-loglevel", "error", "-nostdin",
             "-f", "rawvideo", "-pix_fmt", "rgb24", "-s", f"{width}x{height}", "-r", f"{rate_fps:g}", "-i", "pipe:0",
             # the matrix that players assume for this size is written down, or reds and greens would shift
-            "-vf", "scale=out_color_matrix=bt709:out_range=tv,format=yuv420p",
-            "-colorspace", "bt709", "-color_primaries", "bt709", "-color_trc", "bt709", "-color_range", "tv",
+            "-vf", "scale=out_color_matrix=bt709:out_range=tv,format=yuv420p,"
+            "setparams=range=tv:colorspace=bt709:color_primaries=bt709:color_trc=bt709",
             "-c:v", "libx264", "-preset", preset, "-crf", "20", "-threads", "1", "-bf", "0",
             "-video_track_timescale", str(TIMESCALE), "-f", "mp4", str(path),
         ]  # fmt: skip

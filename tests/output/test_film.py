@@ -83,7 +83,7 @@ def test_film_holds_what_was_drawn(study: Study, tmp_path: Path) -> None:
     write_film(study, "right", target, shot=shot, plain_path=plain, source=grey(),
                progress=lambda done, total: calls.append((done, total)))  # fmt: skip
     said = probe(target)
-    assert re.search(r"Video: h264 .*yuv420p\(tv, bt709.*160x120", said), said
+    assert re.search(r"Video: h264 .*yuv420p\(tv, bt709, progressive\), 160x120", said), said
     assert re.search(r"title +: Right wing, line abreast, stabilator frozen after the top \(slot right\)", said)
     assert "not a clearance" in said and "latepull 0.1.0" in said
     assert "stabilator" not in probe(plain).split("comment")[0], "the plain film's title must give nothing away"
