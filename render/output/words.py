@@ -15,7 +15,7 @@ CAUTION = (
 
 CUE_WORDS = {
     "tilt": "horizon's tilt",
-    "turning": "view turns less",
+    "turning": "view's turning",
     "flow": "ground flow",
     "closing": "ground closing",
     "growth": "ground growing",
