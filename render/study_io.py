@@ -10,6 +10,7 @@ import hashlib
 import json
 import math
 from collections.abc import Mapping
+from contextlib import ExitStack
 from dataclasses import fields, is_dataclass
 from pathlib import Path
 from typing import Any
@@ -62,7 +63,7 @@ def text_hash(scene_text: str) -> str:
 
 
 def save_study(study: Study, folder: str | Path, *, force: bool = True) -> Path:
-    """Write a study into a folder, each file whole or not at all; returns the folder.
+    """Write a study into a folder, both files or none; returns the folder.
 
     Raises OutputExists (not ``force``), MachineError (full disk, no permission).
     """
@@ -71,16 +72,18 @@ def save_study(study: Study, folder: str | Path, *, force: bool = True) -> Path:
     body = _to_plain(study, "study", arrays)
     if study.faulted is study.healthy:
         body["faulted"] = {"same": "healthy"}
-    with whole_file(folder / ARRAYS, force=force) as part, part.open("wb") as file:
-        np.savez(file, allow_pickle=False, **arrays)
-    data = {
-        "format": FORMAT,
-        "scene_text_sha256": text_hash(study.scene_text),
-        "arrays_sha256": _file_hash(folder / ARRAYS),
-        "study": body,
-    }
-    with whole_file(folder / TEXT, force=force) as part:
-        part.write_text(json.dumps(data, ensure_ascii=False, allow_nan=False), encoding="utf-8")
+    with ExitStack() as stack:
+        array_part = stack.enter_context(whole_file(folder / ARRAYS, force=force))
+        text_part = stack.enter_context(whole_file(folder / TEXT, force=force))
+        with array_part.open("wb") as file:
+            np.savez(file, allow_pickle=False, **arrays)
+        data = {
+            "format": FORMAT,
+            "scene_text_sha256": text_hash(study.scene_text),
+            "arrays_sha256": _file_hash(array_part),
+            "study": body,
+        }
+        text_part.write_text(json.dumps(data, ensure_ascii=False, allow_nan=False), encoding="utf-8")
     return folder
 
 

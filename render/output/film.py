@@ -8,6 +8,7 @@ from __future__ import annotations
 import json
 import os
 import queue
+import re
 import signal
 import subprocess
 import sys
@@ -69,14 +70,18 @@ def write_film(
         claim_output(one, force=force)
     encoder_path()
     with scratch_folder(target) as folder:
-        save_study(study, folder / "study")
-        jobs = _jobs(shot, folder, targets, source or SourceSpec(), workers, note, preset)
-        _run(jobs, folder, target, progress)
+        try:
+            save_study(study, folder / "study")
+            jobs = _jobs(shot, folder, targets, source or SourceSpec(), workers, note, preset)
+            _run(jobs, folder, progress)
+            for kind in targets:
+                segments = [Path(p) for job in jobs if (p := getattr(job, f"{kind}_path"))]
+                join_segments(segments, folder / f"{kind}.mp4", film_metadata(study, slot, plain=kind == "plain"))
+        except MachineError as exc:
+            # the user knows the film he asked for, not the scratch files beside it
+            raise MachineError(re.sub(re.escape(str(folder)) + r"[^\s:,;]*", str(target), str(exc))) from exc
         for kind, one in targets.items():
-            joined = folder / f"{kind}.mp4"
-            segments = [Path(p) for job in jobs if (p := getattr(job, f"{kind}_path"))]
-            join_segments(segments, joined, film_metadata(study, slot, plain=kind == "plain"))
-            move_whole(joined, one)
+            move_whole(folder / f"{kind}.mp4", one)
     return target
 
 
@@ -130,7 +135,7 @@ def _next_drawn(repeated: np.ndarray[Any, np.dtype[np.bool_]], index: int) -> in
     return index
 
 
-def _run(jobs: list[Job], folder: Path, target: Path, progress: Progress | None) -> None:
+def _run(jobs: list[Job], folder: Path, progress: Progress | None) -> None:
     """Start the workers, pass on their progress, end them all when one fails or on Ctrl-C."""
     total = sum(len(job.time_s) for job in jobs)
     done = [0] * len(jobs)
@@ -152,7 +157,7 @@ def _run(jobs: list[Job], folder: Path, target: Path, progress: Progress | None)
                 _check(processes[i].wait(), done[i], jobs[i], folder / f"worker{i}.log")
             elif "error" in report:
                 kind = MachineError if report["exit_code"] == MachineError.exit_code else LatepullError
-                raise kind(report["error"].replace(str(folder), str(target.parent)))
+                raise kind(report["error"])
             else:
                 done[i] = int(report["done"])
                 if progress is not None:

@@ -6,11 +6,12 @@ import csv
 import io
 import json
 from collections.abc import Iterable
+from contextlib import ExitStack
 from pathlib import Path
 
 import numpy as np
 
-from render.files import claim_output, write_text
+from render.files import whole_file
 from render.frames import Array
 from render.output.events import FLIGHT_WORDS, slot_index, slot_title
 from render.output.texts import sample
@@ -219,8 +220,9 @@ def write_tables(study: Study, folder: str | Path, *, force: bool = False) -> tu
         "table.txt": study_table(study),
     }
     paths = tuple(Path(folder) / name for name in texts)
-    for path in paths:
-        claim_output(path, force=force)
-    for path, text in zip(paths, texts.values(), strict=True):
-        write_text(path, text, force=force)
+    with ExitStack() as stack:
+        # all are written before the first takes its place: a full disk leaves none or the old ones
+        parts = [stack.enter_context(whole_file(path, force=force)) for path in paths]
+        for part, text in zip(parts, texts.values(), strict=True):
+            part.write_text(text, encoding="utf-8", newline="")
     return paths

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import errno
 import io
 import json
 from dataclasses import replace
@@ -11,7 +12,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from render.errors import OutputExists
+from render.errors import MachineError, OutputExists
 from render.output.tables import margin_csv, study_table, tracks_csv, verdict_json, write_tables
 from render.types import Study
 
@@ -87,3 +88,17 @@ def test_tables_are_kept_unless_forced(study: Study, tmp_path: Path) -> None:
     assert not paths[1].exists(), "nothing may be written when one is refused"
     write_tables(study, tmp_path, force=True)
     assert paths[1].exists()
+
+
+def test_a_disk_that_fills_leaves_no_table(study: Study, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    whole = Path.write_text
+
+    def full(self: Path, text: str, **options: str) -> int:
+        if "margin" in self.name:
+            raise OSError(errno.ENOSPC, "No space left on device")
+        return whole(self, text, **options)
+
+    monkeypatch.setattr(Path, "write_text", full)
+    with pytest.raises(MachineError, match="is full"):
+        write_tables(study, tmp_path)
+    assert list(tmp_path.iterdir()) == []
