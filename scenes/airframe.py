@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from scenes.model import quantity
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Airframe:
     """Mass, geometry, coefficients, limits, thrust and control path of one aircraft.
 

@@ -1,0 +1,190 @@
+"""A scene to a flight: the healthy twin and the faulted flight on one time axis."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+import numpy as np
+from terrain.ground import Ground
+
+from render.errors import FlightError
+from render.flight import records as r
+from render.flight import script as s
+from render.flight.batch import Raw, close_loops, fly_batch
+from render.flight.plan import DT_S, Plan, compile_scene
+from render.frames import Array, quat_multiply
+from render.types import Flight
+from scenes.airframe import Airframe
+from scenes.model import Scene
+
+AFTER_SCRIPT_S = 15.0  # a faulted lead may need longer than the script
+_WHY = {
+    r.TOO_FAST: ("calibrated airspeed", "m/s"),
+    r.TOO_HIGH_MACH: ("Mach number", ""),
+    r.OUT_OF_AIR: ("height above sea level", "m"),
+    r.NOT_FINITE: ("airspeed", "m/s"),
+}
+
+
+def ground_arrays(ground: Ground) -> tuple[Array, Array]:
+    """Heights (I, J) and grid (origin north, origin east, spacing) as the kernels take them."""
+    heights = np.ascontiguousarray(ground.heights_m, dtype=float)
+    return heights, np.array([ground.origin_n_m, ground.origin_e_m, ground.spacing_m])
+
+
+def fly_scene(scene: Scene, airframe_of: Callable[[str], Airframe], ground: Ground) -> tuple[Flight, Flight, Plan]:
+    """Fly a scene: healthy twin, faulted flight (the twin itself without a fault), and the plan.
+
+    Raises FlightError if the loop can't close, the fault's point is never reached, the script does
+    not end, or the model's validity range is left (with time, value and limit).
+    """
+    names = [scene.airframe] + [slot.airframe or scene.airframe for slot in scene.formation]
+    known = {name: airframe_of(name) for name in set(names)}
+    plan = compile_scene(scene, tuple(known[name] for name in names))
+    heights, grid = ground_arrays(ground)
+    scale = close_loops([plan], plan.longest_s)
+    steps = round((plan.longest_s + AFTER_SCRIPT_S) / DT_S)
+    healthy = fly_batch([plan], scale, steps, heights, grid, healthy=True)
+    check_raw(plan, healthy, 0, "the healthy flight")
+    end_s = healthy.mem[0, s.M_SCRIPT_END_S]
+    if healthy.status[0, 0, 0] == r.CONTACT:
+        end_s = healthy.status[0, 0, 1] * DT_S
+    elif end_s < 0.0:
+        raise FlightError(f"the script of '{scene.name}' does not end: step {int(healthy.mem[0, s.M_STEP]) + 1} "
+                          f"is never finished within {steps * DT_S:.0f} s")
+    if scene.fault is None:
+        cut = _cut(healthy, end_s)
+        twin = to_flight(plan, healthy, 0, cut, float(scale[0]))
+        return twin, twin, plan
+    faulted = fly_batch([plan], scale, steps, heights, grid, healthy=False)
+    fault_s = faulted.mem[0, s.M_FAULT_S]
+    if fault_s < 0.0 or fault_s > end_s:
+        raise FlightError(f"the fault's point is never reached: {_point_words(scene)} is not passed before the script "
+                          f"ends at {end_s:.1f} s")
+    check_raw(plan, faulted, 0, "the faulted flight")
+    cut = _cut(faulted, end_s)
+    return (to_flight(plan, healthy, 0, cut, float(scale[0])), to_flight(plan, faulted, 0, cut, float(scale[0])), plan)
+
+
+def _cut(raw: Raw, end_s: float) -> int:
+    """Last step worth keeping: the script's end, later if the lead still goes down then, or his contact."""
+    end = min(round(end_s / DT_S), raw.y.shape[1] - 1)
+    stopped = int(np.max(raw.status[0, :, 1]))
+    if raw.status[0, 0, 0] == r.CONTACT:
+        return min(stopped + round(1.0 / DT_S), raw.y.shape[1] - 1)
+    down = np.diff(raw.y[0, end:, 0, r.D]) > 0.0
+    level = np.flatnonzero(~down)
+    return end + (int(level[0]) if level.size else len(down))
+
+
+def check_raw(plan: Plan, raw: Raw, b: int, which: str) -> None:
+    """Raise FlightError if an aircraft left the range the model is valid in."""
+    for k, airframe in enumerate(plan.airframes):
+        why, last = int(raw.status[b, k, 0]), int(raw.status[b, k, 1])
+        if why not in _WHY:
+            continue
+        value = {
+            r.TOO_FAST: raw.a[b, last, k, r.A_CAS], r.TOO_HIGH_MACH: np.nan,
+            r.OUT_OF_AIR: plan.scene.day.field_elevation_m - raw.y[b, last, k, r.D], r.NOT_FINITE: raw.y[b, last, k, r.V],
+        }[why]
+        limit = {r.TOO_FAST: airframe.speed_max_mps, r.TOO_HIGH_MACH: airframe.mach_max, r.OUT_OF_AIR: 15_000.0,
+                 r.NOT_FINITE: 5.0}[why]
+        what, unit = _WHY[why]
+        who = "lead" if k == 0 else plan.scene.formation[k - 1].name
+        raise FlightError(f"{which} leaves the range the model is valid in: {who}, {what} {value:.4g} {unit} at "
+                          f"{last * DT_S:.2f} s, limit {limit:.4g} {unit}")
+
+
+def _point_words(scene: Scene) -> str:
+    assert scene.fault is not None
+    at = scene.fault.at
+    if at.kind == "loop_angle":
+        return f"loop angle {np.degrees(at.value):.0f} deg"
+    if at.kind == "height":
+        return f"height {at.value / 0.3048:.0f} ft going {at.going}"
+    return f"{'time' if at.kind == 'time' else 'time after the top'} {at.value:.1f} s"
+
+
+def _crossing(time_s: Array, value: Array, level: float) -> float | None:
+    i = np.flatnonzero((value[:-1] < level) & (value[1:] >= level))
+    if i.size == 0:
+        return None
+    j = int(i[0])
+    return float(time_s[j] + (time_s[j + 1] - time_s[j]) * (level - value[j]) / (value[j + 1] - value[j]))
+
+
+def find_events(time_s: Array, loop_rad: Array, height_m: Array) -> dict[str, float]:
+    """Times of entry, vertical up, top, vertical down and bottom of the first loop, s; those that happened.
+
+    The bottom is the lowest point after the top, found by a parabola through three samples.
+    """
+    events: dict[str, float] = {}
+    inside = np.flatnonzero(loop_rad > 0.0)
+    if inside.size:
+        events["entry"] = float(time_s[max(inside[0] - 1, 0)])
+    # a second loop starts again at zero: look at the first one only
+    again = np.flatnonzero(np.diff(loop_rad) < -3.0)
+    stop = int(again[0]) + 1 if again.size else len(time_s)
+    for name, angle in (("vertical_up", 0.5), ("top", 1.0), ("vertical_down", 1.5)):
+        t = _crossing(time_s[:stop], loop_rad[:stop], angle * np.pi)
+        if t is not None:
+            events[name] = t
+    if "top" in events:
+        i0 = int(np.searchsorted(time_s, events["top"]))
+        i = i0 + int(np.argmin(height_m[i0:]))
+        shift = 0.0
+        if i0 < i < len(time_s) - 1:
+            left, mid, right = height_m[i - 1], height_m[i], height_m[i + 1]
+            bend = left - 2.0 * mid + right
+            shift = 0.5 * (left - right) / bend if bend > 0.0 else 0.0
+        events["bottom"] = float(time_s[i] + shift * (time_s[1] - time_s[0]))
+    return events
+
+
+def to_flight(plan: Plan, raw: Raw, b: int, last: int, scale: float) -> Flight:
+    """One flight of a batch as a Flight, cut after step ``last``."""
+    y = raw.y[b, : last + 1]
+    a = raw.a[b, : last + 1]
+    time_s = np.arange(last + 1) * DT_S
+    quat_ew = y[..., r.Q0 : r.Q3 + 1]
+    alpha = y[..., r.ALPHA]
+    half = np.zeros((*alpha.shape, 4))
+    half[..., 0], half[..., 2] = np.cos(alpha / 2.0), np.sin(alpha / 2.0)
+    w, qa, qb, qc = np.moveaxis(quat_ew, -1, 0)
+    x_w = np.stack([w * w + qa * qa - qb * qb - qc * qc, 2 * (qa * qb + w * qc), 2 * (qa * qc - w * qb)], axis=-1)
+    down_y = 2.0 * (qb * qc + w * qa)
+    speed = y[..., r.V]
+    case = plan.case[0]
+    wind = np.array([case["wind_n_mps"], case["wind_e_mps"], 0.0])
+    yaw = 9.80665 * down_y / speed
+    roll = y[..., r.ROLL]
+    ca, sa = np.cos(alpha), np.sin(alpha)
+    rate_b = np.stack([roll * ca - yaw * sa, y[..., r.PITCH], roll * sa + yaw * ca], axis=-1)
+    loop = a[:, :, r.A_LOOP].copy()
+    loop[:, 1:] = np.nan
+    contact: list[float | None] = []
+    for k in range(len(plan.airframes)):
+        why, at = int(raw.status[b, k, 0]), int(raw.status[b, k, 1])
+        contact.append(_contact_time(a[:, k, r.A_AGL], at) if why == r.CONTACT and at <= last else None)
+    names = ("lead", *(slot.name for slot in plan.scene.formation))
+    fault_s = float(raw.mem[b, s.M_FAULT_S])
+    return Flight(
+        time_s=time_s, pos_e_m=y[..., r.N : r.D + 1].copy(), vel_e_mps=x_w * speed[..., None] + wind,
+        quat_eb=quat_multiply(quat_ew, half), rate_b_radps=rate_b, speed_mps=speed.copy(),
+        cas_mps=a[..., r.A_CAS].copy(), alpha_rad=alpha.copy(), load_factor=a[..., r.A_N].copy(),
+        load_factor_demand=a[..., r.A_NCMD].copy(), stick=y[..., r.STICK].copy(),
+        stick_force_n=a[..., r.A_STICK_FORCE].copy(), stabilator_rad=y[..., r.STAB].copy(),
+        thrust_n=a[..., r.A_THRUST].copy(), throttle=a[..., r.A_THROTTLE].copy(),
+        gamma_rad=np.arcsin(np.clip(-x_w[..., 2], -1.0, 1.0)), loop_angle_rad=loop, height_m=-y[..., r.D],
+        height_agl_m=a[..., r.A_AGL].copy(), step=a[:, 0, r.A_STEP].copy(), airframes=plan.airframes, names=names,
+        fault_s=fault_s if fault_s >= 0.0 else None, contact_s=tuple(contact),
+        events=find_events(time_s, a[:, 0, r.A_LOOP], -y[:, 0, r.D]), loop_scale=scale,
+    )
+
+
+def _contact_time(agl_m: Array, at: int) -> float:
+    """When the ground was met: between the last step above it and the first below, linear."""
+    if at == 0:
+        return 0.0
+    above, below = agl_m[at - 1], agl_m[at]
+    return float((at - 1 + above / max(above - below, 1e-9)) * DT_S)

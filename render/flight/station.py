@@ -1,0 +1,192 @@
+"""What a wing pilot asks for: to hold his slot on the lead, and the escape when he breaks out."""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+from numba import njit
+
+from render.flight.air import G0_MPS2
+from render.flight.kinematics import limit_demand, path_axes, path_x
+from render.flight.records import (
+    A_N,
+    A_PUSH,
+    ALPHA,
+    INTEG,
+    NDEM,
+    POWER_FULL,
+    POWER_IDLE,
+    POWER_PART,
+    ROLL,
+    Array,
+    D,
+    E,
+    N,
+    V,
+)
+from render.flight.script import throttle_for_speed
+
+# Station keeping. Engineering guesses, chosen so that a practised wing pilot holds his slot in the
+# healthy loop to a metre or two (common practice, no source): pursuit of position and closing rate,
+# a slow trim of what stays, an anticipation of the load factor he knows from the lead's nose, a delay.
+DELAY_S = 0.16  # inside the published 0.1-0.2 s of pure delay (McRuer and Krendel 1974)
+ANTICIPATE_S = 0.28
+ANTICIPATE_MAX_G = 0.4
+GAIN_POS = 0.60  # 1/s2
+GAIN_VEL = 1.30  # 1/s
+GAIN_ACC = 0.30  # his own load factor, felt, against the lead's, seen
+GAIN_TRIM = 0.08  # 1/s3
+TRIM_MAX_MPS2 = 8.0
+BANK_MAX_RAD = 0.30
+ONSET_WING_GPS = 6.0
+
+
+@njit(cache=True)
+def _between(a: Array, i: int, f: float, k: int) -> float:
+    return a[i, k] * (1.0 - f) + a[i + 1, k] * f
+
+
+@njit(cache=True)
+def slot_offset(lead: Array, aft_m: float, right_m: float, down_m: float) -> tuple[float, float, float]:
+    """The slot's place relative to the lead's centre, in earth axes, m (lead's body axes)."""
+    ax, ay, az, bx, by, bz, cx, cy, cz = path_axes(lead)
+    ca, sa = math.cos(lead[ALPHA]), math.sin(lead[ALPHA])
+    x, z = -aft_m * ca + down_m * sa, aft_m * sa + down_m * ca
+    return (
+        x * ax + right_m * bx + z * cx,
+        x * ay + right_m * by + z * cy,
+        x * az + right_m * bz + z * cz,
+    )
+
+
+@njit(cache=True)
+def wing_commands(
+    i: int, c: float, y: Array, af: Any, case: Any, slot: Array, lead_y: Array, lead_a: Array, own_y: Array,
+    own_a: Array, trim: Array, error_out: Array, dt_s: float,
+) -> tuple[float, float, float, float, int]:
+    """Load factor, onset, roll rate, throttle and limit that hold the slot.
+
+    i, c: step and part of it; slot: aft, right, down, m; lead_y (T, NY), lead_a (T, NA): the lead's
+    history; own_y (T, NY): this aircraft's own, filled up to i. What he sees is DELAY_S old. trim (3,):
+    what he has learnt to hold against, m/s2; error_out (3,): the slot's place from his own, as seen, m.
+    """
+    back = (i + c) - DELAY_S / dt_s
+    j = max(int(math.floor(back)), 0)
+    f = min(max(back - j, 0.0), 1.0)
+    lead = lead_y[j]
+    ox, oy, oz = slot_offset(lead, slot[0], slot[1], slot[2])
+    ox1, oy1, oz1 = slot_offset(lead_y[j + 1], slot[0], slot[1], slot[2])
+    ax, ay, az, bx, by, bz, cx, cy, cz = path_axes(lead)
+    own = own_y[j]
+    own1 = own_y[min(j + 1, i)]
+    e_n = (lead[N] + ox - own[N]) * (1 - f) + (lead_y[j + 1, N] + ox1 - own1[N]) * f
+    e_e = (lead[E] + oy - own[E]) * (1 - f) + (lead_y[j + 1, E] + oy1 - own1[E]) * f
+    e_d = (lead[D] + oz - own[D]) * (1 - f) + (lead_y[j + 1, D] + oz1 - own1[D]) * f
+    px, py, pz = path_x(own)
+    v_n = lead[V] * ax - own[V] * px + (ox1 - ox) / dt_s
+    v_e = lead[V] * ay - own[V] * py + (oy1 - oy) / dt_s
+    v_d = lead[V] * az - own[V] * pz + (oz1 - oz) / dt_s
+    # the lead's load factor as seen, carried on at the rate it was changing
+    h = max(int(0.2 / dt_s), 1)
+    ahead = (DELAY_S + ANTICIPATE_S) / (h * dt_s)
+    n_seen = _between(lead_a, j, f, A_N)
+    change = ahead * (n_seen - _between(lead_a, max(j - h, 0), f, A_N))
+    n_ahead = n_seen + min(max(change, -ANTICIPATE_MAX_G), ANTICIPATE_MAX_G)
+    n_felt = own_a[min(j, max(i - 1, 0)), A_N] if i > 0 else n_seen
+    pull = n_ahead + GAIN_ACC * (n_seen - n_felt)
+    push = _between(lead_a, j, f, A_PUSH)
+    # what he corrects, earth axes
+    c_n = GAIN_VEL * v_n + GAIN_POS * e_n + trim[0]
+    c_e = GAIN_VEL * v_e + GAIN_POS * e_e + trim[1]
+    c_d = GAIN_VEL * v_d + GAIN_POS * e_d + trim[2]
+    error_out[0], error_out[1], error_out[2] = e_n, e_e, e_d
+    mx, my, mz, nx, ny, nz, lx, ly, lz = path_axes(y)
+    along = push + c_n * mx + c_e * my + c_d * mz
+    # lift direction: the lead's, carried forward to now by his rate of turn, across the own path
+    turn = -(cx * mx + cy * my + cz * mz)
+    ux, uy, uz = -cx - turn * mx, -cy - turn * my, -cz - turn * mz
+    length = math.sqrt(ux * ux + uy * uy + uz * uz)
+    if length < 0.1:
+        ux, uy, uz, length = -lx, -ly, -lz, 1.0
+    ux, uy, uz = ux / length, uy / length, uz / length
+    # right-hand side of that lift direction, seen along the own path
+    rx, ry, rz = uy * mz - uz * my, uz * mx - ux * mz, ux * my - uy * mx
+    rx, ry, rz = -rx, -ry, -rz
+    up = pull + (c_n * ux + c_e * uy + c_d * uz) / G0_MPS2
+    side = (c_n * rx + c_e * ry + c_d * rz) / G0_MPS2
+    # with little lift to tilt, banking does nothing: a pilot waits
+    lift = max(abs(up), 0.8)
+    bank = min(max(math.atan2(side, lift), -BANK_MAX_RAD), BANK_MAX_RAD)
+    if up < 0.0:
+        bank = -bank
+    cb, sb = math.cos(bank), math.sin(bank)
+    wx, wy, wz = cb * ux + sb * rx, cb * uy + sb * ry, cb * uz + sb * rz
+    error = math.atan2(wx * nx + wy * ny + wz * nz, -(wx * lx + wy * ly + wz * lz))
+    roll = lead[ROLL] + 3.0 * error
+    n, limit = limit_demand(y, af, case, up / cb, 0.97 * af.cl_max)
+    throttle = throttle_for_speed(y, af, case, along + G0_MPS2 * mz)
+    return n, ONSET_WING_GPS, roll, throttle, limit
+
+
+@njit(cache=True)
+def learn_trim(trim: Array, error: Array, lead: Array, lead_before: Array, dt_s: float) -> None:
+    """Carry the trim through one step: it turns with the lead's axes and grows with what stays missed."""
+    ax, ay, az, bx, by, bz, cx, cy, cz = path_axes(lead_before)
+    x = trim[0] * ax + trim[1] * ay + trim[2] * az
+    y = trim[0] * bx + trim[1] * by + trim[2] * bz
+    z = trim[0] * cx + trim[1] * cy + trim[2] * cz
+    ax, ay, az, bx, by, bz, cx, cy, cz = path_axes(lead)
+    trim[0] = x * ax + y * bx + z * cx + GAIN_TRIM * error[0] * dt_s
+    trim[1] = x * ay + y * by + z * cy + GAIN_TRIM * error[1] * dt_s
+    trim[2] = x * az + y * bz + z * cz + GAIN_TRIM * error[2] * dt_s
+    size = math.sqrt(trim[0] ** 2 + trim[1] ** 2 + trim[2] ** 2)
+    if size > TRIM_MAX_MPS2:
+        for m in range(3):
+            trim[m] *= TRIM_MAX_MPS2 / size
+
+
+@njit(cache=True)
+def escape_commands(
+    t: float, y: Array, start: Array, n_start: float, throttle_start: float, away: float, af: Any, case: Any, esc: Any
+) -> tuple[float, float, float, float, int]:
+    """The escape: wait the delay, bring the lift toward the sky (or pull as he is), pull to the limit.
+
+    t: time since the decision; start: the state then; away: +1 if the formation is on the left
+    (bank to the right), -1 if on the right, 0 if neither.
+    """
+    power = int(esc.power_kind)
+    throttle = throttle_start
+    if power == POWER_FULL:
+        throttle = 1.0
+    elif power == POWER_IDLE:
+        throttle = 0.0
+    elif power == POWER_PART:
+        throttle = esc.power_part
+    if t < esc.delay_s:
+        return n_start, ONSET_WING_GPS, start[ROLL], throttle_start, 0
+    ax, ay, az, bx, by, bz, cx, cy, cz = path_axes(y)
+    n = esc.load_factor
+    roll = 0.0
+    if esc.roll_first > 0.5:
+        # the sky, seen across the path: up less its part along the path (up = -z of earth)
+        ux, uy, uz = az * ax, az * ay, -1.0 + az * az
+        length = math.sqrt(ux * ux + uy * uy + uz * uz)
+        if length > 0.15:
+            side = (ux * bx + uy * by + uz * bz) / length
+            up = -(ux * cx + uy * cy + uz * cz) / length
+            error = math.atan2(side, up) + away * esc.bank_away_rad
+            error = math.atan2(math.sin(error), math.cos(error))
+            roll = 4.0 * error
+            if abs(error) > 1.0:
+                # he does not pull toward the ground: unload, roll, then pull
+                n = min(n, max(0.5, n * math.cos(error)))
+    n, limit = limit_demand(y, af, case, n, 0.97 * af.cl_max)
+    return n, esc.onset_gps, roll, throttle, limit
+
+
+@njit(cache=True)
+def take_over(y: Array, n_now: float) -> None:
+    """Make a hand that was not flying by demand start from what the aircraft does now."""
+    y[NDEM] = n_now
+    y[INTEG] = 0.0
