@@ -49,6 +49,7 @@ class Flight:
     stabilator_rad: Array  # (T, K)
     thrust_n: Array  # (T, K)
     throttle: Array  # (T, K) asked, 0 idle .. 1 full
+    engine: Array  # (T, K) thrust as a part of full
     gamma_rad: Array  # (T, K) flight path angle, climb positive
     loop_angle_rad: Array  # (T, K) angle of the lead's path in the loop, 0 before it, 2 pi after; NaN for wings
     height_m: Array  # (T, K) above the field elevation datum

@@ -77,7 +77,7 @@ def fly_batch(plans: Sequence[Plan], scale: Array, steps: int, heights: Array, g
 
 
 def _bottoms(plans: Sequence[Plan], scale: Array, steps: int) -> tuple[Array, Array, Array]:
-    """Lowest height of the healthy lead after the top of his first closing loop, (B,); limits met; whether the top came.
+    """Lowest height of the healthy lead after the top of his closing loop, (B,); limits met; if the top came.
 
     Flown over a ground far below, so that a loop that would hit has a bottom too.
     """
@@ -85,7 +85,7 @@ def _bottoms(plans: Sequence[Plan], scale: Array, steps: int) -> tuple[Array, Ar
     y, a, mem, _ = fly_lead_batch(plans, scale, steps, below, np.array([0.0, 0.0, 1.0]), healthy=True)
     bottom = np.full(len(plans), np.nan)
     limit = np.zeros(len(plans))
-    topped = mem[:, s.M_TOP_S] >= 0.0
+    topped = np.asarray(mem[:, s.M_TOP_S] >= 0.0)
     for b, plan in enumerate(plans):
         if not topped[b]:
             continue
@@ -104,7 +104,7 @@ def _bottoms(plans: Sequence[Plan], scale: Array, steps: int) -> tuple[Array, Ar
             bottom[b] = mid - (right - left) ** 2 / (8.0 * bend) if bend > 0.0 else mid
         else:
             bottom[b] = h[i]
-    return bottom, limit, topped
+    return bottom, limit, topped.astype(float)
 
 
 def close_loops(plans: Sequence[Plan], longest_s: float) -> Array:
@@ -118,7 +118,7 @@ def close_loops(plans: Sequence[Plan], longest_s: float) -> Array:
     todo = np.flatnonzero(np.isfinite(goal))
     if todo.size == 0:
         return scale
-    work = [plans[i] for i in todo]
+    work = [plans[int(i)] for i in todo]
     want = goal[todo]
     steps = round(longest_s / DT_S)
     grid = np.geomspace(SCALE_LOW, SCALE_HIGH, 9)
@@ -126,11 +126,11 @@ def close_loops(plans: Sequence[Plan], longest_s: float) -> Array:
     f_lo, f_hi = np.full(todo.size, np.nan), np.full(todo.size, np.nan)
     low_seen, high_seen = np.full(todo.size, np.inf), np.full(todo.size, -np.inf)
     limits = np.zeros(todo.size)
-    topped = np.zeros(todo.size, bool)
+    topped = np.zeros(todo.size)
     for g in grid:
         f, limit, top = _bottoms(work, np.full(todo.size, g), steps)
         f = np.where(np.isfinite(f), f - want, np.nan)
-        topped |= top
+        topped = np.maximum(topped, top)
         limits = np.where(np.isfinite(f), np.maximum(limits, limit), limits)
         low_seen, high_seen = np.fmin(low_seen, f), np.fmax(high_seen, f)
         lower = (f < 0.0) & ~np.isfinite(hi)
@@ -160,8 +160,8 @@ def close_loops(plans: Sequence[Plan], longest_s: float) -> Array:
     worst = int(np.argmax(np.abs(f_best)))
     if abs(f_best[worst]) > FOOT_M:
         raise FlightError(
-            f"the loop of '{plans[todo[worst]].scene.name}' does not close within 1 ft of "
-            f"{want[worst] / FOOT_M:.0f} ft: the nearest bottom found is {(want[worst] + f_best[worst]) / FOOT_M:.1f} ft"
+            f"the loop of '{work[worst].scene.name}' does not close within 1 ft of {want[worst] / FOOT_M:.0f} ft: "
+            f"the nearest bottom found is {(want[worst] + f_best[worst]) / FOOT_M:.1f} ft"
         )
     scale[todo] = best
     return scale

@@ -85,7 +85,8 @@ def check_raw(plan: Plan, raw: Raw, b: int, which: str) -> None:
             continue
         value = {
             r.TOO_FAST: raw.a[b, last, k, r.A_CAS], r.TOO_HIGH_MACH: np.nan,
-            r.OUT_OF_AIR: plan.scene.day.field_elevation_m - raw.y[b, last, k, r.D], r.NOT_FINITE: raw.y[b, last, k, r.V],
+            r.OUT_OF_AIR: plan.scene.day.field_elevation_m - raw.y[b, last, k, r.D],
+            r.NOT_FINITE: raw.y[b, last, k, r.V],
         }[why]
         limit = {r.TOO_FAST: airframe.speed_max_mps, r.TOO_HIGH_MACH: airframe.mach_max, r.OUT_OF_AIR: 15_000.0,
                  r.NOT_FINITE: 5.0}[why]
@@ -145,7 +146,7 @@ def to_flight(plan: Plan, raw: Raw, b: int, last: int, scale: float) -> Flight:
     """One flight of a batch as a Flight, cut after step ``last``."""
     y = raw.y[b, : last + 1]
     a = raw.a[b, : last + 1]
-    time_s = np.arange(last + 1) * DT_S
+    time_s: Array = np.arange(last + 1, dtype=np.float64) * DT_S
     quat_ew = y[..., r.Q0 : r.Q3 + 1]
     alpha = y[..., r.ALPHA]
     half = np.zeros((*alpha.shape, 4))
@@ -174,7 +175,7 @@ def to_flight(plan: Plan, raw: Raw, b: int, last: int, scale: float) -> Flight:
         cas_mps=a[..., r.A_CAS].copy(), alpha_rad=alpha.copy(), load_factor=a[..., r.A_N].copy(),
         load_factor_demand=a[..., r.A_NCMD].copy(), stick=y[..., r.STICK].copy(),
         stick_force_n=a[..., r.A_STICK_FORCE].copy(), stabilator_rad=y[..., r.STAB].copy(),
-        thrust_n=a[..., r.A_THRUST].copy(), throttle=a[..., r.A_THROTTLE].copy(),
+        thrust_n=a[..., r.A_THRUST].copy(), throttle=a[..., r.A_THROTTLE].copy(), engine=y[..., r.ENGINE].copy(),
         gamma_rad=np.arcsin(np.clip(-x_w[..., 2], -1.0, 1.0)), loop_angle_rad=loop, height_m=-y[..., r.D],
         height_agl_m=a[..., r.A_AGL].copy(), step=a[:, 0, r.A_STEP].copy(), airframes=plan.airframes, names=names,
         fault_s=fault_s if fault_s >= 0.0 else None, contact_s=tuple(contact),

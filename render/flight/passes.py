@@ -192,7 +192,8 @@ def fly_lead(
         in_loop = int(script[int(mem[M_STEP]), S_KIND]) == LOOP
         if mem[M_FAULT_ON] < 0.5 and case.fault_kind > 0.5:
             before = _fault_reached(t, y, case, mem, mem[M_LOOP])
-            after = _fault_reached(t + dt_s, new, case, mem, loop_angle(new, mem) if in_loop else mem[M_LOOP])
+            angle = loop_angle(new, mem) if in_loop else mem[M_LOOP]
+            after = _fault_reached(t + dt_s, new, case, mem, angle)
             if after >= 0.0:
                 part = min(max(-before / max(after - before, 1e-12), 0.0), 1.0) if before < 0.0 else 0.0
                 mid = _lead_step(t, part * dt_s, y, af, case, mem, script, knots, coeffs, k) if part > 1e-9 else y
@@ -236,7 +237,9 @@ def fly_wing(
         out_y[i] = y
         if i > 0:
             learn_trim(trim, error, lead_y[i], lead_y[i - 1], dt_s)
-        n, onset, roll, throttle, limit = wing_commands(i, 0.0, y, af, case, slot, lead_y, lead_a, out_y, out_a, trim, error, dt_s)
+        n, onset, roll, throttle, limit = wing_commands(
+            i, 0.0, y, af, case, slot, lead_y, lead_a, out_y, out_a, trim, error, dt_s
+        )
         derivative(y, af, case, n, onset, roll, throttle, False, 0.0, True, 0.0, k[0])
         status = _note(y, out_a[i], k[0], af, case, n, roll, throttle, limit, heights, grid)
         out_a[i, A_STEP] = lead_a[i, A_STEP]
@@ -250,7 +253,9 @@ def fly_wing(
             c = 1.0 if s == 3 else 0.5
             for m in range(NY):
                 k[4, m] = y[m] + c * dt_s * k[s - 1, m]
-            n, onset, roll, throttle, _ = wing_commands(i, c, k[4], af, case, slot, lead_y, lead_a, out_y, out_a, trim, unused, dt_s)
+            n, onset, roll, throttle, _ = wing_commands(
+                i, c, k[4], af, case, slot, lead_y, lead_a, out_y, out_a, trim, unused, dt_s
+            )
             derivative(k[4], af, case, n, onset, roll, throttle, False, 0.0, True, 0.0, k[s])
         new = np.empty(NY)
         for m in range(NY):

@@ -77,7 +77,9 @@ def trim_level(airframe: Airframe, height_above_sea_m: float, temp_offset_k: flo
     return float(alpha), float(stab), float(thrust / full)
 
 
-def entry_state(airframe: Airframe, level: Level, field_elevation_m: float, temp_offset_k: float) -> tuple[Array, float]:
+def entry_state(
+    airframe: Airframe, level: Level, field_elevation_m: float, temp_offset_k: float
+) -> tuple[Array, float]:
     """Trimmed state (NY,) at the start of the script, at the origin, and the trimmed stabilator angle."""
     assert level.speed_mps is not None and level.height_m is not None and level.heading_rad is not None
     above_sea = field_elevation_m + level.height_m
@@ -115,7 +117,8 @@ def script_table(scene: Scene) -> tuple[Array, Array, Array, float]:
             x = np.array(step.angle_rad)
             n = np.array(step.load_factor)
             # the demand holds its first and last value outside the knots
-            pieces = PchipInterpolator(x, n).c.T if len(x) > 2 else np.array([[0.0, 0.0, (n[1] - n[0]) / (x[1] - x[0]), n[0]]])
+            straight = np.array([[0.0, 0.0, (n[1] - n[0]) / (x[1] - x[0]), n[0]]])
+            pieces = PchipInterpolator(x, n).c.T if len(x) > 2 else straight
             k = np.full(MAX_KNOTS, x[-1])
             k[: len(x)] = x
             k[len(x) :] = x[-1] + np.arange(1, MAX_KNOTS - len(x) + 1)
@@ -127,13 +130,16 @@ def script_table(scene: Scene) -> tuple[Array, Array, Array, float]:
             coeffs.append(c)
             longest += 75.0
         elif isinstance(step, Roll):
-            row[s.S_KIND], row[s.S_ANGLE], row[s.S_RATE], row[s.S_LOAD] = r.ROLL_STEP, step.angle_rad, step.rate_radps, step.load_factor
+            row[s.S_KIND], row[s.S_ANGLE], row[s.S_RATE] = r.ROLL_STEP, step.angle_rad, step.rate_radps
+            row[s.S_LOAD] = step.load_factor
             longest += abs(step.angle_rad) / step.rate_radps + 3.0
         elif isinstance(step, Climb):
-            row[s.S_KIND], row[s.S_ANGLE], row[s.S_LOAD], row[s.S_FOR] = r.CLIMB, step.angle_rad, step.load_factor, step.for_s
+            row[s.S_KIND], row[s.S_ANGLE] = r.CLIMB, step.angle_rad
+            row[s.S_LOAD], row[s.S_FOR] = step.load_factor, step.for_s
             longest += step.for_s
         elif isinstance(step, Dive):
-            row[s.S_KIND], row[s.S_ANGLE], row[s.S_LOAD], row[s.S_FOR] = r.DIVE, step.angle_rad, step.load_factor, step.for_s
+            row[s.S_KIND], row[s.S_ANGLE] = r.DIVE, step.angle_rad
+            row[s.S_LOAD], row[s.S_FOR] = step.load_factor, step.for_s
             longest += step.for_s
         elif isinstance(step, PullOut):
             row[s.S_KIND], row[s.S_LOAD] = r.PULL_OUT, step.load_factor

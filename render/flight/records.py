@@ -20,7 +20,8 @@ N, E, D, V, Q0, Q1, Q2, Q3, ALPHA, PITCH, ROLL, STAB, ENGINE, STICK, INTEG, NDEM
 NY = 18
 
 # What a step writes beside the state.
-(A_N, A_STICK_FORCE, A_THRUST, A_THROTTLE, A_CAS, A_LOOP, A_STEP, A_AGL, A_PUSH, A_NCMD, A_ROLL_CMD, A_LIMIT) = range(12)
+(A_N, A_STICK_FORCE, A_THRUST, A_THROTTLE, A_CAS, A_LOOP, A_STEP, A_AGL, A_PUSH, A_NCMD, A_ROLL_CMD,
+ A_LIMIT) = range(12)
 NA = 12
 
 # Limits that held the demand back (A_LIMIT).

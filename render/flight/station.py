@@ -72,12 +72,12 @@ def wing_commands(
     what he has learnt to hold against, m/s2; error_out (3,): the slot's place from his own, as seen, m.
     """
     back = (i + c) - DELAY_S / dt_s
-    j = max(int(math.floor(back)), 0)
+    j = max(math.floor(back), 0)
     f = min(max(back - j, 0.0), 1.0)
     lead = lead_y[j]
     ox, oy, oz = slot_offset(lead, slot[0], slot[1], slot[2])
     ox1, oy1, oz1 = slot_offset(lead_y[j + 1], slot[0], slot[1], slot[2])
-    ax, ay, az, bx, by, bz, cx, cy, cz = path_axes(lead)
+    ax, ay, az, _bx, _by, _bz, cx, cy, cz = path_axes(lead)
     own = own_y[j]
     own1 = own_y[min(j + 1, i)]
     e_n = (lead[N] + ox - own[N]) * (1 - f) + (lead_y[j + 1, N] + ox1 - own1[N]) * f

@@ -132,7 +132,8 @@ offsets = st.floats(-40.0, 40.0)
 @given(heights)
 def test_geopotential_and_back(height: float) -> None:
     assert air.geometric(air.geopotential(height)) == pytest.approx(height, rel=1e-12, abs=1e-9)
-    assert air.geopotential(height) <= height
+    # one rounding of the last digit is allowed: near zero the two are equal but for it
+    assert air.geopotential(height) <= height + 1e-15 * abs(height)
 
 
 @given(heights, offsets, st.floats(1.0, 0.95 * 295.0))

@@ -83,6 +83,7 @@ def made_up_flight(freeze_s: float | None) -> Flight:
         speed_mps=zero + SPEED_MPS, cas_mps=each(115.0 + 20.0 * np.cos(angle)), alpha_rad=zero + 0.05,
         load_factor=each(np.cos(angle) + SPEED_MPS * RATE / 9.80665), load_factor_demand=zero + 3.0,
         stick=zero, stick_force_n=zero, stabilator_rad=zero, thrust_n=zero + 15e3, throttle=zero + 1.0,
+        engine=zero + 1.0,
         gamma_rad=each(np.arcsin(np.sin(angle))), loop_angle_rad=loop, height_m=-pos[..., 2].copy(),
         height_agl_m=-pos[..., 2].copy(), step=np.where(time < RUN_S, 0.0, 1.0), airframes=(AIRFRAME,) * k,
         names=NAMES, fault_s=freeze_s, contact_s=(contact,) * k, events=events, loop_scale=1.0,

@@ -101,7 +101,7 @@ def planar(
         rate_b_radps=np.stack([zero, q, zero], axis=-1), speed_mps=np.full(shape, speed_mps),
         cas_mps=np.full(shape, speed_mps), alpha_rad=zero.copy(), load_factor=n, load_factor_demand=demands,
         stick=zero.copy(), stick_force_n=forces, stabilator_rad=zero.copy(), thrust_n=zero.copy(),
-        throttle=zero.copy(), gamma_rad=gamma, loop_angle_rad=zero.copy(), height_m=height,
+        throttle=zero.copy(), engine=zero.copy(), gamma_rad=gamma, loop_angle_rad=zero.copy(), height_m=height,
         height_agl_m=height.copy(), step=np.zeros(t.size), airframes=(AIRFRAME,) * k_count,
         names=("lead", *[f"slot{k}" for k in range(1, k_count)]), fault_s=fault_s, contact_s=tuple(contact),
         events={}, loop_scale=1.0,

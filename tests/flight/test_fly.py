@@ -1,0 +1,133 @@
+"""A whole scene flown: the loop closes, the twins part only at the fault, mirrors mirror, batches equal singles."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+
+from render.errors import FlightError
+from render.flight.batch import close_loops, fly_batch
+from render.flight.fly import fly_scene, ground_arrays
+from render.flight.plan import compile_scene
+from render.study import work_through
+from render.types import OBSERVERS, Flight, Study
+from scenes.model import Slot
+from tests.flight.made import FT, KT, flat_ground, freeze, invented_jet, loop_scene
+
+
+@pytest.fixture(scope="module")
+def hero() -> Study:
+    return work_through(loop_scene(freeze(245.0)), lambda _: invented_jet(), flat_ground(), "")
+
+
+def test_the_healthy_loop_closes_within_a_foot(hero: Study) -> None:
+    bottom = np.interp(hero.healthy.events["bottom"], hero.healthy.time_s, hero.healthy.height_m[:, 0])
+    assert abs(bottom - 300 * FT) < 1.0 * FT
+
+
+def test_a_display_loop_near_385_kt_has_the_size_and_speeds_of_the_trade(hero: Study) -> None:
+    # common practice, no source: entered near 385 kt a loop tops out well above 4,500 ft up
+    h = hero.healthy
+    rise = np.interp(h.events["top"], h.time_s, h.height_m[:, 0]) - h.height_m[0, 0]
+    assert 4500 * FT < rise < 7000 * FT
+
+
+def test_twins_are_one_flight_until_the_fault(hero: Study) -> None:
+    before = hero.healthy.time_s <= hero.faulted.fault_s
+    assert np.array_equal(hero.healthy.pos_e_m[before], hero.faulted.pos_e_m[before])
+
+
+def test_with_a_frozen_surface_speed_load_factor_and_pitch_rate_go_on_rising(hero: Study) -> None:
+    f = hero.faulted
+    dive = (f.time_s > f.fault_s + 0.8) & (f.time_s < f.contact_s[0] - 0.1)
+    assert np.all(np.diff(f.load_factor[dive, 0]) > 0.0)
+    assert np.all(np.diff(f.cas_mps[dive, 0]) > 0.0)
+    assert f.rate_b_radps[dive, 0, 1][-1] > f.rate_b_radps[dive, 0, 1][0]
+    frozen = f.stabilator_rad[f.time_s > f.fault_s + 0.05, 0]
+    assert np.ptp(frozen) == 0.0
+
+
+def test_the_hero_is_contact_and_too_late_even_for_the_early_observer(hero: Study) -> None:
+    slot = hero.verdict["slots"]["right"]
+    assert hero.verdict["lead"]["contact_time_s"] is not None
+    assert slot["lateness_s"]["early"] > 0.0
+    times = [slot["notice"][o]["time_s"] for o in OBSERVERS]
+    assert hero.faulted.fault_s < times[0] <= times[1] <= times[2]
+
+
+def test_wings_hold_their_slots_in_the_healthy_loop_to_three_metres(hero: Study) -> None:
+    # common practice, no source: formation scatter of a practised pilot is a metre or few
+    from render.frames import quat_conj, quat_rotate
+
+    h = hero.healthy
+    for k, slot in enumerate(hero.scene.formation, start=1):
+        place = quat_rotate(quat_conj(h.quat_eb[:, 0]), h.pos_e_m[:, k] - h.pos_e_m[:, 0])
+        missed = place - np.array([-slot.aft_m, slot.right_m, slot.down_m])
+        assert np.max(np.abs(missed)) < 3.0
+
+
+def test_a_mirrored_formation_mirrors(hero: Study) -> None:
+    right, left = hero.verdict["slots"]["right"], hero.verdict["slots"]["left"]
+    assert right["last_pull_s"] == pytest.approx(left["last_pull_s"], abs=1e-6)
+    for observer in OBSERVERS:
+        assert right["notice"][observer]["time_s"] == pytest.approx(left["notice"][observer]["time_s"], abs=1e-6)
+
+
+def test_a_batch_equals_its_single_flights() -> None:
+    heights, grid = ground_arrays(flat_ground())
+    plans = [compile_scene(loop_scene(freeze(a)), (invented_jet(),) * 3) for a in np.linspace(200.0, 300.0, 8)]
+    scale = np.ones(len(plans))
+    together = fly_batch(plans, scale, 1500, heights, grid, healthy=False)
+    for i, plan in enumerate(plans):
+        alone = fly_batch([plan], scale[:1], 1500, heights, grid, healthy=False)
+        assert np.max(np.abs(together.y[i] - alone.y[0])) < 1e-9
+
+
+def test_a_slower_base_scales_the_back_half_monotonically() -> None:
+    plans = [compile_scene(loop_scene(close_ft=f, slots=()), (invented_jet(),)) for f in (300.0, 600.0, 900.0)]
+    scale = close_loops(plans, plans[0].longest_s)
+    assert np.all(np.diff(scale) > 0.0)
+
+
+def test_a_loop_that_cannot_close_says_what_is_reachable() -> None:
+    with pytest.raises(FlightError, match=r"can't close at 20000 ft: .* are reachable; limited by"):
+        fly_scene(loop_scene(close_ft=20000.0), lambda _: invented_jet(), flat_ground())
+
+
+def test_a_loop_without_the_speed_says_that_the_top_is_never_reached() -> None:
+    with pytest.raises(FlightError, match="never reaches its top"):
+        fly_scene(loop_scene(kt=200.0), lambda _: invented_jet(), flat_ground())
+
+
+def test_a_fault_point_that_is_never_reached_is_an_error() -> None:
+    from scenes.model import Fault, Point
+
+    with pytest.raises(FlightError, match="height 20000 ft going down is not passed"):
+        fly_scene(loop_scene(Fault("freeze", Point("height", 20000 * FT, "up"))), lambda _: invented_jet(),
+                  flat_ground())
+
+
+def test_energy_balances_thrust_and_drag_work() -> None:
+    from render.flight import records as r
+
+    heights, grid = ground_arrays(flat_ground())
+    plan = compile_scene(loop_scene(slots=()), (invented_jet(),))
+    raw = fly_batch([plan], np.ones(1), 1500, heights, grid, healthy=True)
+    y = raw.y[0, :, 0]
+    energy = 5300.0 * (0.5 * y[:, r.V] ** 2 - 9.80665 * y[:, r.D])
+    work = y[:, r.WORK_T] - y[:, r.WORK_D]
+    # closed form: the change of total energy is the work of thrust along the path less that of drag
+    assert np.max(np.abs(energy - energy[0] - work)) < 1e-4 * np.max(np.abs(y[:, r.WORK_T]))
+
+
+def test_a_slot_in_trail_and_one_in_box_are_held() -> None:
+    slots = (Slot("trail", 30.0, 0.0, 4.0), Slot("echelon", 8.0, 12.0, 1.0), Slot("box", 22.0, 0.0, 3.0))
+    healthy, _, _ = fly_scene(loop_scene(slots=slots), lambda _: invented_jet(), flat_ground())
+    assert isinstance(healthy, Flight)
+    from render.frames import quat_conj, quat_rotate
+
+    for k, slot in enumerate(slots, start=1):
+        place = quat_rotate(quat_conj(healthy.quat_eb[:, 0]), healthy.pos_e_m[:, k] - healthy.pos_e_m[:, 0])
+        missed = place - np.array([-slot.aft_m, slot.right_m, slot.down_m])
+        assert np.max(np.abs(missed)) < 5.0
+    assert healthy.cas_mps[0, 0] == pytest.approx(388 * KT, rel=1e-6)
