@@ -102,7 +102,7 @@ def test_a_loop_without_the_speed_says_that_the_top_is_never_reached() -> None:
 def test_a_fault_point_that_is_never_reached_is_an_error() -> None:
     from scenes.model import Fault, Point
 
-    with pytest.raises(FlightError, match="height 20000 ft going down is not passed"):
+    with pytest.raises(FlightError, match="height 20000 ft going up is not passed"):
         fly_scene(loop_scene(Fault("freeze", Point("height", 20000 * FT, "up"))), lambda _: invented_jet(),
                   flat_ground())
 
@@ -120,8 +120,8 @@ def test_energy_balances_thrust_and_drag_work() -> None:
     assert np.max(np.abs(energy - energy[0] - work)) < 1e-4 * np.max(np.abs(y[:, r.WORK_T]))
 
 
-def test_a_slot_in_trail_and_one_in_box_are_held() -> None:
-    slots = (Slot("trail", 30.0, 0.0, 4.0), Slot("echelon", 8.0, 12.0, 1.0), Slot("box", 22.0, 0.0, 3.0))
+def test_echelon_vic_and_box_slots_are_held() -> None:
+    slots = (Slot("echelon", 8.0, 12.0, 1.0), Slot("vic", 8.0, -12.0, 0.0), Slot("box", 14.0, 0.0, 3.0))
     healthy, _, _ = fly_scene(loop_scene(slots=slots), lambda _: invented_jet(), flat_ground())
     assert isinstance(healthy, Flight)
     from render.frames import quat_conj, quat_rotate

@@ -1,0 +1,245 @@
+"""The command line: ``latepull check|fly|film|still|list|schema|doctor``. Printing and exit codes live here alone.
+
+Exit 0 done, 2 the input is wrong, 3 this machine can't, 130 interrupted.
+"""
+
+from __future__ import annotations
+
+import argparse
+import json
+import os
+import sys
+import time
+from collections.abc import Callable, Sequence
+from pathlib import Path
+from typing import Any
+
+CAUTION = (
+    "A training illustration, not a clearance. The authority's rules, the aircraft's manual and licensed practice "
+    "come first."
+)
+
+
+def build_parser() -> argparse.ArgumentParser:
+    """The command line's parser."""
+    parser = argparse.ArgumentParser(prog="latepull", description=__doc__.splitlines()[0] if __doc__ else None,
+                                     epilog=CAUTION)
+    parser.add_argument("--json", action="store_true", help="print what a program reads")
+    commands = parser.add_subparsers(dest="command", required=True)
+
+    def add(name: str, help_text: str) -> argparse.ArgumentParser:
+        sub = commands.add_parser(name, help=help_text, epilog=CAUTION)
+        sub.add_argument("--json", action="store_true", default=argparse.SUPPRESS, help="print what a program reads")
+        return sub
+
+    for name, text in (("check", "read a scene and report all its faults"),
+                       ("fly", "fly a scene and print its table"),
+                       ("film", "film what a wing pilot sees"), ("still", "draw one instant")):
+        sub = add(name, text)
+        sub.add_argument("scene", metavar="SCENE", nargs="+" if name == "check" else None,
+                         help="a shipped name or a path")
+        if name == "check":
+            continue
+        sub.add_argument("--out", type=Path, help="output file or folder (default under out/)")
+        sub.add_argument("--force", action="store_true", help="replace an output that is there")
+        if name in ("film", "still"):
+            sub.add_argument("--slot", help="whose eye (default: the scene's)")
+            sub.add_argument("--draft", action="store_true", help="half size, half rate")
+            sub.add_argument("--plain", action="store_true", help="no overlay")
+        if name == "film":
+            sub.add_argument("--from", dest="start_s", type=float, metavar="S", help="first second of the script")
+            sub.add_argument("--to", dest="end_s", type=float, metavar="S", help="last second of the script")
+        if name == "still":
+            sub.add_argument("--at", dest="at_s", type=float, metavar="S", help="second of the script")
+            sub.add_argument("--key-moments", action="store_true", help="one still for each key moment")
+    add("list", "list shipped scenes and airframes")
+    add("schema", "print the JSON Schema of the scene file")
+    add("doctor", "can this machine draw and encode")
+    return parser
+
+
+def progress_bar() -> Callable[[int, int], None] | None:
+    """A progress bar with time left on stderr, or None where nobody watches."""
+    if not sys.stderr.isatty():
+        return None
+    begun = time.monotonic()
+
+    def show(done: int, total: int) -> None:
+        spent = time.monotonic() - begun
+        left = spent / done * (total - done) if done else 0.0
+        bar = "#" * int(30 * done / max(total, 1))
+        end = "\n" if done >= total else ""
+        sys.stderr.write(f"\r[{bar:<30}] {done}/{total} frames, {left:4.0f} s left {end}")
+        sys.stderr.flush()
+
+    return show
+
+
+def _study(name: str, folder: Path) -> Any:
+    """The study of a scene: the saved one if its scene is unchanged, else flown now and saved."""
+    from scenes.reader import read_airframe, read_scene, scene_text
+
+    from render.study import work_through
+    from render.study_io import StudyError, load_study, save_study
+    from terrain.ground import read_ground
+
+    scene, text = read_scene(name), scene_text(name)
+    try:
+        return load_study(folder, scene_text=text)
+    except StudyError:
+        study = work_through(scene, read_airframe, read_ground(scene.ground, scene.seed), text)
+        save_study(study, folder)
+        return study
+
+
+def _fly(args: argparse.Namespace) -> int:
+    from scenes.reader import read_airframe, read_scene, scene_text
+
+    from render.output.tables import study_table, write_tables
+    from render.study import work_through
+    from render.study_io import save_study
+    from terrain.ground import read_ground
+
+    scene = read_scene(args.scene)
+    folder = args.out or Path("out") / scene.name
+    study = work_through(scene, read_airframe, read_ground(scene.ground, scene.seed), scene_text(args.scene))
+    # the default folder is the tool's own; a named one is kept unless --force
+    paths = write_tables(study, folder, force=args.force or args.out is None)
+    save_study(study, folder)
+    if args.json:
+        print(json.dumps(dict(study.verdict), default=float))
+    else:
+        print(study_table(study))
+        print(f"\nwritten: {', '.join(str(p) for p in paths)}")
+    return 0
+
+
+def _slot(study: Any, wanted: str | None) -> str:
+    from render.errors import LatepullError
+
+    slot: str = wanted or study.scene.film.slot
+    if slot not in study.faulted.names:
+        raise LatepullError(f"--slot: read {slot}, wanted one of {', '.join(study.faulted.names)}")
+    return slot
+
+
+def _film(args: argparse.Namespace) -> int:
+    from scenes.reader import read_scene
+
+    from render.output.film import write_film
+    from render.output.shot import plan_shot
+
+    folder = Path("out") / read_scene(args.scene).name
+    study = _study(args.scene, folder)
+    slot = _slot(study, args.slot)
+    kind = "_draft" if args.draft else ""
+    target = args.out or folder / f"{slot}{kind}.mp4"
+    shot = plan_shot(study, slot, start_s=args.start_s, end_s=args.end_s, draft=args.draft)
+    path = write_film(study, slot, target, shot=shot, overlay=not args.plain, force=args.force,
+                      progress=progress_bar())
+    _say(args, {"film": str(path), "frames": len(shot)}, f"{path}: {len(shot)} frames")
+    return 0
+
+
+def _still(args: argparse.Namespace) -> int:
+    from scenes.reader import read_scene
+
+    from render.output.stills import write_key_stills, write_still
+
+    folder = Path("out") / read_scene(args.scene).name
+    study = _study(args.scene, folder)
+    slot = _slot(study, args.slot)
+    plan = study.scene.film
+    size = (plan.width_px // 4 * 2, plan.height_px // 4 * 2) if args.draft else None
+    if args.key_moments:
+        paths = write_key_stills(study, slot, args.out or folder, size_px=size, force=args.force)
+        _say(args, {"stills": [str(p) for p in paths]}, "\n".join(str(p) for p in paths))
+        return 0
+    fault_s = study.faulted.fault_s
+    at = args.at_s if args.at_s is not None else (fault_s if fault_s is not None else study.faulted.events["top"])
+    path = write_still(study, slot, at, args.out or folder / f"{slot}_{at:.1f}s.png", size_px=size,
+                       overlay=not args.plain, force=args.force)
+    _say(args, {"still": str(path), "time_s": at}, str(path))
+    return 0
+
+
+def _say(args: argparse.Namespace, data: dict[str, Any], words: str) -> None:
+    print(json.dumps({**data, "caution": CAUTION}) if args.json else f"{words}\n{CAUTION}")
+
+
+def _check(args: argparse.Namespace) -> int:
+    from scenes.reader import read_scene
+
+    titles = {name: read_scene(name).title for name in args.scene}
+    _say(args, {"scenes": titles}, "\n".join(f"{name}: no faults found ({title})" for name, title in titles.items()))
+    return 0
+
+
+def _list(args: argparse.Namespace) -> int:
+    from scenes.reader import airframe_names, read_scene, scene_names
+
+    scenes = {name: read_scene(name).title for name in scene_names()}
+    lines = [f"  {name:<24} {title}" for name, title in scenes.items()]
+    words = "\n".join(["Scenes:", *lines, "Airframes:", *(f"  {name}" for name in airframe_names())])
+    _say(args, {"scenes": scenes, "airframes": list(airframe_names())}, words)
+    return 0
+
+
+def _schema(args: argparse.Namespace) -> int:
+    from scenes.schema import scene_schema
+
+    print(json.dumps(scene_schema(), indent=2))
+    return 0
+
+
+def _doctor(args: argparse.Namespace) -> int:
+    from importlib.metadata import version
+
+    from render.errors import MachineError
+    from render.output.encode import encoder_path
+    from render.picture.probe import probe_drawing
+
+    lines = [f"Python {sys.version.split()[0]}"]
+    lines += [f"{name} {version(name)}" for name in ("numpy", "scipy", "numba", "pyvista", "imageio", "PyYAML")]
+    good = True
+    try:
+        lines.append(f"encoder: {encoder_path()}")
+    except MachineError as exc:
+        good = False
+        lines.append(str(exc))
+    report = probe_drawing()
+    lines.append(f"drawing: {report}")
+    good = good and bool(getattr(report, "ok", False))
+    lines.append("The first flight compiles the flight code, about half a minute, once.")
+    _say(args, {"ok": good, "report": lines}, "\n".join(lines))
+    return 0 if good else 3
+
+
+COMMANDS: dict[str, Callable[[argparse.Namespace], int]] = {
+    "check": _check, "fly": _fly, "film": _film, "still": _still, "list": _list, "schema": _schema, "doctor": _doctor,
+}
+
+
+def main(argv: Sequence[str] | None = None) -> int:
+    """Run one command; returns the exit code."""
+    args = build_parser().parse_args(argv)
+    try:
+        return COMMANDS[args.command](args)
+    except KeyboardInterrupt:
+        print("interrupted; nothing half-made is left", file=sys.stderr)
+        return 130
+    except Exception as exc:
+        code = getattr(exc, "exit_code", None)
+        if isinstance(exc, OSError) and code is None:
+            print(f"{exc.filename or 'file'}: {exc.strerror or exc}", file=sys.stderr)
+            return 2
+        if code is None or os.environ.get("LATEPULL_DEBUG"):
+            raise
+        if args.json:
+            print(json.dumps({"error": str(exc), "exit_code": code}))
+        print(str(exc), file=sys.stderr)
+        return int(code)
+
+
+if __name__ == "__main__":
+    sys.exit(main())
