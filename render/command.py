@@ -77,10 +77,9 @@ def progress_bar() -> Callable[[int, int], None] | None:
 
 def _study(name: str, folder: Path) -> Any:
     """The study of a scene: the saved one if its scene is unchanged, else flown now and saved."""
-    from scenes.reader import read_airframe, read_scene, scene_text
-
     from render.study import work_through
     from render.study_io import StudyError, load_study, save_study
+    from scenes.reader import read_airframe, read_scene, scene_text
     from terrain.ground import read_ground
 
     scene, text = read_scene(name), scene_text(name)
@@ -93,11 +92,10 @@ def _study(name: str, folder: Path) -> Any:
 
 
 def _fly(args: argparse.Namespace) -> int:
-    from scenes.reader import read_airframe, read_scene, scene_text
-
     from render.output.tables import study_table, write_tables
     from render.study import work_through
     from render.study_io import save_study
+    from scenes.reader import read_airframe, read_scene, scene_text
     from terrain.ground import read_ground
 
     scene = read_scene(args.scene)
@@ -124,10 +122,9 @@ def _slot(study: Any, wanted: str | None) -> str:
 
 
 def _film(args: argparse.Namespace) -> int:
-    from scenes.reader import read_scene
-
     from render.output.film import write_film
     from render.output.shot import plan_shot
+    from scenes.reader import read_scene
 
     folder = Path("out") / read_scene(args.scene).name
     study = _study(args.scene, folder)
@@ -142,9 +139,8 @@ def _film(args: argparse.Namespace) -> int:
 
 
 def _still(args: argparse.Namespace) -> int:
-    from scenes.reader import read_scene
-
     from render.output.stills import write_key_stills, write_still
+    from scenes.reader import read_scene
 
     folder = Path("out") / read_scene(args.scene).name
     study = _study(args.scene, folder)

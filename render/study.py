@@ -10,7 +10,6 @@ from typing import Any
 import numba
 import numpy as np
 import scipy
-from terrain.ground import Ground
 
 from render.flight.fly import fly_scene, ground_arrays
 from render.flight.plan import Plan
@@ -20,6 +19,7 @@ from render.sight.notice import notice_all
 from render.types import OBSERVERS, Flight, Margin, Notice, Study
 from scenes.airframe import Airframe
 from scenes.model import Scene
+from terrain.ground import Ground
 
 CAUTION = (
     "A training illustration, not a clearance. The authority's rules, the aircraft's manual and licensed practice "

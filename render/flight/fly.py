@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Callable
 
 import numpy as np
-from terrain.ground import Ground
 
 from render.errors import FlightError
 from render.flight import records as r
@@ -16,6 +15,7 @@ from render.frames import Array, quat_multiply
 from render.types import Flight
 from scenes.airframe import Airframe
 from scenes.model import Scene
+from terrain.ground import Ground
 
 AFTER_SCRIPT_S = 15.0  # a faulted lead may need longer than the script
 _WHY = {

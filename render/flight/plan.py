@@ -209,14 +209,10 @@ def compile_scene(scene: Scene, airframes: tuple[Airframe, ...]) -> Plan:
     entry = np.array(states)
     slots = np.array([[sl.aft_m, sl.right_m, sl.down_m] for sl in scene.formation]).reshape(-1, 3)
     heading = first.heading_rad or 0.0
-    alpha = entry[0, r.ALPHA]
     for k, (aft, right, down) in enumerate(slots, start=1):
-        # the slot is in the lead's body axes: turn it by his trimmed angle of attack
-        x = -aft * math.cos(alpha) + down * math.sin(alpha)
-        z = aft * math.sin(alpha) + down * math.cos(alpha)
-        entry[k, r.N] = x * math.cos(heading) - right * math.sin(heading)
-        entry[k, r.E] = x * math.sin(heading) + right * math.cos(heading)
-        entry[k, r.D] += z
+        entry[k, r.N] = -aft * math.cos(heading) - right * math.sin(heading)
+        entry[k, r.E] = -aft * math.sin(heading) + right * math.cos(heading)
+        entry[k, r.D] += down
         entry[k, r.V] = entry[0, r.V]
     table, knots, coeffs, longest = script_table(scene)
     return Plan(scene, airframes, np.concatenate(recs), case, entry, table, knots, coeffs, slots,

@@ -39,6 +39,7 @@ NS = 10
 GAIN_PATH = 1.0  # 1/s, flight path angle held by the lead
 GAIN_HEIGHT = 0.25  # 1/s, sink asked per metre of height missed
 GAIN_ROLL = 2.5  # 1/s
+LEVEL_N_MIN, LEVEL_N_MAX = 0.6, 3.0  # what a lead asks of his formation in level flight (common practice, no source)
 GAIN_SPEED = 0.6  # 1/s, acceleration asked per m/s of speed missed
 
 
@@ -111,7 +112,7 @@ def lead_commands(
     if kind == LEVEL:
         sink = min(max(GAIN_HEIGHT * (mem[M_HEIGHT] - height), -15.0), 15.0)
         n = path_demand(y, math.asin(min(max(sink / y[V], -0.5), 0.5)))
-        n = min(max(n, 0.0), 3.0)
+        n = min(max(n, LEVEL_N_MIN), LEVEL_N_MAX)
     elif kind == LOOP:
         k = int(row[S_SCHEDULE])
         n = scheduled(loop_angle(y, mem), knots[k], coeffs[k], case.loop_scale)

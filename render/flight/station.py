@@ -12,7 +12,7 @@ from render.flight.kinematics import limit_demand, path_axes, path_x
 from render.flight.records import (
     A_N,
     A_PUSH,
-    ALPHA,
+    ENGINE,
     INTEG,
     NDEM,
     POWER_FULL,
@@ -39,6 +39,7 @@ GAIN_ACC = 0.30  # his own load factor, felt, against the lead's, seen
 GAIN_TRIM = 0.08  # 1/s3
 TRIM_MAX_MPS2 = 8.0
 BANK_MAX_RAD = 0.30
+THROTTLE_LEAD = 2.5
 ONSET_WING_GPS = 6.0
 
 
@@ -48,16 +49,33 @@ def _between(a: Array, i: int, f: float, k: int) -> float:
 
 
 @njit(cache=True)
-def slot_offset(lead: Array, aft_m: float, right_m: float, down_m: float) -> tuple[float, float, float]:
-    """The slot's place relative to the lead's centre, in earth axes, m (lead's body axes)."""
-    ax, ay, az, bx, by, bz, cx, cy, cz = path_axes(lead)
-    ca, sa = math.cos(lead[ALPHA]), math.sin(lead[ALPHA])
-    x, z = -aft_m * ca + down_m * sa, aft_m * sa + down_m * ca
-    return (
-        x * ax + right_m * bx + z * cx,
-        x * ay + right_m * by + z * cy,
-        x * az + right_m * bz + z * cz,
-    )
+def slot_place(lead_y: Array, case: Any, row: float, dt_s: float, slot: Array) -> tuple[float, float, float]:
+    """Where the slot is at a (fractional) step of the lead's history, earth axes, m.
+
+    slot: aft, right, down, m. The aft distance is measured back along the path the lead has flown through
+    the air, right and down across it: a wing pilot astern follows the lead through the same air, he is not
+    bolted to his tail (common practice, no source). Before the history begins the lead flew straight on.
+    """
+    at = min(max(row, 0.0), lead_y.shape[0] - 1.0)
+    j = min(int(at), lead_y.shape[0] - 2)
+    f = at - j
+    lag_s = max(slot[0], 0.0) / (lead_y[j, V] * (1.0 - f) + lead_y[j + 1, V] * f)
+    back = row - lag_s / dt_s
+    at = min(max(back, 0.0), lead_y.shape[0] - 1.0)
+    j = min(int(at), lead_y.shape[0] - 2)
+    f = at - j
+    beyond_s = (back - at) * dt_s  # negative: before the history begins
+    out_n, out_e, out_d = 0.0, 0.0, 0.0
+    for i in range(2):
+        part = f if i == 1 else 1.0 - f
+        lead = lead_y[j + i]
+        ax, ay, az, bx, by, bz, cx, cy, cz = path_axes(lead)
+        ahead = lead[V] * beyond_s - min(slot[0], 0.0)
+        out_n += part * (lead[N] + ahead * ax + slot[1] * bx + slot[2] * cx)
+        out_e += part * (lead[E] + ahead * ay + slot[1] * by + slot[2] * cy)
+        out_d += part * (lead[D] + ahead * az + slot[1] * bz + slot[2] * cz)
+    drift_s = lag_s + beyond_s
+    return out_n + drift_s * case.wind_n_mps, out_e + drift_s * case.wind_e_mps, out_d
 
 
 @njit(cache=True)
@@ -71,31 +89,41 @@ def wing_commands(
     history; own_y (T, NY): this aircraft's own, filled up to i. What he sees is DELAY_S old. trim (3,):
     what he has learnt to hold against, m/s2; error_out (3,): the slot's place from his own, as seen, m.
     """
-    back = (i + c) - DELAY_S / dt_s
-    j = max(math.floor(back), 0)
-    f = min(max(back - j, 0.0), 1.0)
-    lead = lead_y[j]
-    ox, oy, oz = slot_offset(lead, slot[0], slot[1], slot[2])
-    ox1, oy1, oz1 = slot_offset(lead_y[j + 1], slot[0], slot[1], slot[2])
-    ax, ay, az, _bx, _by, _bz, cx, cy, cz = path_axes(lead)
-    own = own_y[j]
-    own1 = own_y[min(j + 1, i)]
-    e_n = (lead[N] + ox - own[N]) * (1 - f) + (lead_y[j + 1, N] + ox1 - own1[N]) * f
-    e_e = (lead[E] + oy - own[E]) * (1 - f) + (lead_y[j + 1, E] + oy1 - own1[E]) * f
-    e_d = (lead[D] + oz - own[D]) * (1 - f) + (lead_y[j + 1, D] + oz1 - own1[D]) * f
+    now = i + c
+    seen = max(now - DELAY_S / dt_s, 0.0)
+    j = int(seen)
+    f = seen - j
+    own, own1 = own_y[j], own_y[min(j + 1, i)]
+    s_n, s_e, s_d = slot_place(lead_y, case, seen, dt_s, slot)
+    e_n = s_n - own[N] * (1.0 - f) - own1[N] * f
+    e_e = s_e - own[E] * (1.0 - f) - own1[E] * f
+    e_d = s_d - own[D] * (1.0 - f) - own1[D] * f
+    # the slot's own motion, from what has been seen of it
+    b_n, b_e, b_d = slot_place(lead_y, case, seen - 1.0, dt_s, slot)
     px, py, pz = path_x(own)
-    v_n = lead[V] * ax - own[V] * px + (ox1 - ox) / dt_s
-    v_e = lead[V] * ay - own[V] * py + (oy1 - oy) / dt_s
-    v_d = lead[V] * az - own[V] * pz + (oz1 - oz) / dt_s
-    # the lead's load factor as seen, carried on at the rate it was changing
+    v_n = (s_n - b_n) / dt_s - case.wind_n_mps - own[V] * px
+    v_e = (s_e - b_e) / dt_s - case.wind_e_mps - own[V] * py
+    v_d = (s_d - b_d) / dt_s - own[V] * pz
+    # the place of the lead's path his slot is at; what the lead did there is known if it was seen since
+    lag = max(slot[0], 0.0) / lead_y[j, V] / dt_s
+    there = max(seen - lag, 0.0)
+    jt = int(there)
+    ft = there - jt
+    lead = lead_y[jt]
+    cx, cy, cz = path_axes(lead)[6:]
+    # the load factor wanted a response time from now: as seen, or carried on at the rate it was changing
+    wanted = now - lag + ANTICIPATE_S / dt_s
+    at = min(max(wanted, 0.0), seen)
+    ja = int(at)
+    fa = at - ja
     h = max(int(0.2 / dt_s), 1)
-    ahead = (DELAY_S + ANTICIPATE_S) / (h * dt_s)
-    n_seen = _between(lead_a, j, f, A_N)
-    change = ahead * (n_seen - _between(lead_a, max(j - h, 0), f, A_N))
-    n_ahead = n_seen + min(max(change, -ANTICIPATE_MAX_G), ANTICIPATE_MAX_G)
-    n_felt = own_a[min(j, max(i - 1, 0)), A_N] if i > 0 else n_seen
-    pull = n_ahead + GAIN_ACC * (n_seen - n_felt)
-    push = _between(lead_a, j, f, A_PUSH)
+    n_at = _between(lead_a, ja, fa, A_N)
+    change = max(wanted - at, 0.0) / h * (n_at - _between(lead_a, max(ja - h, 0), fa, A_N))
+    n_ahead = n_at + min(max(change, -ANTICIPATE_MAX_G), ANTICIPATE_MAX_G)
+    n_there = _between(lead_a, jt, ft, A_N)
+    n_felt = own_a[min(j, max(i - 1, 0)), A_N] if i > 0 else n_there
+    pull = n_ahead + GAIN_ACC * (n_there - n_felt)
+    push = _between(lead_a, jt, ft, A_PUSH)
     # what he corrects, earth axes
     c_n = GAIN_VEL * v_n + GAIN_POS * e_n + trim[0]
     c_e = GAIN_VEL * v_e + GAIN_POS * e_e + trim[1]
@@ -111,8 +139,7 @@ def wing_commands(
         ux, uy, uz, length = -lx, -ly, -lz, 1.0
     ux, uy, uz = ux / length, uy / length, uz / length
     # right-hand side of that lift direction, seen along the own path
-    rx, ry, rz = uy * mz - uz * my, uz * mx - ux * mz, ux * my - uy * mx
-    rx, ry, rz = -rx, -ry, -rz
+    rx, ry, rz = uz * my - uy * mz, ux * mz - uz * mx, uy * mx - ux * my
     up = pull + (c_n * ux + c_e * uy + c_d * uz) / G0_MPS2
     side = (c_n * rx + c_e * ry + c_d * rz) / G0_MPS2
     # with little lift to tilt, banking does nothing: a pilot waits
@@ -125,7 +152,16 @@ def wing_commands(
     error = math.atan2(wx * nx + wy * ny + wz * nz, -(wx * lx + wy * ly + wz * lz))
     roll = lead[ROLL] + 3.0 * error
     n, limit = limit_demand(y, af, case, up / cb, 0.97 * af.cl_max)
-    throttle = throttle_for_speed(y, af, case, along + G0_MPS2 * mz)
+    wanted_throttle = throttle_for_speed(y, af, case, along + G0_MPS2 * mz)
+    # he moves the lever further than he needs, since the engine lags
+    engine = (y[ENGINE] - af.thrust_idle) / (1.0 - af.thrust_idle)
+    throttle = min(max(engine + THROTTLE_LEAD * (wanted_throttle - engine), 0.0), 1.0)
+    if (wanted_throttle >= 1.0 and along > 0.0) or (wanted_throttle <= 0.0 and along < 0.0):
+        # at the stop of the lever there is nothing to learn along the path
+        short = e_n * mx + e_e * my + e_d * mz
+        error_out[0] -= short * mx
+        error_out[1] -= short * my
+        error_out[2] -= short * mz
     return n, ONSET_WING_GPS, roll, throttle, limit
 
 
