@@ -100,11 +100,10 @@ def _cannot(reason: str) -> str:
 def _missing_library() -> str | None:
     if not sys.platform.startswith("linux"):
         return None
-    for name in ("libEGL.so.1", "libGL.so.1"):
-        try:
-            ctypes.CDLL(name)
-        except OSError:
-            return f"{name} is missing or broken"
+    try:
+        ctypes.CDLL("libEGL.so.1")
+    except OSError:
+        return "libEGL.so.1 is missing or broken"
     return None
 
 
