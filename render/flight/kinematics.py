@@ -206,7 +206,9 @@ def derivative(
         dy[NDEM] = 0.0
         return
     rate = min(max((n_cmd - y[NDEM]) / DEMAND_LAG_S, -onset_gps), onset_gps)
-    wanted, integral_rate = stick_wanted(y, af, case, n_now, rate, thrust, g_z)
+    # in the exact cases the thrust lies along the path: none of it helps the lift
+    helping = 0.0 if af.thrust_equals_drag > 0.5 else thrust
+    wanted, integral_rate = stick_wanted(y, af, case, n_now, rate, helping, g_z)
     dy[NDEM] = rate
     dy[STICK] = (wanted - y[STICK]) / HAND_LAG_S
     dy[INTEG] = integral_rate
