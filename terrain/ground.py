@@ -67,7 +67,7 @@ def read_ground(name: str, seed: int = 1) -> Ground:
 
 def _heights(recipe: Mapping[str, Any], seed: int) -> tuple[NDArray[np.float64], float, float, float]:
     """Rolling relief: a sum of seeded waves, flat inside ``flat_within_m`` of the display centre."""
-    relief = float(recipe.get("relief_m", 0.0))
+    relief = float(recipe["relief"]["height"])
     if relief == 0.0:
         return np.zeros((1, 1)), 0.0, 0.0, 1.0
     spacing, half = 100.0, 15_000.0
@@ -79,6 +79,6 @@ def _heights(recipe: Mapping[str, Any], seed: int) -> tuple[NDArray[np.float64],
         turn, phase = rng.uniform(0.0, 2.0 * np.pi, 2)
         waves += length / 4200.0 * np.sin(2.0 * np.pi * (n * np.cos(turn) + e * np.sin(turn)) / length + phase)
     waves = (waves - waves.min()) / np.ptp(waves)
-    flat = float(recipe.get("flat_within_m", 2500.0))
+    flat = float(recipe["relief"]["flat_within"])
     rise = np.clip((np.hypot(n, e) - flat) / 2000.0, 0.0, 1.0)
     return relief * waves * rise * rise * (3.0 - 2.0 * rise), -half, -half, spacing

@@ -1,0 +1,137 @@
+"""Surfaces from sections: triangle meshes with smooth outward normals and a colour per face.
+
+Body axes (x forward, y right, z down), metres. Triangles wind so that their normal points outward.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from render.frames import Array
+
+Ints = NDArray[np.int64]
+Colour = tuple[int, int, int]
+
+#: Neighbouring faces that meet at more than this keep a sharp edge, rad.
+SHARP_RAD = float(np.radians(38.0))
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Surf:
+    """A triangle mesh: points (N, 3) m, unit normals (N, 3), tris (M, 3), face colour (M, 3) uint8."""
+
+    points: Array
+    normals: Array
+    tris: Ints
+    colour: NDArray[np.uint8]
+
+    def volume_m3(self) -> float:
+        """Signed volume; positive where a closed surface's triangles face outward (divergence theorem)."""
+        a, b, c = (self.points[self.tris[:, i]] for i in range(3))
+        return float(np.einsum("ij,ij->", a, np.cross(b, c)) / 6.0)
+
+    def centroids(self) -> Array:
+        """Centres of the faces, (M, 3)."""
+        result: Array = self.points[self.tris].mean(axis=1)
+        return result
+
+
+def surface(points: Array, tris: Ints, colour: Colour) -> Surf:
+    """A mesh of one colour with normals smooth up to the sharp edges; degenerate triangles dropped."""
+    points, tris = _welded(np.asarray(points, float), np.asarray(tris, np.int64))
+    a, b, c = (points[tris[:, i]] for i in range(3))
+    area = np.linalg.norm(np.cross(b - a, c - a), axis=1)
+    tris = tris[area > 1e-9]
+    points, tris, normals = _smooth(points, tris)
+    return Surf(points, normals, tris, np.tile(np.array(colour, np.uint8), (len(tris), 1)))
+
+
+def closed(points: Array, tris: Ints, colour: Colour) -> Surf:
+    """As ``surface``, of a closed mesh: turned inside out where its volume comes out negative."""
+    a, b, c = (points[tris[:, i]] for i in range(3))
+    if np.einsum("ij,ij->", a, np.cross(b, c)) < 0.0:
+        tris = tris[:, ::-1]
+    return surface(points, tris, colour)
+
+
+def _welded(points: Array, tris: Ints) -> tuple[Array, Ints]:
+    """Points closer than 0.01 mm made one."""
+    _, first, inverse = np.unique(np.round(points, 5), axis=0, return_index=True, return_inverse=True)
+    return points[first], inverse.reshape(-1)[tris]
+
+
+def _smooth(points: Array, tris: Ints) -> tuple[Array, Ints, Array]:
+    """Corner normals averaged over the faces of a vertex within the sharp angle; vertices split as needed."""
+    a, b, c = (points[tris[:, i]] for i in range(3))
+    weighted = np.cross(b - a, c - a)
+    unit = weighted / np.linalg.norm(weighted, axis=1, keepdims=True)
+    corner_vertex = tris.reshape(-1)
+    corner_face = np.repeat(np.arange(len(tris)), 3)
+    order = np.argsort(corner_vertex, kind="stable")
+    starts = np.searchsorted(corner_vertex[order], np.arange(len(points) + 1))
+    normals = np.empty((len(corner_vertex), 3))
+    for v in range(len(points)):
+        corners = order[starts[v] : starts[v + 1]]
+        faces = corner_face[corners]
+        near = unit[faces] @ unit[faces].T > np.cos(SHARP_RAD)
+        normals[corners] = near @ weighted[faces]
+    normals /= np.maximum(np.linalg.norm(normals, axis=1, keepdims=True), 1e-30)
+    key = np.column_stack([corner_vertex, np.round(normals * 500.0)])
+    _, first, inverse = np.unique(key, axis=0, return_index=True, return_inverse=True)
+    return points[corner_vertex[first]], inverse.reshape(-1, 3).astype(np.int64), normals[first]
+
+
+def merge(surfs: Sequence[Surf]) -> Surf:
+    """Several meshes as one."""
+    shift = np.cumsum([0, *(len(s.points) for s in surfs)])
+    return Surf(
+        np.concatenate([s.points for s in surfs]),
+        np.concatenate([s.normals for s in surfs]),
+        np.concatenate([s.tris + k for s, k in zip(surfs, shift[:-1], strict=True)]),
+        np.concatenate([s.colour for s in surfs]),
+    )
+
+
+def moved(surf: Surf, scale: Sequence[float] = (1.0, 1.0, 1.0), shift: Sequence[float] = (0.0, 0.0, 0.0)) -> Surf:
+    """Scaled about the origin, each axis by its own factor (may mirror), then shifted by m."""
+    factor = np.asarray(scale, float)
+    normals = surf.normals / factor  # the inverse transpose of the scaling
+    normals = normals / np.linalg.norm(normals, axis=1, keepdims=True)
+    tris = surf.tris if np.prod(factor) > 0 else surf.tris[:, ::-1]
+    return replace(surf, points=surf.points * factor + np.asarray(shift, float), normals=normals, tris=tris)
+
+
+def mirrored(surf: Surf) -> Surf:
+    """The left of a right-hand piece."""
+    return moved(surf, (1.0, -1.0, 1.0))
+
+
+def grid_tris(rows: int, cols: int, around: bool) -> Ints:
+    """Triangles of a grid of rows x cols points; ``around`` joins the last column to the first."""
+    r, c = np.meshgrid(np.arange(rows - 1), np.arange(cols if around else cols - 1), indexing="ij")
+    n = (c + 1) % cols
+    a, b, d, e = r * cols + c, r * cols + n, (r + 1) * cols + c, (r + 1) * cols + n
+    return np.concatenate([np.stack([a, b, e], -1).reshape(-1, 3), np.stack([a, e, d], -1).reshape(-1, 3)])
+
+
+def rings(points: Array, colour: Colour, caps: bool = True) -> Surf:
+    """A closed body through rings (R, C, 3), each end closed by a fan to its middle."""
+    rows, cols = points.shape[:2]
+    flat = points.reshape(-1, 3)
+    tris = [grid_tris(rows, cols, True)]
+    if caps:
+        flat = np.concatenate([flat, points[:1].mean(axis=1), points[-1:].mean(axis=1)])
+        i = np.arange(cols)
+        j = (i + 1) % cols
+        tris.append(np.stack([np.full(cols, rows * cols), j, i], -1))
+        tris.append(np.stack([np.full(cols, rows * cols + 1), (rows - 1) * cols + i, (rows - 1) * cols + j], -1))
+    return closed(flat, np.concatenate(tris), colour)
+
+
+def sheet(points: Array, colour: Colour) -> Surf:
+    """An open surface through a grid (R, C, 3); faces the side of row x column."""
+    return surface(points.reshape(-1, 3), grid_tris(*points.shape[:2], False)[:, ::-1], colour)

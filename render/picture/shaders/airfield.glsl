@@ -1,0 +1,66 @@
+// Runway, taxiway, apron, mown grass. a: along the runway from its middle, b: to the left of its heading.
+// Sizes of the markings: ICAO Annex 14 volume I, chapter 5 (from memory).
+float boxes(vec2 d, vec2 w) { vec2 c = clamp(0.5 - d / max(w, vec2(0.02)), 0.0, 1.0); return c.x * c.y; }
+float slot(float x, float lo, float hi, float w) {  // cover of lo..hi by a pixel w wide at x
+  w = max(w, 0.02);
+  return clamp((min(hi, x + 0.5 * w) - max(lo, x - 0.5 * w)) / w, 0.0, 1.0);
+}
+float stripes(float x, float period, float part, float w) {  // cover of a row of bars, box filtered exactly
+  w = max(w / period, 1e-3);
+  float l = x / period - 0.5 * w, h = l + w;
+  return (floor(h) * part + min(fract(h), part) - floor(l) * part - min(fract(l), part)) / w;
+}
+float numeral(int mask, vec2 at, vec2 w) {          // 3 x 5 cells of 1 x 1.8 m; bit 0 top left
+  vec2 c = floor(vec2(at.x, at.y / 1.8));
+  float inside = step(0.0, c.x) * step(c.x, 2.0) * step(0.0, c.y) * step(c.y, 4.0);
+  int bit = int(clamp(4.0 - c.y, 0.0, 4.0)) * 3 + int(clamp(c.x, 0.0, 2.0));
+  float on = float((mask >> bit) & 1) * inside;
+  float blurred = 0.62 * slot(at.x, 0.0, 3.0, w.x) * slot(at.y, 0.0, 9.0, w.y);
+  return mix(on, blurred, smoothstep(0.5, 1.4, max(w.x, w.y)));
+}
+vec4 airfield(vec2 p, float px, float n7, float n1) {   // rgb, cover
+  vec2 r = p - AIRFIELD_AT;
+  vec2 s = vec2(r.x * AIRFIELD_S + r.y * AIRFIELD_C, r.y * AIRFIELD_S - r.x * AIRFIELD_C);
+  vec2 w = fwidth(s);
+  float half_l = 0.5 * RUNWAY_L, half_w = 0.5 * RUNWAY_W;
+  float s7 = shown(7.0, px), s1 = shown(1.3, px);
+  // mown grass with swaths 12 m wide along the runway
+  float field_cover = boxes(abs(s - vec2(0.0, 95.0)) - vec2(half_l + 240.0, 245.0), w);
+  float swath = (stripes(s.y, 24.0, 0.5, w.y) - 0.5);
+  vec3 colour = mix(MOWN_A, MOWN_B, 0.5 + swath) * (1.0 + 0.30 * s7 * (n7 - 0.5) + 0.32 * s1 * (n1 - 0.5));
+  float rough = smoothstep(60.0, 75.0, abs(s.y));
+  colour = mix(colour, mix(MOWN_A, MOWN_B, n7 * s7 + 0.5 - 0.5 * s7) * vec3(0.98, 0.94, 0.80) * (1.0 + 0.4 * s1 * (n1 - 0.5)), 0.6 * rough);
+  // taxiway 15 m wide at 150 m, three links, apron
+  float tar = boxes(abs(s - vec2(0.0, 150.0)) - vec2(half_l, 7.5), w);
+  float x = min(abs(abs(s.x) - half_l + 7.5), abs(s.x + 0.12 * RUNWAY_L));
+  tar = max(tar, boxes(vec2(x - 7.5, abs(s.y - 75.0) - 75.0), w));
+  colour = mix(colour, SURFACE * (1.06 + 0.10 * s1 * (n1 - 0.5)), tar);
+  float yellow = max(band(abs(s.y - 150.0), 0.075, w.y) * step(abs(s.x), half_l - 7.0), band(x, 0.075, w.x) * step(abs(s.y - 75.0), 75.0));
+  colour = mix(colour, vec3(0.80, 0.66, 0.18), yellow);
+  float apron = boxes(abs(s - vec2(40.0, 205.0)) - vec2(230.0, 48.0), w);
+  float joints = max(band(abs(fract(s.x / 7.5) - 0.5) * 7.5, 0.04, w.x), band(abs(fract(s.y / 7.5) - 0.5) * 7.5, 0.04, w.y));
+  float slab = fract(0.317 * floor(s.x / 7.5) + 0.713 * floor(s.y / 7.5) * (1.0 + floor(s.x / 7.5) * 0.13));
+  colour = mix(colour, APRON * (1.0 + 0.07 * (slab - 0.5) * shown(7.5, px) - 0.25 * joints), apron);
+  // runway: 0.9 m side stripes, centre line 30 m on 20 m off
+  float run = boxes(abs(s) - vec2(half_l, half_w), w);
+  float rubber = exp2(-abs(abs(s.x) - half_l + 420.0) / 160.0) * exp2(-s.y * s.y / 40.0);
+  vec3 tarmac = SURFACE * (1.0 + 0.14 * s1 * (n1 - 0.5) + 0.10 * s7 * (n7 - 0.5)) * (1.0 - 0.35 * rubber);
+  tarmac *= 1.0 - 0.10 * band(abs(abs(s.y) - 7.5), 0.05, w.y);
+  float end = half_l - abs(s.x);                                  // distance in from the nearer threshold
+  float y = s.x > 0.0 ? -s.y : s.y;                               // across, seen by one who lands on that end
+  float we = w.x, wy = w.y;
+  float mark = slot(abs(s.y), half_w - 1.2, half_w - 0.3, wy);
+  mark = max(mark, band(abs(s.y), 0.23, wy) * stripes(s.x, 50.0, 0.6, w.x) * step(78.0, end));
+  float bars = stripes(abs(s.y) - 1.8, 3.6, 0.5, wy) * step(1.8, abs(s.y)) * step(abs(s.y), 1.8 + 3.6 * BARS);
+  mark = max(mark, slot(end, 6.0, 36.0, we) * bars);
+  bool east = s.x > 0.0;
+  vec2 left = vec2(-y + 4.0, end - 48.0), right = vec2(-y - 1.0, end - 48.0);
+  float figures = numeral(east ? FIGURE_C : FIGURE_A, left, vec2(wy, we)) + numeral(east ? FIGURE_D : FIGURE_B, right, vec2(wy, we));
+  mark = max(mark, figures);
+  mark = max(mark, slot(end, AIM_AT, AIM_AT + 45.0, we) * slot(abs(s.y), 9.0, 9.0 + AIM_W, wy));
+  float zone = slot(end, 150.0, 172.5, we) + slot(end, 300.0, 322.5, we) * AIM_FAR + slot(end, 600.0, 622.5, we) * AIM_FAR;
+  mark = max(mark, zone * slot(abs(s.y), 9.0, 12.0, wy));
+  tarmac = mix(tarmac, vec3(0.86, 0.86, 0.83) * (0.92 + 0.12 * s1 * n1), mark * 0.92);
+  colour = mix(colour, tarmac, run);
+  return vec4(colour, field_cover);
+}

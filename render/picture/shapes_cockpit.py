@@ -1,0 +1,136 @@
+"""Canopy, cockpit opening, tub and crew of any of the shapes, in the design's own metres."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.interpolate import PchipInterpolator
+
+from render.frames import Array
+from render.picture.loft import Colour, Surf, grid_tris, merge, surface
+from render.picture.paint import Side, divided
+from render.picture.shapes_sections import Body, ellipsoid
+
+INSIDE: Colour = (58, 62, 64)
+BLACK: Colour = (24, 25, 27)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Canopy:
+    """A canopy on a fuselage: plan outline (half width over x), crown height over x, where its frames run.
+
+    frames: rows (x at the sill, forward lean per metre up, width m).
+    """
+
+    body: Body
+    width: Callable[[Array], Array]
+    crown: Array  # rows (x, z), x falling
+    frames: tuple[tuple[float, float, float], ...]
+    rail_m: float = 0.055
+    fullness: float = 2.3
+
+    def sill_z(self, x_m: Array) -> Array:
+        """Height (z) of the rail at x."""
+        return self.body.top_z(x_m, np.maximum(self.width(x_m), 0.0))
+
+    def crown_z(self, x_m: Array) -> Array:
+        """Height (z) of the canopy's top at x."""
+        table = self.crown[::-1]
+        result: Array = PchipInterpolator(table[:, 0], table[:, 1])(x_m)
+        return result
+
+    def skin_z(self, x_m: Array, y_m: Array) -> Array:
+        """Height (z) of the glass at x, y; the rail's height beyond it."""
+        width, sill = np.maximum(self.width(x_m), 1e-6), self.sill_z(x_m)
+        ratio = np.clip(np.abs(y_m) / width, 0.0, 1.0)
+        result: Array = sill - (sill - self.crown_z(x_m)) * (1 - ratio**self.fullness) ** (1 / self.fullness)
+        return result
+
+    def hole(self, part: float = 0.95) -> Side:
+        """Side of the cockpit opening in the fuselage's upper skin."""
+        waist = float(self.body.stations[:, 4].max())
+        ends = self.crown[0, 0], self.crown[-1, 0]
+
+        def side(p: Array) -> Array:
+            inside = np.abs(p[:, 1]) - part * self.width(p[:, 0])
+            beyond = np.maximum(p[:, 0] - ends[0], ends[1] - p[:, 0])
+            return np.maximum.reduce([inside, beyond, p[:, 2] - waist + 0.12])
+
+        return side
+
+    def shell(self, colour: Colour, along: int = 44, across: int = 25) -> tuple[Surf, Surf]:
+        """(frames and rail, glass), one smooth surface divided, facing outward."""
+        front, back = self.crown[0, 0], self.crown[-1, 0]
+        u = np.linspace(0.0, 1.0, along)
+        x = front + (back - front) * (u - 0.08 * np.sin(2 * np.pi * u))
+        w, sill, crown = np.maximum(self.width(x), 0.0)[:, None], self.sill_z(x)[:, None], self.crown_z(x)[:, None]
+        turn = np.linspace(0.0, np.pi, across)[None, :]
+        y = w * np.sign(np.cos(turn)) * np.abs(np.cos(turn)) ** (2 / self.fullness)
+        z = sill - (sill - crown) * np.sin(turn) ** (2 / self.fullness)
+        # A skirt below the rail hides the edge of the opening.
+        y = np.concatenate([w + 0.012, y, -w - 0.012], axis=1)
+        z = np.concatenate([sill + 0.03, z, sill + 0.03], axis=1)
+        points = np.stack([np.broadcast_to(x[:, None], y.shape), y, z], -1)
+        skin = surface(points.reshape(-1, 3), grid_tris(*y.shape, False), colour)
+        if (skin.normals[:, 2]).mean() > 0:
+            skin = surface(points.reshape(-1, 3), grid_tris(*y.shape, False)[:, ::-1], colour)
+        pieces, glass = [], skin
+        for side in self._frame_sides():
+            piece, glass = divided(glass, side)
+            pieces.append(piece)
+        return merge(pieces), glass
+
+    def _frame_sides(self) -> list[Side]:
+        sides: list[Side] = [lambda p: self.sill_z(p[:, 0]) - p[:, 2] - self.rail_m]
+        for at, lean, width in self.frames:
+            level = float(self.sill_z(np.array(at)))
+
+            def ahead(p: Array, at: float = at, lean: float = lean, level: float = level) -> Array:
+                result: Array = p[:, 0] - at - lean * (level - p[:, 2])
+                return result
+
+            # Two cuts, so that a narrow band is never missed between two vertices.
+            sides.append(lambda p, w=width, a=ahead: np.maximum(a(p) - w / 2, -a(p) - w / 2))
+        return sides
+
+    def tub(self, depth_m: float = 0.62, part: float = 0.95) -> Surf:
+        """The cockpit's walls, floor and end walls, seen from above; faces inward."""
+        front, back = self.crown[0, 0] - 0.12, self.crown[-1, 0] + 0.12
+        x = np.linspace(front, back, 18)
+        w = np.maximum(part * self.width(x), 0.02)
+        rail = self.body.top_z(x, w) + 0.004
+        floor = np.full_like(x, self.sill_z(np.array((front + back) / 2)) + depth_m)
+        rows = [(w, rail), (0.9 * w, rail + 0.07), (0.86 * w, floor), (-0.86 * w, floor), (-0.9 * w, rail + 0.07), (-w, rail)]
+        points = np.stack([np.stack([x, y, z], -1) for y, z in rows], axis=1)
+        skin = surface(points.reshape(-1, 3), grid_tris(*points.shape[:2], False), INSIDE)
+        if skin.normals[:, 2].mean() > 0:
+            skin = surface(points.reshape(-1, 3), grid_tris(*points.shape[:2], False)[:, ::-1], INSIDE)
+        return skin
+
+    def coaming(self, x_m: float, top_z_m: float, length_m: float) -> Surf:
+        """The hood over an instrument panel, its aft edge at x."""
+        half = 0.84 * float(self.width(np.array(x_m)))
+        deep = 0.42
+        hood = ellipsoid((x_m, 0.0, top_z_m + deep), (length_m, half, deep), BLACK, 8, 18)
+        ahead, _ = divided(hood, lambda p: x_m - p[:, 0])
+        turn = np.linspace(0.0, 2 * np.pi, 18, endpoint=False)
+        wall = np.stack([np.full(18, x_m), half * np.cos(turn), top_z_m + deep + deep * np.sin(turn)], -1)
+        tris = np.stack([np.full(18, 18), np.roll(np.arange(18), -1), np.arange(18)], -1)
+        panel = surface(np.concatenate([wall, [[x_m, 0.0, top_z_m + deep]]]), tris, (40, 42, 44))
+        return merge([ahead, panel])
+
+
+def canopy(
+    body: Body,
+    outline: Callable[[Array], Array],
+    crown: Sequence[Sequence[float]],
+    frames: Sequence[tuple[float, float, float]],
+    fullness: float = 2.3,
+) -> Canopy:
+    """A canopy whose ends lie on the fuselage: the crown's first and last heights are taken from the skin."""
+    table = np.array(crown, float)
+    for end in (0, -1):
+        table[end, 1] = float(body.top_z(table[end, 0], np.array(0.0)))
+    return Canopy(body, outline, table, tuple(frames), fullness=fullness)
