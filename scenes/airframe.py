@@ -57,7 +57,7 @@ class Airframe:
     mach_max: float = quantity("number", "greatest Mach number the model is valid to", 0.1, 0.95)
 
     roll_rate_max_radps: float = quantity("angular_rate", "greatest roll rate", 0.2, 8.0)
-    roll_s: float = quantity("time", "time constant of the roll response", 0.05, 3.0)
+    roll_s: float = quantity("time", "time constant of the roll response", 0.05, 3.0, key="roll_lag")
 
     stab_min_rad: float = quantity("angle", "stabilator travel, nose up (negative)", -0.8, -0.02)
     stab_max_rad: float = quantity("angle", "stabilator travel, nose down", 0.02, 0.8)
