@@ -115,7 +115,8 @@ def draw_verdict(
         }
     return {
         "scene": scene.name, "caution": CAUTION, "points": points, "fault": fault,
-        "lead": {"lowest_height_m": float(np.min(faulted.height_agl_m[after, 0])),
+        # the last sample lies a hair below the ground at contact
+        "lead": {"lowest_height_m": max(float(np.min(faulted.height_agl_m[after, 0])), 0.0),
                  "contact_time_s": faulted.contact_s[0]},
         "slots": slots,
     }

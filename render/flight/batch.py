@@ -91,8 +91,10 @@ def _bottoms(plans: Sequence[Plan], scale: Array, steps: int) -> tuple[Array, Ar
             continue
         loop = next(i for i, st in enumerate(plan.scene.script) if isinstance(st, Loop) and st.close_at_m is not None)
         i0 = round(mem[b, s.M_TOP_S] / DT_S) + 1
-        # the bottom belongs to the loop and the step after it, not to a dive later in the script
-        inside = np.flatnonzero(a[b, i0:, r.A_STEP] <= loop + 1)
+        # the bottom belongs to the loop and the step after it, not to a dive later, nor to what follows the script
+        end_s = mem[b, s.M_SCRIPT_END_S]
+        until = round(end_s / DT_S) + 1 if end_s >= 0.0 else y.shape[1]
+        inside = np.flatnonzero(a[b, i0:until, r.A_STEP] <= loop + 1)
         if inside.size < 3:
             continue
         h = -y[b, i0 : i0 + inside[-1] + 1, r.D]

@@ -45,15 +45,15 @@ def fly_scene(scene: Scene, airframe_of: Callable[[str], Airframe], ground: Grou
     scale = close_loops([plan], plan.longest_s)
     steps = round((plan.longest_s + AFTER_SCRIPT_S) / DT_S)
     healthy = fly_batch([plan], scale, steps, heights, grid, healthy=True)
-    check_raw(plan, healthy, 0, "the healthy flight")
     end_s = healthy.mem[0, s.M_SCRIPT_END_S]
     if healthy.status[0, 0, 0] == r.CONTACT:
         end_s = healthy.status[0, 0, 1] * DT_S
     elif end_s < 0.0:
         raise FlightError(f"the script of '{scene.name}' does not end: step {int(healthy.mem[0, s.M_STEP]) + 1} "
                           f"is never finished within {steps * DT_S:.0f} s")
+    cut = _cut(healthy, end_s)
+    check_raw(plan, healthy, 0, "the healthy flight", cut)
     if scene.fault is None:
-        cut = _cut(healthy, end_s)
         twin = to_flight(plan, healthy, 0, cut, float(scale[0]))
         return twin, twin, plan
     faulted = fly_batch([plan], scale, steps, heights, grid, healthy=False)
@@ -61,27 +61,28 @@ def fly_scene(scene: Scene, airframe_of: Callable[[str], Airframe], ground: Grou
     if fault_s < 0.0 or fault_s > end_s:
         raise FlightError(f"the fault's point is never reached: {_point_words(scene)} is not passed before the script "
                           f"ends at {end_s:.1f} s")
-    check_raw(plan, faulted, 0, "the faulted flight")
     cut = _cut(faulted, end_s)
+    check_raw(plan, faulted, 0, "the faulted flight", cut)
     return (to_flight(plan, healthy, 0, cut, float(scale[0])), to_flight(plan, faulted, 0, cut, float(scale[0])), plan)
 
 
 def _cut(raw: Raw, end_s: float) -> int:
-    """Last step worth keeping: the script's end, later if the lead still goes down then, or his contact."""
+    """Last step worth keeping: the script's end, later if the lead still goes down then, or his contact before."""
     end = min(round(end_s / DT_S), raw.y.shape[1] - 1)
-    stopped = int(np.max(raw.status[0, :, 1]))
-    if raw.status[0, 0, 0] == r.CONTACT:
-        return min(stopped + round(1.0 / DT_S), raw.y.shape[1] - 1)
     down = np.diff(raw.y[0, end:, 0, r.D]) > 0.0
     level = np.flatnonzero(~down)
-    return end + (int(level[0]) if level.size else len(down))
+    cut = end + (int(level[0]) if level.size else len(down))
+    if raw.status[0, 0, 0] == r.CONTACT and raw.status[0, 0, 1] <= cut:
+        # the wings' contact may come a little later than the lead's
+        return min(int(np.max(raw.status[0, :, 1])) + round(1.0 / DT_S), raw.y.shape[1] - 1)
+    return cut
 
 
-def check_raw(plan: Plan, raw: Raw, b: int, which: str) -> None:
-    """Raise FlightError if an aircraft left the range the model is valid in."""
+def check_raw(plan: Plan, raw: Raw, b: int, which: str, cut: int) -> None:
+    """Raise FlightError if an aircraft left the range the model is valid in, up to step ``cut``."""
     for k, airframe in enumerate(plan.airframes):
         why, last = int(raw.status[b, k, 0]), int(raw.status[b, k, 1])
-        if why not in _WHY:
+        if why not in _WHY or last > cut:
             continue
         value = {
             r.TOO_FAST: raw.a[b, last, k, r.A_CAS], r.TOO_HIGH_MACH: np.nan,
@@ -114,10 +115,11 @@ def _crossing(time_s: Array, value: Array, level: float) -> float | None:
     return float(time_s[j] + (time_s[j + 1] - time_s[j]) * (level - value[j]) / (value[j + 1] - value[j]))
 
 
-def find_events(time_s: Array, loop_rad: Array, height_m: Array) -> dict[str, float]:
+def find_events(time_s: Array, loop_rad: Array, height_m: Array, step: Array) -> dict[str, float]:
     """Times of entry, vertical up, top, vertical down and bottom of the first loop, s; those that happened.
 
-    The bottom is the lowest point after the top, found by a parabola through three samples.
+    The bottom is the lowest point after the top, in the loop's step or the one after it, found by a
+    parabola through three samples. step (T,): index of the script's step.
     """
     events: dict[str, float] = {}
     inside = np.flatnonzero(loop_rad > 0.0)
@@ -132,7 +134,8 @@ def find_events(time_s: Array, loop_rad: Array, height_m: Array) -> dict[str, fl
             events[name] = t
     if "top" in events:
         i0 = int(np.searchsorted(time_s, events["top"]))
-        i = i0 + int(np.argmin(height_m[i0:]))
+        own = height_m[i0:][step[i0:] <= step[i0] + 1]
+        i = i0 + int(np.argmin(own))
         shift = 0.0
         if i0 < i < len(time_s) - 1:
             left, mid, right = height_m[i - 1], height_m[i], height_m[i + 1]
@@ -179,7 +182,7 @@ def to_flight(plan: Plan, raw: Raw, b: int, last: int, scale: float) -> Flight:
         gamma_rad=np.arcsin(np.clip(-x_w[..., 2], -1.0, 1.0)), loop_angle_rad=loop, height_m=-y[..., r.D],
         height_agl_m=a[..., r.A_AGL].copy(), step=a[:, 0, r.A_STEP].copy(), airframes=plan.airframes, names=names,
         fault_s=fault_s if fault_s >= 0.0 else None, contact_s=tuple(contact),
-        events=find_events(time_s, a[:, 0, r.A_LOOP], -y[:, 0, r.D]), loop_scale=scale,
+        events=find_events(time_s, a[:, 0, r.A_LOOP], -y[:, 0, r.D], a[:, 0, r.A_STEP]), loop_scale=scale,
     )
 
 
