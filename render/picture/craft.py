@@ -1,0 +1,117 @@
+"""One drawn aircraft: its shape's parts as VTK actors, placed and moved together."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from typing import Any
+
+import numpy as np
+from vtkmodules.vtkCommonMath import vtkMatrix4x4
+from vtkmodules.vtkRenderingCore import vtkActor, vtkPolyDataMapper
+
+from render.frames import Array
+from render.picture.camera import Camera
+from render.picture.edges import Rect
+from render.picture.shapes import Part, part_matrix
+
+NEAR_M = 0.15  # nearest drawn
+
+
+class Craft:
+    """Parts that stand or fall together: an aircraft, or a cockpit seen from its seat."""
+
+    def __init__(self, parts: Iterable[Part], *, opacity: float = 1.0) -> None:
+        """opacity: of the whole, times each part's own; below 1 for a ghost."""
+        self._parts = tuple(parts)
+        self._actors = tuple(part_actor(part, opacity) for part in self._parts)
+        self._corners = tuple(outermost(np.asarray(part.mesh.points, float)) for part in self._parts)
+        self._matrices = [np.eye(4) for _ in self._parts]
+        self._own = False
+
+    def actors(self, *, clear: bool) -> list[vtkActor]:
+        """The see-through actors, or the others: they are drawn in that order."""
+        return [a for p, a in zip(self._parts, self._actors, strict=True) if see_through(p, a) == clear]
+
+    def place(self, body_to_display: Array, moved_rad: Mapping[str, float], *, shown: bool, own: bool) -> None:
+        """Place all parts by the (4, 4) matrix of the body axes, each turned about its hinge.
+
+        moved_rad: angle by who moves it. own: seen from its own seat, only the parts for that are shown.
+        """
+        self._own = own
+        for i, (part, actor) in enumerate(zip(self._parts, self._actors, strict=True)):
+            visible = shown and (part.own_view or not own)
+            actor.SetVisibility(visible)
+            if not visible:
+                continue
+            matrix = body_to_display
+            if part.moved_by is not None:
+                matrix = matrix @ part_matrix(part, moved_rad.get(part.moved_by, 0.0))
+            self._matrices[i] = matrix
+            actor.GetUserMatrix().DeepCopy(matrix.ravel())
+
+    def rects(self, camera: Camera, display_to_earth: Array, margin_px: int = 3) -> list[Rect]:
+        """Rectangles of the picture that hold the visible parts, right for parts that reach behind the camera."""
+        found = []
+        for corners, actor, matrix in zip(self._corners, self._actors, self._matrices, strict=True):
+            if not actor.GetVisibility():
+                continue
+            points_d = corners @ matrix[:3, :3].T + matrix[:3, 3]
+            points_c = in_front(camera.to_camera(points_d @ display_to_earth.T), NEAR_M)
+            if len(points_c) == 0:
+                continue
+            px = camera.project_c(points_c)
+            low = np.clip(px.min(axis=0) - margin_px, -1e6, 1e6).astype(int)
+            high = np.clip(px.max(axis=0) + margin_px + 1, -1e6, 1e6).astype(int)
+            if high[0] > 0 and high[1] > 0 and low[0] < camera.width_px and low[1] < camera.height_px:
+                found.append((int(low[0]), int(low[1]), int(high[0]), int(high[1])))
+        return found
+
+
+def part_actor(part: Part, opacity: float = 1.0) -> vtkActor:
+    """A part as an actor with vertex colours, a user matrix of its own, lit unless its colour is shaded already."""
+    mapper = vtkPolyDataMapper()
+    mapper.SetInputData(part.mesh)
+    mapper.SetVBOShiftScaleMethod(0)
+    mapper.SetScalarModeToUsePointFieldData()
+    mapper.SelectColorArray("colour")
+    mapper.SetColorModeToDirectScalars()
+    actor = vtkActor()
+    actor.SetMapper(mapper)
+    actor.SetUserMatrix(vtkMatrix4x4())
+    look = actor.GetProperty()
+    look.SetLighting(part.lit)
+    look.SetAmbient(1.0)
+    look.SetDiffuse(1.0)
+    look.SetSpecular(part.specular)
+    look.SetSpecularPower(32.0)
+    look.SetOpacity(part.opacity * opacity)
+    return actor
+
+
+def see_through(part: Part, actor: Any) -> bool:
+    """Whether an actor is blended: its opacity, or an alpha among its colours."""
+    if actor.GetProperty().GetOpacity() < 1.0:
+        return True
+    colour = np.asarray(part.mesh.point_data["colour"])
+    clear = colour.shape[1] == 4 and bool(np.any(colour[:, 3] < 255))
+    if clear:
+        actor.ForceTranslucentOn()
+    return clear
+
+
+def outermost(points: Array) -> Array:
+    """The points (N, 3) farthest out in 26 directions, (<= 26, 3): their hull all but holds the mesh."""
+    axis = np.array([-1.0, 0.0, 1.0])
+    ways = np.array(np.meshgrid(axis, axis, axis)).reshape(3, -1).T
+    ways = ways[np.any(ways != 0.0, axis=1)]
+    return np.asarray(points[np.unique(np.argmax(points @ ways.T, axis=0))])
+
+
+def in_front(points_c: Array, near_m: float) -> Array:
+    """The part of a point set's hull in front of the near plane: points kept, joining lines cut at the plane."""
+    ahead = points_c[:, 2] >= near_m
+    if np.all(ahead) or not np.any(ahead):
+        return points_c[ahead]
+    one, two = points_c[ahead][:, None], points_c[~ahead][None, :]
+    part = (one[..., 2:] - near_m) / (one[..., 2:] - two[..., 2:])
+    return np.concatenate([points_c[ahead], (one + part * (two - one)).reshape(-1, 3)])
