@@ -40,17 +40,17 @@ class Surf:
         return result
 
 
-def surface(points: Array, tris: Ints, colour: Colour) -> Surf:
-    """A mesh of one colour with normals smooth up to the sharp edges; degenerate triangles dropped."""
+def surface(points: Array, tris: Ints, colour: Colour | NDArray[np.uint8]) -> Surf:
+    """A mesh of one colour, or a colour per triangle (M, 3), with normals smooth up to the sharp edges; degenerate triangles dropped."""
     points, tris = _welded(np.asarray(points, float), np.asarray(tris, np.int64))
     a, b, c = (points[tris[:, i]] for i in range(3))
     area = np.linalg.norm(np.cross(b - a, c - a), axis=1)
-    tris = tris[area > 1e-9]
-    points, tris, normals = _smooth(points, tris)
-    return Surf(points, normals, tris, np.tile(np.array(colour, np.uint8), (len(tris), 1)))
+    colours = np.broadcast_to(np.asarray(colour, np.uint8), tris.shape)[area > 1e-9]
+    points, tris, normals = _smooth(points, tris[area > 1e-9])
+    return Surf(points, normals, tris, colours.copy())
 
 
-def closed(points: Array, tris: Ints, colour: Colour) -> Surf:
+def closed(points: Array, tris: Ints, colour: Colour | NDArray[np.uint8]) -> Surf:
     """As ``surface``, of a closed mesh: turned inside out where its volume comes out negative."""
     a, b, c = (points[tris[:, i]] for i in range(3))
     if np.einsum("ij,ij->", a, np.cross(b, c)) < 0.0:
@@ -118,18 +118,22 @@ def grid_tris(rows: int, cols: int, around: bool) -> Ints:
     return np.concatenate([np.stack([a, b, e], -1).reshape(-1, 3), np.stack([a, e, d], -1).reshape(-1, 3)])
 
 
-def rings(points: Array, colour: Colour, caps: bool = True) -> Surf:
-    """A closed body through rings (R, C, 3), each end closed by a fan to its middle."""
+def rings(points: Array, colour: Colour | Sequence[Colour]) -> Surf:
+    """A closed body through rings (R, C, 3), each end closed by a fan to its middle.
+
+    colour: one, or one for each of the R - 1 bands (the caps take their neighbour's).
+    """
     rows, cols = points.shape[:2]
-    flat = points.reshape(-1, 3)
-    tris = [grid_tris(rows, cols, True)]
-    if caps:
-        flat = np.concatenate([flat, points[:1].mean(axis=1), points[-1:].mean(axis=1)])
-        i = np.arange(cols)
-        j = (i + 1) % cols
-        tris.append(np.stack([np.full(cols, rows * cols), j, i], -1))
-        tris.append(np.stack([np.full(cols, rows * cols + 1), (rows - 1) * cols + i, (rows - 1) * cols + j], -1))
-    return closed(flat, np.concatenate(tris), colour)
+    flat = np.concatenate([points.reshape(-1, 3), points[:1].mean(axis=1), points[-1:].mean(axis=1)])
+    i = np.arange(cols)
+    j = (i + 1) % cols
+    first = np.stack([np.full(cols, rows * cols), j, i], -1)
+    last = np.stack([np.full(cols, rows * cols + 1), (rows - 1) * cols + i, (rows - 1) * cols + j], -1)
+    bands = np.broadcast_to(np.array(colour, np.uint8), (rows - 1, 3))
+    side = np.repeat(bands, cols, axis=0)
+    ends = [np.repeat(bands[k : k + 1], cols, axis=0) for k in (0, rows - 2)]
+    tris = np.concatenate([grid_tris(rows, cols, True), first, last])
+    return closed(flat, tris, np.concatenate([side, side, *ends]))
 
 
 def sheet(points: Array, colour: Colour) -> Surf:

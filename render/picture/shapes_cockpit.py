@@ -76,14 +76,8 @@ class Canopy:
         skin = surface(points.reshape(-1, 3), grid_tris(*y.shape, False), colour)
         if (skin.normals[:, 2]).mean() > 0:
             skin = surface(points.reshape(-1, 3), grid_tris(*y.shape, False)[:, ::-1], colour)
-        pieces, glass = [], skin
-        for side in self._frame_sides():
-            piece, glass = divided(glass, side)
-            pieces.append(piece)
-        return merge(pieces), glass
-
-    def _frame_sides(self) -> list[Side]:
-        sides: list[Side] = [lambda p: self.sill_z(p[:, 0]) - p[:, 2] - self.rail_m]
+        rail, glass = divided(skin, lambda p: self.sill_z(p[:, 0]) - p[:, 2] - self.rail_m)
+        pieces = [rail]
         for at, lean, width in self.frames:
             level = float(self.sill_z(np.array(at)))
 
@@ -91,9 +85,12 @@ class Canopy:
                 result: Array = p[:, 0] - at - lean * (level - p[:, 2])
                 return result
 
-            # Two cuts, so that a narrow band is never missed between two vertices.
-            sides.append(lambda p, w=width, a=ahead: np.maximum(a(p) - w / 2, -a(p) - w / 2))
-        return sides
+            # Both borders are cut one by one: a narrow band between two vertices would be missed.
+            before, rest = divided(glass, lambda p, w=width, a=ahead: a(p) - w / 2)
+            band, after = divided(before, lambda p, w=width, a=ahead: -a(p) - w / 2)
+            pieces.append(band)
+            glass = merge([rest, after])
+        return merge(pieces), glass
 
     def tub(self, depth_m: float = 0.62, part: float = 0.95) -> Surf:
         """The cockpit's walls, floor and end walls, seen from above; faces inward."""
@@ -102,7 +99,8 @@ class Canopy:
         w = np.maximum(part * self.width(x), 0.02)
         rail = self.body.top_z(x, w) + 0.004
         floor = np.full_like(x, self.sill_z(np.array((front + back) / 2)) + depth_m)
-        rows = [(w, rail), (0.9 * w, rail + 0.07), (0.86 * w, floor), (-0.86 * w, floor), (-0.9 * w, rail + 0.07), (-w, rail)]
+        half = [(w, rail), (0.9 * w, rail + 0.07), (0.86 * w, floor)]
+        rows = half + [(-y, z) for y, z in half[::-1]]
         points = np.stack([np.stack([x, y, z], -1) for y, z in rows], axis=1)
         skin = surface(points.reshape(-1, 3), grid_tris(*points.shape[:2], False), INSIDE)
         if skin.normals[:, 2].mean() > 0:

@@ -1,12 +1,12 @@
 // Shared by every piece of the land: light, haze, noise. Display axes: x east, y north, z up; metres.
 in vec3 place;                  // where this fragment is
-uniform vec3 eye;               // where it is seen from
-uniform vec3 sunDir;            // toward the sun
-uniform vec3 sunLight;          // colour of direct light on a face turned to the sun
-uniform vec3 skyLight;          // colour of the light from the whole sky
-uniform vec3 rimColour;         // the sky at the horizon, away from the sun
-uniform vec3 rimGlow;           // what the horizon under the sun has more
-uniform float extinction;       // per metre
+// VTK declares: uniform vec3 eye; where it is seen from
+// VTK declares: uniform vec3 sunDir; toward the sun
+// VTK declares: uniform vec3 sunLight; colour of direct light on a face turned to the sun
+// VTK declares: uniform vec3 skyLight; colour of the light from the whole sky
+// VTK declares: uniform vec3 rimColour; the sky at the horizon, away from the sun
+// VTK declares: uniform vec3 rimGlow; what the horizon under the sun has more
+// VTK declares: uniform float extinction; per metre
 
 vec3 rim(vec3 look) {           // the sky's colour at the horizon in this direction
   float s = max(dot(look.xy, sunDir.xy) * inversesqrt((dot(look.xy, look.xy) + 1e-6) * (dot(sunDir.xy, sunDir.xy) + 1e-6)), 0.0);

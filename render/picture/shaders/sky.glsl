@@ -1,6 +1,6 @@
 // Sky: darker upward, brighter round the sun, high thin cloud. Colours by eye, no source.
-uniform vec3 zenithColour;
-uniform vec3 sunGlow;
+// VTK declares: uniform vec3 zenithColour; 
+// VTK declares: uniform vec3 sunGlow; 
 void skyColour(out vec4 result) {
   vec3 look = normalize(place - eye);
   float up = max(look.z, 0.0);
