@@ -143,7 +143,7 @@ def fly_jammed(v1_mps: float, gamma0_rad: float, v0_mps: float, end_s: float, *,
     dt = 0.002
     steps = round(end_s / dt)
     y = fly_fixed(y0, af, bare_case() if case is None else case, np.zeros(1), np.array([surface]), 1.0, dt, steps)
-    return np.arange(steps + 1) * dt, y
+    return np.arange(steps + 1, dtype=np.float64) * dt, y
 
 
 @pytest.mark.parametrize("case", E3)
