@@ -1,0 +1,162 @@
+"""The stage: land, light and aircraft in one off-screen window, drawn for an instant and a camera.
+
+What is opaque is drawn nearest first (own cockpit, aircraft, objects, ground, sky: a software renderer then
+shades each pixel about once), what is see-through after it.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from types import TracebackType
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+from vtkmodules.util.numpy_support import vtk_to_numpy
+from vtkmodules.vtkCommonCore import vtkUnsignedCharArray
+from vtkmodules.vtkRenderingCore import vtkLight, vtkRenderer
+
+from render.frames import Array, quat_rotate
+from render.picture.axes import DISPLAY_FROM_EARTH, body_to_display, to_display
+from render.picture.camera import Camera
+from render.picture.craft import NEAR_M, Craft
+from render.picture.edges import smooth_edges
+from render.picture.instant import Instant
+from render.picture.land import Land
+from render.picture.light import Light
+from render.picture.probe import new_window, require_drawing
+from render.picture.shapes import build_shape
+from scenes.airframe import Airframe
+from scenes.model import Day
+from terrain.ground import Ground
+
+Frame = NDArray[np.uint8]
+FAR_M = 70_000.0
+
+
+class Stage:
+    """Draws instants of one formation over one land; a context manager, closed on leaving.
+
+    Raises MachineError where this machine can't draw.
+    """
+
+    def __init__(
+        self,
+        airframes: Sequence[Airframe],
+        ground: Ground,
+        day: Day,
+        size_px: tuple[int, int],
+        *,
+        seed: int = 1,
+        own: int | None = None,
+        smooth: bool = True,
+    ) -> None:
+        """airframes: (K,) of the formation; own: whose cockpit the camera sits in (None: outside all of them);
+        size_px: width and height; smooth: whether silhouettes are antialiased.
+        """
+        require_drawing()
+        self._own, self._smooth = own, smooth
+        width, height = self._size = size_px
+        self._land = Land(ground, day, seed)
+        self._craft = [Craft(build_shape(frame).parts) for frame in airframes]
+        self._renderer = _renderer(self._land.light)
+        everyone = list(self._craft)
+        for craft in everyone:
+            self._add(craft.actors(clear=False))
+        self._add(self._land.actors)
+        for craft in everyone:
+            self._add(craft.actors(clear=True))
+        self._window = new_window()
+        self._window.SetSize(width, height)
+        self._window.AddRenderer(self._renderer)
+        self._pixels = vtkUnsignedCharArray()
+        self._pixels.SetNumberOfComponents(3)
+        self._pixels.SetNumberOfTuples(width * height)
+        self._frame: Frame = np.empty((height, width, 3), np.uint8)
+
+    def __enter__(self) -> Stage:
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, exc: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        self.close()
+
+    def close(self) -> None:
+        """Give the window back; drawing is over."""
+        if self._window is not None:
+            self._renderer.RemoveAllViewProps()
+            self._window.RemoveRenderer(self._renderer)
+            self._window.Finalize()
+            self._window = None
+
+    def draw(self, instant: Instant, camera: Camera) -> Frame:
+        """The picture, (h, w, 3); the array is used again by the next call. The camera has the stage's size."""
+        if self._window is None:
+            raise ValueError("the stage is closed")
+        if (camera.width_px, camera.height_px) != self._size:
+            raise ValueError(f"camera of {camera.width_px}x{camera.height_px}, stage of {self._size}")
+        self._place(instant)
+        self._aim(camera)
+        self._window.Render()
+        width, height = self._size
+        self._window.GetPixelData(0, 0, width - 1, height - 1, 0, self._pixels, 0)
+        np.copyto(self._frame, vtk_to_numpy(self._pixels).reshape(height, width, 3)[::-1])
+        if self._smooth:
+            rects = [rect for craft in self._craft for rect in craft.rects(camera, DISPLAY_FROM_EARTH.T)]
+            smooth_edges(self._frame, rects)
+        return self._frame
+
+    def _add(self, actors: Sequence[Any]) -> None:
+        for actor in actors:
+            self._renderer.AddActor(actor)
+
+    def _place(self, instant: Instant) -> None:
+        for k, craft in enumerate(self._craft):
+            matrix = body_to_display(instant.pos_e_m[k], instant.quat_eb[k])
+            craft.place(matrix, moved_parts(instant, k), shown=True, own=k == self._own)
+
+    def _aim(self, camera: Camera) -> None:
+        vtk_camera = self._renderer.GetActiveCamera()
+        pos = to_display(camera.pos_e_m)
+        axis, up = (to_display(quat_rotate(camera.quat_ec, np.array(v))) for v in ((0.0, 0.0, 1.0), (0.0, -1.0, 0.0)))
+        vtk_camera.SetPosition(*pos)
+        vtk_camera.SetFocalPoint(*(pos + 100.0 * axis))
+        vtk_camera.SetViewUp(*up)
+        vtk_camera.SetViewAngle(float(np.degrees(camera.field_vertical_rad)))
+        vtk_camera.SetClippingRange(NEAR_M, FAR_M)
+        self._land.set_eye(camera.pos_e_m)
+
+
+def moved_parts(instant: Instant, k: int) -> Mapping[str, float]:
+    """Angles of the moving parts of aircraft k, rad, by who moves them."""
+    aileron = float(instant.aileron_rad[k])
+    return {
+        "stabilator": float(instant.stabilator_rad[k]),
+        "aileron_left": aileron,  # rolls right: left trailing edge down, right up
+        "aileron_right": -aileron,
+    }
+
+
+def _renderer(light: Light) -> vtkRenderer:
+    renderer = vtkRenderer()
+    renderer.SetUseOIT(False)
+    renderer.AutomaticLightCreationOff()
+    renderer.SetLightFollowCamera(False)
+    renderer.SetBackground(*light.rim)
+    bounce = np.array([0.30, 0.32, 0.24]) * float(np.mean(light.sun)) * light.sun_d[2]
+    for toward, colour in ((light.sun_d, light.sun), (np.array([0.0, 0.0, 1.0]), 0.6 * light.sky), (
+        np.array([0.0, 0.0, -1.0]), bounce,
+    )):
+        renderer.AddLight(_light(toward, colour))
+    return renderer
+
+
+def _light(toward_d: Array, colour: Array) -> vtkLight:
+    light = vtkLight()
+    light.SetLightTypeToSceneLight()
+    light.SetPositional(False)
+    light.SetPosition(*toward_d)
+    light.SetFocalPoint(0.0, 0.0, 0.0)
+    light.SetColor(*np.clip(colour, 0.0, 1.0))
+    return light
