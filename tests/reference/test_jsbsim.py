@@ -7,13 +7,19 @@ Ours: flat earth, constant gravity. JSBSim: a sphere without rotation. Tolerance
 from __future__ import annotations
 
 import csv
+from collections.abc import Callable
 from pathlib import Path
 
 import numpy as np
 import pytest
 
 from render.flight import records as r
+from render.flight.fly import fly_scene
 from render.frames import Array
+from scenes.airframe import Airframe
+from scenes.model import Day, Level
+from scenes.reader import read_airframe, read_scene
+from terrain.ground import read_ground
 from tests.reference import jsbsim_rig as rig
 from tests.reference.bare import at_angle, path_angle
 from tests.reference.plane_cases import CASES, Case, fly_ours, sampled
@@ -101,3 +107,61 @@ def test_events_of_the_plane_cases(row: tuple[str, float, float, float, float, f
     assert -end[r.D] == pytest.approx(h, abs=2e-3 * 2630.0 if name[0] == "A" else 1.5)
     assert end[r.V] == pytest.approx(v, rel=4e-3)
     assert np.degrees(end[r.ALPHA]) == pytest.approx(alpha, abs=0.05)
+
+
+def scene_shape(airframe: Airframe) -> rig.Shape:
+    """Shape of an airframe for JSBSim; lift and drag are written again from what the airframe's file means."""
+    alpha = np.round(np.linspace(-0.5, 0.5, 2001), 10)
+    a = alpha - airframe.alpha_zero_rad
+    width = 2.0 * (airframe.cl_max - airframe.cl_buffet) / airframe.lift_slope
+    x = np.clip((a - airframe.cl_buffet / airframe.lift_slope) / width, 0.0, 1.0)
+    lift = np.where(x > 0.0, airframe.cl_buffet + (airframe.cl_max - airframe.cl_buffet) * x * (2.0 - x),
+                    airframe.lift_slope * a)
+    return rig.Shape(
+        airframe.mass_kg, airframe.wing_area_m2, airframe.chord_m, airframe.inertia_pitch_kgm2, alpha, lift,
+        airframe.cd_zero + airframe.cd_induced * lift**2,
+        (airframe.cm_zero, airframe.cm_alpha, airframe.cm_q, airframe.cm_delta),
+    )
+
+
+@pytest.mark.parametrize("scene_name", ["late_freeze", "part_authority"])
+def test_a_shipped_scene_replayed(scene_name: str, tmp_path: Path) -> None:
+    """The lead's exported stabilator angle and thrust, flown by JSBSim: the same path, up to contact."""
+    scene = read_scene(scene_name)
+    _, flight, _ = fly_scene(scene, read_airframe, read_ground(scene.ground, scene.seed))
+    airframe = flight.airframes[0]
+    contact = flight.contact_s[0]
+    end_s = np.floor((flight.time_s[-1] if contact is None else contact) * 20.0) / 20.0
+    # within the lift curve that is written above
+    kept = flight.time_s <= end_s
+    top = (2.0 * airframe.cl_max - airframe.cl_buffet) / airframe.lift_slope
+    assert -0.1 < np.min(flight.alpha_rad[kept, 0]) and np.max(flight.alpha_rad[kept, 0]) < top
+    day = scene.day
+    standard_k = 288.15 - 0.0065 * day.field_elevation_m
+    warmer_k = 0.0 if day.temperature_k is None else day.temperature_k - standard_k
+
+    def exported(values: Array) -> Callable[[float], float]:
+        return lambda t: float(np.interp(t, flight.time_s, values[:, 0]))
+
+    stab, thrust = exported(flight.stabilator_rad), exported(flight.thrust_n)
+    theirs = rig.fly(
+        tmp_path, scene_shape(airframe), speed_mps=float(flight.speed_mps[0, 0]), gamma_rad=0.0,
+        height_m=day.field_elevation_m + float(flight.height_m[0, 0]), alpha_rad=float(flight.alpha_rad[0, 0]),
+        end_s=float(end_s), stab_of=stab, thrust_of=lambda t, rho, v: thrust(t), warmer_k=warmer_k,
+    )
+    at = theirs.time_s
+    # the path through the air, in the plane of the entry heading: wind carries it as a whole
+    air = flight.vel_e_mps[:, 0] - wind_e_mps(day)
+    level = scene.script[0]
+    assert isinstance(level, Level) and level.heading_rad is not None
+    ahead = air[:, 0] * np.cos(level.heading_rad) + air[:, 1] * np.sin(level.heading_rad)
+    gamma = np.unwrap(np.arctan2(-air[:, 2], ahead))
+    assert_close(sampled(flight.time_s, flight.height_m[:, 0], at) + day.field_elevation_m,
+                 sampled(flight.time_s, flight.speed_mps[:, 0], at), sampled(flight.time_s, gamma, at), theirs)
+
+
+def wind_e_mps(day: Day) -> Array:
+    """Where the wind blows to, north, east, down, m/s: it is named after where it comes from."""
+    if day.wind is None:
+        return np.zeros(3)
+    return -day.wind.speed_mps * np.array([np.cos(day.wind.from_rad), np.sin(day.wind.from_rad), 0.0])
