@@ -63,22 +63,22 @@ def cockpit_canopy() -> Canopy:
     """The long two-seat canopy: windscreen arch, frame between the seats."""
     plan = outline([(3.86, 0.0), (3.78, 0.12), (3.6, 0.24), (3.2, 0.365), (2.6, 0.43), (1.9, 0.45), (1.1, 0.45),
                     (0.4, 0.385), (-0.15, 0.24), (-0.4, 0.12), (-0.5, 0.0)])  # fmt: skip
-    crown = [(3.86, 0.0), (3.55, -0.93), (3.2, -1.055), (2.8, -1.165), (2.4, -1.235), (1.9, -1.32), (1.3, -1.425),
-             (0.8, -1.445), (0.3, -1.39), (-0.2, -1.265), (-0.5, 0.0)]  # fmt: skip
-    return canopy(FUSELAGE, plan, crown, [(3.12, -0.25, 0.07), (1.92, -0.12, 0.07)])
+    crown = [(3.86, 0.0), (3.55, -0.975), (3.2, -1.13), (2.8, -1.245), (2.4, -1.305), (1.9, -1.37), (1.3, -1.455),
+             (0.8, -1.47), (0.3, -1.41), (-0.2, -1.27), (-0.5, 0.0)]  # fmt: skip
+    return canopy(FUSELAGE, plan, crown, [(3.16, -0.30, 0.075), (1.92, -0.12, 0.075)])
 
 
 def _belly(p: Array) -> Array:
-    """Negative below the sweep of the teal underside: high at the tail, low at the nose."""
+    """Distance (m) below the upper edge of the teal underside: high at the tail, low at the nose."""
     x = p[:, 0]
     edge = 0.16 - 0.012 * (x - 1.0) - 0.05 * np.clip(-x - 1.5, 0.0, 4.0) ** 1.5 + 0.035 * np.clip(x - 3.0, 0, 4) ** 1.2
-    result: Array = edge - p[:, 2]
+    result: Array = p[:, 2] - edge
     return result
 
 
 def _reed(p: Array) -> Array:
     """Distance (m) from the middle of the gold band that follows the underside's edge."""
-    result: Array = _belly(p) + -0.075
+    result: Array = _belly(p) + 0.075
     return result
 
 
@@ -93,16 +93,16 @@ def _hull() -> Surf:
                                                     3.4 - p[:, 0], p[:, 2] + 0.15]), (46, 50, 50))  # fmt: skip
     skin = paint(skin, lambda p: 5.9 - p[:, 0] + 0.25 * p[:, 2], GOLD)
     for at in (4.9, 0.15, -2.1):
-        skin = line(skin, lambda p, at=at: p[:, 0] - at, 0.022, LINE, where=lambda p: _belly(p) * -1.0 + 0.13)
+        skin = line(skin, lambda p, at=at: p[:, 0] - at, 0.022, LINE, where=lambda p: _belly(p) + 0.13)
     return skin
 
 
 def _nacelle() -> Surf:
     """The right nacelle from its intake lip to its nozzle, with ducts."""
     rows = [  # x, y, z, half width, half height
-        (0.35, 0.70, -0.13, 0.15, 0.22), (0.95, 0.74, -0.15, 0.155, 0.26), (1.22, 0.75, -0.16, 0.165, 0.285),
-        (1.25, 0.75, -0.16, 0.178, 0.30), (1.20, 0.75, -0.16, 0.192, 0.315), (0.9, 0.745, -0.15, 0.22, 0.345),
-        (0.2, 0.72, -0.12, 0.27, 0.385), (-0.8, 0.67, -0.10, 0.31, 0.40), (-1.8, 0.60, -0.09, 0.32, 0.40),
+        (1.05, 0.70, -0.15, 0.15, 0.21), (1.6, 0.745, -0.17, 0.15, 0.235), (1.87, 0.755, -0.18, 0.155, 0.25),
+        (1.90, 0.755, -0.18, 0.168, 0.265), (1.85, 0.755, -0.18, 0.182, 0.28), (1.5, 0.75, -0.17, 0.21, 0.315),
+        (0.6, 0.725, -0.13, 0.26, 0.37), (-0.8, 0.67, -0.10, 0.31, 0.40), (-1.8, 0.60, -0.09, 0.32, 0.40),
         (-2.8, 0.52, -0.08, 0.315, 0.385), (-3.6, 0.46, -0.08, 0.295, 0.355), (-4.3, 0.42, -0.09, 0.265, 0.30),
         (-4.85, 0.40, -0.11, 0.235, 0.245), (-4.87, 0.40, -0.11, 0.205, 0.215), (-4.5, 0.40, -0.11, 0.19, 0.20),
     ]  # fmt: skip
@@ -112,7 +112,7 @@ def _nacelle() -> Surf:
     y = table[:, 1:2] + table[:, 3:4] * np.sign(np.cos(turn)) * np.abs(np.cos(turn)) ** (2 / full)
     z = table[:, 2:3] + table[:, 4:5] * np.sign(np.sin(turn)) * np.abs(np.sin(turn)) ** (2 / full)
     # The intake is raked: its upper lip leads.
-    lead = np.clip((table[:, :1] - 0.2) / 1.0, 0, 1) * -0.35 * (z - table[:, 2:3])
+    lead = np.clip((table[:, :1] - 0.8) / 1.0, 0, 1) * -0.35 * (z - table[:, 2:3])
     x = np.broadcast_to(table[:, :1], y.shape) + lead
     bands = [DARK, DARK, DARK, METAL, *[WHITE] * 7, METAL, METAL, DARK]
     skin = rings(np.stack([x, y, z], -1), bands)
@@ -132,14 +132,14 @@ def _wing() -> tuple[Surf, Surf]:
     """(right wing with tip pod, right aileron)."""
     inner, outer, hinge = AILERON
     spans = [
-        WING.loft([0.3, 1.0, 1.8, inner - 0.008], WHITE),
-        WING.loft([inner - 0.008, 3.5, outer + 0.008], WHITE, end=hinge - 0.012),
-        WING.loft([outer + 0.008, 4.56], WHITE),
+        WING.loft([0.3, 1.6, inner - 0.008], WHITE, hinge=hinge - 0.012),
+        WING.loft([inner - 0.008, outer + 0.008], WHITE, hinge=hinge - 0.012, cut_off=True),
+        WING.loft([outer + 0.008, 4.56], WHITE, hinge=hinge - 0.012),
     ]
     skin = merge(spans)
     skin = paint(skin, lambda p: 3.55 + 0.35 * (p[:, 0] + 0.6) - p[:, 1], GOLD)
     skin = paint(skin, lambda p: 3.9 + 0.35 * (p[:, 0] + 0.6) - p[:, 1], TEAL)
-    skin = _where_down(skin, TEAL)
+    skin = _chevron(skin)
     leading = _leading_edge(0.045)
     skin = paint(skin, leading, METAL)
     aileron = WING.loft(np.linspace(inner, outer, 4).tolist(), WHITE, start=hinge, points=9)
@@ -162,12 +162,14 @@ def _leading_edge(width_m: float) -> Side:
     return side
 
 
-def _where_down(surf: Surf, colour: Colour) -> Surf:
-    """The wing's underside inboard of the tip: light, with one teal chevron a wing pilot below sees."""
-    chevron = (np.abs(surf.centroids()[:, 0] - 0.1 + 0.45 * surf.centroids()[:, 1] - 0.6) < 0.16) & (
-        surf.normals[surf.tris].mean(axis=1)[:, 2] > 0.2
-    )
-    return replace(surf, colour=np.where(chevron[:, None], np.array(colour, np.uint8), surf.colour))
+def _chevron(surf: Surf) -> Surf:
+    """A teal chevron on the underside, for the pilot who looks up from below."""
+    for edge in (-0.13, 0.13):
+        surf = cut(surf, lambda p, e=edge: p[:, 0] + 0.45 * p[:, 1] - 0.55 + e)
+    hit = np.abs(surf.centroids() @ np.array([1.0, 0.45, 0.0]) - 0.55) < 0.13
+    hit &= surf.normals[surf.tris].mean(axis=1)[:, 2] > 0.2
+    hit &= surf.centroids()[:, 1] < 3.4
+    return replace(surf, colour=np.where(hit[:, None], np.array(TEAL, np.uint8), surf.colour))
 
 
 def _tail() -> tuple[Surf, Surf]:
@@ -198,7 +200,7 @@ def _crew(place: Fit, which: str) -> Surf:
         return head(place.point((EYE_M[0], 0.0, -EYE_M[1])), WHITE, GOLD)
     rear = place.point(REAR_EYE_M)
     front = place.point((EYE_M[0], 0.0, -EYE_M[1]))
-    both = [f(eye, c) for eye in (front, rear) for f, c in ((torso, SUIT), (seat, (150, 60, 30)))]
+    both = [f(eye, c) for eye in (front, rear) for f, c in ((torso, SUIT), (seat, (54, 50, 44)))]
     return merge([head(rear, TEAL, WHITE), *both])
 
 

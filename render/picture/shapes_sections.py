@@ -54,13 +54,14 @@ def body(rows: Sequence[Sequence[float]]) -> Body:
     return Body(np.array(rows, float))
 
 
-def airfoil(thickness: float, points: int, end: float = 1.0, camber: float = 0.0) -> Array:
-    """Contour (2 points - 1, 2) of chord fraction and height fraction, from the tail over the top to the tail.
+def airfoil(thickness: float, points: int, hinge: float = 1.0, cut_off: bool = False, camber: float = 0.0) -> Array:
+    """Contour (2 n - 1, 2) of chord fraction and height fraction, from the tail over the top to the tail.
 
-    end: where the section is cut off (the rear wall stands there).
+    hinge: a chord fraction that is a point of the contour; cut_off: the section ends there with a wall.
     """
-    u = np.linspace(0.0, 1.0, points)
-    x = end * (1.0 - np.cos(np.pi * u)) / 2.0
+    x = hinge * (1.0 - np.cos(np.pi * np.linspace(0.0, 1.0, points))) / 2.0
+    if hinge < 1.0 and not cut_off:
+        x = np.concatenate([x, np.linspace(hinge, 1.0, 4)[1:]])
     half = 5 * thickness * (0.2969 * np.sqrt(x) - 0.1260 * x - 0.3516 * x**2 + 0.2843 * x**3 - 0.1036 * x**4)
     bow = 4 * camber * x * (1 - x)
     upper, lower = np.stack([x, bow + half], -1), np.stack([x, bow - half], -1)
@@ -93,11 +94,12 @@ class Panel:
         colour: Colour,
         *,
         start: float = 0.0,
-        end: float = 1.0,
+        hinge: float = 1.0,
+        cut_off: bool = False,
         points: int = 13,
         round_tip_m: float = 0.0,
     ) -> Surf:
-        """The surface between span stations, of the chord from ``start`` to ``end`` (a flap: start > 0)."""
+        """The surface between span stations, from the nose to the tail or a hinge (cut_off), or a flap from ``start``."""
         span = np.asarray(span_m, float)
         if round_tip_m > 0.0:
             steps = np.array([0.4, 0.7, 0.9, 1.0])
@@ -106,7 +108,7 @@ class Panel:
         x_le, z_c, chord, thick = np.moveaxis(self.at(span), -1, 0)
         loops = []
         for i in range(len(span)):
-            contour = _cut_contour(float(thick[i]), points, start, end, self.camber)
+            contour = _cut_contour(float(thick[i]), points, start, hinge, cut_off, self.camber)
             if round_tip_m > 0.0:
                 past = np.clip((span[i] - (self.sections[-1, 0] - round_tip_m)) / round_tip_m, 0.0, 1.0)
                 shrink = np.sqrt(1.0 - 0.985 * past**2)
@@ -122,13 +124,13 @@ class Panel:
         return rings(np.array(loops), colour)
 
 
-def _cut_contour(thickness: float, points: int, start: float, end: float, camber: float) -> Array:
+def _cut_contour(thickness: float, points: int, start: float, hinge: float, cut_off: bool, camber: float) -> Array:
     """An airfoil loop without the doubled tail point; for a flap, with a rounded nose at ``start``."""
     if start <= 0.0:
-        loop = airfoil(thickness, points, end, camber)
-        return loop[:-1] if end >= 1.0 else loop
+        loop = airfoil(thickness, points, hinge, cut_off, camber)
+        return loop if cut_off else loop[:-1]
     x = np.linspace(start, 1.0, 5)
-    whole = airfoil(thickness, 60, 1.0, camber)
+    whole = airfoil(thickness, 60, camber=camber)
     upper = np.interp(x, whole[:60, 0][::-1], whole[:60, 1][::-1])
     lower = np.interp(x, whole[59:, 0], whole[59:, 1])
     middle, half = (upper[0] + lower[0]) / 2, (upper[0] - lower[0]) / 2
