@@ -41,7 +41,7 @@ class Surf:
 
 
 def surface(points: Array, tris: Ints, colour: Colour | NDArray[np.uint8]) -> Surf:
-    """A mesh of one colour, or a colour per triangle (M, 3), with normals smooth up to the sharp edges; degenerate triangles dropped."""
+    """A mesh of one colour, or one per triangle (M, 3), smooth up to its sharp edges; no empty triangles."""
     points, tris = _welded(np.asarray(points, float), np.asarray(tris, np.int64))
     a, b, c = (points[tris[:, i]] for i in range(3))
     area = np.linalg.norm(np.cross(b - a, c - a), axis=1)
@@ -71,14 +71,16 @@ def _smooth(points: Array, tris: Ints) -> tuple[Array, Ints, Array]:
     unit = weighted / np.linalg.norm(weighted, axis=1, keepdims=True)
     corner_vertex = tris.reshape(-1)
     corner_face = np.repeat(np.arange(len(tris)), 3)
+    # All pairs of corners that share a vertex.
     order = np.argsort(corner_vertex, kind="stable")
     starts = np.searchsorted(corner_vertex[order], np.arange(len(points) + 1))
-    normals = np.empty((len(corner_vertex), 3))
-    for v in range(len(points)):
-        corners = order[starts[v] : starts[v + 1]]
-        faces = corner_face[corners]
-        near = unit[faces] @ unit[faces].T > np.cos(SHARP_RAD)
-        normals[corners] = near @ weighted[faces]
+    size = np.diff(starts)[corner_vertex]
+    first_corner = np.repeat(np.arange(len(corner_vertex)), size)
+    offset = np.arange(size.sum()) - np.repeat(np.cumsum(size) - size, size)
+    other_face = corner_face[order[starts[corner_vertex[first_corner]] + offset]]
+    near = np.einsum("ij,ij->i", unit[corner_face[first_corner]], unit[other_face]) > np.cos(SHARP_RAD)
+    share = weighted[other_face] * near[:, None]
+    normals = np.stack([np.bincount(first_corner, share[:, i], len(corner_vertex)) for i in range(3)], -1)
     normals /= np.maximum(np.linalg.norm(normals, axis=1, keepdims=True), 1e-30)
     key = np.column_stack([corner_vertex, np.round(normals * 500.0)])
     _, first, inverse = np.unique(key, axis=0, return_index=True, return_inverse=True)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -66,24 +66,40 @@ def _crossings(surf: Surf, side: Side, value: Array, edges: np.ndarray) -> tuple
     return a + t[:, None] * (b - a), normals
 
 
-def paint(surf: Surf, side: Side, colour: Colour, sharp: bool = True) -> Surf:
-    """Colour where ``side`` is negative; ``sharp`` cuts the border into the mesh first."""
-    if sharp:
-        surf = cut(surf, side)
-    inside = np.asarray(side(surf.centroids()), float) < 0.0
-    return replace(surf, colour=np.where(inside[:, None], np.array(colour, np.uint8), surf.colour))
+def paint(surf: Surf, side: Side, colour: Colour, only: Colour | None = None) -> Surf:
+    """Colour where ``side`` is negative, cut exactly; with ``only``, no face but those of that colour."""
+    return _coloured(cut(surf, side), side, colour, only)
 
 
-def line(surf: Surf, along: Side, width_m: float, colour: Colour, where: Side | None = None) -> Surf:
-    """A line of given width where ``along`` (a distance, m) is zero, on the faces where ``where`` is negative."""
-    if where is not None:
-        keep = np.asarray(where(surf.centroids()), float) < 0.0
-        painted = line(_faces(surf, keep), along, width_m, colour)
-        return _joined(_faces(surf, ~keep), painted)
+def line(surf: Surf, along: Side, width_m: float, colour: Colour, only: Colour | None = None) -> Surf:
+    """A line of given width where ``along`` (a distance, m) is zero.
+
+    Both borders are cut one by one: a line narrower than a triangle would be missed otherwise.
+    """
     half = width_m / 2
     surf = cut(cut(surf, lambda p: along(p) - half), lambda p: along(p) + half)
-    inside = np.abs(along(surf.centroids())) < half
-    return replace(surf, colour=np.where(inside[:, None], np.array(colour, np.uint8), surf.colour))
+    return _coloured(surf, lambda p: np.abs(along(p)) - half, colour, only)
+
+
+def patch(surf: Surf, edges: Sequence[Side], colour: Colour, only: Colour | None = None) -> Surf:
+    """Colour where all of the sides are negative, each cut exactly and no further than the others reach."""
+    for k, edge in enumerate(edges):
+        near, far = _split_off(surf, lambda p, k=k: np.max([e(p) for i, e in enumerate(edges) if i != k], axis=0) - 0.4)
+        surf = _joined(cut(near, edge), far)
+    return _coloured(surf, lambda p: np.max([e(p) for e in edges], axis=0), colour, only)
+
+
+def _coloured(surf: Surf, side: Side, colour: Colour, only: Colour | None) -> Surf:
+    hit = np.asarray(side(surf.centroids()), float) < 0.0
+    if only is not None:
+        hit &= (surf.colour == np.array(only, np.uint8)).all(axis=1)
+    return replace(surf, colour=np.where(hit[:, None], np.array(colour, np.uint8), surf.colour))
+
+
+def _split_off(surf: Surf, side: Side) -> tuple[Surf, Surf]:
+    """Whole faces whose vertices are all on the positive side come second."""
+    keep = (np.asarray(side(surf.points), float) < 0.0)[surf.tris].any(axis=1)
+    return _faces(surf, keep), _faces(surf, ~keep)
 
 
 def divided(surf: Surf, side: Side) -> tuple[Surf, Surf]:

@@ -69,9 +69,11 @@ class Canopy:
         turn = np.linspace(0.0, np.pi, across)[None, :]
         y = w * np.sign(np.cos(turn)) * np.abs(np.cos(turn)) ** (2 / self.fullness)
         z = sill - (sill - crown) * np.sin(turn) ** (2 / self.fullness)
-        # A skirt below the rail hides the edge of the opening.
-        y = np.concatenate([w + 0.012, y, -w - 0.012], axis=1)
-        z = np.concatenate([sill + 0.03, z, sill + 0.03], axis=1)
+        # A bead along the rail hides the edge of the opening.
+        foot, lip = w + 0.045, w + 0.03
+        foot_z, lip_z = self.body.top_z(x[:, None], foot) + 0.004, self.body.top_z(x[:, None], lip) - 0.016
+        y = np.concatenate([foot, lip, y, -lip, -foot], axis=1)
+        z = np.concatenate([foot_z, lip_z, z, lip_z, foot_z], axis=1)
         points = np.stack([np.broadcast_to(x[:, None], y.shape), y, z], -1)
         skin = surface(points.reshape(-1, 3), grid_tris(*y.shape, False), colour)
         if (skin.normals[:, 2]).mean() > 0:

@@ -33,7 +33,7 @@ def head(eye_m: Sequence[float] | Array, shell: Colour, stripe: Colour) -> Surf:
     neck = spindle([(0.05, 0.0, 0.13, 0.02, 0.04), (0.03, 0.0, 0.16, 0.062, 0.07), (-0.07, 0.0, 0.16, 0.062, 0.07),
                     (-0.09, 0.0, 0.14, 0.02, 0.04)], MASK, 8)  # fmt: skip
     whole = merge([crown, mask, hose, neck, *ears])
-    return moved(whole, shift=np.asarray(eye_m, float) + (-NECK_AFT_M, 0.0, -0.01))
+    return moved(whole, shift=np.asarray(eye_m, float) + np.array([-NECK_AFT_M, 0.0, -0.01]))
 
 
 def torso(eye_m: Sequence[float] | Array, suit: Colour) -> Surf:
@@ -43,7 +43,7 @@ def torso(eye_m: Sequence[float] | Array, suit: Colour) -> Surf:
     shoulders = ellipsoid((-0.02, 0.0, 0.285), (0.095, 0.235, 0.085), suit, 7, 14)
     arms = [spindle([(0.34, s * 0.16, 0.60, 0.045), (0.18, s * 0.24, 0.55, 0.055), (0.0, s * 0.235, 0.38, 0.062),
                      (-0.05, s * 0.22, 0.30, 0.03)], suit, 8) for s in (-1, 1)]  # fmt: skip
-    return moved(merge([chest, shoulders, *arms]), shift=np.asarray(eye_m, float) + (-0.15, 0.0, 0.0))
+    return moved(merge([chest, shoulders, *arms]), shift=np.asarray(eye_m, float) + np.array([-0.15, 0.0, 0.0]))
 
 
 def seat(eye_m: Sequence[float] | Array, head_box: Colour) -> Surf:
@@ -51,4 +51,4 @@ def seat(eye_m: Sequence[float] | Array, head_box: Colour) -> Surf:
     back = box((-0.22, -0.21, -0.02), (-0.10, 0.21, 0.75), SEAT, lean=0.12)
     top = box((-0.26, -0.13, -0.17), (-0.13, 0.13, 0.10), head_box, lean=0.12)
     rails = [box((-0.27, s * 0.16 - 0.02, -0.13), (-0.21, s * 0.16 + 0.02, 0.75), SEAT, lean=0.12) for s in (-1, 1)]
-    return moved(merge([back, top, *rails]), shift=np.asarray(eye_m, float) + (-0.17, 0.0, 0.0))
+    return moved(merge([back, top, *rails]), shift=np.asarray(eye_m, float) + np.array([-0.17, 0.0, 0.0]))

@@ -8,11 +8,11 @@ import numpy as np
 
 from render.frames import Array
 from render.picture.loft import Colour, Surf, merge, mirrored, rings
-from render.picture.paint import Side, cut, divided, line, paint
+from render.picture.paint import Side, cut, divided, line, paint, patch
 from render.picture.shapes_cockpit import Canopy, canopy
 from render.picture.shapes_crew import NECK_AFT_M, head, seat, torso
-from render.picture.shapes_parts import Fit, Part, Shape, fit, fixed, hinged
-from render.picture.shapes_sections import Body, Panel, body, box, ellipsoid, outline, spindle
+from render.picture.shapes_parts import Fit, Shape, fit, fixed, hinged
+from render.picture.shapes_sections import Body, Panel, body, ellipsoid, outline, spindle
 from scenes.airframe import Airframe
 
 WHITE: Colour = (232, 229, 218)
@@ -89,11 +89,15 @@ def _hull() -> Surf:
     skin = paint(skin, lambda p: -_belly(p), TEAL)
     skin = line(skin, _reed, 0.07, GOLD)
     # Anti-glare panel ahead of the windscreen, and the gold nose.
-    skin = paint(skin, lambda p: np.maximum.reduce([np.abs(p[:, 1]) - 0.10 - 0.05 * (5.9 - p[:, 0]), p[:, 0] - 5.9,
-                                                    3.4 - p[:, 0], p[:, 2] + 0.15]), (46, 50, 50))  # fmt: skip
+    glare = (
+        lambda p: np.abs(p[:, 1]) - 0.10 - 0.05 * (5.9 - p[:, 0]),
+        lambda p: 3.4 - p[:, 0],
+        lambda p: p[:, 2] + 0.15,
+    )
+    skin = patch(skin, glare, (46, 50, 50))
     skin = paint(skin, lambda p: 5.9 - p[:, 0] + 0.25 * p[:, 2], GOLD)
     for at in (4.9, 0.15, -2.1):
-        skin = line(skin, lambda p, at=at: p[:, 0] - at, 0.022, LINE, where=lambda p: _belly(p) + 0.13)
+        skin = line(skin, lambda p, at=at: p[:, 0] - at, 0.02, LINE, only=WHITE)
     return skin
 
 
@@ -116,16 +120,11 @@ def _nacelle() -> Surf:
     x = np.broadcast_to(table[:, :1], y.shape) + lead
     bands = [DARK, DARK, DARK, METAL, *[WHITE] * 7, METAL, METAL, DARK]
     skin = rings(np.stack([x, y, z], -1), bands)
-    skin = _on(skin, WHITE, lambda p: -_belly(p), TEAL)
-    skin = _on(skin, WHITE, lambda p: np.abs(_reed(p)) - 0.035, GOLD)
-    return _on(skin, WHITE, lambda p: np.abs(p[:, 0] + 3.9) - 0.011, LINE)
-
-
-def _on(surf: Surf, base: Colour, side: Side, colour: Colour) -> Surf:
-    """Paint, but only what still has the base colour."""
-    cutting = cut(cut(surf, side), side)
-    hit = (np.asarray(side(cutting.centroids())) < 0) & (cutting.colour == np.array(base)).all(axis=1)
-    return replace(cutting, colour=np.where(hit[:, None], np.array(colour, np.uint8), cutting.colour))
+    skin = paint(skin, lambda p: -_belly(p), TEAL, only=WHITE)
+    skin = line(skin, _reed, 0.07, GOLD, only=WHITE)
+    for at in (-0.9, -3.9):
+        skin = line(skin, lambda p, at=at: p[:, 0] - at, 0.02, LINE, only=WHITE)
+    return skin
 
 
 def _wing() -> tuple[Surf, Surf]:
@@ -183,8 +182,12 @@ def _tail() -> tuple[Surf, Surf]:
     half = TAIL.loft([0.60, 0.75, 1.2, 1.7, 2.2], GOLD, round_tip_m=0.07)
     half = paint(half, lambda p: p[:, 1] - 0.80, DARK)
     half = paint(half, lambda p: p[:, 1] - 0.70, GOLD)
-    half = paint(half, lambda p: 1.85 - p[:, 1] + 0.0 * p[:, 0], TEAL)
-    return fin, half
+    half = paint(half, lambda p: 1.85 - p[:, 1], TEAL)
+    # The tip's balance horn lies along the fuselage at neutral: seen from abeam its tilt is the deflection.
+    horn = spindle([(-4.5, 2.165, 0.08, 0.006), (-4.6, 2.165, 0.08, 0.03), (-4.85, 2.165, 0.08, 0.045),
+                    (-5.3, 2.165, 0.08, 0.04), (-5.62, 2.165, 0.08, 0.008)], WHITE, 10)  # fmt: skip
+    horn = line(horn, lambda p: p[:, 0] + 4.95, 0.14, DARK)
+    return fin, merge([half, horn])
 
 
 def _root_fairing() -> Surf:
@@ -222,14 +225,15 @@ def build_jet(airframe: Airframe) -> Shape:
     axis, hinge = place.axis(ends[1] - ends[0]), place.point(ends[0])
     flip = np.array([1.0, -1.0, 1.0])
     tail = place.surf(merge([half, mirrored(half)]))
+    pivot = place.point((TAIL_HINGE_X_M, 0.0, -0.03))
     neck = place.point((EYE_M[0], 0.0, -EYE_M[1])) - np.array([NECK_AFT_M, 0.0, 0.0])
     return Shape(
         "jet",
         (
             fixed("hull", place.surf(merge(hull)), specular=0.25),
-            fixed("cabin", cabin, own_view=False),
+            fixed("cabin", cabin, own_view=False, specular=0.05),
             hinged("head", _crew(place, "front"), "head", neck, np.array([0.0, 0.0, 1.0]), own_view=False),
-            hinged("stabilator", tail, "stabilator", place.point((TAIL_HINGE_X_M, 0.0, -0.03)), np.array([0.0, 1.0, 0.0])),
+            hinged("stabilator", tail, "stabilator", pivot, np.array([0.0, 1.0, 0.0])),
             hinged("aileron_right", place.surf(aileron), "aileron_right", hinge, axis),
             hinged("aileron_left", place.surf(mirrored(aileron)), "aileron_left", hinge * flip, -axis * flip),
             fixed("glass", place.surf(glass), own_view=False, opacity=0.28, specular=0.9),

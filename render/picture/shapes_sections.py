@@ -99,7 +99,7 @@ class Panel:
         points: int = 13,
         round_tip_m: float = 0.0,
     ) -> Surf:
-        """The surface between span stations, from the nose to the tail or a hinge (cut_off), or a flap from ``start``."""
+        """The surface between span stations: nose to tail or to a hinge (cut_off), or a flap from ``start``."""
         span = np.asarray(span_m, float)
         if round_tip_m > 0.0:
             steps = np.array([0.4, 0.7, 0.9, 1.0])
