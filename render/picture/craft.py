@@ -20,10 +20,10 @@ NEAR_M = 0.15  # nearest drawn
 class Craft:
     """Parts that stand or fall together: an aircraft, or a cockpit seen from its seat."""
 
-    def __init__(self, parts: Iterable[Part], *, opacity: float = 1.0) -> None:
-        """opacity: of the whole, times each part's own; below 1 for a ghost."""
+    def __init__(self, parts: Iterable[Part], *, ambient: float, opacity: float = 1.0) -> None:
+        """ambient: light from all round, 0..1; opacity: of the whole, times each part's own; below 1 for a ghost."""
         self._parts = tuple(parts)
-        self._actors = tuple(part_actor(part, opacity) for part in self._parts)
+        self._actors = tuple(part_actor(part, ambient, opacity) for part in self._parts)
         self._corners = tuple(outermost(np.asarray(part.mesh.points, float)) for part in self._parts)
         self._matrices = [np.eye(4) for _ in self._parts]
         self._own = False
@@ -67,7 +67,7 @@ class Craft:
         return found
 
 
-def part_actor(part: Part, opacity: float = 1.0) -> vtkActor:
+def part_actor(part: Part, ambient: float, opacity: float = 1.0) -> vtkActor:
     """A part as an actor with vertex colours, a user matrix of its own, lit unless its colour is shaded already."""
     mapper = vtkPolyDataMapper()
     mapper.SetInputData(part.mesh)
@@ -80,7 +80,7 @@ def part_actor(part: Part, opacity: float = 1.0) -> vtkActor:
     actor.SetUserMatrix(vtkMatrix4x4())
     look = actor.GetProperty()
     look.SetLighting(part.lit)
-    look.SetAmbient(1.0)
+    look.SetAmbient(ambient)
     look.SetDiffuse(1.0)
     look.SetSpecular(part.specular)
     look.SetSpecularPower(32.0)

@@ -58,7 +58,8 @@ class Stage:
         self._own, self._smooth = own, smooth
         width, height = self._size = size_px
         self._land = Land(ground, day, seed)
-        self._craft = [Craft(build_shape(frame).parts) for frame in airframes]
+        ambient = 0.5 * float(np.mean(self._land.light.sky))
+        self._craft = [Craft(build_shape(frame).parts, ambient=ambient) for frame in airframes]
         self._renderer = _renderer(self._land.light)
         everyone = list(self._craft)
         for craft in everyone:
@@ -144,19 +145,23 @@ def _renderer(light: Light) -> vtkRenderer:
     renderer.AutomaticLightCreationOff()
     renderer.SetLightFollowCamera(False)
     renderer.SetBackground(*light.rim)
-    bounce = np.array([0.30, 0.32, 0.24]) * float(np.mean(light.sun)) * light.sun_d[2]
-    for toward, colour in ((light.sun_d, light.sun), (np.array([0.0, 0.0, 1.0]), 0.6 * light.sky), (
-        np.array([0.0, 0.0, -1.0]), bounce,
-    )):
-        renderer.AddLight(_light(toward, colour))
+    # Sun, the brighter upper sky, light thrown up by the ground; what comes from all round is each part's ambient term.
+    # The shares add up to about 1 on a face turned to the sun, so that white paint is not burnt out; by eye, no source.
+    ground = np.array([0.22, 0.23, 0.17]) * float(np.mean(light.sun)) * (0.3 + 0.7 * light.sun_d[2])
+    renderer.AddLight(_light(light.sun_d, 0.80 * light.sun, shines=True))
+    renderer.AddLight(_light(np.array([0.0, 0.0, 1.0]), 0.40 * light.sky, shines=False))
+    renderer.AddLight(_light(np.array([0.0, 0.0, -1.0]), ground, shines=False))
     return renderer
 
 
-def _light(toward_d: Array, colour: Array) -> vtkLight:
+def _light(toward_d: Array, colour: Array, *, shines: bool) -> vtkLight:
+    """Parallel light from a direction; shines: whether it makes highlights."""
     light = vtkLight()
     light.SetLightTypeToSceneLight()
     light.SetPositional(False)
     light.SetPosition(*toward_d)
     light.SetFocalPoint(0.0, 0.0, 0.0)
     light.SetColor(*np.clip(colour, 0.0, 1.0))
+    if not shines:
+        light.SetSpecularColor(0.0, 0.0, 0.0)
     return light
