@@ -17,6 +17,7 @@ from scenes.yamlnode import Node, Scalar, Sequence, what
 MAX_STEPS = 40
 MAX_SLOTS = 8
 LEAD = "lead"
+SLOT_NAME = r"[^\W\d]\w{0,23}"
 
 
 def declared(cls: type) -> dict[str, dataclasses.Field[Any]]:
@@ -158,7 +159,7 @@ def read_formation(node: Node, path: str, log: Log) -> Any:
         here = at_path(path, name)
         if isinstance(given, Scalar) and given.is_none:
             continue
-        if name == LEAD or not re.fullmatch(r"[^\W\d]\w{0,23}", name):
+        if name == LEAD or not re.fullmatch(SLOT_NAME, name):
             log.add(mark, here, f"a slot named {shown(name)}",
                     "a name of letters, digits and _, other than lead, at most 24 long")
             slots.append(BAD)
@@ -175,8 +176,16 @@ def read_formation(node: Node, path: str, log: Log) -> Any:
     return BAD if any(s is BAD for s in slots) else tuple(slots)
 
 
-def build_scene(root: MappingNode, name: str, source: str, log: Log) -> Any:
-    """The scene of a root mapping, or BAD; complaints in the log."""
+def check_seat(film: Node | None, seats: list[str], log: Log) -> None:
+    """Complain of a camera in a seat that the formation hasn't."""
+    seat = film.get("from") if isinstance(film, MappingNode) else None
+    if isinstance(seat, Scalar) and seat.kind != "null" and not seat.is_none and seat.text not in seats:
+        log.add(seat.mark, "film.from", shown(seat.text), f"a slot of the formation or the lead: {any_of(seats)}",
+                nearest(seat.text, seats))
+
+
+def scene_values(root: MappingNode, log: Log) -> dict[str, Any]:
+    """The fields of a scene from its root mapping, BAD where one could not be read; complaints in the log."""
     keys = declared(Scene)
     unknown_keys(root, keys, "", log, more=("like",))
     own = ("script", "fault", "formation")
@@ -189,9 +198,12 @@ def build_scene(root: MappingNode, name: str, source: str, log: Log) -> Any:
         else:
             values[key] = read(given, key, log)
     values["fault"] = read_fault(root.get("fault"), "fault", log)
-    if values["film"] is None and values["formation"] is not BAD:
-        values["film"] = FilmPlan(values["formation"][0].name if values["formation"] else LEAD)
-    return made(Scene, {"name": name, "source": source, **values})
+    if values["formation"] is not BAD:
+        check_seat(root.get("film"), [LEAD, *(slot.name for slot in values["formation"])], log)
+    if values["film"] is None:
+        slots = values["formation"]
+        values["film"] = BAD if slots is BAD else FilmPlan(slots[0].name if slots else LEAD)
+    return values
 
 
 def build_airframe(root: MappingNode, name: str, log: Log) -> Any:

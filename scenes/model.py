@@ -53,6 +53,11 @@ def quantity(
     return field(default=default, metadata=meta)
 
 
+def filled(default: Any = REQUIRED) -> Any:
+    """Declare a field that another field's YAML value fills."""
+    return field() if default is REQUIRED else field(default=default)
+
+
 def yaml_key(declared: Field[Any]) -> str:
     """The YAML key of a declared field."""
     key: str = declared.metadata["key"] or declared.name.removesuffix(SUFFIXES.get(declared.metadata["dim"], "\0"))
@@ -120,7 +125,7 @@ class Loop:
     angle_rad: tuple[float, ...] = quantity(
         "loop_table", "load factor in g against loop angle in degrees, both bare numbers, angles rising",
         -4.0, 12.0, key="load_factor", fills=("angle_rad", "load_factor"))
-    load_factor: tuple[float, ...]
+    load_factor: tuple[float, ...] = filled()
     power: Power = quantity("power", "throttle: full, idle, held (as at the entry) or a percentage", default=FULL)
     close_at_m: float | None = quantity(
         "length", "height at which the healthy loop bottoms: the back half's demand is scaled to it", 1.0, 3000.0,
@@ -263,7 +268,7 @@ class FilmPlan:
                                 default=75.0 * DEG)
     width_px: int = quantity("size", "width x height of the picture in pixels, both even", key="size", default=1280,
                              fills=("width_px", "height_px"))
-    height_px: int = 720
+    height_px: int = filled(720)
     rate_fps: int = quantity("count", "frames a second", 5, 60, key="rate", default=30)
     units: str = quantity("word", "units of the overlay", choices=("feet", "metres"), default="feet")
     smoke: bool = quantity("flag", "whether the aircraft trail smoke", default=False)
@@ -281,7 +286,8 @@ class Scene:
     floor_m: float = quantity("length", "the team's own minimum height above the ground; there is no default", 0.0,
                               3000.0, example="100 ft")
     script: tuple[Step, ...] = quantity("script", "what the lead flies, step by step; the first is a level step")
-    fault: Fault | None = quantity("fault", "what fails, where and how much; nothing if absent", absent=None, part=Fault)
+    fault: Fault | None = quantity("fault", "what fails, where and how much; nothing if absent", absent=None,
+                                   part=Fault)
     formation: tuple[Slot, ...] = quantity("formation", "the wing pilots' places by name, in the lead's axes")
     break_out: BreakOut = quantity("part", "the escape the wing pilots are briefed to fly", part=BreakOut)
     watch: Watch = quantity("part", "what the wing pilots do with their eyes, and whether the lead calls",

@@ -3,11 +3,10 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import Any
 
 from scenes import shelf
 from scenes.airframe import Airframe
-from scenes.build import build_airframe, build_scene
+from scenes.build import build_airframe, scene_values
 from scenes.checks import Finding, airframe_findings, scene_findings
 from scenes.complaint import Complaint, Log, Mark, SceneError
 from scenes.merge import Layer, layers, merged
@@ -84,18 +83,20 @@ def _scene_of(found: tuple[Layer, ...]) -> Scene:
     log = Log()
     root = merged(found)
     file = found[0].file
-    scene: Any = build_scene(root, file.stem, str(file), log)
-    if scene is not BAD:
-        frames: dict[str, Airframe] = {}
-        for name in dict.fromkeys([scene.airframe, *(s.airframe for s in scene.formation if s.airframe)]):
-            try:
-                frames[name] = read_airframe(name)
-            except SceneError as exc:
-                log.complaints.extend(exc.complaints)
-        note(scene_findings(scene, frames), root, log)
+    values = scene_values(root, log)
+    unread = [name for name, value in values.items() if value is BAD]
+    scene = Scene(name=file.stem, source=str(file), **{**values, **dict.fromkeys(unread)})
+    names = [] if "airframe" in unread else [scene.airframe]
+    names += [] if "formation" in unread else [slot.airframe for slot in scene.formation if slot.airframe]
+    frames: dict[str, Airframe] = {}
+    for name in dict.fromkeys(names):
+        try:
+            frames[name] = read_airframe(name)
+        except SceneError as exc:
+            log.complaints.extend(exc.complaints)
+    note(scene_findings(scene, frames, unread), root, log)
     log.raise_if_any()
-    result: Scene = scene
-    return result
+    return scene
 
 
 def note(findings: list[Finding], root: Mapping, log: Log) -> None:
@@ -113,7 +114,7 @@ def mark_of(root: Mapping, path: str) -> Mark:
             below = node.get(key)
         elif isinstance(node, Sequence) and key.isdigit() and int(key) < len(node.items):
             below = node.items[int(key)]
-        if below is None or isinstance(below, Scalar) and below.is_none:
+        if below is None or (isinstance(below, Scalar) and below.is_none):
             return node.mark if below is None else below.mark
         node = below
     return node.mark

@@ -42,17 +42,18 @@ def wanted_of(meta: Meta) -> str:
     return WANTED[dim](meta)
 
 
-def read_number(node: Node, path: str, meta: Meta, log: Log) -> Any:
-    """A number with its unit, in range, in SI."""
+def read_number(node: Node, path: str, meta: Meta, log: Log, wanted: str | None = None) -> Any:
+    """A number with its unit, in range, in SI; wanted: what to ask for, if not by the declaration."""
     dim = meta["dim"]
+    wanted = wanted or wanted_of(meta)
     if not isinstance(node, Scalar):
-        log.add(node.mark, path, what(node), wanted_of(meta))
+        log.add(node.mark, path, what(node), wanted)
         return BAD
     try:
         value, unit = units.parse_value(dim, node.text)
     except units.UnitError as exc:
-        wanted = wanted_of(meta) + (", finite" if exc.wanted.endswith("finite") else "")
-        log.add(node.mark, path, what(node), wanted, exc.nearest)
+        finite = ", finite" if exc.wanted.endswith("finite") else ""
+        log.add(node.mark, path, what(node), wanted + finite, exc.nearest)
         return BAD
     if not meta["lo"] <= value <= meta["hi"]:
         log.add(node.mark, path, what(node), units.range_text(dim, meta["lo"], meta["hi"], unit),
@@ -119,12 +120,10 @@ def read_or_word(word: str) -> Callable[[Node, str, Meta, Log], Any]:
     def rule(node: Node, path: str, meta: Meta, log: Log) -> Any:
         if isinstance(node, Scalar) and node.text == word:
             return None
-        before = len(log.complaints)
-        value = read_number(node, path, {**meta, "dim": "time"}, log)
-        if value is BAD and isinstance(node, Scalar) and nearest(node.text, (word,)):
-            del log.complaints[before:]
-            log.add(node.mark, path, what(node), WANTED[meta["dim"]](meta), word)
-        return value
+        if isinstance(node, Scalar) and nearest(node.text, (word,)):
+            log.add(node.mark, path, what(node), wanted_of(meta), word)
+            return BAD
+        return read_number(node, path, {**meta, "dim": "time"}, log, wanted_of(meta))
 
     return rule
 
@@ -228,7 +227,7 @@ def read_loop_table(node: Node, path: str, meta: Meta, log: Log) -> Any:
         here = f"{path}.{key}"
         load = read_number(given, here, meta_of("load_factor", meta["lo"], meta["hi"], "4.6"), log)
         try:
-            angle, unit = units.parse_value("number", key)
+            angle, _ = units.parse_value("number", key)
         except units.UnitError:
             log.add(mark, here, shown(key), "a loop angle as a bare number of degrees, such as 245")
             good = False

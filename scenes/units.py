@@ -77,6 +77,10 @@ ALSO = {"kts": "kt", "knot": "kt", "knots": "kt", "feet": "ft", "foot": "ft", "'
         "seconds": "s", "second": "s", "mps": "m/s", "kph": "km/h", "kmh": "km/h", "°/s": "deg/s", "percent": "%",
         "lbs": "lb", "kgs": "kg", "m^2": "m2", "m²": "m2", "kg m^2": "kg m2", "kg*m2": "kg m2", "kgm2": "kg m2"}
 
+# The unit a value is written in where nobody has chosen one.
+USUAL = {"length": ("ft", "m", "km"), "speed": ("kt",), "angle": ("deg",), "angular_rate": ("deg/s",), "time": ("s",),
+         "temperature": ("degC",), "fraction": ("%",), "force": ("kN",)}
+
 _NUMBER = re.compile(r"[+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[eE][+-]?[0-9]+)?")
 _NOT_FINITE = re.compile(r"[+-]?\.?(?:nan|inf|infinity)\b", re.IGNORECASE)
 
@@ -169,19 +173,16 @@ def format_value(dim: str, value_si: float, unit: str | None = None) -> str:
     return f"{number} {unit}".rstrip()
 
 
-def shortest_text(dim: str, value_si: float, preferred: tuple[str, ...] = ()) -> str:
-    """The shortest text that reads back to exactly the same value; of equally short ones the first preferred."""
-    best = format_value(dim, value_si)
-    order = [*(u for u in preferred if u in DIMENSIONS[dim].units), *DIMENSIONS[dim].units]
-    for unit in dict.fromkeys(order):
+def shortest_text(dim: str, value_si: float) -> str:
+    """A value in SI as text that reads back exactly: in a usual unit if it is a round number there."""
+    for unit in (*USUAL.get(dim, ()), *DIMENSIONS[dim].units):
         value = in_unit(dim, value_si, unit)
-        for digits in range(1, 10):
-            text = f"{float(f'{value:.{digits}g}'):.12g} {unit}".rstrip()
-            if "e" not in text and parse_value(dim, text)[0] == value_si:
-                if len(text) < len(best) or (unit in preferred and len(text) <= len(best)):
-                    best = text
-                break
-    return best
+        for digits in range(1, 8):
+            number = f"{float(f'{value:.{digits}g}'):.12g}"
+            text = f"{number} {unit}".rstrip()
+            if "e" not in number and parse_value(dim, text)[0] == value_si:
+                return text
+    return format_value(dim, value_si)
 
 
 def show_value(text: str) -> str:

@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections.abc import Mapping as MappingType
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 import yaml
 
@@ -81,10 +82,10 @@ class _Builder:
         self.anchors: dict[str, tuple[Node, int, int]] = {}  # node, its expanded size, its depth
         self.count = 0
 
-    def mark(self, at: yaml.Mark) -> Mark:
+    def mark(self, at: Any) -> Mark:
         return Mark(self.file, at.line + 1, at.column + 1)
 
-    def complain(self, at: yaml.Mark, read: str, wanted: str) -> None:
+    def complain(self, at: Any, read: str, wanted: str) -> None:
         self.log.add(self.mark(at), "", read, wanted)
 
     def document(self) -> Node | None:
@@ -100,7 +101,7 @@ class _Builder:
             self.complain(loader.peek_event().start_mark, "a second document", "one document in a file")
         return node
 
-    def grow(self, size: int, at: yaml.Mark) -> None:
+    def grow(self, size: int, at: Any) -> None:
         self.count += size
         if self.count > MAX_NODES:
             self.complain(at, f"more than {MAX_NODES} values (aliases counted each time)", "a scene of ordinary size")
@@ -114,7 +115,7 @@ class _Builder:
             raise _Stop
         if isinstance(event, yaml.AliasEvent):
             if event.anchor not in self.anchors:
-                self.complain(at, f"*{shown(event.anchor)}", "an alias of a complete value that stands before it")
+                self.complain(at, f"*{shown(str(event.anchor))}", "an alias of a complete value that stands before it")
                 raise _Stop
             node, size, deep = self.anchors[event.anchor]
             self.grow(size, at)
@@ -143,7 +144,7 @@ class _Builder:
         kind = tag.rsplit(":", 1)[-1]
         return Scalar(self.mark(event.start_mark), text, kind if kind in KINDS else "other")
 
-    def sequence(self, at: yaml.Mark, depth: int) -> tuple[Node, int, int]:
+    def sequence(self, at: Any, depth: int) -> tuple[Node, int, int]:
         items: list[Node] = []
         size, deep = 1, 0
         while not self.loader.check_event(yaml.SequenceEndEvent):
@@ -153,7 +154,7 @@ class _Builder:
         self.loader.get_event()
         return Sequence(self.mark(at), tuple(items)), size, deep
 
-    def mapping(self, at: yaml.Mark, depth: int) -> tuple[Node, int, int]:
+    def mapping(self, at: Any, depth: int) -> tuple[Node, int, int]:
         items: dict[str, tuple[Mark, Node]] = {}
         size, deep = 1, 0
         while not self.loader.check_event(yaml.MappingEndEvent):
