@@ -53,7 +53,8 @@ def build_parser() -> argparse.ArgumentParser:
             sub.add_argument("--at", dest="at_s", type=float, metavar="S", help="second of the script")
             sub.add_argument("--key-moments", action="store_true", help="one still for each key moment")
     add("list", "list shipped scenes and airframes")
-    add("schema", "print the JSON Schema of the scene file")
+    add("schema", "print the JSON Schema of the scene file").add_argument(
+        "--airframe", action="store_true", help="that of the airframe file")
     add("doctor", "can this machine draw and encode")
     return parser
 
@@ -164,11 +165,28 @@ def _say(args: argparse.Namespace, data: dict[str, Any], words: str) -> None:
 
 
 def _check(args: argparse.Namespace) -> int:
-    from scenes.reader import read_scene
+    from scenes.reader import SceneError, read_scene
 
-    titles = {name: read_scene(name).title for name in args.scene}
-    _say(args, {"scenes": titles}, "\n".join(f"{name}: no faults found ({title})" for name, title in titles.items()))
-    return 0
+    titles: dict[str, str] = {}
+    faulty: dict[str, SceneError] = {}
+    for name in dict.fromkeys(args.scene):
+        try:
+            titles[name] = read_scene(name).title
+        except SceneError as exc:
+            faulty[name] = exc
+    complaints = [one for exc in faulty.values() for one in exc.details()["complaints"]]
+    for exc in faulty.values():
+        print(exc, file=sys.stderr)
+    code = 2 if faulty else 0
+    data = {"scenes": titles, "faulty": list(faulty), "complaints": complaints, "exit_code": code}
+    words = [f"{name}: no faults found ({title})" for name, title in titles.items()]
+    words += [f"{name}: {_count(len(exc.complaints), 'fault')}" for name, exc in faulty.items()]
+    _say(args, data, "\n".join(words))
+    return code
+
+
+def _count(number: int, noun: str) -> str:
+    return f"{number} {noun}{'' if number == 1 else 's'}"
 
 
 def _list(args: argparse.Namespace) -> int:
@@ -182,9 +200,9 @@ def _list(args: argparse.Namespace) -> int:
 
 
 def _schema(args: argparse.Namespace) -> int:
-    from scenes.schema import scene_schema
+    from scenes.schema import airframe_schema, scene_schema
 
-    print(json.dumps(scene_schema(), indent=2))
+    print(json.dumps(airframe_schema() if args.airframe else scene_schema(), indent=2))
     return 0
 
 
@@ -232,7 +250,8 @@ def main(argv: Sequence[str] | None = None) -> int:
         if code is None or os.environ.get("LATEPULL_DEBUG"):
             raise
         if args.json:
-            print(json.dumps({"error": str(exc), "exit_code": code}))
+            details = exc.details() if hasattr(exc, "details") else {}
+            print(json.dumps({"error": str(exc), "exit_code": code, **details}, default=str))
         print(str(exc), file=sys.stderr)
         return int(code)
 
