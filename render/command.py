@@ -174,13 +174,13 @@ def _check(args: argparse.Namespace) -> int:
             titles[name] = read_scene(name).title
         except SceneError as exc:
             faulty[name] = exc
-    complaints = [one for exc in faulty.values() for one in exc.details()["complaints"]]
-    for exc in faulty.values():
-        print(exc, file=sys.stderr)
+    complaints = [one for fault in faulty.values() for one in fault.details()["complaints"]]
+    for fault in faulty.values():
+        print(fault, file=sys.stderr)
     code = 2 if faulty else 0
     data = {"scenes": titles, "faulty": list(faulty), "complaints": complaints, "exit_code": code}
     words = [f"{name}: no faults found ({title})" for name, title in titles.items()]
-    words += [f"{name}: {_count(len(exc.complaints), 'fault')}" for name, exc in faulty.items()]
+    words += [f"{name}: {_count(len(fault.complaints), 'fault')}" for name, fault in faulty.items()]
     _say(args, data, "\n".join(words))
     return code
 

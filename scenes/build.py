@@ -198,11 +198,13 @@ def scene_values(root: MappingNode, log: Log) -> dict[str, Any]:
         else:
             values[key] = read(given, key, log)
     values["fault"] = read_fault(root.get("fault"), "fault", log)
-    if values["formation"] is not BAD:
-        check_seat(root.get("film"), [LEAD, *(slot.name for slot in values["formation"])], log)
+    slots = root.get("formation")
+    if isinstance(slots, MappingNode):
+        there = [name for name, (_, n) in slots.items.items() if not (isinstance(n, Scalar) and n.is_none)]
+        check_seat(root.get("film"), [LEAD, *there], log)
     if values["film"] is None:
-        slots = values["formation"]
-        values["film"] = BAD if slots is BAD else FilmPlan(slots[0].name if slots else LEAD)
+        read = values["formation"]
+        values["film"] = BAD if read is BAD else FilmPlan(read[0].name if read else LEAD)
     return values
 
 

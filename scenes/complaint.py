@@ -34,7 +34,7 @@ class Complaint:
 
     def __str__(self) -> str:
         """``file:line:column: path: read X, wanted Y (did you mean Z?)``, parts that are unknown left out."""
-        place = ":".join([self.file, *(str(n) for n in (self.line, self.column) if n > 0)])
+        place = ":".join([self.file, *(str(n) for n in (self.line, self.column) if n > 0)]) if self.file else ""
         parts = [part for part in (place, self.path) if part]
         guess = f" (did you mean {self.nearest}?)" if self.nearest else ""
         return ": ".join([*parts, f"read {self.read}, wanted {self.wanted}{guess}"])

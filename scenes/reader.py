@@ -73,7 +73,7 @@ def _file(kind: str, name_or_path: str | Path) -> Path:
     text = str(name_or_path)
     if isinstance(name_or_path, Path) and not shelf.is_path(text):
         text = f"./{text}"
-    file = shelf.find(kind, text, None, Mark(text), "", log)
+    file = shelf.find(kind, text, None, Mark(""), "", log)
     log.raise_if_any()
     assert file is not None
     return file

@@ -20,8 +20,8 @@ Meta = Mapping[str, Any]
 
 MAX_TEXT = {"title": 200, "notes": 10_000}
 KNOTS = (2, 32)  # least and most entries of a loop table
-# H.264 (ITU-T H.264, Table A-1): level 5.2 takes frames of up to 36 864 macroblocks of 16 x 16; yuv420p wants
-# even sizes. The least size is our own: the overlay needs room.
+# ITU-T H.264, Table A-1 (value from memory): level 5.2, the highest that browsers are sure to play, takes frames of
+# up to 36 864 macroblocks of 16 x 16; yuv420p wants even sizes. The least size is our own: the overlay needs room.
 MACROBLOCKS = 36_864
 LEAST_SIZE = (160, 90)
 MOST_SIZE = (4096, 4096)
@@ -170,7 +170,7 @@ def read_size(node: Node, path: str, meta: Meta, log: Log) -> Any:
     size = int(match[1]), int(match[2])
     fits = nearest_size(*size)
     if size != fits:
-        log.add(node.mark, path, what(node), "a size that H.264 takes: both even, from "
+        log.add(node.mark, path, what(node), "a size that an H.264 film takes: both even, from "
                 f"{LEAST_SIZE[0]}x{LEAST_SIZE[1]}, not more than {MACROBLOCKS} blocks of 16x16 pixels",
                 f"{fits[0]}x{fits[1]}")
         return BAD

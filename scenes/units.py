@@ -1,8 +1,8 @@
 """Dimensions, their units with exact factors, and text such as ``385 kt`` to SI and back.
 
-Sources: BIPM, The International System of Units (9th ed. 2019), Table 8 and text (nautical mile 1852 m,
-knot = nautical mile per hour); NIST SP 811 (2008), Appendix B.8, factors in bold type are exact
-(foot 0.3048 m, pound 0.453 592 37 kg, pound-force 4.448 221 615 260 5 N, g0 9.806 65 m/s2).
+Sources: BIPM, The International System of Units, 8th ed. (2006), Table 8: nautical mile 1852 m, knot one nautical
+mile an hour = (1852/3600) m/s; NIST SP 811 (2008), Appendix B.8 (from memory): foot 0.3048 m, pound 0.453 592 37 kg,
+g0 9.806 65 m/s2, all exact; the others follow from these.
 """
 
 from __future__ import annotations
