@@ -46,7 +46,7 @@ def fly_scene(scene: Scene, airframe_of: Callable[[str], Airframe], ground: Grou
     steps = round((plan.longest_s + AFTER_SCRIPT_S) / DT_S)
     healthy = fly_batch([plan], scale, steps, heights, grid, healthy=True)
     end_s = healthy.mem[0, s.M_SCRIPT_END_S]
-    if healthy.status[0, 0, 0] == r.CONTACT:
+    if healthy.status[0, 0, 0] == r.CONTACT and (end_s < 0.0 or healthy.status[0, 0, 1] * DT_S < end_s):
         end_s = healthy.status[0, 0, 1] * DT_S
     elif end_s < 0.0:
         raise FlightError(f"the script of '{scene.name}' does not end: step {int(healthy.mem[0, s.M_STEP]) + 1} "

@@ -24,6 +24,7 @@ from render.frames import Array, quat_from_euler
 from scenes.airframe import Airframe
 from scenes.model import BreakOut, Climb, Dive, Fault, Level, Loop, Power, PullOut, Roll, Scene
 
+LOOP_LAST_RAD = np.radians(350.0)  # a table that ends beyond this ends the loop with its last knot
 DT_S = 0.02
 ONSET_LEAD_GPS = 4.0  # common practice, no source: a brisk but smooth hand
 MAX_KNOTS = 32
@@ -126,6 +127,7 @@ def script_table(scene: Scene) -> tuple[Array, Array, Array, float]:
             c[: len(x) - 1] = pieces
             c[len(x) - 1 :, 3] = n[-1]
             row[s.S_KIND], row[s.S_SCHEDULE] = r.LOOP, len(knots)
+            row[s.S_ANGLE] = min(x[-1], 2.0 * np.pi) if x[-1] > LOOP_LAST_RAD else 2.0 * np.pi
             knots.append(k)
             coeffs.append(c)
             longest += 75.0

@@ -40,6 +40,8 @@ GAIN_PATH = 1.0  # 1/s, flight path angle held by the lead
 GAIN_HEIGHT = 0.25  # 1/s, sink asked per metre of height missed
 GAIN_ROLL = 2.5  # 1/s
 LEVEL_N_MIN, LEVEL_N_MAX = 0.6, 3.0  # what a lead asks of his formation in level flight (common practice, no source)
+SPEED_FLOOR = 1.2  # times the stall speed: where a lead gives up his climb (common practice, no source)
+NOSE_DOWN_RAD = 1.2  # for each stall speed he is slower than that
 GAIN_SPEED = 0.6  # 1/s, acceleration asked per m/s of speed missed
 
 
@@ -89,10 +91,14 @@ def roll_to_side(y: Array, side_n: float, side_e: float) -> float:
 
 
 @njit(cache=True)
-def path_demand(y: Array, gamma_asked: float) -> float:
-    """Load factor that turns the flight path toward an angle."""
+def path_demand(y: Array, af: Any, case: Any, gamma_asked: float) -> float:
+    """Load factor that turns the flight path toward an angle; below SPEED_FLOOR stall speeds he lowers the nose."""
     _, _, az, _, _, _, _, _, cz = path_axes(y)
     gamma = -math.asin(min(max(az, -1.0), 1.0))
+    _, _, rho, _ = air_of(y, case)
+    stall = math.sqrt(2.0 * af.mass_kg * G0_MPS2 / (rho * af.wing_area_m2 * af.cl_max))
+    slow = max(SPEED_FLOOR - y[V] / stall, 0.0)
+    gamma_asked = max(gamma_asked - NOSE_DOWN_RAD * slow, min(gamma_asked, -0.35))
     return cz + GAIN_PATH * (gamma_asked - gamma) * y[V] / G0_MPS2
 
 
@@ -111,7 +117,7 @@ def lead_commands(
     n = 1.0
     if kind == LEVEL:
         sink = min(max(GAIN_HEIGHT * (mem[M_HEIGHT] - height), -15.0), 15.0)
-        n = path_demand(y, math.asin(min(max(sink / y[V], -0.5), 0.5)))
+        n = path_demand(y, af, case, math.asin(min(max(sink / y[V], -0.5), 0.5)))
         n = min(max(n, LEVEL_N_MIN), LEVEL_N_MAX)
     elif kind == LOOP:
         k = int(row[S_SCHEDULE])
@@ -120,9 +126,9 @@ def lead_commands(
         n = row[S_LOAD]
         roll = row[S_RATE] if row[S_ANGLE] > 0.0 else -row[S_RATE]
     elif kind == CLIMB:
-        n = min(max(path_demand(y, row[S_ANGLE]), 0.2), row[S_LOAD])
+        n = min(max(path_demand(y, af, case, row[S_ANGLE]), 0.2), row[S_LOAD])
     elif kind == DIVE:
-        n = max(min(path_demand(y, -row[S_ANGLE]), 2.0), row[S_LOAD])
+        n = max(min(path_demand(y, af, case, -row[S_ANGLE]), 2.0), row[S_LOAD])
     elif kind == PULL_OUT:
         n = row[S_LOAD]
     n, limit = limit_demand(y, af, case, n, af.cl_buffet + 0.6 * (af.cl_max - af.cl_buffet))
@@ -166,7 +172,8 @@ def step_done(t: float, y: Array, mem: Array, script: Array) -> bool:
     kind = int(row[S_KIND])
     _, _, az = path_x(y)
     if kind == LOOP:
-        return mem[M_LOOP] >= 2.0 * math.pi - 1e-9
+        # the unloading at the end of the table is part of the loop, what is left of its angle is not
+        return mem[M_LOOP] >= row[S_ANGLE]
     if kind == ROLL_STEP:
         return abs(mem[M_ROLLED]) >= abs(row[S_ANGLE]) - 1e-6
     if kind == PULL_OUT:

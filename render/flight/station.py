@@ -40,6 +40,9 @@ GAIN_TRIM = 0.08  # 1/s3
 TRIM_MAX_MPS2 = 8.0
 BANK_MAX_RAD = 0.30
 THROTTLE_LEAD = 2.5
+CORRECTION_MAX_MPS2 = 12.0
+# Beyond this from his slot a wing pilot no longer chases it (he has overrun the lead, or lost him): straight on.
+GIVES_UP_M, GAVE_UP_M = 30.0, 60.0
 ONSET_WING_GPS = 6.0
 
 
@@ -125,10 +128,15 @@ def wing_commands(
     pull = n_ahead + GAIN_ACC * (n_there - n_felt)
     push = _between(lead_a, jt, ft, A_PUSH)
     # what he corrects, earth axes
+    missed = math.sqrt(e_n * e_n + e_e * e_e + e_d * e_d)
+    keeps = min(max((GAVE_UP_M - missed) / (GAVE_UP_M - GIVES_UP_M), 0.0), 1.0)
     c_n = GAIN_VEL * v_n + GAIN_POS * e_n + trim[0]
     c_e = GAIN_VEL * v_e + GAIN_POS * e_e + trim[1]
     c_d = GAIN_VEL * v_d + GAIN_POS * e_d + trim[2]
-    error_out[0], error_out[1], error_out[2] = e_n, e_e, e_d
+    size = math.sqrt(c_n * c_n + c_e * c_e + c_d * c_d)
+    part = keeps * min(1.0, CORRECTION_MAX_MPS2 / max(size, 1e-9))
+    c_n, c_e, c_d = part * c_n, part * c_e, part * c_d
+    error_out[0], error_out[1], error_out[2] = keeps * e_n, keeps * e_e, keeps * e_d
     mx, my, mz, nx, ny, nz, lx, ly, lz = path_axes(y)
     along = push + c_n * mx + c_e * my + c_d * mz
     # lift direction: the lead's, carried forward to now by his rate of turn, across the own path
@@ -150,8 +158,10 @@ def wing_commands(
     cb, sb = math.cos(bank), math.sin(bank)
     wx, wy, wz = cb * ux + sb * rx, cb * uy + sb * ry, cb * uz + sb * rz
     error = math.atan2(wx * nx + wy * ny + wz * nz, -(wx * lx + wy * ly + wz * lz))
-    roll = lead[ROLL] + 3.0 * error
-    n, limit = limit_demand(y, af, case, up / cb, 0.97 * af.cl_max)
+    roll = keeps * (lead[ROLL] + 3.0 * error)
+    # straight on: the load factor of a straight path is gravity's part across it (a turn flown out stays flown)
+    up = keeps * up / cb + (1.0 - keeps) * min(max(lz, 0.0), 1.0)
+    n, limit = limit_demand(y, af, case, up, 0.97 * af.cl_max)
     wanted_throttle = throttle_for_speed(y, af, case, along + G0_MPS2 * mz)
     # he moves the lever further than he needs, since the engine lags
     engine = (y[ENGINE] - af.thrust_idle) / (1.0 - af.thrust_idle)
