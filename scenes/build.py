@@ -180,7 +180,8 @@ def check_seat(film: Node | None, seats: list[str], log: Log) -> None:
     """Complain of a camera in a seat that the formation hasn't."""
     seat = film.get("from") if isinstance(film, MappingNode) else None
     if isinstance(seat, Scalar) and seat.kind != "null" and not seat.is_none and seat.text not in seats:
-        log.add(seat.mark, "film.from", shown(seat.text), f"a slot of the formation or the lead: {any_of(seats)}",
+        known = any_of(dict.fromkeys(seats))
+        log.add(seat.mark, "film.from", shown(seat.text), f"a slot of the formation or the lead: {known}",
                 nearest(seat.text, seats))
 
 

@@ -12,7 +12,7 @@ import re
 from collections.abc import Mapping
 from dataclasses import dataclass
 
-from scenes.complaint import any_of, nearest, shown
+from scenes.complaint import any_of, nearest
 
 FOOT_M = 0.3048
 INCH_M = 0.0254
@@ -143,14 +143,14 @@ def in_unit(dim: str, value_si: float, unit: str) -> float:
     return value_si / u.factor - u.offset
 
 
-def _rounded(value: float, up: bool | None) -> str:
-    """Four significant digits, rounded up, down or (None) to the nearest."""
+def _rounded(value: float, up: bool) -> str:
+    """Four significant digits, rounded up or down."""
     if value == 0.0:
         return "0"
     scale = 10.0 ** (3 - math.floor(math.log10(abs(value))))
     scaled = value * scale
     near = round(scaled)
-    if up is not None and abs(scaled - near) > 1e-6:
+    if abs(scaled - near) > 1e-6:
         near = math.ceil(scaled) if up else math.floor(scaled)
     return f"{near / scale:.10g}"
 
@@ -158,11 +158,11 @@ def _rounded(value: float, up: bool | None) -> str:
 def range_text(dim: str, lo: float, hi: float, unit: str) -> str:
     """A range in a unit, the limits rounded inward: ``38.88 kt to 680.3 kt``."""
     tail = f" {unit}" if unit else ""
-    low = f"{_rounded(in_unit(dim, lo, unit), True)}{tail}"
-    high = f"{_rounded(in_unit(dim, hi, unit), False)}{tail}"
-    if math.isinf(lo):
-        return f"at most {high}" if not math.isinf(hi) else "any"
-    return f"at least {low}" if math.isinf(hi) else f"{low} to {high}"
+    low = "" if math.isinf(lo) else f"{_rounded(in_unit(dim, lo, unit), True)}{tail}"
+    high = "" if math.isinf(hi) else f"{_rounded(in_unit(dim, hi, unit), False)}{tail}"
+    if low and high:
+        return f"{low} to {high}"
+    return f"at least {low}" if low else f"at most {high}" if high else "any"
 
 
 def format_value(dim: str, value_si: float, unit: str | None = None) -> str:
@@ -174,17 +174,20 @@ def format_value(dim: str, value_si: float, unit: str | None = None) -> str:
 
 
 def shortest_text(dim: str, value_si: float) -> str:
-    """A value in SI as text that reads back exactly: in a usual unit if it is a round number there."""
-    for unit in (*USUAL.get(dim, ()), *DIMENSIONS[dim].units):
-        value = in_unit(dim, value_si, unit)
-        for digits in range(1, 8):
-            number = f"{float(f'{value:.{digits}g}'):.12g}"
-            text = f"{number} {unit}".rstrip()
-            if "e" not in number and parse_value(dim, text)[0] == value_si:
-                return text
+    """A value in SI as text that reads back exactly: the shortest in a usual unit if it is a round number there."""
+    for units in (USUAL.get(dim, ()), tuple(DIMENSIONS[dim].units)):
+        texts = [text for unit in units if (text := _round_text(dim, value_si, unit)) is not None]
+        if texts:
+            return min(texts, key=len)
     return format_value(dim, value_si)
 
 
-def show_value(text: str) -> str:
-    """A text as errors show it."""
-    return shown(text)
+def _round_text(dim: str, value_si: float, unit: str) -> str | None:
+    """A value of up to seven digits in a unit, if such a one reads back exactly."""
+    value = in_unit(dim, value_si, unit)
+    for digits in range(1, 8):
+        number = f"{float(f'{value:.{digits}g}'):.12g}"
+        text = f"{number} {unit}".rstrip()
+        if "e" not in number and parse_value(dim, text)[0] == value_si:
+            return text
+    return None
