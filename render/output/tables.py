@@ -99,11 +99,11 @@ def _slot(study: Study, slot: str, units: Units) -> list[str]:
         lines.append(f"If nobody acts, it meets the ground {seconds(contact - study.faulted.fault_s)} after the fault.")
     head = ("observer", "notices", "by", "reaction", "against the last pull", "lowest point if he breaks out then")
     rows: list[tuple[str, ...]] = [head]
-    rows += [_observer(study, notice, units) for notice in study.notices.get(slot, ())]
+    rows += [_observer(study, slot, notice, units) for notice in study.notices.get(slot, ())]
     return lines + (columns(rows, "llllll") if len(rows) > 1 else [])
 
 
-def _observer(study: Study, notice: Notice, units: Units) -> tuple[str, ...]:
+def _observer(study: Study, slot: str, notice: Notice, units: Units) -> tuple[str, ...]:
     if notice.time_s is None:
         when, by = "never noticed", "-"
     else:
@@ -116,8 +116,20 @@ def _observer(study: Study, notice: Notice, units: Units) -> tuple[str, ...]:
         by,
         seconds(notice.reaction_s),
         lateness_words(notice.lateness_s),
-        units.clearance(notice.clearance_m, "floor"),
+        break_out_words(study, slot, notice, units),
     )
+
+
+def break_out_words(study: Study, slot: str, notice: Notice, units: Units) -> str:
+    """How low the break-out of one observer ends: above or below the floor, or how much height it lacks."""
+    if notice.clearance_m is None or notice.clearance_ground_m is None or notice.time_s is None:
+        return "-"
+    contact = study.faulted.contact_s[slot_index(study, slot)]
+    if contact is not None and notice.time_s + notice.reaction_s >= contact:
+        return "meets the ground before he acts"
+    if notice.clearance_ground_m < 0.0:
+        return f"meets the ground, {units.length(-notice.clearance_ground_m)} short"
+    return units.clearance(notice.clearance_m, "floor")
 
 
 def columns(rows: Iterable[tuple[str, ...]], align: str) -> list[str]:

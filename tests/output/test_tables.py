@@ -35,7 +35,7 @@ Slot right: last pull to clear the floor: 2.0 s after the fault; to clear the gr
 If nobody acts, it meets the ground 6.9 s after the fault.
   observer  notices                by              reaction  against the last pull  lowest point if he breaks out then
   early     1.5 s after the fault  horizon's tilt  0.8 s     too late by 0.3 s      59 ft below the floor
-  likely    2.6 s after the fault  ground closing  1.5 s     too late by 2.1 s      413 ft below the floor
+  likely    2.6 s after the fault  ground closing  1.5 s     too late by 2.1 s      meets the ground, 313 ft short
   late      never noticed          -               3.0 s     -                      -
 """
 
