@@ -26,20 +26,18 @@ class Craft:
         self._actors = tuple(part_actor(part, ambient, opacity) for part in self._parts)
         self._corners = tuple(outermost(np.asarray(part.mesh.points, float)) for part in self._parts)
         self._matrices = [np.eye(4) for _ in self._parts]
-        self._own = False
 
     def actors(self, *, clear: bool) -> list[vtkActor]:
         """The see-through actors, or the others: they are drawn in that order."""
         return [a for p, a in zip(self._parts, self._actors, strict=True) if see_through(p, a) == clear]
 
-    def place(self, body_to_display: Array, moved_rad: Mapping[str, float], *, shown: bool, own: bool) -> None:
+    def place(self, body_to_display: Array, moved_rad: Mapping[str, float], *, own: bool) -> None:
         """Place all parts by the (4, 4) matrix of the body axes, each turned about its hinge.
 
         moved_rad: angle by who moves it. own: seen from its own seat, only the parts for that are shown.
         """
-        self._own = own
         for i, (part, actor) in enumerate(zip(self._parts, self._actors, strict=True)):
-            visible = shown and (part.own_view or not own)
+            visible = part.own_view or not own
             actor.SetVisibility(visible)
             if not visible:
                 continue
@@ -48,6 +46,20 @@ class Craft:
                 matrix = matrix @ part_matrix(part, moved_rad.get(part.moved_by, 0.0))
             self._matrices[i] = matrix
             actor.GetUserMatrix().DeepCopy(matrix.ravel())
+
+    def hide(self) -> None:
+        """Draw nothing of it."""
+        for actor in self._actors:
+            actor.SetVisibility(False)
+
+    def points_d_m(self) -> Array:
+        """All corners of the visible parts as placed, (N, 3) m, display axes."""
+        found = [
+            np.asarray(part.mesh.points, float) @ matrix[:3, :3].T + matrix[:3, 3]
+            for part, actor, matrix in zip(self._parts, self._actors, self._matrices, strict=True)
+            if actor.GetVisibility()
+        ]
+        return np.concatenate(found)
 
     def rects(self, camera: Camera, display_to_earth: Array, margin_px: int = 3) -> list[Rect]:
         """Rectangles of the picture that hold the visible parts, right for parts that reach behind the camera."""

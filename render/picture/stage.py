@@ -60,7 +60,7 @@ class Stage:
         self._land = Land(ground, day, seed)
         ambient = 0.5 * float(np.mean(self._land.light.sky))
         self._craft = [Craft(build_shape(frame).parts, ambient=ambient) for frame in airframes]
-        self._renderer = _renderer(self._land.light)
+        self.renderer = _renderer(self._land.light)
         everyone = list(self._craft)
         for craft in everyone:
             self._add(craft.actors(clear=False))
@@ -69,7 +69,7 @@ class Stage:
             self._add(craft.actors(clear=True))
         self._window = new_window()
         self._window.SetSize(width, height)
-        self._window.AddRenderer(self._renderer)
+        self._window.AddRenderer(self.renderer)
         self._pixels = vtkUnsignedCharArray()
         self._pixels.SetNumberOfComponents(3)
         self._pixels.SetNumberOfTuples(width * height)
@@ -86,8 +86,8 @@ class Stage:
     def close(self) -> None:
         """Give the window back; drawing is over."""
         if self._window is not None:
-            self._renderer.RemoveAllViewProps()
-            self._window.RemoveRenderer(self._renderer)
+            self.renderer.RemoveAllViewProps()
+            self._window.RemoveRenderer(self.renderer)
             self._window.Finalize()
             self._window = None
 
@@ -108,17 +108,29 @@ class Stage:
             smooth_edges(self._frame, rects)
         return self._frame
 
+    @property
+    def land_actors(self) -> Sequence[Any]:
+        """The actors of land and sky."""
+        return tuple(self._land.actors)
+
+    def craft_points_e_m(self, k: int) -> Array:
+        """All corners of aircraft k's visible parts as last drawn, (N, 3) m, earth axes."""
+        return self._craft[k].points_d_m() @ DISPLAY_FROM_EARTH
+
     def _add(self, actors: Sequence[Any]) -> None:
         for actor in actors:
-            self._renderer.AddActor(actor)
+            self.renderer.AddActor(actor)
 
     def _place(self, instant: Instant) -> None:
         for k, craft in enumerate(self._craft):
+            if k >= len(instant.alive):
+                craft.hide()
+                continue
             matrix = body_to_display(instant.pos_e_m[k], instant.quat_eb[k])
-            craft.place(matrix, moved_parts(instant, k), shown=True, own=k == self._own)
+            craft.place(matrix, moved_parts(instant, k), own=k == self._own)
 
     def _aim(self, camera: Camera) -> None:
-        vtk_camera = self._renderer.GetActiveCamera()
+        vtk_camera = self.renderer.GetActiveCamera()
         pos = to_display(camera.pos_e_m)
         axis, up = (to_display(quat_rotate(camera.quat_ec, np.array(v))) for v in ((0.0, 0.0, 1.0), (0.0, -1.0, 0.0)))
         vtk_camera.SetPosition(*pos)
