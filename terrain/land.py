@@ -8,18 +8,17 @@ from typing import Any
 
 import numpy as np
 
-from terrain.pattern import Plan
+from terrain.pattern import FIELDS_OF_BLOCK, Plan, Shore
 
 Colour = tuple[float, float, float]  # sRGB, 0..1
 
 
 @dataclass(frozen=True, slots=True)
 class FieldKind:
-    """One use of fields: keys up to ``up_to`` (0..1, rising through the list) have colours between two ends."""
+    """One use of fields: keys up to ``up_to`` (0..1, rising through the list)."""
 
     up_to: float
-    low: Colour
-    high: Colour
+    colour: Colour
 
 
 @dataclass(frozen=True, slots=True)
@@ -34,6 +33,16 @@ class Airfield:
     grass: tuple[Colour, Colour]
     surface: Colour
     apron: Colour
+
+    @property
+    def half_along_m(self) -> float:
+        """How far the airfield's bounds lie from its middle along the runway."""
+        return 0.5 * self.length_m + 240.0
+
+    @property
+    def across_m(self) -> tuple[float, float]:
+        """Where its bounds lie to the right (negative) and to the left of the runway's middle line."""
+        return -150.0, 340.0
 
     def along_across(self, north_m: Any, east_m: Any) -> tuple[Any, Any]:
         """Distance along the runway from its middle, and to the left of its heading, m."""
@@ -60,8 +69,8 @@ class Land:
     hedge: Colour
     road: Colour
     verge: Colour
-    road_line: float
-    hedge_shown: float
+    road_line: bool  # a white line along the middle
+    wild_level: float  # where the first two colours of open land meet
     airfield: Airfield
 
 
@@ -71,13 +80,20 @@ def colour(text: str) -> Colour:
     return red, green, blue
 
 
+def _shore(recipe: Mapping[str, Any]) -> Shore | None:
+    shore = recipe.get("shore")
+    if shore is None:
+        return None
+    return Shore(float(np.radians(shore["bearing_deg"])), float(shore["distance"]), float(shore["below"]))
+
+
 def land_of(recipe: Mapping[str, Any], seed: int) -> Land:
     """The land of a recipe (see terrain/recipes/*.yaml) and a seed."""
     p, c, a = recipe["plan"], recipe["colours"], recipe["airfield"]
     plan = Plan(
-        salt=float((seed * 37 + 5) % 289), grain_rad=np.radians(p["grain_deg"]), field_u_m=p["field"][0],
-        field_v_m=p["field"][1], bend_m=p["bend"], enclosed=p["enclosed"], hedge_m=p["hedge"], road_m=p["road"],
-        road_rows=p["road_rows"], road_every_m=p["road_every"], wood_part=p["wood_part"], wild_wood=p["wild_wood"],
+        salt=float((seed * 37 + 5) % 289), grain_rad=np.radians(p["grain_deg"]), 
+        block_m=float(np.sqrt(FIELDS_OF_BLOCK * p["field"][0] * p["field"][1])), bend_m=p["bend"], enclosed=p["enclosed"], hedge_m=p["hedge"], road_m=p["road"],
+        road_rows=p["road_rows"], shore=_shore(recipe), road_every_m=p["road_every"], wood_part=p["wood_part"], wild_wood=p["wild_wood"],
     )
     airfield = Airfield(
         np.radians(a["heading_deg"]), a["length"], a["width"], a["north"], a["east"],
@@ -85,7 +101,7 @@ def land_of(recipe: Mapping[str, Any], seed: int) -> Land:
     )
     one, two, three = (colour(x) for x in c["wild"])
     return Land(
-        plan, (one, two, three), tuple(FieldKind(k[0], colour(k[1]), colour(k[2])) for k in c["fields"]),
+        plan, (one, two, three), tuple(FieldKind(k[0], colour(k[1])) for k in c["fields"]),
         c["crop_from"], colour(c["wood"]), colour(c["hedge"]), colour(c["road"]), colour(c["verge"]),
-        float(recipe.get("road_line", 0)), float(recipe.get("hedge_shown", 1)), airfield,
+        bool(recipe.get("road_line", False)), float(recipe.get("wild_level", 0.5)), airfield,
     )

@@ -5,7 +5,7 @@ is a permutation polynomial on integers below 2**24, so that single precision th
 give the same numbers, and a tree planted here stands on the hedge painted there.
 
     x east, y north -> u along the land's own grain, v across it
-    block: BU x BV metres, rows shifted by a hash; each block is cut three times into fields
+    block: a square, rows shifted by a hash; each block is cut three times into 8 fields
 """
 
 from __future__ import annotations
@@ -16,12 +16,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 Array = NDArray[np.float64]
-BLOCK_OF_FIELD = np.array([2.83, 2.83])  # a block cut three times has 8 fields: sqrt(8) field sizes a side
-CUTS = 3
+FIELDS_OF_BLOCK = 8  # each square block is cut in two, each half in two across, each quarter in two again
 
 
 def permute(x: Array) -> Array:
-    """A fixed shuffle of the integers 0..288; exact for inputs below 700 in single precision.
+    """A fixed shuffle of the integers to 0..288; exact for whole numbers within 700 of zero in single precision.
 
     Source: (34 x + 10) x mod 289, the permutation polynomial of webgl-noise (Gustavson, McEwan et al. 2012,
     "Efficient computational noise in GLSL"; from memory).
@@ -30,14 +29,9 @@ def permute(x: Array) -> Array:
     return y - np.floor((y + 0.5) / 289.0) * 289.0
 
 
-def wrap(x: Array) -> Array:
-    """Integers (any size, either sign) to 0..288."""
-    return x - np.floor((x + 0.5) / 289.0) * 289.0
-
-
 def hash2(i: Array, j: Array, salt: float) -> Array:
-    """Integers 0..288 from a lattice place; salt tells uses apart."""
-    return permute(permute(wrap(i + salt)) + wrap(j))
+    """Integers 0..288 from a lattice place within 400 of zero; salt tells uses apart."""
+    return permute(permute(i + salt) + j)
 
 
 def value_noise(u: Array, v: Array, salt: float) -> Array:
@@ -52,31 +46,40 @@ def value_noise(u: Array, v: Array, salt: float) -> Array:
 
 
 @dataclass(frozen=True, slots=True)
+class Shore:
+    """A sea beyond a winding line."""
+
+    bearing_rad: float  # from the display centre to the sea
+    distance_m: float
+    below_m: float  # the sea's surface below the field
+    blend_m: float = 420.0  # nothing of the shore's look lies farther from the line than this
+
+    def seaward_m(self, north_m: Array, east_m: Array) -> Array:
+        """How far out to sea, m; negative on land. Same arithmetic as shaders/water.glsl."""
+        c, s = np.cos(self.bearing_rad), np.sin(self.bearing_rad)
+        out = np.asarray(north_m, float) * c + np.asarray(east_m, float) * s - self.distance_m
+        t = np.asarray(east_m, float) * c - np.asarray(north_m, float) * s
+        bays = 130.0 * np.sin(t * 0.00131 + 0.7) + 55.0 * np.sin(t * 0.0047 + 2.1) + 14.0 * np.sin(t * 0.0171)
+        result: Array = out - bays
+        return result
+
+
+@dataclass(frozen=True, slots=True)
 class Plan:
     """Sizes and chances of a land's plan, from its recipe (see ``plan_of``); lengths in metres."""
 
     salt: float  # 0..288, from the seed
     grain_rad: float  # direction of u, from east toward north
-    field_u_m: float
-    field_v_m: float
+    block_m: float  # side of a block
     bend_m: float  # how far straight lines are bent
     enclosed: float  # part of the blocks that are cut into fields
     hedge_m: float  # hedge width; 0 none
     road_m: float  # road width
     road_rows: float  # part of the rows of blocks with a road along them
+    shore: Shore | None
     road_every_m: float  # spacing of the roads across; 0 none
     wood_part: float  # part of the fields that are woods
     wild_wood: float  # noise level above which open land is wooded; above 1 none
-
-    @property
-    def block_u_m(self) -> float:
-        """Length of a block along u."""
-        return float(self.field_u_m * BLOCK_OF_FIELD[0])
-
-    @property
-    def block_v_m(self) -> float:
-        """Length of a block along v."""
-        return float(self.field_v_m * BLOCK_OF_FIELD[1])
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -102,7 +105,7 @@ def grain(plan: Plan, north_m: Array, east_m: Array) -> tuple[Array, Array]:
 def from_grain(plan: Plan, u_m: Array, v_m: Array) -> tuple[Array, Array]:
     """North and east of places given in u, v (the inverse of ``grain``, by fixed-point steps to 1e-6 m)."""
     u, v = np.array(u_m, float), np.array(v_m, float)
-    for _ in range(40):
+    for _ in range(15):
         u = u_m - plan.bend_m * np.sin(v * 0.0061 + 1.0)
         v = v_m - plan.bend_m * np.sin(u * 0.0053 + 2.0)
     c, s = np.cos(plan.grain_rad), np.sin(plan.grain_rad)
@@ -113,42 +116,43 @@ def place_at(plan: Plan, north_m: Array, east_m: Array) -> Place:
     """The plan at places of any (broadcast) shape."""
     n, e = np.broadcast_arrays(np.asarray(north_m, float), np.asarray(east_m, float))
     u, v = grain(plan, n, e)
-    bu, bv = plan.block_u_m, plan.block_v_m
-    row = np.floor(v / bv)
-    shift = permute(wrap(row + plan.salt)) / 289.0
-    column = np.floor(u / bu + shift)
-    x, y = u - (column - shift) * bu, v - row * bv
+    side = plan.block_m
+    row = np.floor(v / side)
+    shift = permute(row + plan.salt) / 289.0
+    column = np.floor(u / side + shift)
+    x, y = u - (column - shift) * side, v - row * side
     block = hash2(column, row, plan.salt)
-    key = block.copy()
+    turned = np.mod(block, 2.0) > 0.5
+    x, y = np.where(turned, y, x), np.where(turned, x, y)
+    edge_of_block = np.minimum(np.minimum(x, side - x), np.minimum(y, side - y))
+    to_left, to_right, key = _cut(x, np.zeros_like(x), np.full_like(x, side), block)
+    below, above, key = _cut(y, np.zeros_like(y), np.full_like(y, side), key)
+    to_left, to_right, key = _cut(x, x - to_left, x + to_right, key)
     enclosed = block < plan.enclosed * 289.0
-    low_x, low_y = np.zeros_like(x), np.zeros_like(y)
-    high_x, high_y = np.full_like(x, bu), np.full_like(y, bv)
-    for _ in range(CUTS):
-        key = permute(key + 7.0)
-        part = 0.36 + 0.28 * key / 289.0
-        along = (high_x - low_x) > (high_y - low_y)
-        cut_x, cut_y = low_x + part * (high_x - low_x), low_y + part * (high_y - low_y)
-        far = np.where(along, x > cut_x, y > cut_y)
-        low_x, high_x = np.where(along & far, cut_x, low_x), np.where(along & ~far, cut_x, high_x)
-        low_y, high_y = np.where(~along & far, cut_y, low_y), np.where(~along & ~far, cut_y, high_y)
-        key = permute(key + np.where(far, 101.0, 13.0))
-    inner = np.minimum(np.minimum(x - low_x, high_x - x), np.minimum(y - low_y, high_y - y))
-    outer = np.minimum(np.minimum(x, bu - x), np.minimum(y, bv - y))
-    road = _road_m(plan, u, v)
+    edge = np.minimum(np.minimum(to_left, to_right), np.minimum(below, above))
     wood = np.where(
         enclosed, permute(key + 57.0) < plan.wood_part * 289.0,
         value_noise(u / 600.0, v / 600.0, plan.salt) > plan.wild_wood,
     )
-    return Place(u, v, key, enclosed, np.where(enclosed, inner, outer), road, wood)
+    return Place(
+        u, v, key, enclosed, np.where(enclosed, edge, edge_of_block), _road_m(plan, u, v), wood,
+    )
+
+
+def _cut(x: Array, low: Array, high: Array, key: Array) -> tuple[Array, Array, Array]:
+    """Cut low..high in two where the key says: distances to the near and far end of x's part, and its key."""
+    cut = low + (0.36 + 0.28 / 289.0 * key) * (high - low)
+    far = x > cut
+    part_low, part_high = np.where(far, cut, low), np.where(far, high, cut)
+    return x - part_low, part_high - x, permute(key + np.where(far, 101.0, 13.0))
 
 
 def _road_m(plan: Plan, u: Array, v: Array) -> Array:
     """Distance to the middle of the nearest road: along some rows of blocks, and winding across them."""
-    near = np.floor(v / plan.block_v_m + 0.5)
-    has = permute(wrap(near + plan.salt + 31.0)) < plan.road_rows * 289.0
-    along = np.where(has, np.abs(v - near * plan.block_v_m), 1e9)
+    near = np.floor(v / plan.block_m + 0.5)
+    has = permute(near + plan.salt + 31.0) < plan.road_rows * 289.0
+    along = np.where(has, np.abs(v - near * plan.block_m), 1e9)
     if plan.road_every_m <= 0.0:
         return along
-    across = u + 70.0 * np.sin(v * 0.0043)
-    turn = across / plan.road_every_m + 0.5
+    turn = (u + 70.0 * np.sin(v * 0.0043)) / plan.road_every_m + 0.5
     return np.minimum(along, np.abs(turn - np.floor(turn) - 0.5) * plan.road_every_m)

@@ -32,7 +32,9 @@ class Light:
     rim: Array
     zenith: Array
     glow: Array
-    extinction: float
+    flat: Array  # what level ground gets from sun and sky
+    clear: float  # 0 in thick haze, 1 in clear air: how fast the sky darkens upward
+    extinction_per_m: float
 
 
 def light_of(day: Day) -> Light:
@@ -43,9 +45,13 @@ def light_of(day: Day) -> Light:
     def at(table: Array) -> Array:
         return np.array([np.interp(np.degrees(height), _HEIGHTS_DEG, table[:, k]) for k in range(3)])
 
-    # Thick haze whitens the lower sky.
-    white = np.clip((15e3 - day.visibility_m) / 15e3, 0.0, 1.0) * 0.5
-    rim, zenith = at(_RIM), at(_ZENITH)
+    clear = float(np.clip((day.visibility_m - 1.5e3) / 20e3, 0.0, 1.0))
+    rim, zenith, sun, sky = at(_RIM), at(_ZENITH), at(_SUN), at(_SKY)
+    # A camera and an eye open up when the light is low: level ground darkens only with the 0.3 power of its light.
+    bare = sun * sun_d[2] + sky
+    opened = float(np.mean(bare)) ** -0.7
+    sun, sky = sun * opened, sky * opened
     return Light(
-        sun_d, at(_SUN), at(_SKY), rim, zenith + white * (rim - zenith), at(_GLOW), KOSCHMIEDER / day.visibility_m
+        sun_d, sun, sky, rim, zenith + 0.5 * (1.0 - clear) * (rim - zenith), at(_GLOW), sun * sun_d[2] + sky, clear,
+        KOSCHMIEDER / day.visibility_m,
     )

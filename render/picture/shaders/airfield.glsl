@@ -18,33 +18,36 @@ float numeral(int mask, vec2 at, vec2 w) {          // 3 x 5 cells of 1 x 1.8 m;
   float blurred = 0.62 * slot(at.x, 0.0, 3.0, w.x) * slot(at.y, 0.0, 9.0, w.y);
   return mix(on, blurred, smoothstep(0.5, 1.4, max(w.x, w.y)));
 }
-vec4 airfield(vec2 p, float px, float n7, float n1) {   // rgb, cover
-  vec2 r = p - AIRFIELD_AT;
-  vec2 s = vec2(r.x * AIRFIELD_S + r.y * AIRFIELD_C, r.y * AIRFIELD_S - r.x * AIRFIELD_C);
+vec3 mown(vec2 s, float px, float n1, float n7) {
   vec2 w = fwidth(s);
   float half_l = 0.5 * RUNWAY_L, half_w = 0.5 * RUNWAY_W;
-  float s7 = shown(7.0, px), s1 = shown(1.3, px);
-  // mown grass with swaths 12 m wide along the runway
-  float field_cover = boxes(abs(s - vec2(0.0, 95.0)) - vec2(half_l + 240.0, 245.0), w);
-  float swath = (stripes(s.y, 24.0, 0.5, w.y) - 0.5);
-  vec3 colour = mix(MOWN_A, MOWN_B, 0.5 + swath) * (1.0 + 0.30 * s7 * (n7 - 0.5) + 0.32 * s1 * (n1 - 0.5));
-  float rough = smoothstep(60.0, 75.0, abs(s.y));
-  colour = mix(colour, mix(MOWN_A, MOWN_B, n7 * s7 + 0.5 - 0.5 * s7) * vec3(0.98, 0.94, 0.80) * (1.0 + 0.4 * s1 * (n1 - 0.5)), 0.6 * rough);
+  // mown grass with swaths 12 m wide along the runway, rough beyond
+  float rough = clamp((abs(s.y) - 60.0) * 0.1, 0.0, 1.0);
+  float swath = stripes(s.y, 24.0, 0.5, w.y) - 0.5;
+  vec3 colour = mix(MOWN_A, MOWN_B, 0.5 + swath * (1.0 - 0.8 * rough) + rough * n7) * (1.0 + 0.36 * n7 + 0.50 * n1);
   // taxiway 15 m wide at 150 m, three links, apron
   float tar = boxes(abs(s - vec2(0.0, 150.0)) - vec2(half_l, 7.5), w);
   float x = min(abs(abs(s.x) - half_l + 7.5), abs(s.x + 0.12 * RUNWAY_L));
   tar = max(tar, boxes(vec2(x - 7.5, abs(s.y - 75.0) - 75.0), w));
-  colour = mix(colour, SURFACE * (1.06 + 0.10 * s1 * (n1 - 0.5)), tar);
+  colour = mix(colour, SURFACE * (1.06 + 0.10 * n1), tar);
   float yellow = max(band(abs(s.y - 150.0), 0.075, w.y) * step(abs(s.x), half_l - 7.0), band(x, 0.075, w.x) * step(abs(s.y - 75.0), 75.0));
   colour = mix(colour, vec3(0.80, 0.66, 0.18), yellow);
   float apron = boxes(abs(s - vec2(40.0, 205.0)) - vec2(230.0, 48.0), w);
   float joints = max(band(abs(fract(s.x / 7.5) - 0.5) * 7.5, 0.04, w.x), band(abs(fract(s.y / 7.5) - 0.5) * 7.5, 0.04, w.y));
   float slab = fract(0.317 * floor(s.x / 7.5) + 0.713 * floor(s.y / 7.5) * (1.0 + floor(s.x / 7.5) * 0.13));
   colour = mix(colour, APRON * (1.0 + 0.07 * (slab - 0.5) * shown(7.5, px) - 0.25 * joints), apron);
+  return colour;
+}
+vec3 runway(vec2 s, float px, float n1, float n7) {    // the strip of the runway itself and a little grass beside it
+  vec2 w = fwidth(s);
+  float half_l = 0.5 * RUNWAY_L, half_w = 0.5 * RUNWAY_W;
+  vec3 colour = mix(MOWN_A, MOWN_B, 0.5) * (1.0 + 0.36 * n7 + 0.50 * n1);
+  float x = min(abs(abs(s.x) - half_l + 7.5), abs(s.x + 0.12 * RUNWAY_L));
+  colour = mix(colour, SURFACE * (1.06 + 0.10 * n1), slot(x, -7.5, 7.5, w.x) * step(0.0, s.y));
   // runway: 0.9 m side stripes, centre line 30 m on 20 m off
   float run = boxes(abs(s) - vec2(half_l, half_w), w);
   float rubber = exp2(-abs(abs(s.x) - half_l + 420.0) / 160.0) * exp2(-s.y * s.y / 40.0);
-  vec3 tarmac = SURFACE * (1.0 + 0.14 * s1 * (n1 - 0.5) + 0.10 * s7 * (n7 - 0.5)) * (1.0 - 0.35 * rubber);
+  vec3 tarmac = SURFACE * (1.0 + 0.14 * n1 + 0.10 * n7) * (1.0 - 0.35 * rubber);
   tarmac *= 1.0 - 0.10 * band(abs(abs(s.y) - 7.5), 0.05, w.y);
   float end = half_l - abs(s.x);                                  // distance in from the nearer threshold
   float y = s.x > 0.0 ? -s.y : s.y;                               // across, seen by one who lands on that end
@@ -60,7 +63,7 @@ vec4 airfield(vec2 p, float px, float n7, float n1) {   // rgb, cover
   mark = max(mark, slot(end, AIM_AT, AIM_AT + 45.0, we) * slot(abs(s.y), 9.0, 9.0 + AIM_W, wy));
   float zone = slot(end, 150.0, 172.5, we) + slot(end, 300.0, 322.5, we) * AIM_FAR + slot(end, 600.0, 622.5, we) * AIM_FAR;
   mark = max(mark, zone * slot(abs(s.y), 9.0, 12.0, wy));
-  tarmac = mix(tarmac, vec3(0.86, 0.86, 0.83) * (0.92 + 0.12 * s1 * n1), mark * 0.92);
+  tarmac = mix(tarmac, vec3(0.86, 0.86, 0.83) * (1.0 + 0.12 * n1), mark * 0.92);
   colour = mix(colour, tarmac, run);
-  return vec4(colour, field_cover);
+  return colour;
 }

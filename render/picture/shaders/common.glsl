@@ -1,28 +1,27 @@
-// Shared by every piece of the land: light, haze, noise. Display axes: x east, y north, z up; metres.
-in vec3 place;                  // where this fragment is
-// VTK declares: uniform vec3 eye; where it is seen from
-// VTK declares: uniform vec3 sunDir; toward the sun
-// VTK declares: uniform vec3 sunLight; colour of direct light on a face turned to the sun
-// VTK declares: uniform vec3 skyLight; colour of the light from the whole sky
-// VTK declares: uniform vec3 rimColour; the sky at the horizon, away from the sun
-// VTK declares: uniform vec3 rimGlow; what the horizon under the sun has more
-// VTK declares: uniform float extinction; per metre
+// Shared by every piece of the land: haze, noise, footprints. Display axes: x east, y north, z up; metres.
+// VTK declares: uniform vec3 eye (seen from), sunDir (toward the sun), sunLight (colour of direct light),
+// skyLight (of the whole sky), flatLight (of both on level ground); uniform float extinction (per metre, times log2 e)
+in vec3 place;
+in vec3 rimAt;
+in float fade;
 
-vec3 rim(vec3 look) {           // the sky's colour at the horizon in this direction
-  float s = max(dot(look.xy, sunDir.xy) * inversesqrt((dot(look.xy, look.xy) + 1e-6) * (dot(sunDir.xy, sunDir.xy) + 1e-6)), 0.0);
-  s *= s;
-  return rimColour + rimGlow * s * s;
-}
-vec3 haze(vec3 colour, vec3 ray) {
-  float d = length(ray);
-  float left = exp(-extinction * d) * (1.0 - smoothstep(38000.0, 58000.0, d));
-  return mix(rim(ray), colour, left);
-}
+vec3 haze(vec3 colour, float d) { return mix(rimAt, colour, exp2(-extinction * d) * fade); }
 float noise(vec2 p) {           // detail only: nothing else has to know it
   vec2 i = floor(p), f = p - i;
   f = f * f * (3.0 - 2.0 * f);
   vec2 a = 50.0 * fract(i * 0.3183099 + 0.071), b = 50.0 * fract(i * 0.3183099 + 0.3893099);
-  vec4 h = fract(vec4(a.x * a.y * (a.x + a.y), b.x * a.y * (b.x + a.y), a.x * b.y * (a.x + b.y), b.x * b.y * (b.x + b.y)));
-  vec2 r = mix(h.xz, h.yw, f.x);
-  return mix(r.x, r.y, f.y);
+  vec2 low = fract(vec2(a.x, b.x) * a.y * (vec2(a.x, b.x) + a.y));
+  vec2 high = fract(vec2(a.x, b.x) * b.y * (vec2(a.x, b.x) + b.y));
+  vec2 r = mix(low, high, f.y);
+  return mix(r.x, r.y, f.x);
+}
+float shown(float size, float px) { return clamp((0.85 * size - px) / (0.6 * size), 0.0, 1.0); }
+float footprint(vec2 p) {       // a pixel's size on the ground, m, between its long and its short side
+  vec2 dx = dFdx(p), dy = dFdy(p);
+  float longest = max(dot(dx, dx), dot(dy, dy));
+  return sqrt(sqrt(longest) * sqrt(abs(dx.x * dy.y - dx.y * dy.x) + 1e-8));
+}
+float band(float d, float half_width, float w) {   // cover of a line of that half width by a pixel w wide
+  float soft = max(w, 0.02);
+  return clamp((half_width - d) / soft + 0.5, 0.0, 1.0) * min(1.0, 2.0 * half_width / soft);
 }

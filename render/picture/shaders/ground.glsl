@@ -1,51 +1,34 @@
 // The look of the open country. Every detail fades where a pixel grows larger than it, so the ground needs no antialiasing.
-float shown(float size, float px) { return 1.0 - smoothstep(0.28 * size, 0.8 * size, px); }
-float band(float d, float half_width, float w) {   // cover of a line of that half width in a pixel w wide
-  return clamp((half_width - d) / max(w, 0.02) + 0.5, 0.0, 1.0) * min(1.0, 2.0 * half_width / max(w, 0.02) + 0.0);
-}
-float footprint(vec2 p) {                          // pixel size on the ground, m, between its long and its short side
-  vec2 dx = dFdx(p), dy = dFdy(p);
-  float longest = sqrt(max(dot(dx, dx), dot(dy, dy)));
-  float area = abs(dx.x * dy.y - dx.y * dy.x);
-  return sqrt(longest * sqrt(max(area, 1e-8)));
-}
-vec3 country(vec2 p, float px, out float roughness) {
-  vec2 q = grain(p);
-  float key, edge, enclosed; vec2 within;
+vec3 country(vec2 q, float px, float n1, float n7, float n45) {
+  float key, edge; bool enclosed; vec2 within;
   fieldAt(q, key, edge, enclosed, within);
   float road = roadAt(q);
-  float n600 = valueNoise(q / 600.0, SALT);
-  float n45 = noise(q / 45.0), n7 = noise(q / 7.0 + 11.3), n1 = noise(q / 1.3 + 5.1);
-  float s45 = shown(45.0, px), s7 = shown(7.0, px), s1 = shown(1.3, px);
-  float kind = permute(key + 57.0) / 289.0, tone = permute(key + 91.0) / 289.0;
+  float n600 = valueNoise(q * (1.0 / 600.0), SALT);
+  float kind = permute(key + 57.0) * (1.0 / 289.0), tone = permute(key + 91.0) * (1.0 / 289.0);
 
-  vec3 wild = mix(WILD_A, WILD_B, smoothstep(0.35, 0.65, 0.6 * n600 + 0.4 * mix(0.5, n45, s45) ));
-  wild = mix(wild, WILD_C, smoothstep(0.60, 0.70, mix(0.5, n45, s45) * 0.75 + mix(0.5, n7, s7) * 0.25));
-  vec3 field = fieldColour(kind, tone);
-  float crop = smoothstep(CROP_FROM, CROP_FROM + 0.02, kind);
-  // drill rows 1.5 m and tramlines every 24 m, along the field's own direction
-  float across = tone > 0.5 ? within.x : within.y, wa = fwidth(across);
-  float rows = cos(across * (6.28318 / 1.5)) * (1.0 - smoothstep(0.25, 0.9, wa));
-  float tram = band(abs(abs(fract(across / 24.0) - 0.5) * 24.0 - 0.95), 0.28, wa) * (1.0 - smoothstep(3.0, 9.0, wa));
-  float swath = (step(0.5, fract(across / 16.0)) - 0.5) * (1.0 - smoothstep(2.5, 7.0, wa));
-  field *= 1.0 + crop * (0.07 * rows - 0.26 * tram) + (1.0 - crop) * 0.05 * swath * step(0.4, tone);
-  vec3 colour = mix(wild, field, enclosed);
+  float patches = n600 + 0.5 * n45;
+  vec3 wild = mix(WILD_A, WILD_B, clamp(0.5 + 4.0 * (patches - WILD_LEVEL), 0.0, 1.0));
+  wild = mix(wild, WILD_C, clamp((n45 + 0.5 * n7 - 0.12) * 8.0, 0.0, 1.0) * 0.9);
+  vec3 field = fieldColour(kind) * (0.86 + 0.28 * tone) * vec3(1.0 + 0.10 * (tone - 0.5), 1.0, 1.0 - 0.2 * (tone - 0.5));
+  // drill rows 1.5 m and tramlines every 24 m, along the field's own direction; swaths of hay 8 m
+  float across = fract(tone * 7.0) > 0.35 ? within.x : within.y, wa = fwidth(across);
+  float rows = (abs(fract(across * (1.0 / 1.5)) - 0.5) * 4.0 - 1.0) * clamp(1.3 - 1.6 * wa, 0.0, 1.0);
+  float tram = band(abs(abs(fract(across * (1.0 / 24.0)) - 0.5) * 24.0 - 0.95), 0.28, wa) * clamp(1.6 - 0.18 * wa, 0.0, 1.0);
+  float swath = (abs(fract(across * (1.0 / 16.0)) - 0.5) > 0.25 ? 0.05 : -0.05) * clamp(1.4 - 0.2 * wa, 0.0, 1.0);
+  field *= 1.0 + (kind > CROP_FROM ? 0.06 * rows - 0.30 * tram : (tone > 0.4 ? swath : 0.0));
+  vec3 colour = enclosed ? field : wild;
+  colour *= 1.0 + (enclosed ? 0.16 : 0.30) * (1.5 * n1 + 1.2 * n7 + 0.9 * n45) + 0.20 * (n600 - 0.5);
 
-  // the worn ground of gateways and tracks, hedges, roads
-  float we = fwidth(edge);
-  float wood = enclosed > 0.5 ? (kind < WOOD_PART ? smoothstep(-2.0, 2.0, edge - 3.0) : 0.0)
-                              : smoothstep(WILD_WOOD, WILD_WOOD + 0.012, n600);
-  roughness = mix(0.30, 0.16, enclosed);
-  vec3 canopy = WOOD * (0.55 + 0.9 * mix(0.5, n7, s7));
-  colour = mix(colour, canopy, wood);
-  float hedge = band(edge, 0.5 * HEDGE, we) * (1.0 - (1.0 - enclosed) * step(0.5, BARE_OPEN));
-  colour = mix(colour, HEDGE_COLOUR * (0.75 + 0.5 * mix(0.5, n7, s7)), hedge * HEDGE_SHOWN);
-  float wr = fwidth(road); wr = wr > 200.0 ? px : wr;
-  float verge = band(road, 0.5 * ROAD + 3.0, wr), lane = band(road, 0.5 * ROAD, wr);
-  colour = mix(colour, VERGE, verge);
-  colour = mix(colour, ROAD_COLOUR, lane);
-  colour = mix(colour, vec3(0.80), band(road, 0.06, wr) * 0.8 * ROAD_LINE);
-  roughness *= 1.0 - 0.8 * lane;
-  colour *= 1.0 + roughness * (1.3 * s1 * (n1 - 0.5) + 1.1 * s7 * (n7 - 0.5) + 0.8 * s45 * (n45 - 0.5)) + 0.16 * (n600 - 0.5);
+  float wooded = clamp(enclosed ? (kind < WOOD_PART ? 0.5 * (edge - 2.0) : 0.0) : (n600 - WILD_WOOD) * 90.0, 0.0, 1.0);
+  colour = mix(colour, WOOD * (1.0 + 1.1 * n7 + 0.5 * n45), wooded);
+  float wh = fwidth(edge);
+  float hedge = band(edge + 1.2 * n7, 0.5 * HEDGE, wh > 100.0 ? px : wh);
+  colour = mix(colour, HEDGE_COLOUR * (1.0 + 0.6 * n7), enclosed ? hedge : 0.0);
+  float wr = fwidth(road); wr = wr > 100.0 ? px : wr;
+  colour = mix(colour, VERGE * (1.0 + 0.4 * n1), band(road, 0.5 * ROAD + 3.5, wr));
+  colour = mix(colour, ROAD_COLOUR * (1.0 + 0.12 * n1), band(road, 0.5 * ROAD, wr));
+#if ROAD_LINE
+  colour = mix(colour, vec3(0.82), band(road, 0.06, wr));
+#endif
   return colour;
 }

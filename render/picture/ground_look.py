@@ -1,0 +1,103 @@
+"""The ground's actors: one for each kind of ground, each with the shader of that kind only."""
+
+from __future__ import annotations
+
+import numpy as np
+import vtk
+
+from render.picture.ground_mesh import ground_mesh
+from render.picture.shading import constants, glsl, mesh, shaded_actor
+from terrain.ground import Ground
+from terrain.land import Land
+
+_START = """
+  vec3 ray = place - eye;
+  float px = footprint(place.xy);
+"""
+_NOISES = """
+  float n1 = (0.65 * noise(q * (1.0 / 1.3)) - 0.325) * shown(1.3, px);
+  float n03 = (noise(q.yx * 2.7 + 9.7) - 0.5) * shown(0.37, px);
+  float n7 = (noise(q * (1.0 / 7.0) + 11.3) - 0.5) * shown(7.0, px);
+  n1 += 0.5 * n03;
+"""
+_LIGHT = """
+  colour *= GROUND_LIGHT;
+  fragOutput0 = vec4(haze(colour, length(ray)), 1.0);
+"""
+_RELIEF_LIGHT = "(sunLight * max(dot(normalize(upward), sunDir), 0.0) + skyLight)"
+_COUNTRY = """
+  vec2 q = grain(place.xy);
+""" + _NOISES + """
+  float n45 = (noise(q * (1.0 / 45.0)) - 0.5) * shown(45.0, px);
+  vec3 colour = country(q, px, n1, n7, n45);
+"""
+_AIRFIELD = """
+  vec2 r = place.xy - AIRFIELD_AT;
+  vec2 q = vec2(r.x * AIRFIELD_S + r.y * AIRFIELD_C, r.y * AIRFIELD_S - r.x * AIRFIELD_C);
+""" + _NOISES
+_MAINS = {
+    "country": _START + _COUNTRY + _LIGHT,
+    "mown": _START + _AIRFIELD + "vec3 colour = mown(q, px, n1, n7);" + _LIGHT,
+    "runway": _START + _AIRFIELD + "vec3 colour = runway(q, px, n1, n7);" + _LIGHT,
+}
+_PIECES = {"country": ("plan", "ground"), "mown": ("airfield",), "runway": ("airfield",)}
+
+
+def ground_actors(ground: Ground, land: Land) -> list[vtk.vtkActor]:
+    """The surface of a ground with a land's look, to be lit and given an eye (see ``land.set_light``)."""
+    shape = ground_mesh(ground, land)
+    head = constants({**_constants(land), "GROUND_LIGHT_LEVEL": int(shape.level)})
+    head += f"#define GROUND_LIGHT {'flatLight' if shape.level else _RELIEF_LIGHT}\n"
+    actors = []
+    for kind, triangles in shape.triangles.items():
+        used, renumbered = np.unique(triangles, return_inverse=True)
+        code = head + glsl("common") + ("" if shape.level else "in vec3 upward;\n") + _field_colour(land)
+        code += "".join(glsl(piece) for piece in _PIECES[kind])
+        attributes = {} if shape.level else {"normalUp": shape.normals[used]}
+        vertex = glsl("rim") + ("" if shape.level else "in vec3 normalUp;\nout vec3 upward;\n")
+        position = "setRim(place);\n" + ("" if shape.level else "upward = normalUp;\n")
+        actors.append(shaded_actor(
+            mesh(shape.points[used], renumbered.reshape(-1, 3)), code, _MAINS[kind], attributes, vertex, position
+        ))
+    return actors
+
+
+def _field_colour(land: Land) -> str:
+    """A function from a field's kind to its colour, from the recipe's list."""
+    text = ""
+    for kind in land.fields:
+        colour = ", ".join(f"{x:.5f}" for x in kind.colour)
+        text += f"kind < {kind.up_to:.5f} ? vec3({colour}) : " if kind is not land.fields[-1] else f"vec3({colour})"
+    return f"vec3 fieldColour(float kind) {{ return {text}; }}\n"
+
+
+def _constants(land: Land) -> dict[str, object]:
+    p, field = land.plan, land.airfield
+    number = round(np.degrees(field.heading_rad) / 10.0) % 36 or 36
+    other = (number + 17) % 36 + 1
+    long = field.length_m >= 2400.0
+    return {
+        "SALT": p.salt, "GRAIN_C": float(np.cos(p.grain_rad)), "GRAIN_S": float(np.sin(p.grain_rad)),
+        "BEND": float(p.bend_m), "BLOCK": float(p.block_m), "ENCLOSED": float(p.enclosed),
+        "HEDGE": float(p.hedge_m), "ROAD": float(p.road_m), "ROAD_ROWS": float(p.road_rows),
+        "ROADS_ACROSS": int(p.road_every_m > 0), "ROAD_EVERY": float(p.road_every_m), "WOOD_PART": float(p.wood_part),
+        "WILD_WOOD": float(p.wild_wood), "CROP_FROM": float(land.crop_from), "WILD_LEVEL": float(land.wild_level),
+        "WILD_A": land.wild[0], "WILD_B": land.wild[1], "WILD_C": land.wild[2], "WOOD": land.wood,
+        "HEDGE_COLOUR": land.hedge, "ROAD_COLOUR": land.road, "VERGE": land.verge, "ROAD_LINE": int(land.road_line),
+        "AIRFIELD_AT": (field.east_m, field.north_m), "AIRFIELD_C": float(np.cos(field.heading_rad)),
+        "AIRFIELD_S": float(np.sin(field.heading_rad)), "RUNWAY_L": float(field.length_m),
+        "RUNWAY_W": float(field.width_m), "MOWN_A": field.grass[0], "MOWN_B": field.grass[1],
+        "SURFACE": field.surface, "APRON": field.apron, "BARS": float(6 if field.width_m >= 45 else 4),
+        "AIM_AT": 400.0 if long else 300.0, "AIM_W": 9.0 if long else 6.0, "AIM_FAR": 1.0 if long else 0.0,
+        "FIGURE_A": _figure(number // 10), "FIGURE_B": _figure(number % 10),
+        "FIGURE_C": _figure(other // 10), "FIGURE_D": _figure(other % 10),
+    }
+
+
+def _figure(digit: int) -> int:
+    """A digit as 15 bits: 3 x 5 cells, bit 0 top left."""
+    rows = (
+        "111101101101111", "010010010010010", "111001111100111", "111001111001111", "101101111001001",
+        "111100111001111", "111100111101111", "111001001001001", "111101111101111", "111101111001111",
+    )[digit]
+    return sum(1 << k for k, bit in enumerate(rows) if bit == "1")
