@@ -80,8 +80,8 @@ def _smooth(points: Array, tris: Ints) -> tuple[Array, Ints, Array]:
     other_face = corner_face[order[starts[corner_vertex[first_corner]] + offset]]
     near = np.einsum("ij,ij->i", unit[corner_face[first_corner]], unit[other_face]) > np.cos(SHARP_RAD)
     share = weighted[other_face] * near[:, None]
-    normals = np.stack([np.bincount(first_corner, share[:, i], len(corner_vertex)) for i in range(3)], -1)
-    normals /= np.maximum(np.linalg.norm(normals, axis=1, keepdims=True), 1e-30)
+    normals: Array = np.stack([np.bincount(first_corner, share[:, i], len(corner_vertex)) for i in range(3)], -1)
+    normals = normals / np.maximum(np.linalg.norm(normals, axis=1, keepdims=True), 1e-30)
     key = np.column_stack([corner_vertex, np.round(normals * 500.0)])
     _, first, inverse = np.unique(key, axis=0, return_index=True, return_inverse=True)
     return points[corner_vertex[first]], inverse.reshape(-1, 3).astype(np.int64), normals[first]
@@ -98,7 +98,9 @@ def merge(surfs: Sequence[Surf]) -> Surf:
     )
 
 
-def moved(surf: Surf, scale: Sequence[float] = (1.0, 1.0, 1.0), shift: Sequence[float] = (0.0, 0.0, 0.0)) -> Surf:
+def moved(
+    surf: Surf, scale: Sequence[float] = (1.0, 1.0, 1.0), shift: Sequence[float] | Array = (0.0, 0.0, 0.0)
+) -> Surf:
     """Scaled about the origin, each axis by its own factor (may mirror), then shifted by m."""
     factor = np.asarray(scale, float)
     normals = surf.normals / factor  # the inverse transpose of the scaling
@@ -140,4 +142,4 @@ def rings(points: Array, colour: Colour | Sequence[Colour]) -> Surf:
 
 def sheet(points: Array, colour: Colour) -> Surf:
     """An open surface through a grid (R, C, 3); faces the side of row x column."""
-    return surface(points.reshape(-1, 3), grid_tris(*points.shape[:2], False)[:, ::-1], colour)
+    return surface(points.reshape(-1, 3), grid_tris(points.shape[0], points.shape[1], False)[:, ::-1], colour)

@@ -66,6 +66,17 @@ def _crossings(surf: Surf, side: Side, value: Array, edges: np.ndarray) -> tuple
     return a + t[:, None] * (b - a), normals
 
 
+def station(at: float | Array, normal: Sequence[float] = (1.0, 0.0, 0.0)) -> Side:
+    """Distance (m) from a plane along its normal: x - at by default."""
+    direction = np.asarray(normal, float)
+
+    def side(p: Array) -> Array:
+        result: Array = p @ direction - at
+        return result
+
+    return side
+
+
 def paint(surf: Surf, side: Side, colour: Colour, only: Colour | None = None) -> Surf:
     """Colour where ``side`` is negative, cut exactly; with ``only``, no face but those of that colour."""
     return _coloured(cut(surf, side), side, colour, only)
@@ -84,7 +95,8 @@ def line(surf: Surf, along: Side, width_m: float, colour: Colour, only: Colour |
 def patch(surf: Surf, edges: Sequence[Side], colour: Colour, only: Colour | None = None) -> Surf:
     """Colour where all of the sides are negative, each cut exactly and no further than the others reach."""
     for k, edge in enumerate(edges):
-        near, far = _split_off(surf, lambda p, k=k: np.max([e(p) for i, e in enumerate(edges) if i != k], axis=0) - 0.4)
+        others = [e for i, e in enumerate(edges) if i != k]
+        near, far = _near(surf, others, 0.4)
         surf = _joined(cut(near, edge), far)
     return _coloured(surf, lambda p: np.max([e(p) for e in edges], axis=0), colour, only)
 
@@ -96,16 +108,17 @@ def _coloured(surf: Surf, side: Side, colour: Colour, only: Colour | None) -> Su
     return replace(surf, colour=np.where(hit[:, None], np.array(colour, np.uint8), surf.colour))
 
 
-def _split_off(surf: Surf, side: Side) -> tuple[Surf, Surf]:
-    """Whole faces whose vertices are all on the positive side come second."""
-    keep = (np.asarray(side(surf.points), float) < 0.0)[surf.tris].any(axis=1)
+def _near(surf: Surf, sides: Sequence[Side], reach_m: float) -> tuple[Surf, Surf]:
+    """(whole faces within reach of the region where all the sides are negative, the others)."""
+    inside = np.max([side(surf.points) for side in sides], axis=0) < reach_m
+    keep = inside[surf.tris].any(axis=1)
     return _faces(surf, keep), _faces(surf, ~keep)
 
 
 def divided(surf: Surf, side: Side) -> tuple[Surf, Surf]:
     """The two pieces (where negative, where positive)."""
     surf = cut(surf, side)
-    inside = np.asarray(side(surf.centroids()), float) < 0.0
+    inside: np.ndarray = np.asarray(side(surf.centroids()), float) < 0.0
     return _faces(surf, inside), _faces(surf, ~inside)
 
 

@@ -10,11 +10,12 @@ from scipy.interpolate import PchipInterpolator
 
 from render.frames import Array
 from render.picture.loft import Colour, Surf, grid_tris, merge, surface
-from render.picture.paint import Side, divided
+from render.picture.paint import Side, divided, station
+from render.picture.shapes_parts import Fit
 from render.picture.shapes_sections import Body, ellipsoid
 
-INSIDE: Colour = (58, 62, 64)
-BLACK: Colour = (24, 25, 27)
+INSIDE: Colour = (88, 92, 93)
+BLACK: Colour = (34, 35, 37)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -48,15 +49,15 @@ class Canopy:
         result: Array = sill - (sill - self.crown_z(x_m)) * (1 - ratio**self.fullness) ** (1 / self.fullness)
         return result
 
-    def hole(self, part: float = 0.95) -> Side:
+    def hole(self, beyond_m: float = 0.008) -> Side:
         """Side of the cockpit opening in the fuselage's upper skin."""
         waist = float(self.body.stations[:, 4].max())
         ends = self.crown[0, 0], self.crown[-1, 0]
 
         def side(p: Array) -> Array:
-            inside = np.abs(p[:, 1]) - part * self.width(p[:, 0])
-            beyond = np.maximum(p[:, 0] - ends[0], ends[1] - p[:, 0])
-            return np.maximum.reduce([inside, beyond, p[:, 2] - waist + 0.12])
+            inside = np.abs(p[:, 1]) - beyond_m - self.width(p[:, 0])
+            past = np.maximum(p[:, 0] - ends[0], ends[1] - p[:, 0])
+            return np.maximum.reduce([inside, past, p[:, 2] - waist + 0.12])
 
         return side
 
@@ -70,26 +71,23 @@ class Canopy:
         y = w * np.sign(np.cos(turn)) * np.abs(np.cos(turn)) ** (2 / self.fullness)
         z = sill - (sill - crown) * np.sin(turn) ** (2 / self.fullness)
         # A bead along the rail hides the edge of the opening.
-        foot, lip = w + 0.045, w + 0.03
-        foot_z, lip_z = self.body.top_z(x[:, None], foot) + 0.004, self.body.top_z(x[:, None], lip) - 0.016
+        foot, lip = w + 0.026, w + 0.017
+        foot_z, lip_z = self.body.top_z(x[:, None], foot) - 0.004, self.body.top_z(x[:, None], lip) - 0.018
         y = np.concatenate([foot, lip, y, -lip, -foot], axis=1)
         z = np.concatenate([foot_z, lip_z, z, lip_z, foot_z], axis=1)
         points = np.stack([np.broadcast_to(x[:, None], y.shape), y, z], -1)
-        skin = surface(points.reshape(-1, 3), grid_tris(*y.shape, False), colour)
+        skin = surface(points.reshape(-1, 3), grid_tris(len(y), y.shape[1], False), colour)
         if (skin.normals[:, 2]).mean() > 0:
-            skin = surface(points.reshape(-1, 3), grid_tris(*y.shape, False)[:, ::-1], colour)
+            skin = surface(points.reshape(-1, 3), grid_tris(len(y), y.shape[1], False)[:, ::-1], colour)
         rail, glass = divided(skin, lambda p: self.sill_z(p[:, 0]) - p[:, 2] - self.rail_m)
         pieces = [rail]
         for at, lean, width in self.frames:
             level = float(self.sill_z(np.array(at)))
 
-            def ahead(p: Array, at: float = at, lean: float = lean, level: float = level) -> Array:
-                result: Array = p[:, 0] - at - lean * (level - p[:, 2])
-                return result
-
+            plane = at + lean * level
             # Both borders are cut one by one: a narrow band between two vertices would be missed.
-            before, rest = divided(glass, lambda p, w=width, a=ahead: a(p) - w / 2)
-            band, after = divided(before, lambda p, w=width, a=ahead: -a(p) - w / 2)
+            before, rest = divided(glass, station(plane + width / 2, (1.0, 0.0, lean)))
+            band, after = divided(before, station(-plane + width / 2, (-1.0, 0.0, -lean)))
             pieces.append(band)
             glass = merge([rest, after])
         return merge(pieces), glass
@@ -99,14 +97,28 @@ class Canopy:
         front, back = self.crown[0, 0] - 0.12, self.crown[-1, 0] + 0.12
         x = np.linspace(front, back, 18)
         w = np.maximum(part * self.width(x), 0.02)
-        rail = self.body.top_z(x, w) + 0.004
+        rail = self.sill_z(x) + 0.004
         floor = np.full_like(x, self.sill_z(np.array((front + back) / 2)) + depth_m)
         half = [(w, rail), (0.9 * w, rail + 0.07), (0.86 * w, floor)]
         rows = half + [(-y, z) for y, z in half[::-1]]
         points = np.stack([np.stack([x, y, z], -1) for y, z in rows], axis=1)
-        skin = surface(points.reshape(-1, 3), grid_tris(*points.shape[:2], False), INSIDE)
+        skin = surface(points.reshape(-1, 3), grid_tris(len(points), points.shape[1], False), INSIDE)
         if skin.normals[:, 2].mean() > 0:
-            skin = surface(points.reshape(-1, 3), grid_tris(*points.shape[:2], False)[:, ::-1], INSIDE)
+            skin = surface(points.reshape(-1, 3), grid_tris(len(points), points.shape[1], False)[:, ::-1], INSIDE)
+        return skin
+
+    def deck(self, x_m: float, bulge_m: float = 0.05, across: int = 13) -> Surf:
+        """The front hood: a matt deck between the rails from its aft edge to the windscreen, with a rolled lip."""
+        x = np.linspace(x_m, self.crown[0, 0] - 0.02, 14)
+        w, sill = np.maximum(self.width(x), 0.01)[:, None], self.sill_z(x)[:, None]
+        s = np.linspace(-1.0, 1.0, across)[None, :]
+        z = sill + 0.004 - bulge_m * (1.0 - s**2) * np.minimum(w / 0.3, 1.0)
+        points = np.stack([np.broadcast_to(x[:, None], z.shape), s * w, z], -1)
+        lip = points[:1] + np.array([[[0.012, 0.0, 0.03]], [[-0.008, 0.0, 0.012]]])
+        tris = grid_tris(len(points) + 2, across, False)
+        skin = surface(np.concatenate([lip, points]).reshape(-1, 3), tris, BLACK)
+        if skin.normals[:, 2].mean() > 0:
+            skin = surface(np.concatenate([lip, points]).reshape(-1, 3), tris[:, ::-1], BLACK)
         return skin
 
     def coaming(self, x_m: float, top_z_m: float, length_m: float) -> Surf:
@@ -120,6 +132,19 @@ class Canopy:
         tris = np.stack([np.full(18, 18), np.roll(np.arange(18), -1), np.arange(18)], -1)
         panel = surface(np.concatenate([wall, [[x_m, 0.0, top_z_m + deep]]]), tris, (40, 42, 44))
         return merge([ahead, panel])
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class CockpitDesign:
+    """A front seat's surroundings in the design's metres, and how they become the airframe's."""
+
+    place: Fit
+    lid: Canopy
+    deck_x_m: float  # aft edge of the front hood
+    coamings: tuple[tuple[float, float, float], ...]  # hoods behind it: (aft edge x, top z, length)
+    frame: Colour
+    suit: Colour
+    rear_eye_m: tuple[float, float, float] | None = None
 
 
 def canopy(

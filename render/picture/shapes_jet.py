@@ -8,8 +8,8 @@ import numpy as np
 
 from render.frames import Array
 from render.picture.loft import Colour, Surf, merge, mirrored, rings
-from render.picture.paint import Side, cut, divided, line, paint, patch
-from render.picture.shapes_cockpit import Canopy, canopy
+from render.picture.paint import Side, cut, divided, line, paint, patch, station
+from render.picture.shapes_cockpit import Canopy, CockpitDesign, canopy
 from render.picture.shapes_crew import NECK_AFT_M, head, seat, torso
 from render.picture.shapes_parts import Fit, Shape, fit, fixed, hinged
 from render.picture.shapes_sections import Body, Panel, body, ellipsoid, outline, spindle
@@ -21,13 +21,16 @@ GOLD: Colour = (226, 160, 30)
 LINE: Colour = (160, 160, 152)
 DARK: Colour = (22, 23, 25)
 METAL: Colour = (112, 106, 98)
-FRAME: Colour = (40, 46, 50)
+FRAME: Colour = (58, 65, 70)
 GLASS: Colour = (120, 150, 165)
 SUIT: Colour = (66, 78, 62)
 
 LENGTH_M, SPAN_M = 12.0, 9.4
 EYE_M = (2.6, 0.9)
 REAR_EYE_M = (1.22, 0.0, -1.13)
+DECK_X_M = 3.10
+#: Rear instrument hood: (aft edge x, top z, length).
+COAMINGS = ((1.72, -1.0, 0.35),)
 
 FUSELAGE: Body = body(
     [  # x, half width, top, bottom, waist, exponent
@@ -39,10 +42,10 @@ FUSELAGE: Body = body(
         (3.8, 0.485, -0.79, 0.47, -0.05, 2.35),
         (3.2, 0.52, -0.93, 0.52, -0.05, 2.4),
         (2.6, 0.54, -1.045, 0.55, -0.05, 2.4),
-        (1.9, 0.56, -1.15, 0.57, -0.05, 2.4),
-        (1.2, 0.57, -1.22, 0.58, -0.05, 2.4),
-        (0.4, 0.57, -1.25, 0.57, -0.05, 2.35),
-        (-0.4, 0.55, -1.19, 0.54, -0.05, 2.3),
+        (1.9, 0.56, -1.09, 0.57, -0.05, 2.4),
+        (1.2, 0.57, -1.13, 0.58, -0.05, 2.4),
+        (0.4, 0.57, -1.17, 0.57, -0.05, 2.35),
+        (-0.4, 0.55, -1.16, 0.54, -0.05, 2.3),
         (-1.5, 0.51, -1.03, 0.49, -0.05, 2.2),
         (-2.8, 0.45, -0.86, 0.40, -0.05, 2.2),
         (-3.8, 0.36, -0.71, 0.28, -0.08, 2.1),
@@ -65,7 +68,13 @@ def cockpit_canopy() -> Canopy:
                     (0.4, 0.385), (-0.15, 0.24), (-0.4, 0.12), (-0.5, 0.0)])  # fmt: skip
     crown = [(3.86, 0.0), (3.55, -0.975), (3.2, -1.13), (2.8, -1.245), (2.4, -1.305), (1.9, -1.37), (1.3, -1.455),
              (0.8, -1.47), (0.3, -1.41), (-0.2, -1.27), (-0.5, 0.0)]  # fmt: skip
-    return canopy(FUSELAGE, plan, crown, [(3.16, -0.30, 0.075), (1.92, -0.12, 0.075)])
+    return canopy(FUSELAGE, plan, crown, [(3.34, -0.32, 0.07), (1.92, -0.12, 0.075)])
+
+
+def jet_cockpit(airframe: Airframe) -> CockpitDesign:
+    """What the front seat has around it."""
+    place = fit(airframe, LENGTH_M, SPAN_M, EYE_M)
+    return CockpitDesign(place, cockpit_canopy(), DECK_X_M, COAMINGS, FRAME, SUIT, rear_eye_m=REAR_EYE_M)
 
 
 def _belly(p: Array) -> Array:
@@ -97,7 +106,7 @@ def _hull() -> Surf:
     skin = patch(skin, glare, (46, 50, 50))
     skin = paint(skin, lambda p: 5.9 - p[:, 0] + 0.25 * p[:, 2], GOLD)
     for at in (4.9, 0.15, -2.1):
-        skin = line(skin, lambda p, at=at: p[:, 0] - at, 0.02, LINE, only=WHITE)
+        skin = line(skin, station(at), 0.02, LINE, only=WHITE)
     return skin
 
 
@@ -123,7 +132,7 @@ def _nacelle() -> Surf:
     skin = paint(skin, lambda p: -_belly(p), TEAL, only=WHITE)
     skin = line(skin, _reed, 0.07, GOLD, only=WHITE)
     for at in (-0.9, -3.9):
-        skin = line(skin, lambda p, at=at: p[:, 0] - at, 0.02, LINE, only=WHITE)
+        skin = line(skin, station(at), 0.02, LINE, only=WHITE)
     return skin
 
 
@@ -164,7 +173,7 @@ def _leading_edge(width_m: float) -> Side:
 def _chevron(surf: Surf) -> Surf:
     """A teal chevron on the underside, for the pilot who looks up from below."""
     for edge in (-0.13, 0.13):
-        surf = cut(surf, lambda p, e=edge: p[:, 0] + 0.45 * p[:, 1] - 0.55 + e)
+        surf = cut(surf, station(0.55 + edge, (1.0, 0.45, 0.0)))
     hit = np.abs(surf.centroids() @ np.array([1.0, 0.45, 0.0]) - 0.55) < 0.13
     hit &= surf.normals[surf.tris].mean(axis=1)[:, 2] > 0.2
     hit &= surf.centroids()[:, 1] < 3.4
@@ -218,7 +227,7 @@ def build_jet(airframe: Airframe) -> Shape:
     hull[-2] = _red_light(hull[-2])
     lid = cockpit_canopy()
     frame, glass = lid.shell(FRAME)
-    inside = [frame, lid.tub(), lid.coaming(3.05, -0.80, 0.55), lid.coaming(1.72, -1.02, 0.35)]
+    inside = [frame, lid.tub(), lid.deck(DECK_X_M), *(lid.coaming(*hood) for hood in COAMINGS)]
     cabin = merge([*(place.surf(s) for s in inside), _crew(place, "rear")])
     inner, outer, part = AILERON
     ends = WING.point(inner, part), WING.point(outer, part)
