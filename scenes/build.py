@@ -49,14 +49,12 @@ def read_fields(cls: type, node: MappingNode, path: str, log: Log, *, skip: tupl
             continue
         meta, here, given = f.metadata, at_path(path, key), node.get(key)
         none = isinstance(given, Scalar) and given.is_none
-        if given is None or (none and meta["absent"] is not REQUIRED and key not in needed):
-            value = meta["absent"]
-            if value is REQUIRED or key in needed:
-                missing(node.mark, here, meta, log)
-                value = BAD
-            elif meta["fills"]:
-                continue
-            values[f.name] = value
+        if given is None or none:
+            if meta["absent"] is REQUIRED or key in needed:
+                missing(node.mark if given is None else given.mark, here, meta, log, "none" if none else "nothing")
+                values.update(dict.fromkeys(meta["fills"] or (f.name,), BAD))
+            elif not meta["fills"]:
+                values[f.name] = meta["absent"]
             continue
         if meta["dim"] == "part":
             value = read_part(meta["part"], given, here, log)
@@ -70,9 +68,9 @@ def read_fields(cls: type, node: MappingNode, path: str, log: Log, *, skip: tupl
     return values
 
 
-def missing(mark: Mark, path: str, meta: Mapping[str, Any], log: Log) -> None:
+def missing(mark: Mark, path: str, meta: Mapping[str, Any], log: Log, read: str = "nothing") -> None:
     """Complain of a key that is not there."""
-    log.add(mark, path, "nothing", f"{meta['doc']}: {wanted_of(meta)}")
+    log.add(mark, path, read, f"{meta['doc']}: {wanted_of(meta)}")
 
 
 def made(cls: type, values: dict[str, Any]) -> Any:
@@ -189,7 +187,7 @@ def scene_values(root: MappingNode, log: Log) -> dict[str, Any]:
     """The fields of a scene from its root mapping, BAD where one could not be read; complaints in the log."""
     keys = declared(Scene)
     unknown_keys(root, keys, "", log, more=("like",))
-    own = ("script", "fault", "formation")
+    own = ("script", "fault", "formation", "briefed")
     values = read_fields(Scene, root, "", log, skip=own)
     for key, read in (("script", read_script), ("formation", read_formation)):
         given = root.get(key)
@@ -199,6 +197,9 @@ def scene_values(root: MappingNode, log: Log) -> dict[str, Any]:
         else:
             values[key] = read(given, key, log)
     values["fault"] = read_fault(root.get("fault"), "fault", log)
+    briefed = root.get("briefed")
+    none = briefed is None or (isinstance(briefed, Scalar) and briefed.is_none)
+    values["briefed"] = None if none or briefed is None else read_script(briefed, "briefed", log)
     slots = root.get("formation")
     if isinstance(slots, MappingNode):
         there = [name for name, (_, n) in slots.items.items() if not (isinstance(n, Scalar) and n.is_none)]

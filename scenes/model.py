@@ -197,7 +197,14 @@ POINTS: dict[str, tuple[str, float, float, str]] = {
     "height": ("length", 0.0, 12e3, "height above the field, passed going up or down"),
 }
 GOING = ("down", "up")
-FAULT_KINDS = ("freeze", "authority", "slow", "trail", "engines", "idle")
+FAULT_KINDS: dict[str, str] = {
+    "freeze": "the surface stops where it is",
+    "authority": "only a part of the asked movement arrives",
+    "slow": "the surface's rate is limited",
+    "trail": "the surface drifts to its no-load angle",
+    "engines": "one engine or all stop",
+    "idle": "the lead closes the throttle",
+}
 
 
 @dataclass(frozen=True, slots=True)
@@ -207,9 +214,7 @@ class Fault:
     kind: freeze | authority | slow | trail | engines | idle.
     """
 
-    kind: str = quantity("word", "freeze: the surface stops; authority: only a part of the asked movement arrives; "
-                         "slow: the surface's rate is limited; trail: it drifts to its no-load angle; engines: one "
-                         "or all stop; idle: the lead closes the throttle", choices=FAULT_KINDS)
+    kind: str = quantity("word", "what fails", choices=tuple(FAULT_KINDS))
     at: Point = quantity("point", "where in the script")
     fraction: float = quantity("fraction", "part of the asked movement that arrives", 0.0, 1.0, default=0.0,
                                kinds=("authority",))
@@ -294,6 +299,8 @@ class Scene:
                             absent=Watch(), part=Watch)
     film: FilmPlan = quantity("part", "how the scene is filmed; from the first slot if absent", absent=None,
                               part=FilmPlan)
+    briefed: tuple[Step, ...] | None = quantity("script", "what was briefed, if the script flies something else: what "
+                                                "the wing pilots expect; the scene has no fault then", absent=None)
     seed: int = quantity("count", "seed of the terrain and of everything drawn by lot", 0, 2**31 - 1, default=1)
     source: str = ""  # path the scene was read from
     notes: str = quantity("text", "anything worth keeping with the scene", default="")

@@ -242,7 +242,8 @@ def read_loop_table(node: Node, path: str, meta: Meta, log: Log) -> Any:
         good = good and load is not BAD
         loads.append(load)
     if good and not KNOTS[0] <= len(angles) <= KNOTS[1]:
-        log.add(node.mark, path, f"{len(angles)} loop angles", f"{KNOTS[0]} to {KNOTS[1]} of them")
+        some = "1 loop angle" if len(angles) == 1 else f"{len(angles)} loop angles"
+        log.add(node.mark, path, some, f"{KNOTS[0]} to {KNOTS[1]} of them")
         good = False
     return (tuple(a * units.DEG_RAD for a in angles), tuple(loads)) if good else BAD
 

@@ -142,6 +142,8 @@ def _part(cls: type, *, partly: bool, needed: tuple[str, ...] = ()) -> Json:
 
 def _fault(*, partly: bool) -> Json:
     schema = _part(Fault, partly=partly)
+    kinds = [{"const": kind, "description": doc} for kind, doc in FAULT_KINDS.items()]
+    schema["properties"]["kind"] = {"oneOf": kinds, "description": "what fails"}
     cases = []
     for kind in FAULT_KINDS:
         own = [k for k, f in declared(Fault).items() if kind in f.metadata["kinds"]]
