@@ -209,8 +209,10 @@ def compose(text: str, file: str) -> Mapping:
     """YAML text to its root mapping. Raises SceneError with all that can be said of the text as YAML."""
     log = Log()
     node: Node | None = None
+    builder: _Builder | None = None
     try:
-        node = _Builder(text, file, log).document()
+        builder = _Builder(text, file, log)
+        node = builder.document()
         if node is not None and not isinstance(node, Mapping):
             log.add(node.mark, "", what(node), "a mapping of keys to values")
     except _Stop:
@@ -223,8 +225,10 @@ def compose(text: str, file: str) -> Mapping:
         at = exc.problem_mark or exc.context_mark
         mark = Mark(file, at.line + 1, at.column + 1) if at else Mark(file)
         log.add(mark, "", f"text that is not YAML ({exc.problem or exc.context})", "YAML")
-    except (yaml.YAMLError, ValueError, OverflowError) as exc:
-        log.add(Mark(file), "", f"text that is not YAML ({shown(str(exc))})", "YAML")
+    except (yaml.YAMLError, ValueError, OverflowError):
+        # PyYAML lets Python's own errors through for escapes such as \\UFFFFFFFF
+        mark = Mark(file) if builder is None else Mark(file, builder.loader.line + 1, builder.loader.column + 1)
+        log.add(mark, "", "text that is not YAML (an escape or a number out of range)", "YAML")
     if log.complaints:
         raise SceneError(log.complaints[:MAX_COMPLAINTS])
     assert isinstance(node, Mapping)
