@@ -129,7 +129,9 @@ def _smooth(sub, contrast, search):  # type: ignore[no-untyped-def]
             # the pixel gives way only at the end where the edge crosses into it
             if (end < 0) == (2 * here - middle < 0):
                 continue
-            part = 256 * (reach0 + reach1 - 2 * nearest) // (2 * (reach0 + reach1))
+            # the edge runs from half a pixel up at this end to half a pixel down at the other: cover of the
+            # neighbour in this pixel's middle
+            part = 128 - 128 * (2 * nearest - 1) // (reach0 + reach1 - 1)
             if part < 6:
                 continue
             if count == room:
