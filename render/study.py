@@ -26,6 +26,7 @@ CAUTION = (
     "come first."
 )
 VERSION = "0.1.0"
+DEPARTED = "departed"  # the verdict's kind of a flight that is not the briefed one
 
 
 def versions() -> dict[str, str]:
@@ -92,10 +93,11 @@ def draw_verdict(
         for name, time_s in healthy.events.items()
     }
     fault = None
-    if faulted.fault_s is not None and scene.fault is not None:
+    if faulted.fault_s is not None:
         angle = _at(faulted, faulted.loop_angle_rad, faulted.fault_s)
         fault = {
-            "kind": scene.fault.kind, "time_s": faulted.fault_s, "loop_angle_deg": float(np.degrees(angle)),
+            "kind": scene.fault.kind if scene.fault is not None else DEPARTED,
+            "time_s": faulted.fault_s, "loop_angle_deg": float(np.degrees(angle)),
             "height_m": _at(faulted, faulted.height_agl_m, faulted.fault_s),
             "speed_mps": _at(faulted, faulted.cas_mps, faulted.fault_s),
         }

@@ -31,7 +31,8 @@ def scene_findings(scene: Scene, frames: Mapping[str, Airframe], unread: Collect
     """
     checks: tuple[tuple[tuple[str, ...], Callable[[Scene, Mapping[str, Airframe]], Iterator[Finding]]], ...] = (
         (("watch",), _watch), (("script",), _closing), (("script", "fault"), _points),
-        (("formation", "airframe"), _places), (("script", "airframe"), _demands),
+        (("script", "briefed", "fault"), _briefed), (("formation", "airframe"), _places),
+        (("script", "airframe"), _demands),
         (("script", "airframe", "formation"), _speeds), (("break_out", "airframe", "formation"), _break_out),
         (("fault", "airframe"), _fault),
     )
@@ -93,6 +94,18 @@ def _places(scene: Scene, frames: Mapping[str, Airframe]) -> Iterator[Finding]:
             f"{one.airframe.wing_span_m:g} and {other.airframe.wing_span_m:g} m, lengths "
             f"{one.airframe.length_m:g} and {other.airframe.length_m:g} m)",
             f"right: {right:g} m")
+
+
+def _briefed(scene: Scene, frames: Mapping[str, Airframe]) -> Iterator[Finding]:
+    if scene.briefed is None:
+        return
+    if scene.fault is not None:
+        yield Finding("briefed", f"a briefed script beside the fault {scene.fault.kind}",
+                      "one or the other: a fault is compared with the same script flown without it")
+    if scene.briefed[0] != scene.script[0]:
+        yield Finding("briefed.0.level", "a first step other than the script's", "the same first step in both")
+    if scene.briefed == scene.script:
+        yield Finding("briefed", "the script itself", "a script that differs from what is flown, or none")
 
 
 def _demands(scene: Scene, frames: Mapping[str, Airframe]) -> Iterator[Finding]:

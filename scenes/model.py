@@ -300,7 +300,7 @@ class Scene:
     film: FilmPlan = quantity("part", "how the scene is filmed; from the first slot if absent", absent=None,
                               part=FilmPlan)
     briefed: tuple[Step, ...] | None = quantity("script", "what was briefed, if the script flies something else: what "
-                                                "the wing pilots expect; the scene has no fault then", absent=None)
+                                                "the wing pilots expect; the scene has no fault then", default=None)
     seed: int = quantity("count", "seed of the terrain and of everything drawn by lot", 0, 2**31 - 1, default=1)
     source: str = ""  # path the scene was read from
     notes: str = quantity("text", "anything worth keeping with the scene", default="")

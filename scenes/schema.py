@@ -158,13 +158,14 @@ def _fault(*, partly: bool) -> Json:
 def _of_scene(key: str, *, partly: bool) -> Json:
     meta = declared(Scene)[key].metadata
     doc = {"description": meta["doc"]}
-    if key == "script":
+    if key in ("script", "briefed"):
         steps = [{"type": "object", "properties": {name: _part(cls, partly=False)}, "required": [name],
                   "additionalProperties": False} for name, cls in STEPS.items()]
         first = {"type": "object", "required": ["level"], "additionalProperties": False,
                  "properties": {"level": _part(Level, partly=False, needed=("speed", "height", "heading"))}}
-        return {"type": "array", "minItems": 1, "maxItems": MAX_STEPS, "prefixItems": [first],
-                "items": {"oneOf": steps}, **doc}
+        script: Json = {"type": "array", "minItems": 1, "maxItems": MAX_STEPS, "prefixItems": [first],
+                        "items": {"oneOf": steps}}
+        return {**script, **doc} if key == "script" else {"anyOf": [NONE, script], **doc}
     if key == "formation":
         return {"type": "object", "maxProperties": MAX_SLOTS,
                 "propertyNames": {"pattern": r"^[^\s0-9.:/\\-][^\s.:/\\-]{0,23}$", "not": {"const": "lead"}},

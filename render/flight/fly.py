@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 from collections.abc import Callable
 
 import numpy as np
@@ -17,6 +18,7 @@ from scenes.airframe import Airframe
 from scenes.model import Scene
 from terrain.ground import Ground
 
+DEPARTS_G = 0.05  # how far the demands are apart where a flight departs from the briefed one
 AFTER_SCRIPT_S = 15.0  # a faulted lead may need longer than the script
 _WHY = {
     r.TOO_FAST: ("calibrated airspeed", "m/s"),
@@ -42,6 +44,9 @@ def fly_scene(scene: Scene, airframe_of: Callable[[str], Airframe], ground: Grou
     known = {name: airframe_of(name) for name in set(names)}
     plan = compile_scene(scene, tuple(known[name] for name in names))
     heights, grid = ground_arrays(ground)
+    if scene.briefed is not None:
+        as_briefed = dataclasses.replace(scene, script=scene.briefed, briefed=None)
+        return _fly_departed(plan, compile_scene(as_briefed, plan.airframes), heights, grid)
     scale = close_loops([plan], plan.longest_s)
     steps = round((plan.longest_s + AFTER_SCRIPT_S) / DT_S)
     healthy = fly_batch([plan], scale, steps, heights, grid, healthy=True)
@@ -64,6 +69,28 @@ def fly_scene(scene: Scene, airframe_of: Callable[[str], Airframe], ground: Grou
     cut = _cut(faulted, end_s)
     check_raw(plan, faulted, 0, "the faulted flight", cut)
     return (to_flight(plan, healthy, 0, cut, float(scale[0])), to_flight(plan, faulted, 0, cut, float(scale[0])), plan)
+
+
+def _fly_departed(plan: Plan, briefed: Plan, heights: Array, grid: Array) -> tuple[Flight, Flight, Plan]:
+    """A script that is not the briefed one: the twin flies as briefed, the fault is where the two part."""
+    longest_s = max(plan.longest_s, briefed.longest_s)
+    steps = round((longest_s + AFTER_SCRIPT_S) / DT_S)
+    scales = [close_loops([p], p.longest_s) for p in (briefed, plan)]
+    raws = [fly_batch([p], k, steps, heights, grid, healthy=True) for p, k in zip((briefed, plan), scales, strict=True)]
+    ended = [float(raw.mem[0, s.M_SCRIPT_END_S]) for raw in raws]
+    stop = raws[1].status[0, 0]
+    contact_s = stop[1] * DT_S if stop[0] == r.CONTACT else np.inf
+    if ended[1] < 0.0 and not np.isfinite(contact_s):
+        raise FlightError(f"the script of '{plan.scene.name}' does not end within {steps * DT_S:.0f} s")
+    cut = _cut(raws[1], min(ended[1], contact_s) if ended[1] >= 0.0 else contact_s)
+    check_raw(briefed, raws[0], 0, "the flight as briefed", cut)
+    check_raw(plan, raws[1], 0, "the flight", cut)
+    healthy, flown = (to_flight(p, raw, 0, cut, float(k[0])) for p, raw, k in
+                      zip((briefed, plan), raws, scales, strict=True))
+    apart = np.abs(healthy.load_factor_demand[:, 0] - flown.load_factor_demand[:, 0]) > DEPARTS_G
+    if not apart.any():
+        raise FlightError(f"the script of '{plan.scene.name}' never departs from the briefed one by {DEPARTS_G} g")
+    return healthy, dataclasses.replace(flown, fault_s=float(flown.time_s[int(np.argmax(apart))])), plan
 
 
 def _cut(raw: Raw, end_s: float) -> int:

@@ -37,6 +37,11 @@ def slot_index(study: Study, slot: str) -> int:
     return names.index(slot)
 
 
+def fault_kind(study: Study) -> str:
+    """What failed, a key of ``words.FAULT_WORDS``: the scene's fault, or that the lead departed from the briefed."""
+    return study.scene.fault.kind if study.scene.fault is not None else "departed"
+
+
 def slot_title(slot: str) -> str:
     """How a slot is called in outputs: ``Slot right``, ``Lead``."""
     words = slot.replace("_", " ")
@@ -54,7 +59,7 @@ def study_events(study: Study, slot: str) -> tuple[Event, ...]:
         Event(key, flight.events[key], words) for key, words in FLIGHT_WORDS.items() if key in flight.events
     ]
     if flight.fault_s is not None:
-        kind = study.scene.fault.kind if study.scene.fault is not None else ""
+        kind = fault_kind(study)
         found.append(Event("fault", flight.fault_s, "fault", fault_words(kind)))
     for notice in study.notices.get(slot, ()):
         if notice.time_s is not None and notice.observer in OBSERVERS:

@@ -13,7 +13,7 @@ import numpy as np
 
 from render.files import whole_file
 from render.frames import Array
-from render.output.events import FLIGHT_WORDS, slot_index, slot_title
+from render.output.events import FLIGHT_WORDS, fault_kind, slot_index, slot_title
 from render.output.texts import sample
 from render.output.words import CAUTION, Units, cue_words, fault_words, lateness_words, seconds
 from render.types import Flight, Notice, Study
@@ -26,7 +26,10 @@ def study_table(study: Study) -> str:
     units = Units(study.scene.film.units)
     floor = units.length(study.scene.floor_m)
     lines = [study.scene.title, f"Floor: {floor} above the ground, as the scene asks.", ""]
-    lines += ["The flight without the fault, the lead's gates:", *_gates(study.healthy, units), ""]
+    twin = "as briefed" if study.scene.briefed is not None else "without the fault"
+    lines += [f"The flight {twin}, the lead's gates:", *_gates(study.healthy, units), ""]
+    if study.scene.briefed is not None:
+        lines += ["The flight as flown, the lead's gates:", *_gates(study.faulted, units), ""]
     lines += [*_fault(study, units), ""]
     for slot in study.faulted.names[1:]:
         lines += [*_slot(study, slot, units), ""]
@@ -53,7 +56,7 @@ def _gates(flight: Flight, units: Units) -> list[str]:
 
 def _fault(study: Study, units: Units) -> list[str]:
     flight = study.faulted
-    if flight.fault_s is None or study.scene.fault is None:
+    if flight.fault_s is None:
         return ["No fault in this scene."]
     at_s = flight.fault_s
     height = sample(flight.time_s, flight.height_agl_m[:, 0], at_s)
@@ -61,7 +64,7 @@ def _fault(study: Study, units: Units) -> list[str]:
     angle = float(np.degrees(sample(flight.time_s, flight.loop_angle_rad[:, 0], at_s)))
     where = f", loop angle {angle:.0f} deg" if 0.0 < angle < 360.0 else ""
     lines = [
-        f"Fault: {fault_words(study.scene.fault.kind)}, {seconds(at_s)} from the start, at {units.length(height)} "
+        f"Fault: {fault_words(fault_kind(study))}, {seconds(at_s)} from the start, at {units.length(height)} "
         f"above ground, {units.speed(speed)}{where}."
     ]
     contact = flight.contact_s[0]

@@ -34,6 +34,7 @@ FAULT_WORDS = {
     "trail": "stabilator trails free",
     "engines": "engine power lost",
     "idle": "lead closes the throttle",
+    "departed": "the lead departs from the briefed flight",
 }
 
 
