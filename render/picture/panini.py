@@ -16,7 +16,7 @@ import numpy as np
 from numba import njit
 from numpy.typing import NDArray
 
-from render.frames import Array
+from render.frames import Array, quat_rotate
 from render.picture.camera import FIELD_MAX_RAD, Camera
 
 Frame = NDArray[np.uint8]
@@ -74,6 +74,13 @@ class Panini:
         down = stretch * points_c[..., 1] / flat
         middle = np.array([0.5 * self.size_px[0], 0.5 * self.size_px[1]])
         return np.asarray(middle + self.focal_px * np.stack([across, down], axis=-1))
+
+    def directions_e(self, camera: Camera, px: Array) -> Array:
+        """Unit vectors (..., 3) in earth axes through picture places (..., 2) px."""
+        at = (np.asarray(px, float) - np.array([0.5 * self.size_px[0], 0.5 * self.size_px[1]])) / self.focal_px
+        phi = _azimuth(at[..., 0])
+        ray = np.stack([np.sin(phi), at[..., 1] / _stretch(phi), np.cos(phi)], axis=-1)
+        return quat_rotate(camera.quat_ec, ray / np.linalg.norm(ray, axis=-1, keepdims=True))
 
 
 def _stretch(phi: Array) -> Array:
