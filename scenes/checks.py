@@ -8,7 +8,7 @@ from collections.abc import Callable, Collection, Iterator, Mapping
 from dataclasses import dataclass
 
 from scenes.airframe import Airframe
-from scenes.model import DEG, INF, Climb, Dive, Level, Loop, PullOut, Roll, Scene
+from scenes.model import DEG, INF, Climb, Dive, Level, Loop, PullOut, Roll, Scene, Step
 from scenes.overlap import Placed, clear_right
 from scenes.units import shortest_text
 
@@ -30,10 +30,10 @@ def scene_findings(scene: Scene, frames: Mapping[str, Airframe], unread: Collect
     read; checks that need either are left out, so that a file's other faults show beside them.
     """
     checks: tuple[tuple[tuple[str, ...], Callable[[Scene, Mapping[str, Airframe]], Iterator[Finding]]], ...] = (
-        (("watch",), _watch), (("script",), _closing), (("script", "fault"), _points),
+        (("watch",), _watch), (("script", "briefed"), _closing), (("script", "fault"), _points),
         (("script", "briefed", "fault"), _briefed), (("formation", "airframe"), _places),
-        (("script", "airframe"), _demands),
-        (("script", "airframe", "formation"), _speeds), (("break_out", "airframe", "formation"), _break_out),
+        (("script", "briefed", "airframe"), _demands),
+        (("script", "briefed", "airframe", "formation"), _speeds), (("break_out", "airframe", "formation"), _break_out),
         (("fault", "airframe"), _fault),
     )
     return [finding for needs, check in checks if not set(needs) & set(unread) for finding in check(scene, frames)]
@@ -45,16 +45,23 @@ def _watch(scene: Scene, frames: Mapping[str, Airframe]) -> Iterator[Finding]:
         yield Finding("watch.gauges_every", f"{every:g} s", f"more than the look itself takes, {look:g} s")
 
 
-def _loops(scene: Scene) -> list[tuple[int, Loop]]:
-    return [(i, step) for i, step in enumerate(scene.script) if isinstance(step, Loop)]
+def _steps(scene: Scene) -> Iterator[tuple[str, Step]]:
+    """Paths and steps of the script, and of the briefed one if there is one."""
+    for name, script in (("script", scene.script), ("briefed", scene.briefed)):
+        for i, step in enumerate(script or ()):
+            yield f"{name}.{i}", step
+
+
+def _loops(scene: Scene) -> list[Loop]:
+    return [step for step in scene.script if isinstance(step, Loop)]
 
 
 def _closing(scene: Scene, frames: Mapping[str, Airframe]) -> Iterator[Finding]:
-    loops = _loops(scene)
-    if len(loops) > 1:
-        for i, loop in loops:
-            if loop.close_at_m is not None:
-                yield Finding(f"script.{i}.loop.close_at", f"close_at in a script of {len(loops)} loops",
+    for name in ("script", "briefed"):
+        loops = [(path, s) for path, s in _steps(scene) if isinstance(s, Loop) and path.startswith(name)]
+        for path, loop in loops:
+            if len(loops) > 1 and loop.close_at_m is not None:
+                yield Finding(f"{path}.loop.close_at", f"close_at in a script of {len(loops)} loops",
                               "a script of one loop")
 
 
@@ -110,10 +117,10 @@ def _briefed(scene: Scene, frames: Mapping[str, Airframe]) -> Iterator[Finding]:
 
 def _demands(scene: Scene, frames: Mapping[str, Airframe]) -> Iterator[Finding]:
     lead = frames.get(scene.airframe)
-    for i, step in enumerate(scene.script):
+    for at, step in _steps(scene):
         for path, load in _loads(step):
             if lead is not None and not lead.n_min <= load <= lead.n_max:
-                yield Finding(f"script.{i}.{path}", f"{load:g} g",
+                yield Finding(f"{at}.{path}", f"{load:g} g",
                               f"{lead.n_min:g} g to {lead.n_max:g} g, the limits of {lead.name}")
 
 
@@ -123,11 +130,11 @@ def _crew(scene: Scene, frames: Mapping[str, Airframe]) -> list[tuple[str, Airfr
 
 
 def _speeds(scene: Scene, frames: Mapping[str, Airframe]) -> Iterator[Finding]:
-    for i, step in enumerate(scene.script):
+    for path, step in _steps(scene):
         if isinstance(step, Level) and step.speed_mps is not None:
             over = [(n, f) for n, f in _crew(scene, frames) if step.speed_mps > f.speed_max_mps]
             for name, frame in over[:1]:
-                yield Finding(f"script.{i}.level.speed", shortest_text("speed", step.speed_mps),
+                yield Finding(f"{path}.level.speed", shortest_text("speed", step.speed_mps),
                               f"at most {shortest_text('speed', frame.speed_max_mps)}, to which {frame.name} ({name}) "
                               "is valid")
 

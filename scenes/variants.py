@@ -46,9 +46,11 @@ def value_paths(scene: Scene) -> tuple[ValuePath, ...]:
 
 
 def _all(scene: Scene) -> Iterator[ValuePath]:
-    for i, step in enumerate(scene.script):
-        name = next(n for n, cls in STEPS.items() if cls is type(step))
-        yield from _part(step, f"script.{i}.{name}", ("script", i))
+    for script in ("script", "briefed"):
+        for i, step in enumerate(getattr(scene, script) or ()):
+            name = next(n for n, cls in STEPS.items() if cls is type(step))
+            if script == "script" or i > 0:  # the first step is the script's own
+                yield from _part(step, f"{script}.{i}.{name}", (script, i))
     for i, slot in enumerate(scene.formation):
         yield from _part(slot, f"formation.{slot.name}", ("formation", i))
     yield from _part(scene, "", ())
@@ -103,6 +105,8 @@ def with_values(scene: Scene, values: Mapping[str, Any], airframes: Mapping[str,
             if place is None:
                 raise _Refused("no such value", f"a number of the scene, {len(known)} of them", _near(path, known))
             changed = _put(changed, place.chain, _number(place, value))
+            if place.chain[:2] == ("script", 0) and changed.briefed is not None:
+                changed = dataclasses.replace(changed, briefed=(changed.script[0], *changed.briefed[1:]))
         except _Refused as exc:
             bad.append(Complaint(scene.source or scene.name, 0, 0, path, exc.read, exc.wanted, exc.nearest))
     if not bad:
@@ -155,7 +159,8 @@ def _put(node: Any, chain: Chain, value: Any) -> Any:
 
 def _with_table(scene: Scene, path: str, table: Mapping[Any, Any]) -> Scene:
     keys = path.split(".")
-    loops = {f"script.{i}.loop.load_factor": i for i, step in enumerate(scene.script) if isinstance(step, Loop)}
+    loops = [f"{name}.{i}.loop.load_factor" for name in ("script", "briefed")
+             for i, step in enumerate(getattr(scene, name) or ()) if isinstance(step, Loop)]
     if path not in loops:
         raise _Refused("no such table", any_of(loops) if loops else "a scene with a loop")
     meta = declared(Loop)["load_factor"].metadata
@@ -165,11 +170,10 @@ def _with_table(scene: Scene, path: str, table: Mapping[Any, Any]) -> Scene:
         raise _Refused(f"{len(angles)} loop angles", f"{KNOTS[0]} to {KNOTS[1]} loop angles from 0 to 360 that rise")
     if not all(meta["lo"] <= n <= meta["hi"] for n in loads):
         raise _Refused("a load factor out of range", range_text("load_factor", meta["lo"], meta["hi"], "g"))
-    step = scene.script[int(keys[1])]
-    assert isinstance(step, Loop)
-    new = dataclasses.replace(step, angle_rad=tuple(a * DEG for a in angles), load_factor=tuple(loads))
-    i = int(keys[1])
-    return dataclasses.replace(scene, script=(*scene.script[:i], new, *scene.script[i + 1 :]))
+    chain: Chain = (keys[0], int(keys[1]))
+    changed: Scene = _put(scene, (*chain, "angle_rad"), tuple(a * DEG for a in angles))
+    changed = _put(changed, (*chain, "load_factor"), tuple(loads))
+    return changed
 
 
 def _frames(scene: Scene, read: Callable[[str], Airframe] = read_airframe) -> dict[str, Airframe]:

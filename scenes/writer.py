@@ -84,7 +84,7 @@ def plain_scene(scene: Scene) -> dict[str, Any]:
     result: dict[str, Any] = {}
     for key, f in declared(Scene).items():
         value = getattr(scene, f.name)
-        if key == "script":
+        if f.metadata["dim"] == "script" and value is not None:
             result[key] = [plain_step(step) for step in value]
         elif key == "formation":
             result[key] = {slot.name: plain_part(slot) for slot in value}
@@ -123,11 +123,12 @@ def write_scene_like(base: str, overrides: Mapping[str, Any], beside: Path | Non
     _check_words(scene, words)
     simple: dict[str, Any] = {**words, **({"fault": None} if plain.get("fault") == "none" else {})}
     changed = with_values(dataclasses.replace(scene, **simple), values)
-    whole = plain_scene(changed)
+    before, whole = plain_scene(scene), plain_scene(changed)
     for path in values:
         keys = path.split(".")
-        if keys[0] == "script":
-            plain["script"] = whole["script"]  # lists replace
+        if keys[0] in ("script", "briefed"):
+            # lists replace; the first step is the same in both
+            plain |= {key: whole[key] for key in ("script", "briefed") if whole[key] != before[key]}
             continue
         if keys[:2] == ["fault", "at"]:
             keys = keys[:2]
