@@ -10,6 +10,7 @@ in or left of the reaction is a break-out too late.
 
 from __future__ import annotations
 
+import itertools
 import math
 from dataclasses import dataclass
 
@@ -129,7 +130,11 @@ class MarginBar:
         zero, middle = self.x(0.0), (self._y0 + self._y1) / 2
         dead = hatch((round(zero - self._pad), self._y1 - self._y0), (66, 52, 46), PANEL, 16 * u, 0.5)
         image.paste(dead, (round(self._pad), self._y0))
-        draw.text(((zero + self._pad) / 2, middle), "too late", fill=QUIET, font=font(17 * u), anchor="mm")
+        # in the widest room between the marks of the observers
+        edges = sorted([self._pad, zero, *(self.x(left) for _, left in scale.notices.values() if left < 0)])
+        room, spot = max((b - a, (a + b) / 2) for a, b in itertools.pairwise(edges))
+        if room > text_width("too late", font(17 * u)) + 8 * u:
+            draw.text((spot, middle), "too late", fill=QUIET, font=font(17 * u), anchor="mm")
         self._reaction_frame(image, draw, zero)
         below = self._y1 + 5 * u
         step = 1 if scale.right_s - scale.left_s <= 8 else 2
