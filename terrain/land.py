@@ -58,6 +58,26 @@ class Airfield:
 
 
 @dataclass(frozen=True, slots=True)
+class Standing:
+    """How much of what stands on a land within a few kilometres of the display centre."""
+
+    hedge_height_m: float
+    hedge_reach_m: float  # hedges stand up within this distance, beyond it they are only painted
+    hedge_gaps: float  # part of the pieces (45 m) of hedge that are missing
+    hedge_trees: float  # trees for each piece of hedge
+    tree_height_m: tuple[float, float]
+    wood_kind: str  # broadleaf or conifer
+    wood_height_m: tuple[float, float]
+    wood_tries: int  # places tried; those in woods get a tree
+    lone_trees: int
+    bushes: int
+    bush_height_m: tuple[float, float]
+    farms: int
+    houses: int
+    vehicles: int
+
+
+@dataclass(frozen=True, slots=True)
 class Land:
     """Everything a recipe says but the relief."""
 
@@ -71,6 +91,9 @@ class Land:
     verge: Colour
     road_line: bool  # a white line along the middle
     wild_level: float  # where the first two colours of open land meet
+    leaf: tuple[Colour, Colour]
+    needle: Colour
+    standing: Standing
     airfield: Airfield
 
 
@@ -85,6 +108,15 @@ def _shore(recipe: Mapping[str, Any]) -> Shore | None:
     if shore is None:
         return None
     return Shore(float(np.radians(shore["bearing_deg"])), float(shore["distance"]), float(shore["below"]))
+
+
+def _standing(s: Mapping[str, Any]) -> Standing:
+    hedge, wood = s["hedges"], s["woods"]
+    return Standing(
+        hedge["height"], hedge["reach"], hedge["gaps"], hedge["trees"], tuple(s["trees"]), wood["kind"],
+        tuple(wood["trees"]), wood["tries"], s["lone_trees"], s["bushes"], tuple(s["bush_height"]), s["farms"],
+        s["houses"], s["vehicles"],
+    )
 
 
 def land_of(recipe: Mapping[str, Any], seed: int) -> Land:
@@ -103,5 +135,6 @@ def land_of(recipe: Mapping[str, Any], seed: int) -> Land:
     return Land(
         plan, (one, two, three), tuple(FieldKind(k[0], colour(k[1])) for k in c["fields"]),
         c["crop_from"], colour(c["wood"]), colour(c["hedge"]), colour(c["road"]), colour(c["verge"]),
-        bool(recipe.get("road_line", False)), float(recipe.get("wild_level", 0.5)), airfield,
+        bool(recipe.get("road_line", False)), float(recipe.get("wild_level", 0.5)),
+        (colour(c["leaf"][0]), colour(c["leaf"][1])), colour(c["needle"]), _standing(recipe["standing"]), airfield,
     )

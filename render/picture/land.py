@@ -12,8 +12,11 @@ from render.frames import Array
 from render.picture.axes import to_display
 from render.picture.ground_look import ground_actors
 from render.picture.light import Light, light_of
+from render.picture.objects import object_actor
 from render.picture.sky import sky_actor
+from render.picture.trees import TreeField, tree_shadows
 from scenes.model import Day
+from terrain.cover import cover_of
 from terrain.ground import Ground
 from terrain.land import land_of
 
@@ -28,13 +31,18 @@ class Land:
         self.light: Light = light_of(day)
         plan = land_of(ground.recipe, seed)
         self._sky = sky_actor(self.light)
-        self._eyed = ground_actors(ground, plan)
-        self.actors: list[vtk.vtkActor] = [*self._eyed, self._sky]
+        cover = cover_of(ground, seed)
+        self._trees = TreeField(cover.trees, ground, plan)
+        shadows = tree_shadows(cover.trees, ground, self.light)
+        solid = [object_actor(cover, ground, plan, self.light), *ground_actors(ground, plan)]
+        self._eyed = [*solid, shadows, self._trees.actor]
+        self.actors: list[vtk.vtkActor] = [*solid, self._sky, shadows, self._trees.actor]
         for actor in self.actors:
             set_light(actor, self.light)
 
     def set_eye(self, pos_e_m: Array) -> None:
         """Tell the shaders where the picture is seen from: (3,) m, earth axes. Call before each render."""
+        self._trees.set_eye(to_display(np.asarray(pos_e_m, float)))
         eye = tuple(to_display(np.asarray(pos_e_m, float)))
         for actor in self._eyed:
             shader = actor.GetShaderProperty()
@@ -54,5 +62,6 @@ def set_light(actor: vtk.vtkActor, light: Light) -> None:
         uniforms.SetUniform3f(name, tuple(value))
     uniforms.SetUniformf("extinction", light.extinction_per_m / np.log(2.0))
     uniforms = actor.GetShaderProperty().GetVertexCustomUniforms()
+    uniforms.SetUniformf("extinction", light.extinction_per_m / np.log(2.0))
     for name, value in {**values, "rimColour": light.rim, "rimGlow": light.glow}.items():
         uniforms.SetUniform3f(name, tuple(value))

@@ -1,0 +1,113 @@
+"""What stands on a land near the display centre: trees, hedges, buildings, vehicles, things beside the runway.
+
+All of it follows from recipe and seed, and from the same plan as the ground's look: hedges stand on field edges,
+woods' trees in woods; nothing stands on the runway, on taxiways or in the sea.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from terrain.ground import Ground
+from terrain.hedges import Lines, field_edges, keep
+from terrain.land import Land, land_of
+from terrain.pattern import Array, Plan, place_at, value_noise
+from terrain.yards import Boxes, yards
+
+REACH_M = 2_600.0
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Trees:
+    """Trees and bushes, arrays (N,): kind is ``broadleaf``, ``conifer`` or ``bush``."""
+
+    kind: NDArray[np.str_]
+    north_m: Array
+    east_m: Array
+    height_m: Array
+    width_m: Array
+    tone: Array  # 0..1, for its colour
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Cover:
+    """Everything that stands on the land."""
+
+    trees: Trees
+    hedges: Lines
+    hedge_height_m: float
+    boxes: Boxes
+
+
+def cover_of(ground: Ground, seed: int) -> Cover:
+    """The cover of a ground whose recipe has one, from the recipe and the seed the ground was read with."""
+    land = land_of(ground.recipe, seed)
+    rng = np.random.default_rng([seed, 7])
+    edges = field_edges(land.plan, REACH_M)
+    free = open_ground(land, edges.north_m, edges.east_m, 4.0) & open_ground(land, edges.to_north_m, edges.to_east_m, 4.0)
+    middle = place_at(land.plan, 0.5 * (edges.north_m + edges.to_north_m), 0.5 * (edges.east_m + edges.to_east_m))
+    edges = keep(edges, free & (middle.road_m > 0.5 * land.plan.road_m + 4.0))
+    boxes = yards(land, rng, REACH_M, lambda n, e, margin: open_ground(land, n, e, margin))
+    trees = _trees(land, rng, edges, boxes)
+    gaps = rng.random(len(edges.north_m)) < land.standing.hedge_gaps
+    near = np.hypot(edges.north_m, edges.east_m) < land.standing.hedge_reach_m
+    return Cover(trees, keep(edges, ~gaps & near), land.standing.hedge_height_m, boxes)
+
+
+def open_ground(land: Land, north_m: Array, east_m: Array, margin_m: float) -> NDArray[np.bool_]:
+    """Whether places lie outside the airfield's bounds and the sea by that margin."""
+    along, across = land.airfield.along_across(north_m, east_m)
+    low, high = land.airfield.across_m
+    outside = (np.abs(along) > land.airfield.half_along_m + margin_m) | (across < low - margin_m) | (across > high + margin_m)
+    if land.plan.shore is not None:
+        outside &= land.plan.shore.seaward_m(north_m, east_m) < -margin_m - 45.0
+    result: NDArray[np.bool_] = outside
+    return result
+
+
+def _trees(land: Land, rng: np.random.Generator, edges: Lines, boxes: Boxes) -> Trees:
+    plan, stand = land.plan, land.standing
+    groups = []
+    # along hedges
+    along = rng.random(len(edges.north_m))
+    chosen = rng.random(len(along)) < stand.hedge_trees
+    n = edges.north_m + along * (edges.to_north_m - edges.north_m)
+    e = edges.east_m + along * (edges.to_east_m - edges.east_m)
+    groups.append((n[chosen], e[chosen], "broadleaf", stand.tree_height_m, 0.75))
+    # in woods: thick along the edge of the wood and near, thin inside and far
+    n, e = _scatter(rng, REACH_M, stand.wood_tries)
+    depth = _depth_of_wood(plan, n, e)
+    thin = np.where(depth < 22.0, 1.0, 0.16) * np.clip(1.35 - np.hypot(n, e) / REACH_M, 0.2, 1.0)
+    chosen = (depth > 0.0) & (rng.random(len(n)) < thin)
+    groups.append((n[chosen], e[chosen], stand.wood_kind, stand.wood_height_m, 0.55 if stand.wood_kind == "conifer" else 0.8))
+    # alone on open land, and bushes
+    for count, kind, height, broad in (
+        (stand.lone_trees, "broadleaf", stand.tree_height_m, 0.85), (stand.bushes, "bush", stand.bush_height_m, 1.5),
+    ):
+        n, e = _scatter(rng, REACH_M if kind != "bush" else 1_500.0, count)
+        wild = ~place_at(plan, n, e).enclosed
+        groups.append((n[wild], e[wild], kind, height, broad))
+    north, east = np.concatenate([g[0] for g in groups]), np.concatenate([g[1] for g in groups])
+    kind = np.concatenate([np.full(len(g[0]), g[2], dtype="U9") for g in groups])
+    height = np.concatenate([rng.uniform(*g[3], len(g[0])) for g in groups])
+    width = height * np.concatenate([g[4] * rng.uniform(0.75, 1.2, len(g[0])) for g in groups])
+    free = open_ground(land, north, east, 6.0) & (place_at(plan, north, east).road_m > 0.5 * plan.road_m + 0.4 * width)
+    free &= boxes.clear_of(north, east, 0.5 * width)
+    return Trees(kind[free], north[free], east[free], height[free], width[free], rng.random(int(free.sum())))
+
+
+def _scatter(rng: np.random.Generator, reach_m: float, count: int) -> tuple[Array, Array]:
+    """Places in a disc, denser toward the middle."""
+    radius, turn = reach_m * rng.random(count) ** 0.62, rng.uniform(0.0, 2.0 * np.pi, count)
+    return radius * np.cos(turn), radius * np.sin(turn)
+
+
+def _depth_of_wood(plan: Plan, north_m: Array, east_m: Array) -> Array:
+    """About how far inside a wood a place is, m; negative outside."""
+    place = place_at(plan, north_m, east_m)
+    level = value_noise(place.u_m / 600.0, place.v_m / 600.0, plan.salt) - plan.wild_wood
+    result: Array = np.where(place.wood, np.where(place.enclosed, place.edge_m - 3.0, 500.0 * level), -1.0)
+    return result
