@@ -144,7 +144,8 @@ class CockpitDesign:
     coamings: tuple[tuple[float, float, float], ...]  # hoods behind it: (aft edge x, top z, length)
     frame: Colour
     suit: Colour
-    rear_eye_m: tuple[float, float, float] | None = None
+    seat: Colour
+    rear_eye_m: tuple[float, float, float] | None = None  # in the design's metres
 
 
 def canopy(

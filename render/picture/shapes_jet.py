@@ -9,10 +9,10 @@ import numpy as np
 from render.frames import Array
 from render.picture.loft import Colour, Surf, merge, mirrored, rings
 from render.picture.paint import Side, cut, divided, line, paint, patch, station
+from render.picture.shapes_assemble import Pieces, assemble, tip_light
 from render.picture.shapes_cockpit import Canopy, CockpitDesign, canopy
-from render.picture.shapes_crew import NECK_AFT_M, head, seat, torso
-from render.picture.shapes_parts import Fit, Shape, fit, fixed, hinged
-from render.picture.shapes_sections import Body, Panel, body, ellipsoid, outline, spindle
+from render.picture.shapes_parts import Shape, fit
+from render.picture.shapes_sections import Body, Panel, body, outline, spindle
 from scenes.airframe import Airframe
 
 WHITE: Colour = (232, 229, 218)
@@ -22,8 +22,8 @@ LINE: Colour = (160, 160, 152)
 DARK: Colour = (22, 23, 25)
 METAL: Colour = (112, 106, 98)
 FRAME: Colour = (58, 65, 70)
-GLASS: Colour = (120, 150, 165)
 SUIT: Colour = (66, 78, 62)
+SEAT: Colour = (54, 50, 44)
 
 LENGTH_M, SPAN_M = 12.0, 9.4
 EYE_M = (2.6, 0.9)
@@ -74,7 +74,7 @@ def cockpit_canopy() -> Canopy:
 def jet_cockpit(airframe: Airframe) -> CockpitDesign:
     """What the front seat has around it."""
     place = fit(airframe, LENGTH_M, SPAN_M, EYE_M)
-    return CockpitDesign(place, cockpit_canopy(), DECK_X_M, COAMINGS, FRAME, SUIT, rear_eye_m=REAR_EYE_M)
+    return CockpitDesign(place, cockpit_canopy(), DECK_X_M, COAMINGS, FRAME, SUIT, SEAT, REAR_EYE_M)
 
 
 def _belly(p: Array) -> Array:
@@ -158,8 +158,7 @@ def _wing() -> tuple[Surf, Surf]:
                    (-0.95, 4.58, -0.02, 0.095), (-1.3, 4.58, -0.02, 0.045), (-1.42, 4.58, -0.02, 0.008)],
                   TEAL, 14)  # fmt: skip
     pod = paint(pod, lambda p: 0.3 - p[:, 0], GOLD)
-    light = ellipsoid((0.15, 4.655, -0.02), (0.11, 0.045, 0.045), (60, 210, 120), 5, 10)
-    return merge([skin, pod, light]), aileron
+    return merge([skin, pod, tip_light((0.15, 4.655, -0.02))]), aileron
 
 
 def _leading_edge(width_m: float) -> Side:
@@ -204,53 +203,21 @@ def _root_fairing() -> Surf:
     shelf = spindle([(-3.55, 0.42, -0.06, 0.02), (-3.8, 0.46, -0.06, 0.10, 0.09), (-4.2, 0.49, -0.06, 0.11, 0.12),
                      (-5.0, 0.49, -0.06, 0.10, 0.12), (-5.4, 0.46, -0.06, 0.07, 0.08), (-5.6, 0.42, -0.06, 0.02)],
                     WHITE, 14)  # fmt: skip
-    return paint(shelf, lambda p: np.abs(p[:, 2] + 0.06) - 0.018, DARK)
-
-
-def _crew(place: Fit, which: str) -> Surf:
-    if which == "front":
-        return head(place.point((EYE_M[0], 0.0, -EYE_M[1])), WHITE, GOLD)
-    rear = place.point(REAR_EYE_M)
-    front = place.point((EYE_M[0], 0.0, -EYE_M[1]))
-    both = [f(eye, c) for eye in (front, rear) for f, c in ((torso, SUIT), (seat, (54, 50, 44)))]
-    return merge([head(rear, TEAL, WHITE), *both])
+    return line(shelf, station(-0.06, (0.0, 0.0, 1.0)), 0.036, DARK)
 
 
 def build_jet(airframe: Airframe) -> Shape:
     """The jet trainer's parts at the airframe's size."""
-    place = fit(airframe, LENGTH_M, SPAN_M, EYE_M)
     wing, aileron = _wing()
     fin, half = _tail()
-    hull = [_hull(), fin]
-    right = [_nacelle(), wing, _root_fairing()]
-    hull += right + [mirrored(s) for s in right]
-    hull[-2] = _red_light(hull[-2])
-    lid = cockpit_canopy()
-    frame, glass = lid.shell(FRAME)
-    inside = [frame, lid.tub(), lid.deck(DECK_X_M), *(lid.coaming(*hood) for hood in COAMINGS)]
-    cabin = merge([*(place.surf(s) for s in inside), _crew(place, "rear")])
-    inner, outer, part = AILERON
-    ends = WING.point(inner, part), WING.point(outer, part)
-    axis, hinge = place.axis(ends[1] - ends[0]), place.point(ends[0])
-    flip = np.array([1.0, -1.0, 1.0])
-    tail = place.surf(merge([half, mirrored(half)]))
-    pivot = place.point((TAIL_HINGE_X_M, 0.0, -0.03))
-    neck = place.point((EYE_M[0], 0.0, -EYE_M[1])) - np.array([NECK_AFT_M, 0.0, 0.0])
-    return Shape(
-        "jet",
-        (
-            fixed("hull", place.surf(merge(hull)), specular=0.25),
-            fixed("cabin", cabin, own_view=False, specular=0.05),
-            hinged("head", _crew(place, "front"), "head", neck, np.array([0.0, 0.0, 1.0]), own_view=False),
-            hinged("stabilator", tail, "stabilator", pivot, np.array([0.0, 1.0, 0.0])),
-            hinged("aileron_right", place.surf(aileron), "aileron_right", hinge, axis),
-            hinged("aileron_left", place.surf(mirrored(aileron)), "aileron_left", hinge * flip, -axis * flip),
-            fixed("glass", place.surf(glass), own_view=False, opacity=0.28, specular=0.9),
-        ),
+    pieces = Pieces(
+        middle=[_hull(), fin],
+        right=[_nacelle(), wing, _root_fairing()],
+        stabilator_right=half,
+        pivot_m=(TAIL_HINGE_X_M, 0.0, -0.03),
+        aileron_right=aileron,
+        wing=WING,
+        aileron=AILERON,
+        helmets=((WHITE, GOLD), (TEAL, WHITE)),
     )
-
-
-def _red_light(surf: Surf) -> Surf:
-    """The left wing's tip light is red."""
-    green = (surf.colour == np.array((60, 210, 120))).all(axis=1)
-    return replace(surf, colour=np.where(green[:, None], np.array((230, 50, 40), np.uint8), surf.colour))
+    return assemble("jet", jet_cockpit(airframe), pieces)
