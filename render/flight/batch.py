@@ -45,7 +45,7 @@ def fly_lead_batch(plans: Sequence[Plan], scale: Array, steps: int, heights: Arr
     coeffs = np.stack([p.coeffs for p in plans])
     out_y = np.empty((b, steps + 1, r.NY))
     out_a = np.empty((b, steps + 1, r.NA))
-    mem = np.zeros((b, s.NM))
+    mem = np.stack([p.memory for p in plans])
     status = np.zeros((b, 2))
     passes.fly_leads(y0, af, case, script, knots, coeffs, heights, grid, DT_S, out_y, out_a, mem, status)
     return out_y, out_a, mem, status

@@ -63,6 +63,7 @@ from render.flight.records import (
 from render.flight.script import (
     M_FAULT_ON,
     M_FAULT_S,
+    M_INSIDE,
     M_LOOP,
     M_LOOPS,
     M_ROLLED,
@@ -162,17 +163,19 @@ def fly_lead(
     """Fly the lead through his script: fills out_y (T, NY), out_a (T, NA) and mem (NM,).
 
     Returns why it stopped (OK: the time axis ended) and the last step flown. After a stop the rows
-    hold the last state. The step in which the fault comes on is split at its point.
+    hold the last state. The step in which the fault comes on is split at its point. A memory that says
+    M_INSIDE begins inside the script, as it stands; any other is begun anew.
     """
     steps = out_y.shape[0] - 1
     k = np.zeros((5, NY))
     y = y0.copy()
-    mem[:] = 0.0
-    mem[M_FAULT_S], mem[M_TOP_S], mem[M_SCRIPT_END_S] = -1.0, -1.0, -1.0
-    # the throttle the entry needs: the engine state says it
-    first = (y[ENGINE] - af.thrust_idle) / (1.0 - af.thrust_idle)
-    begin_step(0.0, y, case, mem, script, first)
-    mem[M_LOOPS] = 1.0 if int(script[0, S_KIND]) == LOOP else 0.0
+    if mem[M_INSIDE] < 0.5:
+        mem[:] = 0.0
+        mem[M_FAULT_S], mem[M_TOP_S], mem[M_SCRIPT_END_S] = -1.0, -1.0, -1.0
+        # the throttle the entry needs: the engine state says it
+        first = (y[ENGINE] - af.thrust_idle) / (1.0 - af.thrust_idle)
+        begin_step(0.0, y, case, mem, script, first)
+        mem[M_LOOPS] = 1.0 if int(script[0, S_KIND]) == LOOP else 0.0
     status = OK
     for i in range(steps + 1):
         t = i * dt_s

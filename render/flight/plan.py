@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
@@ -45,6 +45,7 @@ class Plan:
     slots: Array  # (K - 1, 3) aft, right, down
     escape: Any  # (1,) ESCAPE_DT
     longest_s: float  # how long the script can take at most
+    memory: Array = field(default_factory=lambda: np.zeros(s.NM))  # (NM,) of the lead, if the plan begins inside
 
 
 def trim_level(airframe: Airframe, height_above_sea_m: float, temp_offset_k: float,

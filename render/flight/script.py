@@ -29,8 +29,8 @@ from render.flight.records import (
 
 # What the lead remembers between steps of the script (one row a flight).
 (M_STEP, M_START_S, M_HEIGHT, M_CAS, M_HEAD_N, M_HEAD_E, M_LOOP, M_ROLLED, M_THROTTLE, M_FAULT_ON, M_FAULT_S,
- M_STAB, M_TOP_S, M_LAST_HEIGHT, M_LOOPS, M_SCRIPT_END_S) = range(16)
-NM = 16
+ M_STAB, M_TOP_S, M_LAST_HEIGHT, M_LOOPS, M_SCRIPT_END_S, M_INSIDE) = range(17)
+NM = 17
 
 # Columns of the script table.
 (S_KIND, S_CAS, S_HEIGHT, S_FOR, S_POWER, S_PART, S_ANGLE, S_RATE, S_LOAD, S_SCHEDULE) = range(10)
