@@ -76,6 +76,7 @@ def _part(part: Any, path: str, chain: Chain) -> Iterator[ValuePath]:
             if value is not None:
                 yield from _part(value, here, down)
         elif dim in DIMENSIONS:
+            value = None if meta["dim"] == "engines" and value == 0 else value  # 0 stands for all
             yield ValuePath(here, dim, value, meta["lo"], meta["hi"], down)
 
 
@@ -103,7 +104,7 @@ def with_values(scene: Scene, values: Mapping[str, Any], airframes: Mapping[str,
                 continue
             place = known.get(path)
             if place is None:
-                raise _Refused("no such value", f"a number of the scene, {len(known)} of them", _near(path, known))
+                raise _Refused("no such value", "a number that the scene gives", _near(path, known))
             changed = _put(changed, place.chain, _number(place, value))
             if place.chain[:2] == ("script", 0) and changed.briefed is not None:
                 changed = dataclasses.replace(changed, briefed=(changed.script[0], *changed.briefed[1:]))

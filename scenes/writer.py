@@ -99,8 +99,12 @@ def plain_scene(scene: Scene) -> dict[str, Any]:
 
 def to_yaml(plain: Mapping[str, Any]) -> str:
     """Plain data as YAML text in the order given."""
-    text: str = yaml.safe_dump(dict(plain), sort_keys=False, allow_unicode=True, width=110, default_flow_style=None)
-    return text
+    parts = []
+    for key, value in plain.items():
+        flow = None if isinstance(value, dict | list) else False  # None: flow style for the innermost only
+        parts.append(yaml.safe_dump({key: value}, sort_keys=False, allow_unicode=True, width=110,
+                                    default_flow_style=flow))
+    return "".join(parts)
 
 
 def write_scene_like(base: str, overrides: Mapping[str, Any], beside: Path | None = None) -> str:
