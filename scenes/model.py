@@ -228,13 +228,13 @@ class Fault:
 
 @dataclass(frozen=True, slots=True)
 class Slot:
-    """A wing pilot's place in lead's axes: behind, to the right and below the lead, eye to eye."""
+    """A wing pilot's place: behind the lead along the path he has flown, to the right of it and below it."""
 
     name: str
-    aft_m: float = quantity("length", "behind the lead's eye", -200.0, 500.0, example="8 m")
-    right_m: float = quantity("length", "to the right of the lead's eye, left negative", -500.0, 500.0,
+    aft_m: float = quantity("length", "behind the lead, along the path he has flown", -200.0, 500.0, example="8 m")
+    right_m: float = quantity("length", "to the right of the lead, left negative", -500.0, 500.0,
                               example="14 m")
-    down_m: float = quantity("length", "below the lead's eye, above negative", -200.0, 200.0, example="1 m")
+    down_m: float = quantity("length", "below the lead, above negative", -200.0, 200.0, example="1 m")
     airframe: str | None = quantity("airframe", "the wing's airframe; the lead's if absent", default=None)
 
 
