@@ -19,12 +19,14 @@ from vtkmodules.vtkRenderingCore import vtkLight, vtkRenderer
 from render.frames import Array, quat_rotate
 from render.picture.axes import DISPLAY_FROM_EARTH, body_to_display, to_display
 from render.picture.camera import Camera
+from render.picture.canopy import build_cockpit
 from render.picture.craft import NEAR_M, Craft
 from render.picture.edges import smooth_edges
 from render.picture.instant import Instant
 from render.picture.land import Land
 from render.picture.light import Light
 from render.picture.probe import new_window, require_drawing
+from render.picture.shadows import Shadows
 from render.picture.shapes import build_shape
 from scenes.airframe import Airframe
 from scenes.model import Day
@@ -32,6 +34,8 @@ from terrain.ground import Ground
 
 Frame = NDArray[np.uint8]
 FAR_M = 70_000.0
+GHOST_OPACITY = 0.35
+GHOST_APART_M = 1.0  # nearer than this the two leads would only flicker in each other
 
 
 class Stage:
@@ -49,24 +53,32 @@ class Stage:
         *,
         seed: int = 1,
         own: int | None = None,
+        ghost: bool = False,
         smooth: bool = True,
     ) -> None:
         """airframes: (K,) of the formation; own: whose cockpit the camera sits in (None: outside all of them);
-        size_px: width and height; smooth: whether silhouettes are antialiased.
+        size_px: width and height; ghost: whether a second lead may be drawn faintly; smooth: whether silhouettes
+        are antialiased.
         """
         require_drawing()
         self._own, self._smooth = own, smooth
         width, height = self._size = size_px
         self._land = Land(ground, day, seed)
-        ambient = 0.5 * float(np.mean(self._land.light.sky))
-        self._craft = [Craft(build_shape(frame).parts, ambient=ambient) for frame in airframes]
-        self.renderer = _renderer(self._land.light)
-        everyone = list(self._craft)
-        for craft in everyone:
-            self._add(craft.actors(clear=False))
+        light = self._land.light
+        ambient = 0.5 * float(np.mean(light.sky))
+        shapes = {frame: build_shape(frame) for frame in airframes}
+        self._craft = [Craft(shapes[frame].parts, ambient=ambient) for frame in airframes]
+        self._cockpit = None if own is None else Craft(build_cockpit(airframes[own]), ambient=ambient)
+        self._ghost = Craft(shapes[airframes[0]].parts, ambient=1.0, opacity=GHOST_OPACITY) if ghost else None
+        self._shadows = Shadows([shapes[frame] for frame in airframes], light.sun_d, ground.height_at)
+        self.renderer = _renderer(light)
+        nearest_first = [self._cockpit, *self._craft, self._ghost]
+        for craft in nearest_first:
+            self._add(() if craft is None else craft.actors(clear=False))
         self._add(self._land.actors)
-        for craft in everyone:
-            self._add(craft.actors(clear=True))
+        self._add(self._shadows.actors)
+        for craft in reversed(nearest_first):
+            self._add(() if craft is None else craft.actors(clear=True))
         self._window = new_window()
         self._window.SetSize(width, height)
         self._window.AddRenderer(self.renderer)
@@ -91,20 +103,24 @@ class Stage:
             self._window.Finalize()
             self._window = None
 
-    def draw(self, instant: Instant, camera: Camera) -> Frame:
-        """The picture, (h, w, 3); the array is used again by the next call. The camera has the stage's size."""
+    def draw(self, instant: Instant, camera: Camera, ghost: Instant | None = None) -> Frame:
+        """The picture, (h, w, 3); the array is used again by the next call. The camera has the stage's size.
+
+        ghost: where the faint second lead is, if the stage has one; he is left out while he is on the lead.
+        """
         if self._window is None:
             raise ValueError("the stage is closed")
         if (camera.width_px, camera.height_px) != self._size:
             raise ValueError(f"camera of {camera.width_px}x{camera.height_px}, stage of {self._size}")
-        self._place(instant)
+        self._place(instant, camera, ghost)
         self._aim(camera)
         self._window.Render()
         width, height = self._size
         self._window.GetPixelData(0, 0, width - 1, height - 1, 0, self._pixels, 0)
         np.copyto(self._frame, vtk_to_numpy(self._pixels).reshape(height, width, 3)[::-1])
         if self._smooth:
-            rects = [rect for craft in self._craft for rect in craft.rects(camera, DISPLAY_FROM_EARTH.T)]
+            seen = [craft for craft in (*self._craft, self._cockpit) if craft is not None]
+            rects = [rect for craft in seen for rect in craft.rects(camera, DISPLAY_FROM_EARTH.T)]
             smooth_edges(self._frame, rects)
         return self._frame
 
@@ -121,13 +137,22 @@ class Stage:
         for actor in actors:
             self.renderer.AddActor(actor)
 
-    def _place(self, instant: Instant) -> None:
+    def _place(self, instant: Instant, camera: Camera, ghost: Instant | None) -> None:
         for k, craft in enumerate(self._craft):
             if k >= len(instant.alive):
                 craft.hide()
                 continue
             matrix = body_to_display(instant.pos_e_m[k], instant.quat_eb[k])
             craft.place(matrix, moved_parts(instant, k), own=k == self._own)
+            if k == self._own and self._cockpit is not None:
+                self._cockpit.place(matrix, moved_parts(instant, k), own=True)
+        self._shadows.lay(instant, camera.pos_e_m)
+        if self._ghost is not None:
+            apart = 0.0 if ghost is None else float(np.linalg.norm(ghost.pos_e_m[0] - instant.pos_e_m[0]))
+            if ghost is None or apart < GHOST_APART_M:
+                self._ghost.hide()
+            else:
+                self._ghost.place(body_to_display(ghost.pos_e_m[0], ghost.quat_eb[0]), moved_parts(ghost, 0), own=False)
 
     def _aim(self, camera: Camera) -> None:
         vtk_camera = self.renderer.GetActiveCamera()
