@@ -17,6 +17,8 @@ from render.picture.shapes_crew import head
 from render.picture.shapes_jet import jet_cockpit
 from render.picture.shapes_panel import body_of_pilot, panel, stick_and_throttle
 from render.picture.shapes_parts import Part, fixed
+from render.picture.shapes_piston import piston_cockpit
+from render.picture.shapes_turboprop import turboprop_cockpit
 from scenes.airframe import Airframe
 
 #: Half the distance between the eyes, m: common size of an adult, no source.
@@ -43,7 +45,11 @@ def build_cockpit(airframe: Airframe) -> tuple[Part, ...]:
     )
 
 
-DESIGNS: dict[str, Callable[[Airframe], CockpitDesign]] = {"jet": jet_cockpit}
+DESIGNS: dict[str, Callable[[Airframe], CockpitDesign]] = {
+    "jet": jet_cockpit,
+    "turboprop": turboprop_cockpit,
+    "piston": piston_cockpit,
+}
 
 
 def _stations(lid: Canopy, count: int = 40) -> Array:

@@ -7,7 +7,7 @@ from dataclasses import replace
 import numpy as np
 
 from render.frames import Array
-from render.picture.loft import Colour, Surf, merge, mirrored, rings
+from render.picture.loft import Colour, Surf, merge, rings
 from render.picture.paint import Side, cut, divided, line, paint, patch, station
 from render.picture.shapes_assemble import Pieces, assemble, tip_light
 from render.picture.shapes_cockpit import Canopy, CockpitDesign, canopy

@@ -22,7 +22,12 @@ def panel(lid: Canopy, deck_x_m: float) -> list[Surf]:
     """
     x, top = deck_x_m + 0.03, float(lid.sill_z(np.array(deck_x_m))) - 0.01
     half = 0.86 * float(lid.width(np.array(deck_x_m)))
-    pieces = [_plate(x, (-half, top - 0.035), (half, top + 0.52), PANEL)]
+    # Its upper edge follows the hood's curve, just under it.
+    across = np.linspace(-1.0, 1.0, 9)
+    edge = np.stack([np.full(9, x), half * across, top + 0.012 - 0.05 * (1 - across**2)], -1)
+    corners = np.concatenate([edge, [[x, half, top + 0.52], [x, -half, top + 0.52], [x, 0.0, top + 0.25]]])
+    k = np.arange(11)
+    pieces = [surface(corners, np.stack([np.full(11, 11), (k + 1) % 11, k], -1), PANEL)]
     for row, z in enumerate((top + 0.075, top + 0.205)):
         for y in (-0.115, 0.0, 0.115):
             pieces += _dial(x - 0.004, y, z, 0.052, marks=12 if row else 8)
