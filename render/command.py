@@ -1,4 +1,4 @@
-"""The command line: ``latepull check|fly|film|still|list|schema|doctor``. Printing and exit codes live here alone.
+"""The latepull command line. Printing and exit codes live here alone.
 
 Exit 0 done, 2 the input is wrong, 3 this machine can't, 130 interrupted.
 """
@@ -14,6 +14,8 @@ from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Any
 
+PURPOSE = ("How late a lead's lost pitch control becomes visible in a low formation loop, and how little is left then: "
+           "fly a scene, film what a wing pilot sees, print the figures.")
 CAUTION = (
     "A training illustration, not a clearance. The authority's rules, the aircraft's manual and licensed practice "
     "come first."
@@ -22,7 +24,7 @@ CAUTION = (
 
 def build_parser() -> argparse.ArgumentParser:
     """The command line's parser."""
-    parser = argparse.ArgumentParser(prog="latepull", description=__doc__.splitlines()[0] if __doc__ else None,
+    parser = argparse.ArgumentParser(prog="latepull", description=PURPOSE,
                                      epilog=CAUTION)
     parser.add_argument("--json", action="store_true", help="print what a program reads")
     commands = parser.add_subparsers(dest="command", required=True)
@@ -46,6 +48,15 @@ def build_parser() -> argparse.ArgumentParser:
             sub.add_argument("--slot", help="whose eye (default: the scene's)")
             sub.add_argument("--draft", action="store_true", help="half size, half rate")
             sub.add_argument("--plain", action="store_true", help="no overlay")
+            sub.add_argument("--view", default="seat", choices=("seat", "chase", "spectator"),
+                             help="from where (default: the slot's seat)")
+            sub.add_argument("--look", default="gaze", choices=("gaze", "lead", "ahead", "ground"),
+                             help="which way from the seat (default gaze: as the scene's watch says)")
+            sub.add_argument("--twin", choices=("side", "stack", "ghost"),
+                             help="with the flight without the fault: side by side, one above the other, or its lead "
+                                  "as a faint outline")
+            sub.add_argument("--peripheral", action="store_true",
+                             help="blur what acuity does not give away from the gaze")
         if name == "film":
             sub.add_argument("--from", dest="start_s", type=float, metavar="S", help="first second of the script")
             sub.add_argument("--to", dest="end_s", type=float, metavar="S", help="last second of the script")
@@ -113,6 +124,13 @@ def _fly(args: argparse.Namespace) -> int:
     return 0
 
 
+def _target(out: Path | None, folder: Path, name: str) -> Path:
+    """Where an output goes: ``--out`` as a file or an existing folder, else a name in the scene's own folder."""
+    if out is None:
+        return folder / name
+    return out / name if out.is_dir() else out
+
+
 def _slot(study: Any, wanted: str | None) -> str:
     from render.errors import LatepullError
 
@@ -120,6 +138,21 @@ def _slot(study: Any, wanted: str | None) -> str:
     if slot not in study.faulted.names:
         raise LatepullError(f"--slot: read {slot}, wanted one of {', '.join(study.faulted.names)}")
     return slot
+
+
+def _picture(args: argparse.Namespace, size_px: tuple[int, int]) -> tuple[Any, str]:
+    """The source of frames that the options ask for, and what the film has to say of it."""
+    from render.output.stage_source import StageOptions, picture_words, stage_spec
+
+    options = StageOptions(view=args.view, look=args.look, twin=args.twin, peripheral=args.peripheral)
+    return stage_spec(options, size_px, overlay=not args.plain), picture_words(options)
+
+
+def _kind(args: argparse.Namespace) -> str:
+    """What tells the default file of one picture from another's, as a part of its name."""
+    words = [args.view if args.view != "seat" else "", args.look if args.look != "gaze" else "", args.twin or "",
+             "peripheral" if args.peripheral else "", "plain" if args.plain else "", "draft" if args.draft else ""]
+    return "".join(f"_{word}" for word in words if word)
 
 
 def _film(args: argparse.Namespace) -> int:
@@ -130,11 +163,12 @@ def _film(args: argparse.Namespace) -> int:
     folder = Path("out") / read_scene(args.scene).name
     study = _study(args.scene, folder)
     slot = _slot(study, args.slot)
-    kind = "_draft" if args.draft else ""
-    target = args.out or folder / f"{slot}{kind}.mp4"
+    kind = _kind(args)
+    target = _target(args.out, folder, f"{slot}{kind}.mp4")
     shot = plan_shot(study, slot, start_s=args.start_s, end_s=args.end_s, draft=args.draft)
-    path = write_film(study, slot, target, shot=shot, overlay=not args.plain, force=args.force,
-                      progress=progress_bar())
+    source, note = _picture(args, shot.size_px)
+    path = write_film(study, slot, target, shot=shot, overlay=not args.plain, force=args.force, source=source,
+                      note=note, progress=progress_bar())
     _say(args, {"film": str(path), "frames": len(shot)}, f"{path}: {len(shot)} frames")
     return 0
 
@@ -147,15 +181,17 @@ def _still(args: argparse.Namespace) -> int:
     study = _study(args.scene, folder)
     slot = _slot(study, args.slot)
     plan = study.scene.film
-    size = (plan.width_px // 4 * 2, plan.height_px // 4 * 2) if args.draft else None
+    size = (plan.width_px // 4 * 2, plan.height_px // 4 * 2) if args.draft else (plan.width_px, plan.height_px)
+    source, note = _picture(args, size)
     if args.key_moments:
-        paths = write_key_stills(study, slot, args.out or folder, size_px=size, force=args.force)
+        paths = write_key_stills(study, slot, args.out or folder, size_px=size, force=args.force,
+                                  source=source, note=note)
         _say(args, {"stills": [str(p) for p in paths]}, "\n".join(str(p) for p in paths))
         return 0
     fault_s = study.faulted.fault_s
     at = args.at_s if args.at_s is not None else (fault_s if fault_s is not None else study.faulted.events["top"])
-    path = write_still(study, slot, at, args.out or folder / f"{slot}_{at:.1f}s.png", size_px=size,
-                       overlay=not args.plain, force=args.force)
+    path = write_still(study, slot, at, _target(args.out, folder, f"{slot}_{at:.1f}s.png"), size_px=size,
+                       overlay=not args.plain, force=args.force, source=source, note=note)
     _say(args, {"still": str(path), "time_s": at}, str(path))
     return 0
 
@@ -191,11 +227,13 @@ def _count(number: int, noun: str) -> str:
 
 def _list(args: argparse.Namespace) -> int:
     from scenes.reader import airframe_names, read_scene, scene_names
+    from terrain.ground import ground_names
 
     scenes = {name: read_scene(name).title for name in scene_names()}
     lines = [f"  {name:<24} {title}" for name, title in scenes.items()]
-    words = "\n".join(["Scenes:", *lines, "Airframes:", *(f"  {name}" for name in airframe_names())])
-    _say(args, {"scenes": scenes, "airframes": list(airframe_names())}, words)
+    words = "\n".join(["Scenes:", *lines, f"Airframes: {', '.join(airframe_names())}",
+                       f"Terrains: {', '.join(ground_names())}"])
+    _say(args, {"scenes": scenes, "airframes": list(airframe_names()), "terrains": list(ground_names())}, words)
     return 0
 
 

@@ -76,7 +76,8 @@ def write_film(
             _run(jobs, folder, progress)
             for kind in targets:
                 segments = [Path(p) for job in jobs if (p := getattr(job, f"{kind}_path"))]
-                join_segments(segments, folder / f"{kind}.mp4", film_metadata(study, slot, plain=kind == "plain"))
+                metadata = film_metadata(study, slot, plain=kind == "plain", note=note)
+                join_segments(segments, folder / f"{kind}.mp4", metadata)
         except MachineError as exc:
             # the user knows the film he asked for, not the scratch files beside it
             raise MachineError(re.sub(re.escape(str(folder)) + r"[^\s:,;]*", str(target), str(exc))) from exc
@@ -85,11 +86,12 @@ def write_film(
     return target
 
 
-def film_metadata(study: Study, slot: str, *, plain: bool) -> dict[str, str]:
-    """What stands inside the file; the plain version's title gives nothing away."""
+def film_metadata(study: Study, slot: str, *, plain: bool, note: str = "") -> dict[str, str]:
+    """What stands inside the file; the plain version's title gives nothing away. note: what its picture shows."""
     texts = card_texts(study, slot)
     title = f"Formation flight, {slot_title(slot).lower()}" if plain else f"{texts.title} ({texts.slot.lower()})"
-    return {"title": title, "comment": f"{CAUTION} {texts.source} {texts.viewing}"}
+    picture = f" Picture: {note}." if note else ""
+    return {"title": title, "comment": f"{CAUTION} {texts.source} {texts.viewing}{picture}"}
 
 
 def _jobs(

@@ -39,6 +39,11 @@ GAP = "   "
 STRIP, BAR_HEIGHT, TEXT_WIDTH = 178, 114, 348  # of a 720-line picture
 
 
+def strip_px(height_px: int) -> int:
+    """Height of the strip at the bottom of a frame, px."""
+    return round(STRIP * height_px / 720.0)
+
+
 class Overlay:
     """The overlay of one slot's film; holds its resting pictures, ``draw`` writes into a frame."""
 
@@ -51,7 +56,7 @@ class Overlay:
         self._u = u = height / 720.0
         self._text_width = round(TEXT_WIDTH * u)
         self._panel = self._caption_panel(study, slot)
-        strip, bar = round(STRIP * u), round(BAR_HEIGHT * u)
+        strip, bar = strip_px(height), round(BAR_HEIGHT * u)
         self._strip_y, self._bar_height, self._line_height = height - strip, bar, strip - bar
         self._bar = MarginBar(study, slot, (width - self._text_width - round(14 * u), bar), u)
         reactions = [n.reaction_s for n in study.notices.get(slot, ()) if n.observer == "likely"]

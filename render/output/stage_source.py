@@ -3,15 +3,21 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from contextlib import contextmanager
+from contextlib import ExitStack, contextmanager
+from dataclasses import asdict, dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from render.errors import LatepullError
+from render.frames import quat_rotate
 from render.output.events import slot_index
-from render.picture.camera import Camera
+from render.output.overlay import strip_px
+from render.output.source import FrameSource, SourceSpec
+from render.picture.camera import FIELD_MAX_RAD, Camera
 from render.picture.instant import Instant, instant_at
+from render.picture.panini import Panini
+from render.picture.peripheral import Peripheral, patch_px
 from render.picture.stage import Stage
 from render.picture.views import (
     LOOKS,
@@ -24,63 +30,191 @@ from render.picture.views import (
     spectator_camera,
     spectator_stand,
 )
-from render.types import Flight, Study
+from render.types import Study
 from terrain.ground import Ground, read_ground
 
 Frame = NDArray[np.uint8]
+
+FLIGHTS = ("faulted", "healthy")
+TWINS = ("side", "stack", "ghost")
+PANINI_FROM_RAD = float(np.radians(100.0))  # a plane stretches the edges of wider fields to more than 2.4 times
+SPECTATOR_FIELD_RAD = float(np.radians(40.0))  # he turns with the aircraft and attends to little beside it
+
+
+@dataclass(frozen=True, slots=True)
+class StageOptions:
+    """How a study is pictured; checked by ``open_stage``.
+
+    view: seat, chase or spectator. look (from the seat): lead, ahead, ground, or gaze, which is the scene's own:
+    where its ``watch`` rests the eyes, with its looks at the gauges. flight: faulted or healthy. twin: healthy and
+    faulted ``side`` by side or in a ``stack`` (healthy left or above), or the healthy lead as a ``ghost``.
+    peripheral: what acuity leaves away from the gaze. panini: None takes it for fields above 100 deg.
+    field_rad: None takes the film's (a spectator: 40 deg). clear_px: rows kept free at the bottom of a twin.
+    """
+
+    view: str = "seat"
+    look: str = "gaze"
+    flight: str = "faulted"
+    twin: str | None = None
+    peripheral: bool = False
+    panini: bool | None = None
+    field_rad: float | None = None
+    clear_px: int = 0
 
 
 class StageSource:
     """One flight of a study from one viewpoint."""
 
     def __init__(
-        self, study: Study, flight: Flight, slot: str, size_px: tuple[int, int], ground: Ground, *, view: str, look: str
+        self, study: Study, slot: str, size_px: tuple[int, int], ground: Ground, options: StageOptions, field_rad: float
     ) -> None:
-        self._study, self._flight, self._size = study, flight, size_px
-        self._view, self._look = view, look
+        """field_rad: horizontal field of this picture. Raises MachineError where nothing can be drawn."""
+        self._study, self._options = study, options
+        self._flight = study.healthy if options.flight == "healthy" else study.faulted
         self._k = slot_index(study, slot)
-        self._field_rad = study.scene.film.field_rad
-        self._stand = spectator_stand(study.healthy, ground.height_at) if view == "spectator" else None
-        own = self._k if view == "seat" else None
-        self.stage = Stage(flight.airframes, ground, study.scene.day, size_px, seed=study.scene.seed, own=own)
+        self._size, self._field_rad = size_px, field_rad
+        spectator = options.view == "spectator"
+        self._stand = spectator_stand(study.healthy, ground.height_at) if spectator else None
+        wide = options.panini if options.panini is not None else field_rad > PANINI_FROM_RAD
+        self._wide = Panini(field_rad, size_px) if wide else None
+        self._peripheral = Peripheral(size_px) if options.peripheral else None
+        self.stage = Stage(
+            self._flight.airframes, ground, study.scene.day, size_px if self._wide is None else self._wide.source_px,
+            seed=study.scene.seed, own=self._k if options.view == "seat" else None, ghost=options.twin == "ghost",
+        )  # fmt: skip
 
     def frame(self, time_s: float) -> Frame:
         """The picture at an instant, (h, w, 3); used again by the next call."""
         instant = instant_at(self._flight, time_s)
-        return self.stage.draw(instant, self.camera(instant))
+        camera = self.camera(instant)
+        ghost = instant_at(self._study.healthy, time_s) if self._options.twin == "ghost" else None
+        if self._wide is None:
+            frame = self.stage.draw(instant, camera, ghost)
+        else:
+            frame = self._wide.remap(self.stage.draw(instant, self._wide.source_camera(camera), ghost))
+        if self._peripheral is not None:
+            eyes_e = quat_rotate(instant.quat_eb[self._k], self.sightline(instant).eyes_b)
+            frame = self._peripheral.blur(frame, patch_px(camera, eyes_e, self._wide))
+        return frame
 
     def camera(self, instant: Instant) -> Camera:
-        """The camera of an instant."""
-        if self._view == "chase":
-            return chase_camera(self._flight, instant.time_s, self._field_rad, self._size)
+        """The camera of an instant. In a wide picture its field is the picture's along the middle row."""
+        field, size = self._field_rad, self._size
+        if self._options.view == "chase":
+            return chase_camera(self._flight, instant.time_s, field, size)
         if self._stand is not None:
-            return spectator_camera(self._flight, self._stand, instant.time_s, self._field_rad, self._size)
-        axis_b = self.sightline(instant).axis_b
-        return seat_camera(instant, self._flight.airframes, self._k, axis_b, self._field_rad, self._size)
+            return spectator_camera(self._flight, self._stand, instant.time_s, field, size)
+        return seat_camera(instant, self._flight.airframes, self._k, self.sightline(instant).axis_b, field, size)
 
     def sightline(self, instant: Instant) -> Sightline:
         """Where the pilot looks at an instant."""
-        if self._look == "gaze":
+        if self._options.look == "gaze":
             return gazing(instant, self._flight.airframes, self._k, self._study.scene.watch)
-        return sightline(instant, self._flight.airframes, self._k, self._look)
+        return sightline(instant, self._flight.airframes, self._k, self._options.look)
+
+
+class TwinSource:
+    """Healthy and faulted in one picture, in step: side by side (healthy left) or stacked (healthy above)."""
+
+    def __init__(self, sources: list[StageSource], size_px: tuple[int, int], stacked: bool) -> None:
+        self._sources, self._stacked = sources, stacked
+        self._frame: Frame = np.zeros((size_px[1], size_px[0], 3), np.uint8)
+
+    def frame(self, time_s: float) -> Frame:
+        """The picture at an instant, (h, w, 3); used again by the next call."""
+        x = y = 0
+        for source in self._sources:
+            part = source.frame(time_s)
+            height, width = part.shape[:2]
+            self._frame[y : y + height, x : x + width] = part
+            x, y = (x, y + height + GAP_PX) if self._stacked else (x + width + GAP_PX, y)
+        return self._frame
+
+
+GAP_PX = 2  # black line between the two
 
 
 @contextmanager
-def open_stage(
-    study: Study, slot: str, size_px: tuple[int, int], *, view: str = "seat", look: str = "gaze"
-) -> Iterator[StageSource]:
-    """Open the frames of a slot; the window is closed on leaving.
+def open_stage(study: Study, slot: str, size_px: tuple[int, int], **options: object) -> Iterator[FrameSource]:
+    """Open the frames of a slot; windows are closed on leaving. options: those of ``StageOptions``.
 
-    view: seat, chase or spectator; look (from the seat): lead, ahead, ground, or gaze, which is the scene's own:
-    where its ``watch`` rests the eyes, with its looks at the gauges. Raises LatepullError (unknown option),
-    MachineError (no OpenGL).
+    Raises LatepullError (unknown option or one that can't be had here), MachineError (no OpenGL).
     """
-    for name, value, known in (("view", view, VIEWS), ("look", look, LOOKS)):
-        if value not in known:
-            raise LatepullError(f"--{name}: read {value}, wanted one of {', '.join(known)}")
+    chosen = _checked(StageOptions(**options), study)  # type: ignore[arg-type]
     ground = read_ground(study.scene.ground, study.scene.seed)
-    source = StageSource(study, study.faulted, slot, size_px, ground, view=view, look=look)
-    try:
-        yield source
-    finally:
-        source.stage.close()
+    field = _field_rad(chosen, study)
+    with ExitStack() as stack:
+
+        def opened(one: StageOptions, size: tuple[int, int], field_rad: float) -> StageSource:
+            source = StageSource(study, slot, size, ground, one, field_rad)
+            stack.callback(source.stage.close)
+            return source
+
+        if chosen.twin not in ("side", "stack"):
+            yield opened(chosen, size_px, field)
+            return
+        stacked = chosen.twin == "stack"
+        part, part_field = twin_part(size_px, chosen.clear_px, stacked, field)
+        halves = [opened(replace(chosen, flight=flight), part, part_field) for flight in ("healthy", "faulted")]
+        yield TwinSource(halves, size_px, stacked)
+
+
+def twin_part(
+    size_px: tuple[int, int], clear_px: int, stacked: bool, field_rad: float
+) -> tuple[tuple[int, int], float]:
+    """Size and field of each half of a twin: its scale is smaller by the root of the area it has."""
+    width, height = size_px[0], size_px[1] - clear_px
+    part = (width, (height - GAP_PX) // 2) if stacked else ((width - GAP_PX) // 2, height)
+    scale = np.sqrt(part[0] * part[1] / (size_px[0] * size_px[1]))
+    half = 0.5 * part[0] / (0.5 * size_px[0] / np.tan(0.5 * field_rad) * scale)
+    return part, float(min(2.0 * np.arctan(half), FIELD_MAX_RAD))
+
+
+def stage_spec(options: StageOptions, size_px: tuple[int, int], *, overlay: bool) -> SourceSpec:
+    """The stage by name for a film's workers; under an overlay the halves of a twin keep clear of its strip."""
+    clear = strip_px(size_px[1]) if overlay and options.twin in ("side", "stack") else 0
+    return SourceSpec(options=asdict(replace(options, clear_px=clear)))
+
+
+def picture_words(options: StageOptions) -> str:
+    """What the film has to say of a picture that isn't plainly what a wing pilot's eye has, "" if there is nothing."""
+    words = []
+    if options.twin in ("side", "stack"):
+        first, second = ("above", "below") if options.twin == "stack" else ("left", "right")
+        words.append(f"{first}: without the fault, {second}: with it; not at true size")
+    if options.twin == "ghost":
+        words.append("faint: the lead without the fault")
+    if options.flight == "healthy" and options.twin is None:
+        words.append("the flight without the fault")
+    if options.view == "chase":
+        words.append("seen from a chase aircraft")
+    if options.view == "spectator":
+        words.append("seen from the ground")
+    if options.view == "seat" and options.look in ("ahead", "ground"):
+        words.append("eyes ahead" if options.look == "ahead" else "eyes on the ground")
+    if options.peripheral:
+        words.append("blurred as acuity falls away from the gaze (motion is seen better than this)")
+    return "; ".join(words)
+
+
+def _checked(options: StageOptions, study: Study) -> StageOptions:
+    known = (("view", VIEWS), ("look", LOOKS), ("flight", FLIGHTS), ("twin", (None, *TWINS)))
+    faults = [
+        f"--{name}: read {getattr(options, name)}, wanted one of {', '.join(str(c) for c in choices if c)}"
+        for name, choices in known
+        if getattr(options, name) not in choices
+    ]
+    if options.peripheral and options.view != "seat":
+        faults.append(f"--peripheral: is what a pilot's eye has, and needs --view seat; read {options.view}")
+    if options.twin is not None and study.faulted is study.healthy:
+        faults.append(f"--twin {options.twin}: the scene has no fault, both flights are the same")
+    if faults:
+        raise LatepullError("\n".join(faults))
+    return options
+
+
+def _field_rad(options: StageOptions, study: Study) -> float:
+    if options.field_rad is not None:
+        return options.field_rad
+    field = study.scene.film.field_rad
+    return min(field, SPECTATOR_FIELD_RAD) if options.view == "spectator" else field

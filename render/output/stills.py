@@ -25,15 +25,19 @@ def still_frame(
     *,
     overlay: bool = True,
     caption: str = "",
+    note: str = "",
 ) -> Frame:
-    """The frame of a study instant, as the film shows it; raises LatepullError outside the flight."""
+    """The frame of a study instant, as the film shows it; raises LatepullError outside the flight.
+
+    note: a line that stays in the caption.
+    """
     first, last = float(study.faulted.time_s[0]), float(study.faulted.time_s[-1])
     if not first <= time_s <= last:
         raise LatepullError(f"a still at {time_s:g} s: the flight runs from {first:g} s to {last:g} s")
     frame = np.array(source.frame(time_s))
     if overlay:
         start_s, end_s = default_range(study, slot)
-        drawn = Overlay(study, slot, size_px, min(start_s, time_s), max(end_s, time_s))
+        drawn = Overlay(study, slot, size_px, min(start_s, time_s), max(end_s, time_s), note)
         drawn.draw(frame, time_s, caption)
     return frame
 
@@ -47,6 +51,7 @@ def write_still(
     size_px: tuple[int, int] | None = None,
     overlay: bool = True,
     caption: str = "",
+    note: str = "",
     force: bool = False,
     source: SourceSpec | None = None,
 ) -> Path:
@@ -54,7 +59,7 @@ def write_still(
     claim_output(Path(path), force=force)
     size = even_size(*(size_px or (study.scene.film.width_px, study.scene.film.height_px)))
     with (source or SourceSpec()).open(study, slot, size) as opened:
-        frame = still_frame(study, slot, time_s, opened, size, overlay=overlay, caption=caption)
+        frame = still_frame(study, slot, time_s, opened, size, overlay=overlay, caption=caption, note=note)
     _save(frame, Path(path), force)
     return Path(path)
 
@@ -65,6 +70,7 @@ def write_key_stills(
     folder: str | Path,
     *,
     size_px: tuple[int, int] | None = None,
+    note: str = "",
     force: bool = False,
     source: SourceSpec | None = None,
 ) -> tuple[Path, ...]:
@@ -79,7 +85,7 @@ def write_key_stills(
         for event, path in zip(events, paths, strict=True):
             assert opened is not None
             caption = event_caption(event, study.faulted.fault_s)
-            _save(still_frame(study, slot, event.time_s, opened, size, caption=caption), path, force)
+            _save(still_frame(study, slot, event.time_s, opened, size, caption=caption, note=note), path, force)
     return paths
 
 

@@ -39,7 +39,7 @@ class Panini:
             raise ValueError(f"field {np.degrees(field_rad):g} deg: 0 to 160 deg are wanted")
         self.size_px = width, height = size_px
         self.focal_px = 0.5 * width / float(_stretch(np.array(0.5 * field_rad)) * np.sin(0.5 * field_rad))
-        across = (np.arange(width) + 0.5 - 0.5 * width) / self.focal_px
+        across = np.asarray((np.arange(width) + 0.5 - 0.5 * width) / self.focal_px, float)
         up_down = (np.arange(height) + 0.5 - 0.5 * height) / self.focal_px
         phi = _azimuth(across)
         x = np.broadcast_to(np.tan(phi), (height, width))  # on the plane z = 1
