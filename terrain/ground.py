@@ -11,6 +11,8 @@ import numpy as np
 import yaml
 from numpy.typing import ArrayLike, NDArray
 
+from terrain.make import make_heights
+
 RECIPES = Path(__file__).parent / "recipes"
 
 
@@ -57,28 +59,17 @@ def ground_names() -> tuple[str, ...]:
 
 
 def read_ground(name: str, seed: int = 1) -> Ground:
-    """A ground from a shipped recipe and a seed. Raises GroundError for a name that is not shipped."""
-    path = RECIPES / f"{name}.yaml"
-    if name not in ground_names():
-        raise GroundError(f"ground: read {name}, wanted one of {', '.join(ground_names())}")
-    recipe = yaml.safe_load(path.read_text(encoding="utf-8"))
-    return Ground(name, *_heights(recipe, seed), recipe=recipe)
+    """A ground from a shipped recipe and a seed, or from an elevation file (see terrain/elevation.py).
 
+    name: a shipped land, or the path of a file that ends in .asc, .hgt, .npz, .tif or .tiff.
+    Raises GroundError for a name that is not shipped and for a file that can't be read.
+    """
+    from terrain.elevation import ENDINGS, read_elevation  # after Ground, which it makes
 
-def _heights(recipe: Mapping[str, Any], seed: int) -> tuple[NDArray[np.float64], float, float, float]:
-    """Rolling relief: a sum of seeded waves, flat inside ``flat_within_m`` of the display centre."""
-    relief = float(recipe["relief"]["height"])
-    if relief == 0.0:
-        return np.zeros((1, 1)), 0.0, 0.0, 1.0
-    spacing, half = 100.0, 15_000.0
-    axis = np.arange(-half, half + spacing, spacing)
-    n, e = np.meshgrid(axis, axis, indexing="ij")
-    rng = np.random.default_rng(seed)
-    waves = np.zeros_like(n)
-    for length in (4200.0, 2700.0, 1500.0):
-        turn, phase = rng.uniform(0.0, 2.0 * np.pi, 2)
-        waves += length / 4200.0 * np.sin(2.0 * np.pi * (n * np.cos(turn) + e * np.sin(turn)) / length + phase)
-    waves = (waves - waves.min()) / np.ptp(waves)
-    flat = float(recipe["relief"]["flat_within"])
-    rise = np.clip((np.hypot(n, e) - flat) / 2000.0, 0.0, 1.0)
-    return relief * waves * rise * rise * (3.0 - 2.0 * rise), -half, -half, spacing
+    if name in ground_names():
+        recipe = yaml.safe_load((RECIPES / f"{name}.yaml").read_text(encoding="utf-8"))
+        return Ground(name, *make_heights(recipe, seed), recipe=recipe)
+    if Path(name).suffix.lower() in ENDINGS:
+        return read_elevation(Path(name))
+    known = ", ".join(ground_names())
+    raise GroundError(f"ground: read {name}, wanted one of {known} or an elevation file ({', '.join(ENDINGS)})")

@@ -91,6 +91,9 @@ class Land:
     verge: Colour
     road_line: bool  # a white line along the middle
     wild_level: float  # where the first two colours of open land meet
+    sand: Colour
+    deep: Colour
+    shallow: Colour
     leaf: tuple[Colour, Colour]
     needle: Colour
     standing: Standing
@@ -136,5 +139,6 @@ def land_of(recipe: Mapping[str, Any], seed: int) -> Land:
         plan, (one, two, three), tuple(FieldKind(k[0], colour(k[1])) for k in c["fields"]),
         c["crop_from"], colour(c["wood"]), colour(c["hedge"]), colour(c["road"]), colour(c["verge"]),
         bool(recipe.get("road_line", False)), float(recipe.get("wild_level", 0.5)),
+        colour(c.get("sand", "#000000")), colour(c.get("deep", "#000000")), colour(c.get("shallow", "#000000")),
         (colour(c["leaf"][0]), colour(c["leaf"][1])), colour(c["needle"]), _standing(recipe["standing"]), airfield,
     )

@@ -31,16 +31,35 @@ _COUNTRY = """
   float n45 = (noise(q * (1.0 / 45.0)) - 0.5) * shown(45.0, px);
   vec3 colour = country(q, px, n1, n7, n45);
 """
+_SHORE = """
+  float out_m = seaward(place.xy);
+  float n7w = n7 + 0.6 * n45;
+  float wet = fwidth(out_m);
+  float beach = clamp((out_m + 34.0 + 16.0 * n7w) / max(wet, 3.0), 0.0, 1.0);
+  vec3 sand = SAND * (1.0 + 0.25 * n7 + 0.35 * n1) * (1.0 - 0.28 * clamp((out_m + 9.0) * 0.2, 0.0, 1.0));
+  colour = mix(colour, sand, beach) * GROUND_LIGHT;
+  float sea = clamp(out_m / max(wet, 0.5) + 0.5, 0.0, 1.0);
+  colour = mix(colour, seaColour(place.xy, ray, max(out_m, 0.0), px), sea);
+  colour = mix(colour, vec3(0.90) * flatLight, 0.8 * foamAt(out_m, place.xy, px, n7w));
+  fragOutput0 = vec4(haze(colour, length(ray)), 1.0);
+"""
+_SEA = """
+  vec3 colour = seaColour(place.xy, ray, 1000.0, px);
+  fragOutput0 = vec4(haze(colour, length(ray)), 1.0);
+"""
 _AIRFIELD = """
   vec2 r = place.xy - AIRFIELD_AT;
   vec2 q = vec2(r.x * AIRFIELD_S + r.y * AIRFIELD_C, r.y * AIRFIELD_S - r.x * AIRFIELD_C);
 """ + _NOISES
 _MAINS = {
     "country": _START + _COUNTRY + _LIGHT,
+    "shore": _START + _COUNTRY + _SHORE,
+    "sea": _START + _SEA,
     "mown": _START + _AIRFIELD + "vec3 colour = mown(q, px, n1, n7);" + _LIGHT,
     "runway": _START + _AIRFIELD + "vec3 colour = runway(q, px, n1, n7);" + _LIGHT,
 }
-_PIECES = {"country": ("plan", "ground"), "mown": ("airfield",), "runway": ("airfield",)}
+_PIECES = {"country": ("plan", "ground"), "mown": ("airfield",), "runway": ("airfield",), "shore": ("plan", "ground", "water"),
+           "sea": ("water",)}
 
 
 def ground_actors(ground: Ground, land: Land) -> list[vtk.vtkActor]:
@@ -76,8 +95,13 @@ def _constants(land: Land) -> dict[str, object]:
     number = round(np.degrees(field.heading_rad) / 10.0) % 36 or 36
     other = (number + 17) % 36 + 1
     long = field.length_m >= 2400.0
+    water: dict[str, object] = {}
+    if p.shore is not None:
+        c, s = float(np.cos(p.shore.bearing_rad)), float(np.sin(p.shore.bearing_rad))
+        water = {"SHORE_C": c, "SHORE_S": s, "SHORE_OUT": float(p.shore.distance_m), "SAND": land.sand,
+                 "DEEP": land.deep, "SHALLOW": land.shallow}
     return {
-        "SALT": p.salt, "GRAIN_C": float(np.cos(p.grain_rad)), "GRAIN_S": float(np.sin(p.grain_rad)),
+        **water, "SALT": p.salt, "GRAIN_C": float(np.cos(p.grain_rad)), "GRAIN_S": float(np.sin(p.grain_rad)),
         "BEND": float(p.bend_m), "BLOCK": float(p.block_m), "ENCLOSED": float(p.enclosed),
         "HEDGE": float(p.hedge_m), "ROAD": float(p.road_m), "ROAD_ROWS": float(p.road_rows),
         "ROADS_ACROSS": int(p.road_every_m > 0), "ROAD_EVERY": float(p.road_every_m), "WOOD_PART": float(p.wood_part),

@@ -9,7 +9,7 @@ vec3 haze(vec3 colour, float d) { return mix(rimAt, colour, exp2(-extinction * d
 float noise(vec2 p) {           // detail only: nothing else has to know it
   vec2 i = floor(p), f = p - i;
   f = f * f * (3.0 - 2.0 * f);
-  vec2 a = 50.0 * fract(i * 0.3183099 + 0.071), b = 50.0 * fract(i * 0.3183099 + 0.3893099);
+  vec2 a = 50.0 * fract(i * 0.3183099 + 0.071), b = 50.0 * fract((i + 1.0) * 0.3183099 + 0.071);
   vec2 low = fract(vec2(a.x, b.x) * a.y * (vec2(a.x, b.x) + a.y));
   vec2 high = fract(vec2(a.x, b.x) * b.y * (vec2(a.x, b.x) + b.y));
   vec2 r = mix(low, high, f.y);

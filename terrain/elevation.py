@@ -1,0 +1,2 @@
+ENDINGS = (".asc", ".hgt", ".npz", ".tif", ".tiff")
+def read_elevation(path): raise NotImplementedError
