@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 import math
 from pathlib import Path
 
@@ -98,13 +99,14 @@ def test_points_of_a_script_without_a_loop(folder: Path, new: str, line: str) ->
     assert faults_in(folder, with_line("{loop_angle: 245 deg}", new).replace(loop, "")) == [line]
 
 
+JET = read_airframe("jet_trainer")
+
+
 def frame(**changes: float) -> Airframe:
     """The shipped jet with its sizes replaced."""
-    import dataclasses
-
     sizes: dict[str, float] = {"wing_span_m": 9.0, "chord_m": 2.0, "length_m": 12.0, "eye_forward_m": 0.0,
                                "eye_up_m": 0.0}
-    return dataclasses.replace(read_airframe("jet_trainer"), **(sizes | changes))  # type: ignore[arg-type]
+    return dataclasses.replace(JET, **(sizes | changes))  # type: ignore[arg-type]
 
 
 @pytest.mark.parametrize(

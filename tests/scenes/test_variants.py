@@ -146,7 +146,7 @@ def test_a_scene_written_whole_reads_back_the_same(name: str) -> None:
 LOADS = st.lists(st.floats(min_value=-2.5, max_value=6.5), min_size=2, max_size=32)
 
 
-@settings(deadline=None, max_examples=25)
+@settings(max_examples=25)
 @given(LOADS, st.floats(min_value=0.0, max_value=360.0), st.floats(min_value=0.0, max_value=3000.0))
 def test_a_scene_built_on_another_reads_back_the_same(loads: list[float], at_deg: float, floor_m: float) -> None:
     """Any table, point and floor."""
