@@ -14,7 +14,7 @@ WING_HALF_HEIGHT_M = 0.25
 
 @dataclass(frozen=True, slots=True)
 class Placed:
-    """An aircraft and the place of its pilot's eye against the lead's: behind, right, below, m."""
+    """An aircraft and its place against the lead's: behind, right, below, m, centre to centre."""
 
     name: str
     airframe: Airframe
@@ -23,8 +23,8 @@ class Placed:
     down_m: float = 0.0
 
     def centre(self) -> tuple[float, float, float]:
-        """Its centre of gravity behind, right of and below the lead's eye, m."""
-        return self.aft_m + self.airframe.eye_forward_m, self.right_m, self.down_m + self.airframe.eye_up_m
+        """Behind, right of and below the lead, m."""
+        return self.aft_m, self.right_m, self.down_m
 
     def boxes(self) -> tuple[tuple[float, float, float], ...]:
         """Halves of fuselage and wing box: along, across, high, m."""

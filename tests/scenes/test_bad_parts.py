@@ -51,8 +51,8 @@ CASES: list[tuple[str, str, list[str]]] = [
     ("right: {aft: 0 m, right: 14 m, down: 0 m}", "right: {right: 14 m}",
      ["15:10: formation.right.aft: read nothing, wanted behind the lead, along the path he has flown: a length with "
       "its unit (m, ft, km, NM or cm), such as 8 m",
-      "15:10: formation.right.down: read nothing, wanted below the lead's eye, above negative: a length with its "
-      "unit (m, ft, km, NM or cm), such as 1 m"]),
+      "15:10: formation.right.down: read nothing, wanted below the lead, above negative: a length with its unit (m, "
+      "ft, km, NM or cm), such as 1 m"]),
     ("load_factor: 6.0", "load_factor: six",
      ["17:26: break_out.load_factor: read six, wanted a load factor such as 4.5 g"]),
     ("3 g/s", "3",

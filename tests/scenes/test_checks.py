@@ -104,8 +104,7 @@ JET = read_airframe("jet_trainer")
 
 def frame(**changes: float) -> Airframe:
     """The shipped jet with its sizes replaced."""
-    sizes: dict[str, float] = {"wing_span_m": 9.0, "chord_m": 2.0, "length_m": 12.0, "eye_forward_m": 0.0,
-                               "eye_up_m": 0.0}
+    sizes: dict[str, float] = {"wing_span_m": 9.0, "chord_m": 2.0, "length_m": 12.0}
     return dataclasses.replace(JET, **(sizes | changes))  # type: ignore[arg-type]
 
 
