@@ -292,8 +292,9 @@ def fly_escape(
         if agl < lowest:
             lowest, when = agl, t
         _, _, az = path_x(y)
-        # over hills the lowest point may come after the path is level: fly on while it is near
-        if t > esc.delay_s + 0.5 and az <= -0.05 and agl > lowest + 30.0:
+        # over hills the lowest point may come after the path is level: fly on until it climbs steeper
+        # than the ground can (30 deg)
+        if t > esc.delay_s + 0.5 and az <= (-0.05 if heights.size == 1 else -0.5) and agl > lowest + 30.0:
             break
         if not math.isfinite(y[V]) or y[V] < 5.0 or y[V] > 600.0:
             break
