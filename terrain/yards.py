@@ -28,6 +28,12 @@ class Boxes:
     ridge_m: Array
     tone: Array  # 0..1, for its colour
 
+    def corner(self, along: float, across: float) -> tuple[Array, Array]:
+        """North and east of the corner at ``along`` and ``across`` (-1, 0 or 1; to the left) half sizes."""
+        c, s = np.cos(self.bearing_rad), np.sin(self.bearing_rad)
+        x, y = 0.5 * along * self.length_m, 0.5 * across * self.width_m
+        return self.north_m + x * c + y * s, self.east_m + x * s - y * c
+
     def clear_of(self, north_m: Array, east_m: Array, more_m: Array) -> NDArray[np.bool_]:
         """Whether places lie farther from every box than half its diagonal and ``more_m``."""
         if len(self.north_m) == 0:

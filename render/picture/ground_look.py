@@ -12,13 +12,14 @@ from terrain.land import Land
 
 _START = """
   vec3 ray = place - eye;
-  float px = footprint(place.xy);
+  float longest, px = footprint(place.xy, longest);
 """
 _NOISES = """
-  float n1 = (0.65 * noise(q * (1.0 / 1.3)) - 0.325) * shown(1.3, px);
-  float n03 = (noise(q.yx * 2.7 + 9.7) - 0.5) * shown(0.37, px);
-  float n7 = (noise(q * (1.0 / 7.0) + 11.3) - 0.5) * shown(7.0, px);
-  n1 += 0.5 * n03;
+  // lattices turned against one another, so that none shows
+  vec2 q7 = vec2(0.1143 * q.x + 0.0857 * q.y, 0.1143 * q.y - 0.0857 * q.x);
+  vec2 q1 = vec2(0.455 * q.x - 0.621 * q.y, 0.455 * q.y + 0.621 * q.x);
+  float n7 = (noise(q7 + 11.3) - 0.5) * shown(7.0, px);
+  float n1 = (0.62 * noise(q1) - 0.31) * shown(1.3, px) + (0.55 * noise(q7 * 21.0 + q1 + 9.7) - 0.275) * shown(0.40, px);
 """
 _LIGHT = """
   colour *= GROUND_LIGHT;
@@ -29,7 +30,7 @@ _COUNTRY = """
   vec2 q = grain(place.xy);
 """ + _NOISES + """
   float n45 = (noise(q * (1.0 / 45.0)) - 0.5) * shown(45.0, px);
-  vec3 colour = country(q, px, n1, n7, n45);
+  vec3 colour = country(q, px, longest, n1, n7, n45);
 """
 _SHORE = """
   float out_m = seaward(place.xy);
@@ -100,8 +101,12 @@ def _constants(land: Land) -> dict[str, object]:
         c, s = float(np.cos(p.shore.bearing_rad)), float(np.sin(p.shore.bearing_rad))
         water = {"SHORE_C": c, "SHORE_S": s, "SHORE_OUT": float(p.shore.distance_m), "SAND": land.sand,
                  "DEEP": land.deep, "SHALLOW": land.shallow}
+    weights = np.diff([0.0, *(kind.up_to for kind in land.fields)])
+    fields = np.sum([w * np.array(k.colour) for w, k in zip(weights, land.fields, strict=True)], axis=0)
+    mean = p.enclosed * fields + (1.0 - p.enclosed) * np.mean(land.wild, axis=0)
     return {
-        **water, "SALT": p.salt, "GRAIN_C": float(np.cos(p.grain_rad)), "GRAIN_S": float(np.sin(p.grain_rad)),
+        **water, "COUNTRY_MEAN": mean, "FIELD": float(p.block_m / np.sqrt(8.0)),
+        "SALT": p.salt, "GRAIN_C": float(np.cos(p.grain_rad)), "GRAIN_S": float(np.sin(p.grain_rad)),
         "BEND": float(p.bend_m), "BLOCK": float(p.block_m), "ENCLOSED": float(p.enclosed),
         "HEDGE": float(p.hedge_m), "ROAD": float(p.road_m), "ROAD_ROWS": float(p.road_rows),
         "ROADS_ACROSS": int(p.road_every_m > 0), "ROAD_EVERY": float(p.road_every_m), "WOOD_PART": float(p.wood_part),

@@ -13,8 +13,9 @@ from render.picture.axes import to_display
 from render.picture.ground_look import ground_actors
 from render.picture.light import Light, light_of
 from render.picture.objects import object_actor
+from render.picture.shadows import shadow_actor
 from render.picture.sky import sky_actor
-from render.picture.trees import TreeField, tree_shadows
+from render.picture.trees import TreeField
 from scenes.model import Day
 from terrain.cover import cover_of
 from terrain.ground import Ground
@@ -33,7 +34,7 @@ class Land:
         self._sky = sky_actor(self.light)
         cover = cover_of(ground, seed)
         self._trees = TreeField(cover.trees, ground, plan)
-        shadows = tree_shadows(cover.trees, ground, self.light)
+        shadows = shadow_actor(cover, ground, self.light)
         solid = [object_actor(cover, ground, plan, self.light), *ground_actors(ground, plan)]
         self._eyed = [*solid, shadows, self._trees.actor]
         self.actors: list[vtk.vtkActor] = [*solid, self._sky, shadows, self._trees.actor]

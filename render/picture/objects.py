@@ -7,7 +7,7 @@ import vtk
 
 from render.frames import Array
 from render.picture.light import Light
-from render.picture.shading import constants, glsl, mesh, shaded_actor
+from render.picture.shading import glsl, mesh, shaded_actor
 from terrain.cover import Cover
 from terrain.ground import Ground
 from terrain.land import Land
@@ -24,6 +24,10 @@ _ROOFS = {
 }
 
 
+_PLAIN, _PANES, _DOOR, _GLASS, _SCREEN, _LEAVES = (float(k) for k in range(6))  # as in shaders/object.glsl
+_SIDES = {"house": _PANES, "hangar": _DOOR, "tower": _GLASS, "car": _SCREEN}
+
+
 class _Faces:
     """Four-cornered faces, collected and lit."""
 
@@ -31,15 +35,21 @@ class _Faces:
         self._light = light
         self.points: list[Array] = []
         self.colours: list[Array] = []
+        self.walls: list[Array] = []
 
-    def add(self, corners: Array, colour: Array) -> None:
-        """Faces (N, 4, 3) counter-clockwise from outside, one colour (N, 3) each."""
+    def add(self, corners: Array, colour: Array, kind: Array | float = _PLAIN) -> None:
+        """Faces (N, 4, 3) counter-clockwise from outside, the first two corners below; one colour (N, 3) each."""
         normal = np.cross(corners[:, 1] - corners[:, 0], corners[:, 3] - corners[:, 0])
         normal = normal / (np.linalg.norm(normal, axis=1)[:, None] + 1e-9)
         sun = np.maximum(normal @ self._light.sun_d, 0.0)[:, None]
         lit = colour * (self._light.sun * sun + self._light.sky * (0.72 + 0.28 * normal[:, 2:]))
         self.points.append(corners.reshape(-1, 3))
         self.colours.append(np.repeat(np.clip(lit, 0.0, 1.0), 4, axis=0))
+        long = np.linalg.norm(corners[:, 1] - corners[:, 0], axis=1)
+        up = np.linalg.norm(corners[:, 3] - corners[:, 0], axis=1)
+        zero, kinds = np.zeros(len(corners)), np.broadcast_to(np.asarray(kind, float), long.shape)
+        wall = [(zero, zero), (long, zero), (long, up), (zero, up)]
+        self.walls.append(np.stack([np.column_stack([x, y, long, kinds]) for x, y in wall], axis=1).reshape(-1, 4))
 
 
 def object_actor(cover: Cover, ground: Ground, land: Land, light: Light) -> vtk.vtkActor:
@@ -47,46 +57,41 @@ def object_actor(cover: Cover, ground: Ground, land: Land, light: Light) -> vtk.
     faces = _Faces(light)
     _add_boxes(faces, cover, ground)
     _add_hedges(faces, cover, ground, land)
-    points, colours = np.concatenate(faces.points), np.concatenate(faces.colours)
+    points, colours, walls = (np.concatenate(x) for x in (faces.points, faces.colours, faces.walls))
     first = 4 * np.arange(len(points) // 4)[:, None]
     triangles = np.concatenate([first + [0, 1, 2], first + [0, 2, 3]], axis=1).reshape(-1, 3)
-    code = constants({}) + glsl("common") + "in vec3 paint;\n"
-    vertex = glsl("rim") + "in vec3 paintIn;\nout vec3 paint;\n"
+    vertex = glsl("rim") + "in vec3 paintIn;\nin vec4 wallIn;\nout vec3 paint;\nout vec4 wall;\n"
     return shaded_actor(
-        mesh(points, triangles), code, "fragOutput0 = vec4(haze(paint, length(place - eye)), 1.0);\n",
-        {"paintIn": colours}, vertex, "setRim(place);\npaint = paintIn;\n",
+        mesh(points, triangles), glsl("common") + glsl("object"), "fragOutput0 = vec4(objectColour(), 1.0);\n",
+        {"paintIn": colours, "wallIn": walls}, vertex, "setRim(place);\npaint = paintIn;\nwall = wallIn;\n",
     )
 
 
 def _add_boxes(faces: _Faces, cover: Cover, ground: Ground) -> None:
     boxes = cover.boxes
     foot = ground.height_at(boxes.north_m, boxes.east_m)
-    forward = np.column_stack([np.sin(boxes.bearing_rad), np.cos(boxes.bearing_rad)])
-    left = np.column_stack([-forward[:, 1], forward[:, 0]])
-    middle = np.column_stack([boxes.east_m, boxes.north_m])
     wall = np.array([_pick(_WALLS[k], t) for k, t in zip(boxes.kind, boxes.tone, strict=True)])
     roof = np.array([_pick(_ROOFS.get(k, _WALLS[k]), t) for k, t in zip(boxes.kind, boxes.tone, strict=True)])
+    side_kind = np.array([_SIDES.get(k, _PLAIN) for k in boxes.kind])
 
     def corner(along: float, across: float, up: Array) -> Array:
-        flat = middle + (along * 0.5 * boxes.length_m)[:, None] * forward + (across * 0.5 * boxes.width_m)[:, None] * left
-        return np.column_stack([flat, foot + up])
+        north, east = boxes.corner(along, across)
+        return np.column_stack([east, north, foot + up])
 
-    low, eaves, ridge = np.full(len(foot), -1.0), boxes.height_m, boxes.height_m + boxes.ridge_m
+    low, eaves, ridge = np.zeros(len(foot)), boxes.height_m, boxes.height_m + boxes.ridge_m
     sides = [(1, -1), (1, 1), (-1, 1), (-1, -1)]
     for (a, b), (c, d) in zip(sides, sides[1:] + sides[:1], strict=True):
-        faces.add(np.stack([corner(a, b, low), corner(c, d, low), corner(c, d, eaves), corner(a, b, eaves)], axis=1), wall)
-    faces.add(np.stack([corner(1, 1, eaves), corner(-1, 1, eaves), corner(-1, 0, ridge), corner(1, 0, ridge)], axis=1), roof)
-    faces.add(np.stack([corner(-1, -1, eaves), corner(1, -1, eaves), corner(1, 0, ridge), corner(-1, 0, ridge)], axis=1), roof)
+        quad = np.stack([corner(a, b, low), corner(c, d, low), corner(c, d, eaves), corner(a, b, eaves)], axis=1)
+        faces.add(quad, wall, side_kind)
+    for side in (1, -1):
+        quad = np.stack([corner(side, side, eaves), corner(-side, side, eaves), corner(-side, 0, ridge),
+                         corner(side, 0, ridge)], axis=1)
+        faces.add(quad, roof)
     pitched = boxes.ridge_m > 0.0
     for end in (1, -1):
         top = corner(end, 0, ridge)
         gable = np.stack([corner(end, -end, eaves), corner(end, end, eaves), top, top], axis=1)
         faces.add(gable[pitched], wall[pitched])
-    _add_windows(faces, cover, corner)
-
-
-def _add_windows(faces: _Faces, cover: Cover, corner: object) -> None:
-    """Nothing yet."""
 
 
 def _pick(colours: tuple[tuple[float, float, float], ...], tone: float) -> Array:
@@ -96,7 +101,7 @@ def _pick(colours: tuple[tuple[float, float, float], ...], tone: float) -> Array
 
 
 def _add_hedges(faces: _Faces, cover: Cover, ground: Ground, land: Land) -> None:
-    """Each piece of hedge as a tent: two faces."""
+    """Each piece of hedge as two leaning sides and a top."""
     h = cover.hedges
     if len(h.north_m) == 0 or land.plan.hedge_m <= 0.0:
         return
@@ -108,7 +113,10 @@ def _add_hedges(faces: _Faces, cover: Cover, ground: Ground, land: Land) -> None
     def up(places: Array, height: float) -> Array:
         return np.column_stack([places, ground.height_at(places[:, 1], places[:, 0]) + height])
 
-    top_a, top_b = up(start, cover.hedge_height_m), up(end, cover.hedge_height_m)
+    tall = cover.hedge_height_m
+    left_a, left_b = up(start + 0.6 * side, tall), up(end + 0.6 * side, tall)
+    right_a, right_b = up(start - 0.6 * side, tall), up(end - 0.6 * side, tall)
     colour = np.tile(np.array(land.hedge), (len(start), 1))
-    faces.add(np.stack([up(end + side, -0.3), up(start + side, -0.3), top_a, top_b], axis=1), colour)
-    faces.add(np.stack([up(start - side, -0.3), up(end - side, -0.3), top_b, top_a], axis=1), colour)
+    faces.add(np.stack([up(end + side, -0.2), up(start + side, -0.2), left_a, left_b], axis=1), colour, _LEAVES)
+    faces.add(np.stack([up(start - side, -0.2), up(end - side, -0.2), right_b, right_a], axis=1), colour, _LEAVES)
+    faces.add(np.stack([right_a, right_b, left_b, left_a], axis=1), colour, _LEAVES)

@@ -1,59 +1,97 @@
-"""The shadows of a formation as actors of the stage, laid anew for each instant."""
+"""Shadows of what stands on the land, laid on the ground away from the sun."""
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-
 import numpy as np
-from vtkmodules.vtkRenderingCore import vtkActor, vtkPolyDataMapper
+import vtk
+from numpy.typing import NDArray
+from scipy.spatial import ConvexHull
 
 from render.frames import Array
-from render.picture.axes import DISPLAY_FROM_EARTH
-from render.picture.instant import Instant
-from render.picture.shadow import Shadow, cast_samples
-from render.picture.shapes_parts import Shape
-from render.sight.geometry import HeightAt
+from render.picture.light import Light
+from render.picture.shading import constants, glsl, mesh, shaded_actor
+from terrain.cover import Cover
+from terrain.ground import Ground
 
-#: Along the sun's ray, m; beyond it the half-shadow (9.3 m wide there) has eaten the shadow of a small aircraft.
-REACH_M = 1_000.0
-
-
-class Shadows:
-    """One shadow for each aircraft; drawn after the ground, before anything else that is see-through."""
-
-    def __init__(self, shapes: Sequence[Shape], sun_d: Array, height_at: HeightAt) -> None:
-        """shapes: (K,); sun_d: toward the sun, display axes; height_at: the ground's height, m."""
-        self._sun_e = np.asarray(sun_d, float) @ DISPLAY_FROM_EARTH
-        self._height_at = height_at
-        samples = {id(shape): cast_samples(shape.parts) for shape in shapes}
-        self._shadows = [Shadow(samples[id(shape)]) for shape in shapes]
-        self.actors = [_actor(shadow) for shadow in self._shadows]
-
-    def lay(self, instant: Instant, eye_e_m: Array) -> None:
-        """Lay the shadows of an instant, for an eye at (3,) m."""
-        for k, (shadow, actor) in enumerate(zip(self._shadows, self.actors, strict=True)):
-            actor.SetVisibility(k < len(instant.alive) and self._laid(shadow, instant, k, eye_e_m))
-
-    def _laid(self, shadow: Shadow, instant: Instant, k: int, eye_e_m: Array) -> bool:
-        pos = instant.pos_e_m[k]
-        rise = -float(self._sun_e[2])
-        height = -float(pos[2]) - float(self._height_at(pos[0], pos[1]))
-        if rise < 0.05 or height / rise > REACH_M:
-            return False
-        # a depth buffer of 24 bits tells depths apart to d^2 / (near 2^24): 0.4 m at 1 km
-        away = float(np.linalg.norm(pos - height / rise * self._sun_e - eye_e_m))
-        return shadow.update(pos, instant.quat_eb[k], self._sun_e, self._height_at, 0.05 + (away / 1000.0) ** 2)
+_CORNERS = np.array([[-1.0, -1.0], [1.0, -1.0], [1.0, 1.0], [-1.0, 1.0]])
+_FACES = np.array([[0, 1, 2], [0, 2, 3]])
+#: Toward the eye in depth, so that the ground does not show through: parts of the whole depth range.
+_LIFT = "gl_Position.z -= 2e-6 * gl_Position.w;\n"
 
 
-def _actor(shadow: Shadow) -> vtkActor:
-    mapper = vtkPolyDataMapper()
-    mapper.SetInputData(shadow.mesh)
-    mapper.SetVBOShiftScaleMethod(0)
-    mapper.SetScalarModeToUsePointFieldData()
-    mapper.SelectColorArray("colour")
-    mapper.SetColorModeToDirectScalars()
-    actor = vtkActor()
-    actor.SetMapper(mapper)
-    actor.GetProperty().SetLighting(False)
+def shadow_actor(cover: Cover, ground: Ground, light: Light) -> vtk.vtkActor:
+    """Ellipses for crowns, outlines for boxes, strips for hedges, on ground taken as level round each."""
+    up = max(float(light.sun_d[2]), 0.12)
+    flat = float(np.linalg.norm(light.sun_d[:2]))
+    away = -light.sun_d[:2] / (flat + 1e-9) * min(flat / up, 6.0)  # shift of a point's shadow for each metre of height
+    parts = [_crowns(cover, away), _strips(cover, away), *_outlines(cover, away)]
+    places, discs, triangles, count = [], [], [], 0
+    for place, disc, faces in parts:
+        places.append(place)
+        discs.append(disc)
+        triangles.append(faces + count)
+        count += len(place)
+    place = np.concatenate(places)
+    points = np.column_stack([place, ground.height_at(place[:, 1], place[:, 0])])
+    strength = 0.62 * np.clip(light.sun_d[2] * 4.0, 0.25, 1.0)
+    code = constants({"STRENGTH": float(strength), "SHADE": 0.25 * light.sky}) + glsl("common")
+    code += "in vec2 disc;\nin float left;\n"
+    main = """
+      float r = length(disc), w = fwidth(r);
+      float cover = clamp((1.0 - r) / max(w, 0.30), 0.0, 1.0);
+      fragOutput0 = vec4(SHADE, STRENGTH * cover * left);
+    """
+    position = "setShadow(place);\ngl_Position = MCDCMatrix * vertexMC;\n" + _LIFT
+    actor = shaded_actor(
+        mesh(points, np.concatenate(triangles)), code, main, {"corner": np.concatenate(discs)},
+        glsl("rim") + glsl("shadow_place"), position,
+    )
     actor.ForceTranslucentOn()
     return actor
+
+
+Part = tuple[Array, Array, NDArray[np.int64]]  # places (P, 2) east, north; disc (P, 2); triangles (T, 3)
+
+
+def _crowns(cover: Cover, away: Array) -> Part:
+    """The shadow of an ellipsoid of half height b, half width a is an ellipse: hypot(b cot, a) along the sun, a across."""
+    trees = cover.trees
+    slope = float(np.linalg.norm(away))
+    along = away / (slope + 1e-9)
+    half, wide = 0.46 * trees.height_m, 0.5 * trees.width_m
+    middle = np.column_stack([trees.east_m, trees.north_m]) + 0.52 * trees.height_m[:, None] * away
+    long = np.hypot(half * slope, wide)
+    across = np.array([-along[1], along[0]])
+    places = middle[:, None] + _CORNERS[None, :, :1] * (long[:, None] * along)[:, None]
+    places = places + _CORNERS[None, :, 1:] * (wide[:, None] * across)[:, None]
+    return places.reshape(-1, 2), np.tile(_CORNERS, (len(half), 1)), _quads(len(half))
+
+
+def _strips(cover: Cover, away: Array) -> Part:
+    hedges = cover.hedges
+    start, end = np.column_stack([hedges.east_m, hedges.north_m]), np.column_stack([hedges.to_east_m, hedges.to_north_m])
+    off = cover.hedge_height_m * away
+    places = np.stack([start, end, end + off, start + off], axis=1).reshape(-1, 2)
+    return places, np.zeros_like(places), _quads(len(start))
+
+
+def _outlines(cover: Cover, away: Array) -> list[Part]:
+    """A box and its top moved along the shadow: the outline of both."""
+    boxes = cover.boxes
+    feet = np.stack([np.column_stack(boxes.corner(a, b)[::-1]) for a, b in _CORNERS], axis=1)
+    ridge = np.stack([np.column_stack(boxes.corner(a, 0.0)[::-1]) for a in (-1.0, 1.0)], axis=1)
+    parts: list[Part] = []
+    for k in range(len(boxes.kind)):
+        if boxes.height_m[k] < 1.0:
+            continue
+        top = feet[k] + boxes.height_m[k] * away
+        high = ridge[k] + (boxes.height_m[k] + boxes.ridge_m[k]) * away
+        every = np.concatenate([feet[k], top, high])
+        outline = every[ConvexHull(every).vertices]
+        fan = np.array([[0, i, i + 1] for i in range(1, len(outline) - 1)])
+        parts.append((outline, np.zeros_like(outline), fan))
+    return parts
+
+
+def _quads(count: int) -> NDArray[np.int64]:
+    return (4 * np.arange(count)[:, None, None] + _FACES[None]).reshape(-1, 3)

@@ -1,13 +1,11 @@
-"""Trees as crowns that turn to the eye, with their shadows on the ground: two triangles each."""
+"""Trees as crowns that turn to the eye: two triangles each."""
 
 from __future__ import annotations
 
 import numpy as np
-import vtk
 from numpy.typing import NDArray
 
 from render.frames import Array
-from render.picture.light import Light
 from render.picture.shading import cells, constants, glsl, mesh, shaded_actor
 from terrain.cover import Trees
 from terrain.ground import Ground
@@ -55,32 +53,3 @@ class TreeField:
 def quads(numbers: NDArray[np.int64]) -> NDArray[np.int64]:
     """Two triangles for each numbered group of four points, in that order."""
     return (4 * numbers[:, None, None] + _FACES[None]).reshape(-1, 3)
-
-
-def tree_shadows(trees: Trees, ground: Ground, light: Light) -> vtk.vtkActor:
-    """Shadows of ellipsoid crowns on level ground: ellipses drawn out away from the sun."""
-    up = max(float(light.sun_d[2]), 0.12)
-    toward = light.sun_d[:2] / (np.linalg.norm(light.sun_d[:2]) + 1e-9)
-    slope = min(float(np.linalg.norm(light.sun_d[:2])) / up, 6.0)
-    half, wide = 0.46 * trees.height_m, 0.5 * trees.width_m
-    middle = np.column_stack([trees.east_m, trees.north_m]) - (0.54 * trees.height_m * slope)[:, None] * toward
-    long = np.hypot(half * slope, wide)
-    side = np.array([-toward[1], toward[0]])
-    places = (middle[:, None, :] + _CORNERS[None, :, :1] * (long[:, None] * toward)[:, None, :]
-              + _CORNERS[None, :, 1:] * (wide[:, None] * side)[:, None, :]).reshape(-1, 2)
-    points = np.column_stack([places, ground.height_at(places[:, 1], places[:, 0])])
-    strength = 0.62 * np.clip(light.sun_d[2] * 4.0, 0.25, 1.0)
-    code = constants({"STRENGTH": float(strength), "SHADE": 0.25 * light.sky}) + glsl("common")
-    code += "in vec2 disc;\nin float left;\n"
-    main = """
-      float r = length(disc), w = fwidth(r);
-      float cover = clamp((1.0 - r) / max(w, 0.30), 0.0, 1.0);
-      fragOutput0 = vec4(SHADE, STRENGTH * cover * left);
-    """
-    position = "setShadow(place);\ngl_Position = MCDCMatrix * vertexMC;\ngl_Position.z -= 2e-6 * gl_Position.w;\n"
-    actor = shaded_actor(
-        mesh(points, quads(np.arange(len(half)))), code, main, {"corner": np.tile(_CORNERS, (len(half), 1))},
-        glsl("rim") + glsl("shadow_place"), position,
-    )
-    actor.ForceTranslucentOn()
-    return actor

@@ -21,28 +21,34 @@ float numeral(int mask, vec2 at, vec2 w) {          // 3 x 5 cells of 1 x 1.8 m;
 vec3 mown(vec2 s, float px, float n1, float n7) {
   vec2 w = fwidth(s);
   float half_l = 0.5 * RUNWAY_L, half_w = 0.5 * RUNWAY_W;
-  // mown grass with swaths 12 m wide along the runway, rough beyond
+  // mown grass with swaths 12 m wide along the runway, rough beyond, a track round the bounds
   float rough = clamp((abs(s.y) - 60.0) * 0.1, 0.0, 1.0);
   float swath = stripes(s.y, 24.0, 0.5, w.y) - 0.5;
-  vec3 colour = mix(MOWN_A, MOWN_B, 0.5 + swath * (1.0 - 0.8 * rough) + rough * n7) * (1.0 + 0.36 * n7 + 0.50 * n1);
+  float n45 = (noise(s * vec2(0.013, 0.019) + 4.4) - 0.5);
+  vec3 colour = mix(MOWN_A, MOWN_B, 0.5 + swath * (1.0 - 0.8 * rough) + 0.5 * rough * (n7 + n45)) * (1.0 + 0.20 * n7 + 0.50 * n1 + 0.20 * n45);
+  colour *= mix(vec3(1.0), vec3(1.02, 0.97, 0.84), rough * (0.5 + n45));
+  vec2 bounds = vec2(half_l + 240.0, 245.0) - abs(s - vec2(0.0, 95.0));
+  float rim_m = min(bounds.x, bounds.y);
+  colour = mix(colour, vec3(0.47, 0.45, 0.40), band(abs(rim_m - 14.0), 2.2, max(w.x, w.y)) * 0.9);
+  colour = mix(colour, colour * 0.55, band(abs(rim_m - 1.5), 1.2, max(w.x, w.y)));
   // taxiway 15 m wide at 150 m, three links, apron
   float tar = boxes(abs(s - vec2(0.0, 150.0)) - vec2(half_l, 7.5), w);
-  float x = min(abs(abs(s.x) - half_l + 7.5), abs(s.x + 0.12 * RUNWAY_L));
+  float x = min(abs(abs(s.x) - half_l + 7.5), abs(s.x + 300.0));
   tar = max(tar, boxes(vec2(x - 7.5, abs(s.y - 75.0) - 75.0), w));
   colour = mix(colour, SURFACE * (1.06 + 0.10 * n1), tar);
   float yellow = max(band(abs(s.y - 150.0), 0.075, w.y) * step(abs(s.x), half_l - 7.0), band(x, 0.075, w.x) * step(abs(s.y - 75.0), 75.0));
   colour = mix(colour, vec3(0.80, 0.66, 0.18), yellow);
   float apron = boxes(abs(s - vec2(40.0, 205.0)) - vec2(230.0, 48.0), w);
   float joints = max(band(abs(fract(s.x / 7.5) - 0.5) * 7.5, 0.04, w.x), band(abs(fract(s.y / 7.5) - 0.5) * 7.5, 0.04, w.y));
-  float slab = fract(0.317 * floor(s.x / 7.5) + 0.713 * floor(s.y / 7.5) * (1.0 + floor(s.x / 7.5) * 0.13));
+  float slab = noise(floor(s / 7.5) * 3.7);
   colour = mix(colour, APRON * (1.0 + 0.07 * (slab - 0.5) * shown(7.5, px) - 0.25 * joints), apron);
   return colour;
 }
 vec3 runway(vec2 s, float px, float n1, float n7) {    // the strip of the runway itself and a little grass beside it
   vec2 w = fwidth(s);
   float half_l = 0.5 * RUNWAY_L, half_w = 0.5 * RUNWAY_W;
-  vec3 colour = mix(MOWN_A, MOWN_B, 0.5) * (1.0 + 0.36 * n7 + 0.50 * n1);
-  float x = min(abs(abs(s.x) - half_l + 7.5), abs(s.x + 0.12 * RUNWAY_L));
+  vec3 colour = mix(MOWN_A, MOWN_B, 0.5) * (1.0 + 0.20 * n7 + 0.50 * n1);
+  float x = min(abs(abs(s.x) - half_l + 7.5), abs(s.x + 300.0));
   colour = mix(colour, SURFACE * (1.06 + 0.10 * n1), slot(x, -7.5, 7.5, w.x) * step(0.0, s.y));
   // runway: 0.9 m side stripes, centre line 30 m on 20 m off
   float run = boxes(abs(s) - vec2(half_l, half_w), w);

@@ -16,10 +16,10 @@ float noise(vec2 p) {           // detail only: nothing else has to know it
   return mix(r.x, r.y, f.x);
 }
 float shown(float size, float px) { return clamp((0.85 * size - px) / (0.6 * size), 0.0, 1.0); }
-float footprint(vec2 p) {       // a pixel's size on the ground, m, between its long and its short side
+float footprint(vec2 p, out float longest) {       // a pixel's size on the ground, m: between its long and short side; its long side
   vec2 dx = dFdx(p), dy = dFdy(p);
-  float longest = max(dot(dx, dx), dot(dy, dy));
-  return sqrt(sqrt(longest) * sqrt(abs(dx.x * dy.y - dx.y * dy.x) + 1e-8));
+  longest = sqrt(max(dot(dx, dx), dot(dy, dy)));
+  return sqrt(longest * sqrt(abs(dx.x * dy.y - dx.y * dy.x) + 1e-8));
 }
 float band(float d, float half_width, float w) {   // cover of a line of that half width by a pixel w wide
   float soft = max(w, 0.02);

@@ -1,5 +1,5 @@
 // The look of the open country. Every detail fades where a pixel grows larger than it, so the ground needs no antialiasing.
-vec3 country(vec2 q, float px, float n1, float n7, float n45) {
+vec3 country(vec2 q, float px, float longest, float n1, float n7, float n45) {
   float key, edge; bool enclosed; vec2 within;
   fieldAt(q, key, edge, enclosed, within);
   float road = roadAt(q);
@@ -21,6 +21,8 @@ vec3 country(vec2 q, float px, float n1, float n7, float n45) {
 
   float wooded = clamp(enclosed ? (kind < WOOD_PART ? 0.5 * (edge - 2.0) : 0.0) : (n600 - WILD_WOOD) * 90.0, 0.0, 1.0);
   colour = mix(colour, WOOD * (1.0 + 1.1 * n7 + 0.5 * n45), wooded);
+  // far off many fields share a pixel: toward their mean, so that the rim of the land does not glitter
+  colour = mix(colour, COUNTRY_MEAN, clamp(longest * (0.35 / FIELD) - 0.25, 0.0, 0.85));
   float wh = fwidth(edge);
   float hedge = band(edge + 1.2 * n7, 0.5 * HEDGE, wh > 100.0 ? px : wh);
   colour = mix(colour, HEDGE_COLOUR * (1.0 + 0.6 * n7), enclosed ? hedge : 0.0);
