@@ -94,6 +94,12 @@ def air_of(y: Array, case: Any) -> tuple[float, float, float, float]:
 def load_factor_of(y: Array, af: Any, case: Any) -> tuple[float, float, float, float]:
     """Load factor along the lift axis, lift N, drag N, thrust N."""
     _, _, rho, sound = air_of(y, case)
+    return load_factor_in(y, af, rho, sound)
+
+
+@njit(cache=True)
+def load_factor_in(y: Array, af: Any, rho: float, sound: float) -> tuple[float, float, float, float]:
+    """``load_factor_of`` in air that is at hand: density kg/m3, speed of sound m/s (the powers in it cost most)."""
     speed = y[V]
     qs = 0.5 * rho * speed * speed * af.wing_area_m2
     cl = lift_coefficient(af, y[ALPHA])
@@ -110,6 +116,12 @@ def load_factor_of(y: Array, af: Any, case: Any) -> tuple[float, float, float, f
 def limit_demand(y: Array, af: Any, case: Any, n: float, cl_top: float) -> tuple[float, int]:
     """The load factor a pilot can ask for: within the structure's limit and short of a lift coefficient."""
     _, _, rho, _ = air_of(y, case)
+    return limit_demand_in(y, af, rho, n, cl_top)
+
+
+@njit(cache=True)
+def limit_demand_in(y: Array, af: Any, rho: float, n: float, cl_top: float) -> tuple[float, int]:
+    """``limit_demand`` in air of a density that is at hand, kg/m3."""
     per_cl = 0.5 * rho * y[V] * y[V] * af.wing_area_m2 / (af.mass_kg * G0_MPS2)
     limit = LIMIT_NONE
     if n > af.n_max:
@@ -125,13 +137,12 @@ def limit_demand(y: Array, af: Any, case: Any, n: float, cl_top: float) -> tuple
 
 @njit(cache=True)
 def stick_wanted(
-    y: Array, af: Any, case: Any, n_now: float, n_rate: float, thrust: float, g_z: float
+    y: Array, af: Any, rho: float, n_now: float, n_rate: float, thrust: float, g_z: float
 ) -> tuple[float, float]:
     """Stick the pilot's hand goes to for his demand, and the rate of his integral part.
 
     What the aircraft needs in steady flight (he knows it), and what he adds for the load factor he misses.
     """
-    _, _, rho, _ = air_of(y, case)
     speed = y[V]
     weight = af.mass_kg * G0_MPS2
     qs = 0.5 * rho * speed * speed * af.wing_area_m2
@@ -170,11 +181,22 @@ def derivative(
     hand: the pilot flies (demand -> stick -> surface). Otherwise the surface is prescribed and moves
     at ``stab_rate`` (checks and replays). Angles rad, rates rad/s, load factor n, SI.
     """
-    _, _, rho, _ = air_of(y, case)
+    _, _, rho, sound = air_of(y, case)
+    derivative_in(
+        y, af, case, rho, sound, n_cmd, onset_gps, roll_cmd, throttle, fault_on, stab_at_fault, hand, stab_rate, dy
+    )
+
+
+@njit(cache=True)
+def derivative_in(
+    y: Array, af: Any, case: Any, rho: float, sound: float, n_cmd: float, onset_gps: float, roll_cmd: float,
+    throttle: float, fault_on: bool, stab_at_fault: float, hand: bool, stab_rate: float, dy: Array,
+) -> None:
+    """``derivative`` in air that is at hand: density kg/m3, speed of sound m/s."""
     ax, ay, az, _bx, _by, bz, _cx, _cy, cz = path_axes(y)
     speed, alpha = y[V], y[ALPHA]
     mass = af.mass_kg
-    n_now, lift, drag, thrust = load_factor_of(y, af, case)
+    n_now, lift, drag, thrust = load_factor_in(y, af, rho, sound)
     g_x, g_y, g_z = G0_MPS2 * az, G0_MPS2 * bz, G0_MPS2 * cz
     ca, sa = math.cos(alpha), math.sin(alpha)
     if af.thrust_equals_drag > 0.5:
@@ -208,7 +230,7 @@ def derivative(
     rate = min(max((n_cmd - y[NDEM]) / DEMAND_LAG_S, -onset_gps), onset_gps)
     # in the exact cases the thrust lies along the path: none of it helps the lift
     helping = 0.0 if af.thrust_equals_drag > 0.5 else thrust
-    wanted, integral_rate = stick_wanted(y, af, case, n_now, rate, helping, g_z)
+    wanted, integral_rate = stick_wanted(y, af, rho, n_now, rate, helping, g_z)
     dy[NDEM] = rate
     dy[STICK] = (wanted - y[STICK]) / HAND_LAG_S
     dy[INTEG] = integral_rate
