@@ -274,9 +274,18 @@ COMMANDS: dict[str, Callable[[argparse.Namespace], int]] = {
 
 def main(argv: Sequence[str] | None = None) -> int:
     """Run one command; returns the exit code."""
+    for stream in (sys.stdout, sys.stderr):
+        if (stream.encoding or "").lower().replace("-", "") != "utf8" and hasattr(stream, "reconfigure"):
+            stream.reconfigure(errors="backslashreplace")  # a title in Greek must not end a command on a Latin terminal
     args = build_parser().parse_args(argv)
     try:
-        return COMMANDS[args.command](args)
+        done = COMMANDS[args.command](args)
+        sys.stdout.flush()
+        return done
+    except BrokenPipeError:
+        # whoever read the output (head, less) has had enough; nothing is wrong, and the exit must not try again
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return 0
     except KeyboardInterrupt:
         print("interrupted; nothing half-made is left", file=sys.stderr)
         return 130

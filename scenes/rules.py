@@ -20,8 +20,8 @@ Meta = Mapping[str, Any]
 
 MAX_TEXT = {"title": 200, "notes": 10_000}
 KNOTS = (2, 32)  # least and most entries of a loop table
-# ITU-T H.264, Table A-1 (value from memory): level 5.2, the highest that browsers are sure to play, takes frames of
-# up to 36 864 macroblocks of 16 x 16; yuv420p wants even sizes. The least size is our own: the overlay needs room.
+# ITU-T H.264, Table A-1: level 5.2 takes frames of up to 36 864 macroblocks of 16 x 16 (the tests ask the encoder);
+# higher levels are not played everywhere. yuv420p wants even sizes. The least size is our own: the overlay needs room.
 MACROBLOCKS = 36_864
 LEAST_SIZE = (160, 90)
 MOST_SIZE = (4096, 4096)

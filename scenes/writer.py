@@ -18,6 +18,7 @@ from scenes.model import STEPS, Loop, Point, Power, Scene, Step
 from scenes.reader import read_scene
 from scenes.units import DIMENSIONS, shortest_text
 from scenes.variants import with_values
+from terrain.ground import ground_names
 
 WORDS = ("title", "notes", "ground", "airframe")  # values that are no numbers, replaced as they are
 
@@ -153,8 +154,6 @@ def _like(base: str, beside: Path | None) -> str:
 
 
 def _check_words(scene: Scene, words: Mapping[str, str]) -> None:
-    from terrain.ground import ground_names
-
     known = {"ground": ground_names(), "airframe": shelf.names("airframe")}
     bad = [
         Complaint(scene.source, 0, 0, key, words[key], any_of(known[key]), nearest(words[key], known[key]))

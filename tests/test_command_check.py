@@ -3,6 +3,9 @@
 from __future__ import annotations
 
 import json
+import os
+import subprocess
+import sys
 from pathlib import Path
 
 import pytest
@@ -109,6 +112,27 @@ def test_schema(capsys: pytest.CaptureFixture[str]) -> None:
     for arguments in (["schema"], ["schema", "--airframe"]):
         assert main(arguments) == 0
         Draft202012Validator.check_schema(json.loads(capsys.readouterr().out))
+
+
+def run(arguments: list[str], **environment: str) -> subprocess.CompletedProcess[bytes]:
+    """The command in a process of its own."""
+    return subprocess.run([sys.executable, "-m", "render.command", *arguments], capture_output=True, check=False,
+                          env={**os.environ, **environment})
+
+
+def test_a_terminal_that_has_no_umlauts(tmp_path: Path) -> None:
+    """Letters it can't show are escaped; no traceback."""
+    file = tmp_path / "überflug.yaml"
+    file.write_text(with_line("title: A loop", "title: Überflug"), encoding="utf-8")
+    done = run(["check", str(file)], PYTHONIOENCODING="ascii")
+    assert done.returncode == 0 and b"no faults found (\\xdcberflug)" in done.stdout and done.stderr == b""
+
+
+def test_a_reader_that_stops_early() -> None:
+    """As `latepull schema | head -1` does: no traceback."""
+    code = f"{sys.executable} -m render.command schema | head -c 1"
+    done = subprocess.run(["sh", "-c", code], capture_output=True, check=False)
+    assert (done.stdout, done.stderr) == (b"{", b"")
 
 
 def test_an_unknown_command_or_option() -> None:
