@@ -26,8 +26,8 @@ def encoder_takes(width: int, height: int) -> bool:
     [((1281, 720), (1280, 720)), ((1280, 721), (1280, 720)), ((4096, 2306), (4096, 2304)),
      ((3841, 2161), (3840, 2160))],
 )
-def test_the_encoder_refuses_what_is_refused_and_takes_the_nearest(asked: tuple[int, int], fits: tuple[int, int]) -> None:
-    """The rule is the encoder's, not ours."""
+def test_the_encoder_agrees(asked: tuple[int, int], fits: tuple[int, int]) -> None:
+    """It refuses the size that is refused and takes the nearest: the rule is the encoder's, not ours."""
     assert nearest_size(*asked) == fits
     assert not encoder_takes(*asked)
     assert encoder_takes(*fits)
