@@ -32,7 +32,8 @@ def build_cockpit(airframe: Airframe) -> tuple[Part, ...]:
     """
     design = DESIGNS[airframe.shape](airframe)
     place, lid = design.place, design.lid
-    solid = [_rails(lid, design.frame), *(_bow(lid, bow, design.frame) for bow in lid.frames), _end_walls(lid)]
+    solid = [_rails(lid, -place.eye_design_m[1], design.frame), _end_walls(lid)]
+    solid += [_bow(lid, bow, design.frame) for bow in lid.frames]
     solid += [lid.deck(design.deck_x_m), *(lid.coaming(*hood) for hood in design.coamings)]
     solid += panel(lid, design.deck_x_m)
     eye = place.point((place.eye_design_m[0], 0.0, -place.eye_design_m[1]))
@@ -66,12 +67,11 @@ def _facing(points: Array, colour: Colour, inside: Array) -> Surf:
     return skin
 
 
-def _rails(lid: Canopy, colour: Colour) -> Surf:
+def _rails(lid: Canopy, eye_z_m: float, colour: Colour) -> Surf:
     """Canopy rails, left and right, with the cockpit wall and side console below them."""
     x = _stations(lid)
     w = np.maximum(lid.width(x), 0.0)
     sill = lid.sill_z(x)
-    deep = float(lid.sill_z(np.array(lid.frames[0][0])))
     rail = [
         (w + 0.026, lid.body.top_z(x, w + 0.026) - 0.004),
         (w + 0.012, lid.body.top_z(x, w + 0.012) - 0.012),
@@ -83,12 +83,12 @@ def _rails(lid: Canopy, colour: Colour) -> Surf:
     wall = [
         (w - 0.036, sill + 0.045),
         (w - 0.058, sill + 0.06),
-        (0.86 * w, np.full_like(x, deep + 0.30)),
-        (0.52 * w, np.full_like(x, deep + 0.33)),
-        (0.50 * w, np.full_like(x, deep + 0.75)),
-        (0.0 * w, np.full_like(x, deep + 0.75)),
+        (0.86 * w, np.full_like(x, eye_z_m + 0.50)),
+        (0.52 * w, np.full_like(x, eye_z_m + 0.53)),
+        (0.50 * w, np.full_like(x, eye_z_m + 0.95)),
+        (0.0 * w, np.full_like(x, eye_z_m + 0.95)),
     ]
-    middle = np.array([float(x.mean()), 0.0, deep - 0.6])
+    middle = np.array([float(x.mean()), 0.0, eye_z_m - 0.4])
     pieces = []
     for rows, paint_with in ((rail, colour), (wall, INSIDE)):
         for sign in (1.0, -1.0):

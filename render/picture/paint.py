@@ -9,7 +9,7 @@ import numpy as np
 import pyvista as pv
 
 from render.frames import Array
-from render.picture.loft import Colour, Surf
+from render.picture.loft import Colour, Surf, merge
 
 #: A side of a border: points (N, 3) m -> (N,), negative on the side meant.
 Side = Callable[[Array], Array]
@@ -55,7 +55,7 @@ def _crossings(surf: Surf, side: Side, value: Array, edges: np.ndarray) -> tuple
     f_low, f_high = value[edges[:, 0]], value[edges[:, 1]]
     a, b = surf.points[edges[:, 0]], surf.points[edges[:, 1]]
     for _ in range(4):
-        t = np.clip(low - f_low * (high - low) / (f_high - f_low), 0.02, 0.98)
+        t = np.clip(low - f_low * (high - low) / (f_high - f_low), 1e-4, 1.0 - 1e-4)
         f = np.asarray(side(a + t[:, None] * (b - a)), float)
         same = np.sign(f) == np.sign(f_low)
         low, f_low = np.where(same, t, low), np.where(same, f, f_low)
@@ -79,7 +79,10 @@ def station(at: float | Array, normal: Sequence[float] = (1.0, 0.0, 0.0)) -> Sid
 
 def paint(surf: Surf, side: Side, colour: Colour, only: Colour | None = None) -> Surf:
     """Colour where ``side`` is negative, cut exactly; with ``only``, no face but those of that colour."""
-    return _coloured(cut(surf, side), side, colour, only)
+    if only is not None:
+        same, other = _of_colour(surf, only)
+        return merge([paint(same, side, colour), other])
+    return _coloured(cut(surf, side), side, colour)
 
 
 def line(surf: Surf, along: Side, width_m: float, colour: Colour, only: Colour | None = None) -> Surf:
@@ -87,24 +90,31 @@ def line(surf: Surf, along: Side, width_m: float, colour: Colour, only: Colour |
 
     Both borders are cut one by one: a line narrower than a triangle would be missed otherwise.
     """
+    if only is not None:
+        same, other = _of_colour(surf, only)
+        return merge([line(same, along, width_m, colour), other])
     half = width_m / 2
     surf = cut(cut(surf, lambda p: along(p) - half), lambda p: along(p) + half)
-    return _coloured(surf, lambda p: np.abs(along(p)) - half, colour, only)
+    return _coloured(surf, lambda p: np.abs(along(p)) - half, colour)
 
 
-def patch(surf: Surf, edges: Sequence[Side], colour: Colour, only: Colour | None = None) -> Surf:
+def patch(surf: Surf, edges: Sequence[Side], colour: Colour) -> Surf:
     """Colour where all of the sides are negative, each cut exactly and no further than the others reach."""
     for k, edge in enumerate(edges):
         others = [e for i, e in enumerate(edges) if i != k]
         near, far = _near(surf, others, 0.4)
-        surf = _joined(cut(near, edge), far)
-    return _coloured(surf, lambda p: np.max([e(p) for e in edges], axis=0), colour, only)
+        surf = merge([cut(near, edge), far])
+    return _coloured(surf, lambda p: np.max([e(p) for e in edges], axis=0), colour)
 
 
-def _coloured(surf: Surf, side: Side, colour: Colour, only: Colour | None) -> Surf:
+def _of_colour(surf: Surf, colour: Colour) -> tuple[Surf, Surf]:
+    """(faces of that colour, the others)."""
+    same = (surf.colour == np.array(colour, np.uint8)).all(axis=1)
+    return faces(surf, same), faces(surf, ~same)
+
+
+def _coloured(surf: Surf, side: Side, colour: Colour) -> Surf:
     hit = np.asarray(side(surf.centroids()), float) < 0.0
-    if only is not None:
-        hit &= (surf.colour == np.array(only, np.uint8)).all(axis=1)
     return replace(surf, colour=np.where(hit[:, None], np.array(colour, np.uint8), surf.colour))
 
 
@@ -112,28 +122,20 @@ def _near(surf: Surf, sides: Sequence[Side], reach_m: float) -> tuple[Surf, Surf
     """(whole faces within reach of the region where all the sides are negative, the others)."""
     inside = np.max([side(surf.points) for side in sides], axis=0) < reach_m
     keep = inside[surf.tris].any(axis=1)
-    return _faces(surf, keep), _faces(surf, ~keep)
+    return faces(surf, keep), faces(surf, ~keep)
 
 
 def divided(surf: Surf, side: Side) -> tuple[Surf, Surf]:
     """The two pieces (where negative, where positive)."""
     surf = cut(surf, side)
     inside: np.ndarray = np.asarray(side(surf.centroids()), float) < 0.0
-    return _faces(surf, inside), _faces(surf, ~inside)
+    return faces(surf, inside), faces(surf, ~inside)
 
 
-def _faces(surf: Surf, keep: np.ndarray) -> Surf:
+def faces(surf: Surf, keep: np.ndarray) -> Surf:
+    """The faces kept, as a mesh of their own."""
     used, inverse = np.unique(surf.tris[keep], return_inverse=True)
     return Surf(surf.points[used], surf.normals[used], inverse.reshape(-1, 3).astype(np.int64), surf.colour[keep])
-
-
-def _joined(a: Surf, b: Surf) -> Surf:
-    return Surf(
-        np.concatenate([a.points, b.points]),
-        np.concatenate([a.normals, b.normals]),
-        np.concatenate([a.tris, b.tris + len(a.points)]),
-        np.concatenate([a.colour, b.colour]),
-    )
 
 
 def to_mesh(surf: Surf, shade: Callable[[Array, Array], Array] | None = None) -> pv.PolyData:

@@ -139,8 +139,8 @@ def _box(values: Array, width: float, axis: int) -> Array:
     """Running mean over a width in cells (any real width), ends empty."""
     moved = np.moveaxis(values, axis, 0)
     whole = np.concatenate([np.zeros((1, moved.shape[1])), np.cumsum(moved, axis=0)])
-    width = max(width, 1.0)
-    edges: Array = np.arange(len(moved)) + 0.5
+    half = max(width, 1.0) / 2.0
+    edges = np.arange(len(moved), dtype=float) + 0.5
 
     def total(at: Array) -> Array:
         inside = np.asarray(np.clip(at, 0.0, float(len(moved))), float)
@@ -148,5 +148,5 @@ def _box(values: Array, width: float, axis: int) -> Array:
         result: Array = whole[low] + (inside - low)[:, None] * moved[low]
         return result
 
-    mean: Array = (total(edges + width / 2) - total(edges - width / 2)) / width
+    mean: Array = (total(edges + half) - total(edges - half)) / (2.0 * half)
     return np.moveaxis(mean, 0, axis)

@@ -10,6 +10,7 @@ import pyvista as pv
 
 from render.frames import Array
 from render.picture.loft import Colour, Surf, grid_tris, merge, mirrored
+from render.picture.paint import patch, station
 from render.picture.shapes_cockpit import CockpitDesign
 from render.picture.shapes_crew import NECK_AFT_M, head, seat, torso
 from render.picture.shapes_parts import Part, Shape, fixed, hinged
@@ -81,6 +82,22 @@ def _red(surf: Surf) -> Surf:
 def tip_light(at_m: Sequence[float]) -> Surf:
     """The right wing tip's green light."""
     return ellipsoid(at_m, (0.11, 0.045, 0.045), GREEN_LIGHT, 5, 10)
+
+
+def hinge_mark(wing_skin: Surf, wing: Panel, aileron: tuple[float, float, float], colour: Colour) -> Surf:
+    """A dark line on the fixed wing just ahead of its aileron."""
+    inner, outer, part = aileron
+
+    def ahead(p: Array) -> Array:
+        x_le, _, chord, _ = np.moveaxis(wing.at(p[:, 1]), -1, 0)
+        result: Array = p[:, 0] - (x_le - (part - 0.012) * chord)
+        return result
+
+    def aft(p: Array) -> Array:
+        return ahead(p) - 0.022
+
+    edges = [aft, station(outer, (0.0, 1.0, 0.0)), station(-inner, (0.0, -1.0, 0.0))]
+    return patch(wing_skin, edges, colour)
 
 
 def propeller_disc(hub_m: Array, radius_m: float, blades: int = 5, around: int = 60) -> pv.PolyData:

@@ -61,7 +61,7 @@ class Canopy:
 
         return side
 
-    def shell(self, colour: Colour, along: int = 44, across: int = 25) -> tuple[Surf, Surf]:
+    def shell(self, colour: Colour, along: int = 34, across: int = 19) -> tuple[Surf, Surf]:
         """(frames and rail, glass), one smooth surface divided, facing outward."""
         front, back = self.crown[0, 0], self.crown[-1, 0]
         u = np.linspace(0.0, 1.0, along)

@@ -9,7 +9,7 @@ import numpy as np
 from render.frames import Array
 from render.picture.loft import Colour, Surf, merge, rings
 from render.picture.paint import Side, cut, divided, line, paint, patch, station
-from render.picture.shapes_assemble import Pieces, assemble, tip_light
+from render.picture.shapes_assemble import Pieces, assemble, hinge_mark, tip_light
 from render.picture.shapes_cockpit import Canopy, CockpitDesign, canopy
 from render.picture.shapes_parts import Shape, fit
 from render.picture.shapes_sections import Body, Panel, body, outline, spindle
@@ -158,6 +158,7 @@ def _wing() -> tuple[Surf, Surf]:
                    (-0.95, 4.58, -0.02, 0.095), (-1.3, 4.58, -0.02, 0.045), (-1.42, 4.58, -0.02, 0.008)],
                   TEAL, 14)  # fmt: skip
     pod = paint(pod, lambda p: 0.3 - p[:, 0], GOLD)
+    skin = hinge_mark(skin, WING, AILERON, METAL)
     return merge([skin, pod, tip_light((0.15, 4.655, -0.02))]), aileron
 
 

@@ -26,8 +26,8 @@ def panel(lid: Canopy, deck_x_m: float) -> list[Surf]:
     across = np.linspace(-1.0, 1.0, 9)
     edge = np.stack([np.full(9, x), half * across, top + 0.012 - 0.05 * (1 - across**2)], -1)
     corners = np.concatenate([edge, [[x, half, top + 0.52], [x, -half, top + 0.52], [x, 0.0, top + 0.25]]])
-    k = np.arange(11)
-    pieces = [surface(corners, np.stack([np.full(11, 11), (k + 1) % 11, k], -1), PANEL)]
+    turn = np.arange(11)
+    pieces = [surface(corners, np.stack([np.full(11, 11), (turn + 1) % 11, turn], -1), PANEL)]
     for row, z in enumerate((top + 0.075, top + 0.205)):
         for y in (-0.115, 0.0, 0.115):
             pieces += _dial(x - 0.004, y, z, 0.052, marks=12 if row else 8)
@@ -35,8 +35,8 @@ def panel(lid: Canopy, deck_x_m: float) -> list[Surf]:
         low, high = sorted((sign * 0.185, sign * (half - 0.02)))
         pieces.append(_plate(x - 0.004, (low, top + 0.05), (high, top + 0.22), DIAL))
     for k in range(7):
-        y = -0.15 + 0.045 * k
-        pieces.append(_plate(x - 0.004, (y, top + 0.285), (y + 0.02, top + 0.30), (190, 150, 70)))
+        left = -0.15 + 0.045 * k
+        pieces.append(_plate(x - 0.004, (left, top + 0.285), (left + 0.02, top + 0.30), (190, 150, 70)))
     return pieces
 
 

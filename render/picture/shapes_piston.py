@@ -8,8 +8,8 @@ import numpy as np
 
 from render.frames import Array
 from render.picture.loft import Colour, Surf, merge, rings
-from render.picture.paint import cut, divided, line, paint, patch, station
-from render.picture.shapes_assemble import Pieces, assemble, tip_light
+from render.picture.paint import Side, cut, divided, faces, line, paint, patch, station
+from render.picture.shapes_assemble import Pieces, assemble, hinge_mark, tip_light
 from render.picture.shapes_cockpit import Canopy, CockpitDesign, canopy
 from render.picture.shapes_parts import Shape, fit
 from render.picture.shapes_sections import Body, Panel, body, outline, spindle
@@ -36,12 +36,12 @@ FUSELAGE: Body = body(
         (1.78, 0.30, -0.28, 0.21, -0.04, 2.2),
         (1.68, 0.40, -0.38, 0.32, -0.04, 2.4),
         (1.3, 0.475, -0.46, 0.43, -0.04, 2.6),
-        (0.8, 0.49, -0.53, 0.50, -0.04, 2.5),
-        (0.4, 0.485, -0.68, 0.52, -0.05, 2.4),
-        (-0.4, 0.475, -0.845, 0.52, -0.05, 2.4),
-        (-1.2, 0.43, -0.86, 0.46, -0.06, 2.3),
-        (-1.9, 0.355, -0.79, 0.35, -0.09, 2.2),
-        (-2.7, 0.25, -0.62, 0.20, -0.14, 2.1),
+        (0.8, 0.49, -0.52, 0.50, -0.04, 2.5),
+        (0.4, 0.485, -0.61, 0.52, -0.05, 2.4),
+        (-0.4, 0.475, -0.785, 0.52, -0.05, 2.4),
+        (-1.2, 0.43, -0.80, 0.46, -0.06, 2.3),
+        (-1.9, 0.355, -0.74, 0.35, -0.09, 2.2),
+        (-2.7, 0.25, -0.60, 0.20, -0.14, 2.1),
         (-3.5, 0.145, -0.47, 0.04, -0.20, 2.0),
         (-4.1, 0.07, -0.38, -0.06, -0.22, 2.0),
         (-4.4, 0.025, -0.31, -0.14, -0.22, 2.0),
@@ -91,14 +91,18 @@ def _hull() -> Surf:
                         lambda p: p[:, 2] + 0.3], (44, 42, 52))  # fmt: skip
     # Two cooling inlets in the cowl's face.
     for side in (-1.0, 1.0):
-        skin = patch(skin, [lambda p, s=side: np.hypot((p[:, 1] - 0.24 * s) / 0.085, (p[:, 2] + 0.06) / 0.06) * 0.07 - 0.07,
-                            lambda p: 1.6 - p[:, 0]], DARK)  # fmt: skip
+        skin = patch(skin, [_oval(0.24 * side, -0.06, 0.085, 0.06), lambda p: 1.6 - p[:, 0]], DARK)
     return skin
+
+
+def _oval(y_m: float, z_m: float, half_y_m: float, half_z_m: float) -> Side:
+    """Inside an oval in the plane square to the fuselage."""
+    return lambda p: (np.hypot((p[:, 1] - y_m) / half_y_m, (p[:, 2] - z_m) / half_z_m) - 1.0) * half_z_m
 
 
 def _nose() -> Surf:
     z = THRUST_Z_M
-    rows = [(2.2, 0, z, 0.01), (2.17, 0, z, 0.06), (2.08, 0, z, 0.125), (1.95, 0, z, 0.185), (1.82, 0, z, 0.215),
+    rows = [(2.16, 0, z, 0.01), (2.14, 0, z, 0.06), (2.08, 0, z, 0.125), (1.95, 0, z, 0.185), (1.82, 0, z, 0.215),
             (1.77, 0, z, 0.215)]
     return spindle(rows, PEACH, 20)
 
@@ -113,31 +117,32 @@ def _wing() -> tuple[Surf, Surf]:
     ])  # fmt: skip
     aileron = WING.loft(np.linspace(inner, outer, 5).tolist(), IVORY, start=hinge, points=9)
     painted = [paint(_bars(_rays(s)), lambda p: 3.72 - p[:, 1], PEACH) for s in (skin, aileron)]
-    return merge([painted[0], tip_light((0.30, 3.955, 0.40))]), painted[1]
+    skin = hinge_mark(painted[0], WING, AILERON, DARK)
+    return merge([skin, tip_light((0.30, 3.955, 0.40))]), painted[1]
 
 
 def _rays(surf: Surf) -> Surf:
     """Violet rays from the wing root on the upper side."""
-    bearing = np.radians([58.0, 68.0, 76.0, 83.0, 89.0, 95.0, 102.0, 110.0])
-    hub = np.array([0.25, -0.9])
+    upper = surf.normals[surf.tris].mean(axis=1)[:, 2] < 0.0
+    top, rest = faces(surf, upper), faces(surf, ~upper)
+    bearing = np.radians([80.0, 85.0, 90.0, 95.0, 101.0, 108.0])
+    hub = np.array([0.15, -1.1])
     for angle in bearing:
         normal = np.array([-np.sin(angle), np.cos(angle), 0.0])
-        surf = cut(surf, station(float(normal[:2] @ hub), normal.tolist()))
-    centre = surf.centroids()
+        top = cut(top, station(float(normal[:2] @ hub), normal.tolist()))
+    centre = top.centroids()
     seen = np.arctan2(centre[:, 1] - hub[1], centre[:, 0] - hub[0])
-    ray = np.searchsorted(bearing, seen) % 2 == 1
-    hit = ray & (surf.normals[surf.tris].mean(axis=1)[:, 2] < 0.0) & (centre[:, 1] > 0.9)
-    return replace(surf, colour=np.where(hit[:, None], np.array(VIOLET, np.uint8), surf.colour))
+    hit = np.searchsorted(bearing, seen) % 2 == 1
+    return merge([replace(top, colour=np.where(hit[:, None], np.array(VIOLET, np.uint8), top.colour)), rest])
 
 
 def _bars(surf: Surf) -> Surf:
     """Three violet bars along the chord on the underside."""
-    for low, high in ((1.3, 1.7), (2.1, 2.5), (2.9, 3.3)):
-        surf = cut(cut(surf, station(low, (0.0, 1.0, 0.0))), station(high, (0.0, 1.0, 0.0)))
-        y = surf.centroids()[:, 1]
-        hit = (y > low) & (y < high) & (surf.normals[surf.tris].mean(axis=1)[:, 2] > 0.0)
-        surf = replace(surf, colour=np.where(hit[:, None], np.array(VIOLET, np.uint8), surf.colour))
-    return surf
+    lower = surf.normals[surf.tris].mean(axis=1)[:, 2] > 0.0
+    under, rest = faces(surf, lower), faces(surf, ~lower)
+    for middle in (1.5, 2.3, 3.1):
+        under = line(under, station(middle, (0.0, 1.0, 0.0)), 0.4, VIOLET)
+    return merge([under, rest])
 
 
 def _gear() -> Surf:
@@ -160,7 +165,8 @@ def _tail() -> tuple[Surf, Surf, Surf]:
     fin = paint(fin, lambda p: p[:, 2] + 0.62 - 0.45 * (p[:, 0] + 3.6), VIOLET)
     fin = line(fin, lambda p: p[:, 2] + 0.57 - 0.45 * (p[:, 0] + 3.6), 0.07, PEACH)
     fin = line(fin, lambda p: p[:, 0] + 3.88 + 0.12 * (-p[:, 2] - 0.5), 0.016, LINE)
-    spring = spindle([(-3.7, 0, 0.02, 0.03, 0.02), (-4.0, 0, 0.16, 0.025, 0.015), (-4.16, 0, 0.26, 0.02, 0.015)], METAL, 8)
+    spring = spindle([(-3.7, 0, 0.02, 0.03, 0.02), (-4.0, 0, 0.16, 0.025, 0.015), (-4.16, 0, 0.26, 0.02, 0.015)],
+                     METAL, 8)  # fmt: skip
     wheel = spindle([(-4.09, 0, 0.28, 0.03, 0.02), (-4.12, 0, 0.28, 0.03, 0.06), (-4.18, 0, 0.28, 0.03, 0.075),
                      (-4.24, 0, 0.28, 0.03, 0.06), (-4.27, 0, 0.28, 0.03, 0.02)], DARK, 10)  # fmt: skip
     half = TAIL.loft([0.18, 0.5, 1.0, 1.42], PEACH, round_tip_m=0.06)

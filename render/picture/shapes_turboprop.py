@@ -7,7 +7,7 @@ import numpy as np
 from render.frames import Array
 from render.picture.loft import Colour, Surf, merge
 from render.picture.paint import Side, divided, line, paint, patch, station
-from render.picture.shapes_assemble import Pieces, assemble, tip_light
+from render.picture.shapes_assemble import Pieces, assemble, hinge_mark, tip_light
 from render.picture.shapes_cockpit import Canopy, CockpitDesign, canopy
 from render.picture.shapes_parts import Shape, fit
 from render.picture.shapes_sections import Body, Panel, body, outline, spindle
@@ -106,7 +106,8 @@ def _nose() -> Surf:
                        (4.02, 0, THRUST_Z_M, 0.225), (3.88, 0, THRUST_Z_M, 0.265), (3.83, 0, THRUST_Z_M, 0.265)],
                       CORAL, 20)  # fmt: skip
     rows = [(3.45, 0.26, 0.14, 0.045), (3.66, 0.26, 0.15, 0.055), (3.68, 0.26, 0.168, 0.072),
-            (3.62, 0.262, 0.185, 0.09), (3.2, 0.30, 0.22, 0.13), (2.4, 0.34, 0.24, 0.15), (1.5, 0.38, 0.18, 0.14)]  # fmt: skip
+            (3.62, 0.262, 0.185, 0.09), (3.2, 0.30, 0.22, 0.13), (2.4, 0.34, 0.24, 0.15),
+            (1.5, 0.38, 0.18, 0.14)]  # fmt: skip
     chin = spindle([(x, 0.0, z, w, h) for x, z, w, h in rows], SAND, 18)
     return merge([spinner, chin, _mouth()])
 
@@ -144,6 +145,7 @@ def _wing() -> tuple[Surf, Surf]:
         surf = paint(surf, _tip_edge(0.45), SLATE)
         painted.append(surf)
     skin = line(painted[0], lambda p: p[:, 0] + 0.92 + 0.02 * p[:, 1], 0.02, LINE, only=SAND)
+    skin = hinge_mark(skin, WING, AILERON, METAL)
     return merge([skin, tip_light((-0.02, 5.095, 0.235))]), painted[1]
 
 
