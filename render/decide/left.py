@@ -104,7 +104,7 @@ def work_left(
         for last in range(EXTENSIONS + 1):
             found = _chunk(twins, scale, [faulted[int(i)] for i in todo], of[todo], todo, ground, heights, grid,
                            span, offset_s, sink)
-            done = found.whole | (found.why != r.OK) | (last == EXTENSIONS)
+            done = found.whole | (found.why != r.OK) | np.isnan(found.fault_s) | (last == EXTENSIONS)
             parts.append((todo[done], _rows(found, done)))
             todo, span = todo[~done], span * LONGER
             if todo.size == 0:
@@ -154,10 +154,9 @@ def _chunk(
     raw = fly_batch(plans, scale[of], steps, heights, grid, healthy=False)
     f, slots = len(plans), len(plans[0].airframes) - 1
     fault_s = np.where(raw.mem[:, s.M_FAULT_S] >= 0.0, raw.mem[:, s.M_FAULT_S], np.nan)
-    ends = np.minimum(raw.status[:, :, 1], raw.status[:, :1, 1]).astype(np.int64)
-    rows = np.arange(f)
-    rising = raw.y[rows, ends[:, 0] - 1, 0, r.D] >= raw.y[rows, ends[:, 0], 0, r.D]
-    contact = raw.status[:, 0, 0] == r.CONTACT
+    over, ended = _over(healthy, raw, twin)
+    ends = np.minimum(np.minimum(raw.status[:, :, 1], raw.status[:, :1, 1]), over[:, None]).astype(np.int64)
+    contact = (raw.status[:, 0, 0] == r.CONTACT) & (raw.status[:, 0, 1] <= over)
     low, last = np.full((f, slots), np.inf), np.full((f, slots), np.inf)
     notice = np.full((f, slots, len(OBSERVERS)), np.inf)
     cue = np.full((f, slots, len(OBSERVERS)), NO_CUE, dtype=object)
@@ -168,20 +167,36 @@ def _chunk(
                 [plans[int(i)] for i in hit], k, raw.y[hit, :, k], raw.a[hit, :, k], fault_s[hit] / DT_S, ends[hit, k],
                 plans[0].scene.floor_m, heights, grid,
             )
-        _look(plans, healthy, raw, twin, hit, fault_s, ground, offset_s, notice, cue, cases, sink)
+        _look(plans, healthy, raw, twin, hit, fault_s, over, ground, offset_s, notice, cue, cases, sink)
     # outside the model's range nothing is known: what was there at its edge is all that counts
-    cut = (raw.status[:, 0, 0] != r.OK) & ~contact
+    cut = (raw.status[:, 0, 0] != r.OK) & (raw.status[:, 0, 0] != r.CONTACT) & (raw.status[:, 0, 1] <= over)
     edge = ends[:, 0] * DT_S
     last = np.where(cut[:, None] & np.isinf(last), edge[:, None], last)
     return Left(tuple(slot.name for slot in plans[0].scene.formation), fault_s, low, last, notice,
                 tuple(tuple(tuple(str(w) for w in row) for row in case) for case in cue),
-                (rising | contact) & ~cut, raw.status[:, 0, 0].astype(np.int64))
+                (ended | contact) & ~cut, np.where(contact | cut, raw.status[:, 0, 0], r.OK).astype(np.int64))
+
+
+def _over(healthy: Raw, raw: Raw, twin: NDArray[np.int_]) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
+    """The step with which each flight is over, (F,), and whether it came to that (the rule of ``fly``).
+
+    The end of the twin's script, later if the lead still goes down then: what follows is no part of the scene.
+    """
+    last = raw.y.shape[1] - 1
+    end_s = healthy.mem[twin, s.M_SCRIPT_END_S]
+    end = np.where(end_s >= 0.0, np.minimum(np.round(end_s / DT_S), last), last).astype(np.int64)
+    over, ended = np.full(len(end), last), np.zeros(len(end), dtype=bool)
+    for i, first in enumerate(end):
+        level = np.flatnonzero(np.diff(raw.y[i, first:, 0, r.D]) <= 0.0)
+        if level.size:
+            over[i], ended[i] = first + level[0], True
+    return over, ended
 
 
 def _look(
     plans: Sequence[Plan], healthy: Raw, raw: Raw, twin: NDArray[np.int_], hit: NDArray[np.int_], fault_s: Array,
-    ground: Ground, offset_s: float, notice: Array, cue: NDArray[np.object_], cases: NDArray[np.int_],
-    sink: EvidenceSink | None,
+    over: NDArray[np.int64], ground: Ground, offset_s: float, notice: Array, cue: NDArray[np.object_],
+    cases: NDArray[np.int_], sink: EvidenceSink | None,
 ) -> None:
     """Fill in notices and cues, twin by twin, in groups of flights whose faults are near each other."""
     stop_h, stop_f = stopped_s(healthy), stopped_s(raw)
@@ -194,7 +209,7 @@ def _look(
         for at in range(0, own.size, VIEWS):
             rows = own[at : at + VIEWS]
             begin = max(int(np.floor(fault_s[rows[0]] / DT_S + 1e-9)), 0)
-            end = min(int(np.max(raw.status[rows, 0, 1])) + every, raw.y.shape[1] - 1)
+            end = min(int(np.max(np.minimum(raw.status[rows, 0, 1], over[rows]))) + every, raw.y.shape[1] - 1)
             pick = np.arange(min(begin, max(end - every, 0)), end + 1, every)
             time_s = pick * DT_S
             called = np.full((rows.size, len(OBSERVERS)), np.inf)
@@ -202,6 +217,7 @@ def _look(
             yf, af = raw.y[np.ix_(rows, pick)], raw.a[np.ix_(rows, pick)]
             for k in range(len(plans[0].airframes)):
                 until = np.minimum(np.min(stop_f[np.ix_(rows, [0, k])], axis=1), np.min(stop_h[w, [0, k]]))
+                until = np.minimum(until, (over[rows] + 1) * DT_S)
                 counts = (time_s > fault_s[rows, None]) & (time_s < until[:, None])
                 if k == 0:
                     if plans[0].scene.watch.call_after_s is not None:
