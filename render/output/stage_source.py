@@ -19,6 +19,7 @@ from render.picture.instant import Instant, instant_at
 from render.picture.panini import Panini
 from render.picture.peripheral import Peripheral, patch_px
 from render.picture.stage import Stage
+from render.picture.stand import spectator_stand
 from render.picture.views import (
     LOOKS,
     VIEWS,
@@ -28,7 +29,6 @@ from render.picture.views import (
     seat_camera,
     sightline,
     spectator_camera,
-    spectator_stand,
 )
 from render.types import Study
 from terrain.ground import Ground, read_ground
@@ -74,7 +74,7 @@ class StageSource:
         self._k = slot_index(study, slot)
         self._size, self._field_rad = size_px, field_rad
         spectator = options.view == "spectator"
-        self._stand = spectator_stand(study.healthy, ground.height_at) if spectator else None
+        self._stand = spectator_stand(study.healthy, ground, study.scene.seed) if spectator else None
         wide = options.panini if options.panini is not None else field_rad > PANINI_FROM_RAD
         self._wide = Panini(field_rad, size_px) if wide else None
         self._peripheral = Peripheral(size_px) if options.peripheral else None

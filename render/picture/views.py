@@ -14,7 +14,7 @@ import numpy as np
 from render.frames import Array, quat_rotate
 from render.picture.camera import Camera, quat_from_axes
 from render.picture.instant import Instant, instant_at
-from render.sight.geometry import HeightAt, direction_b, eye_axes, eye_position, unit
+from render.sight.geometry import direction_b, eye_axes, eye_position, unit
 from render.types import Flight
 from scenes.airframe import Airframe
 from scenes.model import Watch
@@ -28,7 +28,8 @@ FRAME_NOSEWARD_RAD, FRAME_DOWN_RAD = np.radians([7.0, 5.0])
 GAUGES_DOWN_RAD = float(np.radians(24.0))  # the panel below the coaming, as the cockpits are drawn
 # A large turn of the gaze takes 0.5-0.9 s, latency included (NOTICING 1.38, Guitton & Volle 1987, as remembered).
 TURN_S = 0.6
-GROUND_LOW_RAD, GROUND_HIGH_RAD = np.radians([-20.0, 100.0])  # what nose and head leave open, up and down
+GROUND_LOW_RAD, GROUND_HIGH_RAD = np.radians([-4.0, 100.0])  # what the coaming and the head leave open
+FRAME_UP_RAD = float(np.radians(5.0))  # looking ahead: less of the coaming in the picture
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -61,12 +62,12 @@ def sightline(instant: Instant, airframes: Sequence[Airframe], k: int, look: str
         eyes = unit(direction_b(to_lead, instant.quat_eb[k]))
         return Sightline(_framed(eyes), eyes)
     if look == "ground":
-        ground = _toward_ground(instant.quat_eb[k])
-        return Sightline(ground, ground)
+        low = _toward_ground(instant.quat_eb[k])
+        return Sightline(_lifted(low), low)
     if look not in ("ahead", "lead"):
         raise ValueError(f"look {look}: lead, ahead or ground")
     ahead = np.array([1.0, 0.0, 0.0])
-    return Sightline(ahead, ahead)
+    return Sightline(_lifted(ahead), ahead)
 
 
 def gazing(instant: Instant, airframes: Sequence[Airframe], k: int, watch: Watch) -> Sightline:
@@ -98,9 +99,9 @@ def chase_camera(flight: Flight, time_s: float, field_rad: float, size_px: tuple
     """From astern of the lead, above and to his right, standing as he stood 0.5 s ago, so that a pull shows."""
     now, before = instant_at(flight, time_s), instant_at(flight, max(time_s - 0.5, float(flight.time_s[0])))
     span = max(float(np.ptp(now.pos_e_m @ _lateral(before))), flight.airframes[0].wing_span_m)
-    back = 12.0 + 1.5 * span
+    back = 12.0 + 1.1 * span
     quat = before.quat_eb[0]
-    pos = now.pos_e_m[0] + quat_rotate(quat, np.array([-back, 0.35 * back, -0.30 * back]))
+    pos = now.pos_e_m[0] + quat_rotate(quat, np.array([-back, 0.45 * back, -0.22 * back]))
     # never below the ground the formation is over
     ground_m = flight.height_m[:, 0] - flight.height_agl_m[:, 0]
     pos[2] = min(pos[2], -(float(np.interp(time_s, flight.time_s, ground_m)) + 2.0))
@@ -122,16 +123,6 @@ def spectator_camera(
     return Camera(stand_e_m, quat_from_axes(np.stack([right, np.cross(los, right), los])), field_rad, *size_px)
 
 
-def spectator_stand(healthy: Flight, height_at: HeightAt, distance_m: float = 300.0) -> Array:
-    """Where a spectator stands, (3,) m: abeam the healthy loop's lowest point, on the lead's left, eyes at 1.7 m."""
-    late = healthy.time_s >= healthy.events.get("top", float(healthy.time_s[0]))
-    lowest = int(np.flatnonzero(late)[np.argmin(healthy.height_m[late, 0])])
-    ahead = unit(healthy.vel_e_mps[lowest, 0] * np.array([1.0, 1.0, 0.0]))
-    place = healthy.pos_e_m[lowest, 0] + distance_m * np.array([ahead[1], -ahead[0], 0.0])
-    ground = float(height_at(np.asarray(place[0]), np.asarray(place[1])))
-    return np.array([place[0], place[1], -(ground + 1.7)])
-
-
 def direction(azimuth_rad: float, elevation_rad: float) -> Array:
     """Unit vector in body axes of an azimuth (right positive) and an elevation (up positive), (3,)."""
     flat = np.cos(elevation_rad)
@@ -149,6 +140,13 @@ def _framed(eyes_b: Array) -> Array:
     azimuth, elevation = angles(eyes_b)
     shift = min(float(FRAME_NOSEWARD_RAD), abs(azimuth)) * np.cos(elevation)
     return direction(azimuth - np.sign(azimuth) * shift, max(elevation - float(FRAME_DOWN_RAD), -1.5))
+
+
+def _lifted(eyes_b: Array) -> Array:
+    """The picture's axis for eyes ahead: lifted over the coaming, the less the higher the eyes are."""
+    azimuth, elevation = angles(eyes_b)
+    lift = FRAME_UP_RAD * min(max(1.0 - elevation / 0.5, 0.0), 1.0)
+    return direction(azimuth, elevation + lift) if lift > 0.0 and eyes_b[0] > 0.0 else eyes_b
 
 
 def _turned(from_b: Array, to_b: Array, part: float) -> Array:

@@ -93,16 +93,18 @@ def test_the_lead_abreast_is_framed_aft_of_the_middle_and_above_it() -> None:
 
 def test_the_ground_look_follows_down_and_never_jumps() -> None:
     turns = np.radians(np.arange(0.0, 720.0, 1.0))
-    looks = []
+    looks, eyes = [], []
     for turn in turns:
         instant = abreast(1.4, 0.0, 0.0)
         quat = np.stack([quat_from_euler(1.4, float(turn), 0.0)] * 2)
         one = Instant(0.0, instant.pos_e_m, quat, np.zeros(2), np.zeros(2), (True, True))
-        looks.append(views.sightline(one, (invented_jet(),) * 2, 1, "ground").axis_b)
+        seen = views.sightline(one, (invented_jet(),) * 2, 1, "ground")
+        looks.append(seen.axis_b)
+        eyes.append(seen.eyes_b)
     steps = np.arccos(np.clip(np.sum(np.array(looks)[1:] * np.array(looks)[:-1], axis=1), -1.0, 1.0))
     assert np.degrees(steps.max()) < 9.0
-    assert np.degrees(views.angles(looks[270])) == pytest.approx([0.0, 0.0], abs=1e-6)  # straight down: ahead
-    assert np.degrees(views.angles(looks[200]))[1] == pytest.approx(70.0)  # on the back: up through the canopy
+    assert np.degrees(views.angles(eyes[270])) == pytest.approx([0.0, 0.0], abs=1e-6)  # straight down: ahead
+    assert np.degrees(views.angles(eyes[200]))[1] == pytest.approx(70.0)  # on the back: up through the canopy
 
 
 def test_the_head_is_inside_just_when_the_study_says_so() -> None:
