@@ -59,9 +59,12 @@ def cover_of(ground: Ground, seed: int) -> Cover:
 
 def open_ground(land: Land, north_m: Array, east_m: Array, margin_m: float) -> NDArray[np.bool_]:
     """Whether places lie outside the airfield's bounds and the sea by that margin."""
-    along, across = land.airfield.along_across(north_m, east_m)
-    low, high = land.airfield.across_m
-    outside = (np.abs(along) > land.airfield.half_along_m + margin_m) | (across < low - margin_m) | (across > high + margin_m)
+    outside = np.ones(np.shape(north_m), bool)
+    if land.airfield is not None:
+        along, across = land.airfield.along_across(north_m, east_m)
+        low, high = land.airfield.across_m
+        outside = (np.abs(along) > land.airfield.half_along_m + margin_m)
+        outside |= (across < low - margin_m) | (across > high + margin_m)
     if land.plan.shore is not None:
         outside &= land.plan.shore.seaward_m(north_m, east_m) < -margin_m - 45.0
     result: NDArray[np.bool_] = outside

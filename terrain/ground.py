@@ -61,15 +61,23 @@ def ground_names() -> tuple[str, ...]:
 def read_ground(name: str, seed: int = 1) -> Ground:
     """A ground from a shipped recipe and a seed, or from an elevation file (see terrain/elevation.py).
 
-    name: a shipped land, or the path of a file that ends in .asc, .hgt, .npz, .tif or .tiff.
+    name: a shipped land, or the path of a file that ends in .asc, .hgt, .npz, .tif or .tiff, with
+    ``@north,east`` behind it to place the display centre (in the file's coordinates) elsewhere than in its middle.
     Raises GroundError for a name that is not shipped and for a file that can't be read.
     """
-    from terrain.elevation import ENDINGS, read_elevation  # after Ground, which it makes
+    from terrain.elevation import ENDINGS, read_elevation  # makes a Ground, so it can't come before it
 
     if name in ground_names():
         recipe = yaml.safe_load((RECIPES / f"{name}.yaml").read_text(encoding="utf-8"))
         return Ground(name, *make_heights(recipe, seed), recipe=recipe)
-    if Path(name).suffix.lower() in ENDINGS:
-        return read_elevation(Path(name))
-    known = ", ".join(ground_names())
-    raise GroundError(f"ground: read {name}, wanted one of {known} or an elevation file ({', '.join(ENDINGS)})")
+    file, at, place = name.rpartition("@") if "@" in name else (name, "", "")
+    if Path(file).suffix.lower() not in ENDINGS:
+        known = ", ".join(ground_names())
+        raise GroundError(f"ground: read {name}, wanted one of {known} or an elevation file ({', '.join(ENDINGS)})")
+    if not at:
+        return read_elevation(Path(file))
+    try:
+        north, east = (float(x) for x in place.split(","))
+    except ValueError:
+        raise GroundError(f"ground: {file}: read @{place}, wanted @north,east as two numbers") from None
+    return read_elevation(Path(file), (north, east))

@@ -97,7 +97,7 @@ class Land:
     leaf: tuple[Colour, Colour]
     needle: Colour
     standing: Standing
-    airfield: Airfield
+    airfield: Airfield | None  # none on a real relief
 
 
 def colour(text: str) -> Colour:
@@ -113,6 +113,16 @@ def _shore(recipe: Mapping[str, Any]) -> Shore | None:
     return Shore(float(np.radians(shore["bearing_deg"])), float(shore["distance"]), float(shore["below"]))
 
 
+def _airfield(recipe: Mapping[str, Any]) -> Airfield | None:
+    a = recipe.get("airfield")
+    if a is None:
+        return None
+    return Airfield(
+        float(np.radians(a["heading_deg"])), a["length"], a["width"], a["north"], a["east"],
+        (colour(a["grass"][0]), colour(a["grass"][1])), colour(a["surface"]), colour(a["apron"]),
+    )
+
+
 def _standing(s: Mapping[str, Any]) -> Standing:
     hedge, wood = s["hedges"], s["woods"]
     return Standing(
@@ -124,15 +134,11 @@ def _standing(s: Mapping[str, Any]) -> Standing:
 
 def land_of(recipe: Mapping[str, Any], seed: int) -> Land:
     """The land of a recipe (see terrain/recipes/*.yaml) and a seed."""
-    p, c, a = recipe["plan"], recipe["colours"], recipe["airfield"]
+    p, c = recipe["plan"], recipe["colours"]
     plan = Plan(
         salt=float((seed * 37 + 5) % 289), grain_rad=np.radians(p["grain_deg"]), 
         block_m=float(np.sqrt(FIELDS_OF_BLOCK * p["field"][0] * p["field"][1])), bend_m=p["bend"], enclosed=p["enclosed"], hedge_m=p["hedge"], road_m=p["road"],
         road_rows=p["road_rows"], shore=_shore(recipe), road_every_m=p["road_every"], wood_part=p["wood_part"], wild_wood=p["wild_wood"],
-    )
-    airfield = Airfield(
-        np.radians(a["heading_deg"]), a["length"], a["width"], a["north"], a["east"],
-        (colour(a["grass"][0]), colour(a["grass"][1])), colour(a["surface"]), colour(a["apron"]),
     )
     one, two, three = (colour(x) for x in c["wild"])
     return Land(
@@ -140,5 +146,5 @@ def land_of(recipe: Mapping[str, Any], seed: int) -> Land:
         c["crop_from"], colour(c["wood"]), colour(c["hedge"]), colour(c["road"]), colour(c["verge"]),
         bool(recipe.get("road_line", False)), float(recipe.get("wild_level", 0.5)),
         colour(c.get("sand", "#000000")), colour(c.get("deep", "#000000")), colour(c.get("shallow", "#000000")),
-        (colour(c["leaf"][0]), colour(c["leaf"][1])), colour(c["needle"]), _standing(recipe["standing"]), airfield,
+        (colour(c["leaf"][0]), colour(c["leaf"][1])), colour(c["needle"]), _standing(recipe["standing"]), _airfield(recipe),
     )

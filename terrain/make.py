@@ -60,6 +60,8 @@ def _rolling(north: Array, east: Array, scale_m: float, seed: int) -> Array:
 def _away_from_airfield(recipe: Mapping[str, Any], seed: int, north: Array, east: Array, flat_m: float) -> Array:
     """0 near the airfield's bounds, 1 far away, smooth between."""
     field = land_of(recipe, seed).airfield
+    if field is None:
+        return np.ones_like(north)
     along, across = field.along_across(north, east)
     low, high = field.across_m
     out = np.hypot(

@@ -50,7 +50,7 @@ Row = tuple[str, float, float, float, float, float, float, float]
 def yards(land: Land, rng: np.random.Generator, reach_m: float, free: Free) -> Boxes:
     """All boxes of a land; farms and houses beside roads, vehicles on them, hangars on the apron's far side."""
     rows = [*_airfield(land, rng), *_farms(land, rng, reach_m, free), *_traffic(land, rng, reach_m, free)]
-    columns = list(zip(*rows, strict=True))
+    columns = list(zip(*rows, strict=True)) or [()] * 8
     kind = np.array(columns[0], dtype="U7")
     numbers = [np.array(column, float) for column in columns[1:]]
     return Boxes(kind, *numbers, rng.random(len(kind)))
@@ -59,6 +59,8 @@ def yards(land: Land, rng: np.random.Generator, reach_m: float, free: Free) -> B
 def _airfield(land: Land, rng: np.random.Generator) -> list[Row]:
     """Beside the apron: two hangars, a tower, sheds, parked cars; beside the runway: boards, lamps, a windsock's mast."""
     field = land.airfield
+    if field is None:
+        return []
     rows: list[Row] = []
 
     def add(kind: str, along: float, across: float, turn: float, size: tuple[float, float, float], ridge: float = 0.0) -> None:

@@ -8,7 +8,7 @@ import vtk
 from render.picture.ground_mesh import ground_mesh
 from render.picture.shading import constants, glsl, mesh, shaded_actor
 from terrain.ground import Ground
-from terrain.land import Land
+from terrain.land import Airfield, Land
 
 _START = """
   vec3 ray = place - eye;
@@ -66,7 +66,7 @@ _PIECES = {"country": ("plan", "ground"), "mown": ("airfield",), "runway": ("air
 def ground_actors(ground: Ground, land: Land) -> list[vtk.vtkActor]:
     """The surface of a ground with a land's look, to be lit and given an eye (see ``land.set_light``)."""
     shape = ground_mesh(ground, land)
-    head = constants({**_constants(land), "GROUND_LIGHT_LEVEL": int(shape.level)})
+    head = constants(_constants(land))
     head += f"#define GROUND_LIGHT {'flatLight' if shape.level else _RELIEF_LIGHT}\n"
     actors = []
     for kind, triangles in shape.triangles.items():
@@ -92,27 +92,35 @@ def _field_colour(land: Land) -> str:
 
 
 def _constants(land: Land) -> dict[str, object]:
-    p, field = land.plan, land.airfield
-    number = round(np.degrees(field.heading_rad) / 10.0) % 36 or 36
-    other = (number + 17) % 36 + 1
-    long = field.length_m >= 2400.0
-    water: dict[str, object] = {}
-    if p.shore is not None:
-        c, s = float(np.cos(p.shore.bearing_rad)), float(np.sin(p.shore.bearing_rad))
-        water = {"SHORE_C": c, "SHORE_S": s, "SHORE_OUT": float(p.shore.distance_m), "SAND": land.sand,
-                 "DEEP": land.deep, "SHALLOW": land.shallow}
+    p = land.plan
     weights = np.diff([0.0, *(kind.up_to for kind in land.fields)])
     fields = np.sum([w * np.array(k.colour) for w, k in zip(weights, land.fields, strict=True)], axis=0)
     mean = p.enclosed * fields + (1.0 - p.enclosed) * np.mean(land.wild, axis=0)
-    return {
-        **water, "COUNTRY_MEAN": mean, "FIELD": float(p.block_m / np.sqrt(8.0)),
-        "SALT": p.salt, "GRAIN_C": float(np.cos(p.grain_rad)), "GRAIN_S": float(np.sin(p.grain_rad)),
+    values: dict[str, object] = {
+        "COUNTRY_MEAN": mean, "FIELD": float(p.block_m / np.sqrt(8.0)), "SALT": p.salt,
+        "GRAIN_C": float(np.cos(p.grain_rad)), "GRAIN_S": float(np.sin(p.grain_rad)),
         "BEND": float(p.bend_m), "BLOCK": float(p.block_m), "ENCLOSED": float(p.enclosed),
         "HEDGE": float(p.hedge_m), "ROAD": float(p.road_m), "ROAD_ROWS": float(p.road_rows),
         "ROADS_ACROSS": int(p.road_every_m > 0), "ROAD_EVERY": float(p.road_every_m), "WOOD_PART": float(p.wood_part),
         "WILD_WOOD": float(p.wild_wood), "CROP_FROM": float(land.crop_from), "WILD_LEVEL": float(land.wild_level),
         "WILD_A": land.wild[0], "WILD_B": land.wild[1], "WILD_C": land.wild[2], "WOOD": land.wood,
         "HEDGE_COLOUR": land.hedge, "ROAD_COLOUR": land.road, "VERGE": land.verge, "ROAD_LINE": int(land.road_line),
+    }
+    if p.shore is not None:
+        values |= {
+            "SHORE_C": float(np.cos(p.shore.bearing_rad)), "SHORE_S": float(np.sin(p.shore.bearing_rad)),
+            "SHORE_OUT": float(p.shore.distance_m), "SAND": land.sand, "DEEP": land.deep, "SHALLOW": land.shallow,
+        }
+    if land.airfield is not None:
+        values |= _airfield_constants(land.airfield)
+    return values
+
+
+def _airfield_constants(field: Airfield) -> dict[str, object]:
+    number = round(np.degrees(field.heading_rad) / 10.0) % 36 or 36
+    other = (number + 17) % 36 + 1
+    long = field.length_m >= 2400.0
+    return {
         "AIRFIELD_AT": (field.east_m, field.north_m), "AIRFIELD_C": float(np.cos(field.heading_rad)),
         "AIRFIELD_S": float(np.sin(field.heading_rad)), "RUNWAY_L": float(field.length_m),
         "RUNWAY_W": float(field.width_m), "MOWN_A": field.grass[0], "MOWN_B": field.grass[1],

@@ -39,10 +39,10 @@ def ground_mesh(ground: Ground, land: Land) -> GroundMesh:
     """The mesh of a ground with the land on it."""
     level = float(np.ptp(ground.heights_m)) == 0.0
     squares = FLAT_SQUARES if level else SHORE_SQUARES if land.plan.shore is not None else RELIEF_SQUARES
-    around, inside = _airfield_places(land.airfield, 200.0 if level else 100.0)
-    nested = _nested(squares)
-    nested = nested[~_within(land.airfield, nested, squares[0][1] * 0.45)]
-    places = np.concatenate([nested, around, inside])
+    places = _nested(squares)
+    if land.airfield is not None:
+        outside = ~_within(land.airfield, places, squares[0][1] * 0.45)
+        places = np.concatenate([places[outside], *_airfield_places(land.airfield, 200.0 if level else 100.0)])
     triangles = Delaunay(places).simplices.astype(np.int64)
     a, b, c = (places[triangles[:, k]] for k in range(3))
     turn = (b[:, 0] - a[:, 0]) * (c[:, 1] - a[:, 1]) - (b[:, 1] - a[:, 1]) * (c[:, 0] - a[:, 0])
@@ -109,13 +109,16 @@ def _airfield_places(field: Airfield, spacing_m: float) -> tuple[Array, Array]:
 
 
 def _by_kind(land: Land, places: Array, triangles: NDArray[np.int64]) -> dict[str, NDArray[np.int64]]:
-    along, across = land.airfield.along_across(places[:, 1], places[:, 0])
-    low, high = land.airfield.across_m
-    inside = _within(land.airfield, places, 0.5)[triangles].all(axis=1)
-    wide, long = 0.5 * land.airfield.width_m + EDGE_M, 0.5 * land.airfield.length_m + EDGE_M
-    strip = ((np.abs(across) < wide + 0.5) & (np.abs(along) < long + 0.5))[triangles].all(axis=1)
-    kinds = {"runway": strip, "mown": inside & ~strip}
-    rest = ~inside
+    kinds: dict[str, NDArray[np.bool_]] = {}
+    rest = np.ones(len(triangles), bool)
+    if land.airfield is not None:
+        field = land.airfield
+        along, across = field.along_across(places[:, 1], places[:, 0])
+        inside = _within(field, places, 0.5)[triangles].all(axis=1)
+        wide, long = 0.5 * field.width_m + EDGE_M, 0.5 * field.length_m + EDGE_M
+        strip = ((np.abs(across) < wide + 0.5) & (np.abs(along) < long + 0.5))[triangles].all(axis=1)
+        kinds = {"runway": strip, "mown": inside & ~strip}
+        rest = ~inside
     if land.plan.shore is not None:
         seaward = land.plan.shore.seaward_m(places[:, 1], places[:, 0])[triangles]
         reach = land.plan.shore.blend_m
