@@ -21,12 +21,12 @@ from render.picture.axes import DISPLAY_FROM_EARTH, body_to_display, to_display
 from render.picture.camera import Camera
 from render.picture.canopy import build_cockpit
 from render.picture.craft import NEAR_M, Craft
+from render.picture.craft_shadows import Shadows
 from render.picture.edges import smooth_edges
 from render.picture.instant import Instant
 from render.picture.land import Land
 from render.picture.light import Light
 from render.picture.probe import new_window, require_drawing
-from render.picture.shadows import Shadows
 from render.picture.shapes import build_shape
 from scenes.airframe import Airframe
 from scenes.model import Day

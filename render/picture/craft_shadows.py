@@ -1,0 +1,59 @@
+"""The shadows of a formation as actors of the stage, laid anew for each instant."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+from vtkmodules.vtkRenderingCore import vtkActor, vtkPolyDataMapper
+
+from render.frames import Array
+from render.picture.axes import DISPLAY_FROM_EARTH
+from render.picture.instant import Instant
+from render.picture.shadow import Shadow, cast_samples
+from render.picture.shapes_parts import Shape
+from render.sight.geometry import HeightAt
+
+#: Along the sun's ray, m; beyond it the half-shadow (9.3 m wide there) has eaten the shadow of a small aircraft.
+REACH_M = 1_000.0
+
+
+class Shadows:
+    """One shadow for each aircraft; drawn after the ground, before anything else that is see-through."""
+
+    def __init__(self, shapes: Sequence[Shape], sun_d: Array, height_at: HeightAt) -> None:
+        """shapes: (K,); sun_d: toward the sun, display axes; height_at: the ground's height, m."""
+        self._sun_e = np.asarray(sun_d, float) @ DISPLAY_FROM_EARTH
+        self._height_at = height_at
+        samples = {id(shape): cast_samples(shape.parts) for shape in shapes}
+        self._shadows = [Shadow(samples[id(shape)]) for shape in shapes]
+        self.actors = [_actor(shadow) for shadow in self._shadows]
+
+    def lay(self, instant: Instant, eye_e_m: Array) -> None:
+        """Lay the shadows of an instant, for an eye at (3,) m."""
+        for k, (shadow, actor) in enumerate(zip(self._shadows, self.actors, strict=True)):
+            actor.SetVisibility(k < len(instant.alive) and self._laid(shadow, instant, k, eye_e_m))
+
+    def _laid(self, shadow: Shadow, instant: Instant, k: int, eye_e_m: Array) -> bool:
+        pos = instant.pos_e_m[k]
+        rise = -float(self._sun_e[2])
+        height = -float(pos[2]) - float(self._height_at(pos[0], pos[1]))
+        if rise < 0.05 or height / rise > REACH_M:
+            return False
+        # a depth buffer of 24 bits tells depths apart to d^2 / (near 2^24): 0.4 m at 1 km
+        away = float(np.linalg.norm(pos - height / rise * self._sun_e - eye_e_m))
+        return shadow.update(pos, instant.quat_eb[k], self._sun_e, self._height_at, 0.05 + (away / 1000.0) ** 2)
+
+
+def _actor(shadow: Shadow) -> vtkActor:
+    mapper = vtkPolyDataMapper()
+    mapper.SetInputData(shadow.mesh)
+    mapper.SetVBOShiftScaleMethod(0)
+    mapper.SetScalarModeToUsePointFieldData()
+    mapper.SelectColorArray("colour")
+    mapper.SetColorModeToDirectScalars()
+    actor = vtkActor()
+    actor.SetMapper(mapper)
+    actor.GetProperty().SetLighting(False)
+    actor.ForceTranslucentOn()
+    return actor
