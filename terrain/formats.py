@@ -123,9 +123,7 @@ def read_npz(path: Path) -> Raster:
         east, north = have["longitude"].astype(float), have["latitude"].astype(float)
         if east.shape != (columns,) or north.shape != (rows,):
             raise RasterError(f"read {east.shape} longitudes and {north.shape} latitudes, wanted {columns} and {rows}")
-        step_e, step_n = np.diff(east), np.diff(north)
-        if rows < 2 or columns < 2 or np.ptp(step_e) > 1e-3 * abs(step_e[0]) or np.ptp(step_n) > 1e-3 * abs(step_n[0]):
-            raise RasterError("longitudes or latitudes are not evenly spaced")
+        heights = _evened(_evened(heights, north, "latitudes").T, east, "longitudes").T
         first, last, west = float(north[0]), float(north[-1]), float(east[0])
         step_north, step_east = abs(last - first) / (rows - 1), float(east[-1] - east[0]) / (columns - 1)
     elif {"xmin", "xmax", "ymin", "ymax"} <= have.keys():
@@ -138,6 +136,21 @@ def read_npz(path: Path) -> Raster:
     if first < last:
         heights, first = heights[::-1], last
     return Raster(heights, first, west, step_north, step_east, True)
+
+
+def _evened(heights: NDArray[np.float64], at: NDArray[np.float64], what: str) -> NDArray[np.float64]:
+    """Rows at rising or falling places, by straight lines between them, at evenly spaced places from first to last."""
+    steps = np.diff(at)
+    if len(at) < 2 or not ((steps > 0.0).all() or (steps < 0.0).all()):
+        raise RasterError(f"{what} neither rise nor fall all the way")
+    if np.ptp(steps) < 1e-4 * abs(steps[0]):
+        return heights
+    wanted = np.linspace(at[0], at[-1], len(at))
+    row = np.interp(wanted, at, np.arange(len(at))) if steps[0] > 0.0 else np.interp(-wanted, -at, np.arange(len(at)))
+    low = np.minimum(row.astype(int), len(at) - 2)
+    part = (row - low)[:, None]
+    result: NDArray[np.float64] = heights[low] * (1.0 - part) + heights[low + 1] * part
+    return result
 
 
 def read_geotiff(path: Path) -> Raster:

@@ -20,7 +20,7 @@ FIELDS_OF_BLOCK = 8  # each square block is cut in two, each half in two across,
 
 
 def permute(x: Array) -> Array:
-    """A fixed shuffle of the integers to 0..288; exact for whole numbers within 700 of zero in single precision.
+    """A fixed shuffle of the integers to 0..288; exact for whole numbers within 460 of zero in single precision.
 
     Source: (34 x + 10) x mod 289, the permutation polynomial of webgl-noise (Gustavson, McEwan et al. 2012,
     "Efficient computational noise in GLSL"; from memory).
@@ -30,7 +30,7 @@ def permute(x: Array) -> Array:
 
 
 def hash2(i: Array, j: Array, salt: float) -> Array:
-    """Integers 0..288 from a lattice place within 400 of zero; salt tells uses apart."""
+    """Integers 0..288 from a lattice place within 170 of zero (60 km and more); salt tells uses apart."""
     return permute(permute(i + salt) + j)
 
 
