@@ -109,7 +109,6 @@ def draw_verdict(
         notes = dict(zip(OBSERVERS, notices[name], strict=True))
         slots[name] = {
             "last_pull_s": margin.last_pull_floor_s[k],
-            "last_pull_ground_s": margin.last_pull_ground_s[k],
             "notice": {o: {"time_s": n.time_s, "cue": n.cue} for o, n in notes.items()},
             "reaction_s": {o: n.reaction_s for o, n in notes.items()},
             "lateness_s": {o: n.lateness_s for o, n in notes.items()},
