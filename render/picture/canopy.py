@@ -15,11 +15,13 @@ from render.picture.loft import Colour, Surf, grid_tris, merge, surface
 from render.picture.shapes_cockpit import BLACK, INSIDE, Canopy, CockpitDesign
 from render.picture.shapes_crew import head
 from render.picture.shapes_jet import jet_cockpit
-from render.picture.shapes_panel import body_of_pilot, panel, stick_and_throttle
+from render.picture.shapes_panel import body_of_pilot, panel, stick_and_throttle, trim
 from render.picture.shapes_parts import Part, fixed
 from render.picture.shapes_piston import piston_cockpit
 from render.picture.shapes_turboprop import turboprop_cockpit
 from scenes.airframe import Airframe
+
+LEDGE: Colour = (108, 112, 110)
 
 #: Half the distance between the eyes, m: common size of an adult, no source.
 HALF_EYES_M = 0.031
@@ -36,12 +38,19 @@ def build_cockpit(airframe: Airframe) -> tuple[Part, ...]:
     solid += [_bow(lid, bow, design.frame) for bow in lid.frames]
     solid += [lid.deck(design.deck_x_m), *(lid.coaming(*hood) for hood in design.coamings)]
     solid += panel(lid, design.deck_x_m)
+    solid += trim(lid, -place.eye_design_m[1])
     eye = place.point((place.eye_design_m[0], 0.0, -place.eye_design_m[1]))
     near = [body_of_pilot(eye, design.suit), stick_and_throttle(eye)]
     if design.rear_eye_m is not None:
         near.append(head(place.point(design.rear_eye_m), (70, 84, 86), (200, 200, 196)))
+
+    def deep(points: Array, normals: Array) -> Array:
+        """Less of the sky's light the further down."""
+        below = np.clip(points[:, 2] - eye[2] - 0.18, 0.0, 0.6)
+        return 1.0 - 0.45 * below
+
     return (
-        fixed("cockpit", merge([*(place.surf(s) for s in solid), *near]), specular=0.04),
+        fixed("cockpit", merge([*(place.surf(s) for s in solid), *near]), specular=0.04, shade=deep),
         Part("cockpit_glass", _glass(design), own_view=True, specular=0.0, lit=False),
     )
 
@@ -76,13 +85,12 @@ def _rails(lid: Canopy, eye_z_m: float, colour: Colour) -> Surf:
         (w + 0.026, lid.body.top_z(x, w + 0.026) - 0.004),
         (w + 0.012, lid.body.top_z(x, w + 0.012) - 0.012),
         (w - 0.006, sill - 0.012),
-        (w - 0.028, sill - 0.004),
-        (w - 0.034, sill + 0.012),
-        (w - 0.036, sill + 0.045),
+        (w - 0.020, sill - 0.008),
     ]
-    wall = [
-        (w - 0.036, sill + 0.045),
-        (w - 0.058, sill + 0.06),
+    seal = [(w - 0.020, sill - 0.008), (w - 0.026, sill - 0.012), (w - 0.033, sill - 0.004), (w - 0.035, sill + 0.006)]
+    lip = [(w - 0.035, sill + 0.006), (w - 0.036, sill + 0.045), (w - 0.058, sill + 0.06)]
+    wall = [(w - 0.058, sill + 0.06), (0.86 * w, np.full_like(x, eye_z_m + 0.50))]
+    console = [
         (0.86 * w, np.full_like(x, eye_z_m + 0.50)),
         (0.52 * w, np.full_like(x, eye_z_m + 0.53)),
         (0.50 * w, np.full_like(x, eye_z_m + 0.95)),
@@ -90,7 +98,7 @@ def _rails(lid: Canopy, eye_z_m: float, colour: Colour) -> Surf:
     ]
     middle = np.array([float(x.mean()), 0.0, eye_z_m - 0.4])
     pieces = []
-    for rows, paint_with in ((rail, colour), (wall, INSIDE)):
+    for rows, paint_with in ((rail, colour), (seal, BLACK), (lip, LEDGE), (wall, INSIDE), (console, BLACK)):
         for sign in (1.0, -1.0):
             grid = np.stack([np.stack([x, sign * np.maximum(y, 0.0), z], -1) for y, z in rows], axis=1)
             pieces.append(_facing(grid, paint_with, middle))

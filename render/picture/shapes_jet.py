@@ -158,7 +158,7 @@ def _wing() -> tuple[Surf, Surf]:
                    (-0.95, 4.58, -0.02, 0.095), (-1.3, 4.58, -0.02, 0.045), (-1.42, 4.58, -0.02, 0.008)],
                   TEAL, 14)  # fmt: skip
     pod = paint(pod, lambda p: 0.3 - p[:, 0], GOLD)
-    skin = hinge_mark(skin, WING, AILERON, METAL)
+    skin = hinge_mark(skin, WING, AILERON, LINE)
     return merge([skin, pod, tip_light((0.15, 4.655, -0.02))]), aileron
 
 

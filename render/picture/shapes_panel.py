@@ -40,6 +40,53 @@ def panel(lid: Canopy, deck_x_m: float) -> list[Surf]:
     return pieces
 
 
+def trim(lid: Canopy, eye_z_m: float) -> list[Surf]:
+    """Along each wall: canopy seal, latches, screws, a pocket, a jettison handle, console switches."""
+    front, back = lid.frames[0][0] - 0.05, lid.crown[-1, 0] + 0.5
+    pieces = []
+    for side in (-1.0, 1.0):
+        for x in np.arange(front, back, -0.085):
+            pieces.append(_stud(lid, x, side, 0.052, 0.0065, (132, 134, 132)))
+        for x in np.arange(front - 0.28, back, -0.42):
+            pieces.append(_block(lid, x, side, (0.024, 0.012, 0.017), 0.030, (126, 128, 126)))
+        for k, x in enumerate(np.arange(front - 0.30, front - 0.95, -0.055)):
+            y = side * 0.70 * float(lid.width(np.array(x)))
+            shade: Colour = (170, 64, 48) if k == 3 else (206, 204, 196) if k % 4 == 0 else (46, 48, 50)
+            pieces.append(box((x - 0.012, y - 0.012, eye_z_m + 0.495), (x + 0.012, y + 0.012, eye_z_m + 0.535), shade))
+        x = front - 0.62
+        pieces.append(_block(lid, x, side, (0.17, 0.012, 0.11), 0.17, (70, 74, 70)))
+    handle = front - 0.36
+    for k in range(6):
+        colour: Colour = (232, 190, 40) if k % 2 == 0 else (26, 26, 28)
+        pieces.append(_block(lid, handle - 0.022 * k, -1.0, (0.011, 0.016, 0.013), 0.10, colour))
+    return pieces
+
+
+def _block(
+    lid: Canopy, x: float, side: float, half_m: tuple[float, float, float], below_m: float, colour: Colour
+) -> Surf:
+    """A box against the wall, its middle so far below the rail."""
+    reach = float(np.clip((below_m - 0.05) / 0.45, 0.0, 1.0))
+    width = float(lid.width(np.array(x)))
+    y = side * (width - 0.046 - reach * 0.10 * width)
+    z = float(lid.sill_z(np.array(x))) + below_m
+    a, b, c = half_m
+    return box((x - a, y - b, z - c), (x + a, y + b, z + c), colour)
+
+
+def _stud(lid: Canopy, x: float, side: float, below_m: float, radius: float, colour: Colour) -> Surf:
+    """A flat six-sided screw head on the ledge under the rail."""
+    width = float(lid.width(np.array(x)))
+    centre = np.array([x, side * (width - 0.048), float(lid.sill_z(np.array(x))) + below_m - 0.003])
+    turn = np.arange(6) * np.pi / 3
+    tilt = np.array([0.0, side * -0.55, -0.84])
+    one = np.array([1.0, 0.0, 0.0])
+    two = np.cross(tilt, one)
+    rim = centre + radius * (np.cos(turn)[:, None] * one + np.sin(turn)[:, None] * two)
+    fan = np.stack([np.full(6, 6), np.arange(6), np.roll(np.arange(6), -1)], -1)
+    return surface(np.concatenate([rim, centre[None]]), fan, colour)
+
+
 def _plate(x: float, low: tuple[float, float], high: tuple[float, float], colour: Colour) -> Surf:
     """A rectangle in the plane of constant x, faces aft."""
     (y0, z0), (y1, z1) = low, high

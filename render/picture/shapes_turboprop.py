@@ -145,7 +145,7 @@ def _wing() -> tuple[Surf, Surf]:
         surf = paint(surf, _tip_edge(0.45), SLATE)
         painted.append(surf)
     skin = line(painted[0], lambda p: p[:, 0] + 0.92 + 0.02 * p[:, 1], 0.02, LINE, only=SAND)
-    skin = hinge_mark(skin, WING, AILERON, METAL)
+    skin = hinge_mark(skin, WING, AILERON, LINE)
     return merge([skin, tip_light((-0.02, 5.095, 0.235))]), painted[1]
 
 
