@@ -103,7 +103,7 @@ def hinge_mark(wing_skin: Surf, wing: Panel, aileron: tuple[float, float, float]
 def propeller_disc(hub_m: Array, radius_m: float, blades: int = 5, around: int = 60) -> pv.PolyData:
     """A turning propeller as a see-through disc: RGBA, denser near the hub, with faint blades and a light tip ring."""
     rings = np.array([0.14, 0.3, 0.6, 0.88, 0.90, 0.975, 1.0])
-    density = np.array([105.0, 62.0, 40.0, 26.0, 70.0, 70.0, 0.0])
+    density = np.array([105.0, 62.0, 40.0, 24.0, 46.0, 46.0, 0.0])
     tone = np.array([52.0, 56.0, 62.0, 66.0, 226.0, 226.0, 226.0])
     turn = np.linspace(0.0, 2 * np.pi, around, endpoint=False)
     y, z = rings[:, None] * radius_m * np.cos(turn), rings[:, None] * radius_m * np.sin(turn)

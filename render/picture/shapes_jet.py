@@ -18,7 +18,7 @@ from scenes.airframe import Airframe
 WHITE: Colour = (232, 229, 218)
 TEAL: Colour = (16, 58, 66)
 GOLD: Colour = (226, 160, 30)
-LINE: Colour = (160, 160, 152)
+LINE: Colour = (186, 184, 174)
 DARK: Colour = (22, 23, 25)
 METAL: Colour = (112, 106, 98)
 FRAME: Colour = (58, 65, 70)
@@ -183,11 +183,12 @@ def _chevron(surf: Surf) -> Surf:
 def _tail() -> tuple[Surf, Surf]:
     """(fin, right stabilator half)."""
     fin = FIN.loft(np.linspace(0.45, 2.5, 6).tolist(), WHITE, round_tip_m=0.12)
-    rudder = lambda p: p[:, 0] - (-4.55 - 0.22 * (-p[:, 2] - 0.6))  # noqa: E731
+    rudder = station(-4.55 + 0.22 * 0.6, (1.0, 0.0, -0.22))
     fin = paint(fin, lambda p: p[:, 2] + 1.35 + 0.30 * (p[:, 0] + 4.0), TEAL)
     fin = line(fin, lambda p: p[:, 2] + 1.20 + 0.30 * (p[:, 0] + 4.0), 0.10, GOLD)
     fin = line(fin, lambda p: p[:, 2] + 1.02 + 0.30 * (p[:, 0] + 4.0), 0.04, GOLD)
-    fin = line(fin, rudder, 0.022, LINE)
+    fin = line(fin, rudder, 0.022, LINE, only=WHITE)
+    fin = line(fin, rudder, 0.022, (34, 80, 88), only=TEAL)
     half = TAIL.loft([0.60, 0.75, 1.2, 1.7, 2.2], GOLD, round_tip_m=0.07)
     half = paint(half, lambda p: p[:, 1] - 0.80, DARK)
     half = paint(half, lambda p: p[:, 1] - 0.70, GOLD)

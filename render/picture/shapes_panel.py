@@ -48,7 +48,7 @@ def trim(lid: Canopy, eye_z_m: float) -> list[Surf]:
         for x in np.arange(front, back, -0.085):
             pieces.append(_stud(lid, x, side, 0.052, 0.0065, (132, 134, 132)))
         for x in np.arange(front - 0.28, back, -0.42):
-            pieces.append(_block(lid, x, side, (0.024, 0.012, 0.017), 0.030, (126, 128, 126)))
+            pieces.append(_block(lid, x, side, (0.018, 0.007, 0.011), 0.026, (140, 142, 140)))
         for k, x in enumerate(np.arange(front - 0.30, front - 0.95, -0.055)):
             y = side * 0.70 * float(lid.width(np.array(x)))
             shade: Colour = (170, 64, 48) if k == 3 else (206, 204, 196) if k % 4 == 0 else (46, 48, 50)

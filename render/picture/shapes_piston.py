@@ -18,7 +18,7 @@ from scenes.airframe import Airframe
 IVORY: Colour = (238, 234, 224)
 VIOLET: Colour = (72, 52, 128)
 PEACH: Colour = (246, 168, 96)
-LINE: Colour = (168, 164, 156)
+LINE: Colour = (190, 186, 178)
 DARK: Colour = (26, 26, 28)
 METAL: Colour = (150, 148, 144)
 FRAME: Colour = (62, 58, 74)
@@ -84,7 +84,7 @@ def _hull() -> Surf:
     skin = line(skin, lambda p: _flash(p) + 0.06, 0.07, PEACH)
     skin = paint(skin, lambda p: 0.92 + 0.5 * p[:, 2] - p[:, 0], VIOLET)
     skin = line(skin, lambda p: p[:, 0] - 0.90 - 0.5 * p[:, 2], 0.06, PEACH)
-    skin = line(skin, station(1.15), 0.014, LINE)
+    skin = line(skin, station(1.15), 0.014, (94, 74, 150), only=VIOLET)
     for at in (-2.3, -3.2):
         skin = line(skin, station(at), 0.014, LINE, only=IVORY)
     skin = patch(skin, [station(1.55), lambda p: 0.45 - p[:, 0], lambda p: np.abs(p[:, 1]) - 0.20,
@@ -164,7 +164,9 @@ def _tail() -> tuple[Surf, Surf, Surf]:
     fin = FIN.loft([0.2, 0.5, 0.85, 1.15, 1.42], IVORY, round_tip_m=0.10)
     fin = paint(fin, lambda p: p[:, 2] + 0.62 - 0.45 * (p[:, 0] + 3.6), VIOLET)
     fin = line(fin, lambda p: p[:, 2] + 0.57 - 0.45 * (p[:, 0] + 3.6), 0.07, PEACH)
-    fin = line(fin, lambda p: p[:, 0] + 3.88 + 0.12 * (-p[:, 2] - 0.5), 0.016, LINE)
+    rudder = station(-3.88 + 0.06, (1.0, 0.0, -0.12))
+    fin = line(fin, rudder, 0.016, LINE, only=IVORY)
+    fin = line(fin, rudder, 0.016, (94, 74, 150), only=VIOLET)
     spring = spindle([(-3.7, 0, 0.02, 0.03, 0.02), (-4.0, 0, 0.16, 0.025, 0.015), (-4.16, 0, 0.26, 0.02, 0.015)],
                      METAL, 8)  # fmt: skip
     wheel = spindle([(-4.09, 0, 0.28, 0.03, 0.02), (-4.12, 0, 0.28, 0.03, 0.06), (-4.18, 0, 0.28, 0.03, 0.075),

@@ -14,9 +14,9 @@ from render.picture.shapes_sections import Body, Panel, body, outline, spindle
 from scenes.airframe import Airframe
 
 SAND: Colour = (226, 214, 182)
-SLATE: Colour = (52, 62, 84)
+SLATE: Colour = (64, 78, 108)
 CORAL: Colour = (226, 92, 62)
-LINE: Colour = (158, 150, 130)
+LINE: Colour = (188, 178, 150)
 DARK: Colour = (24, 25, 28)
 METAL: Colour = (120, 112, 104)
 FRAME: Colour = (54, 60, 70)
@@ -155,7 +155,9 @@ def _tail() -> tuple[Surf, Surf, Surf]:
     fin = paint(fin, lambda p: p[:, 2] + 1.15 + 0.35 * (p[:, 0] + 4.2), SLATE)
     fin = line(fin, lambda p: p[:, 2] + 1.02 + 0.35 * (p[:, 0] + 4.2), 0.12, CORAL)
     fin = paint(fin, lambda p: p[:, 2] + 2.02, SAND)
-    fin = line(fin, lambda p: p[:, 0] + 4.68 + 0.2 * (-p[:, 2] - 0.6), 0.02, LINE)
+    rudder = station(-4.68 + 0.12, (1.0, 0.0, -0.2))
+    fin = line(fin, rudder, 0.02, LINE, only=SAND)
+    fin = line(fin, rudder, 0.02, (84, 98, 128), only=SLATE)
     bullet = spindle([(-3.98, 0, -2.38, 0.012), (-4.06, 0, -2.38, 0.05), (-4.3, 0, -2.38, 0.09), (-4.9, 0, -2.38, 0.10),
                       (-5.35, 0, -2.38, 0.07), (-5.54, 0, -2.38, 0.015)], SAND, 14)  # fmt: skip
     bullet = line(bullet, station(-2.38, (0.0, 0.0, 1.0)), 0.034, DARK)
