@@ -47,7 +47,9 @@ def cover_of(ground: Ground, seed: int) -> Cover:
     land = land_of(ground.recipe, seed)
     rng = np.random.default_rng([seed, 7])
     edges = field_edges(land.plan, REACH_M)
-    free = open_ground(land, edges.north_m, edges.east_m, 4.0) & open_ground(land, edges.to_north_m, edges.to_east_m, 4.0)
+    free = open_ground(land, edges.north_m, edges.east_m, 4.0) & open_ground(
+        land, edges.to_north_m, edges.to_east_m, 4.0
+    )
     middle = place_at(land.plan, 0.5 * (edges.north_m + edges.to_north_m), 0.5 * (edges.east_m + edges.to_east_m))
     edges = keep(edges, free & (middle.road_m > 0.5 * land.plan.road_m + 4.0))
     boxes = yards(land, rng, REACH_M, lambda n, e, margin: open_ground(land, n, e, margin))
@@ -63,7 +65,7 @@ def open_ground(land: Land, north_m: Array, east_m: Array, margin_m: float) -> N
     if land.airfield is not None:
         along, across = land.airfield.along_across(north_m, east_m)
         low, high = land.airfield.across_m
-        outside = (np.abs(along) > land.airfield.half_along_m + margin_m)
+        outside = np.abs(along) > land.airfield.half_along_m + margin_m
         outside |= (across < low - margin_m) | (across > high + margin_m)
     if land.plan.shore is not None:
         outside &= land.plan.shore.seaward_m(north_m, east_m) < -margin_m - 45.0
@@ -71,9 +73,12 @@ def open_ground(land: Land, north_m: Array, east_m: Array, margin_m: float) -> N
     return result
 
 
+_Group = tuple[Array, Array, str, tuple[float, float], float]  # north, east, kind, heights, width for height
+
+
 def _trees(land: Land, rng: np.random.Generator, edges: Lines, boxes: Boxes) -> Trees:
     plan, stand = land.plan, land.standing
-    groups = []
+    groups: list[_Group] = []
     # along hedges
     along = rng.random(len(edges.north_m))
     chosen = rng.random(len(along)) < stand.hedge_trees
@@ -85,21 +90,24 @@ def _trees(land: Land, rng: np.random.Generator, edges: Lines, boxes: Boxes) -> 
     depth = _depth_of_wood(plan, n, e)
     thin = np.where(depth < 22.0, 1.0, 0.16) * np.clip(1.35 - np.hypot(n, e) / REACH_M, 0.2, 1.0)
     chosen = (depth > 0.0) & (rng.random(len(n)) < thin)
-    groups.append((n[chosen], e[chosen], stand.wood_kind, stand.wood_height_m, 0.55 if stand.wood_kind == "conifer" else 0.8))
+    groups.append(
+        (n[chosen], e[chosen], stand.wood_kind, stand.wood_height_m, 0.55 if stand.wood_kind == "conifer" else 0.8)
+    )
     # alone on open land, and bushes
     for count, kind, height, broad in (
-        (stand.lone_trees, "broadleaf", stand.tree_height_m, 0.85), (stand.bushes, "bush", stand.bush_height_m, 1.5),
+        (stand.lone_trees, "broadleaf", stand.tree_height_m, 0.85),
+        (stand.bushes, "bush", stand.bush_height_m, 1.5),
     ):
         n, e = _scatter(rng, REACH_M if kind != "bush" else 1_500.0, count)
         wild = ~place_at(plan, n, e).enclosed
         groups.append((n[wild], e[wild], kind, height, broad))
     north, east = np.concatenate([g[0] for g in groups]), np.concatenate([g[1] for g in groups])
-    kind = np.concatenate([np.full(len(g[0]), g[2], dtype="U9") for g in groups])
-    height = np.concatenate([rng.uniform(*g[3], len(g[0])) for g in groups])
-    width = height * np.concatenate([g[4] * rng.uniform(0.75, 1.2, len(g[0])) for g in groups])
-    free = open_ground(land, north, east, 6.0) & (place_at(plan, north, east).road_m > 0.5 * plan.road_m + 0.4 * width)
-    free &= boxes.clear_of(north, east, 0.5 * width)
-    return Trees(kind[free], north[free], east[free], height[free], width[free], rng.random(int(free.sum())))
+    kinds = np.concatenate([np.full(len(g[0]), g[2], dtype="U9") for g in groups])
+    heights = np.concatenate([rng.uniform(*g[3], len(g[0])) for g in groups])
+    widths = heights * np.concatenate([g[4] * rng.uniform(0.75, 1.2, len(g[0])) for g in groups])
+    free = open_ground(land, north, east, 6.0) & (place_at(plan, north, east).road_m > 0.5 * plan.road_m + 0.4 * widths)
+    free &= boxes.clear_of(north, east, 0.5 * widths)
+    return Trees(kinds[free], north[free], east[free], heights[free], widths[free], rng.random(int(free.sum())))
 
 
 def _scatter(rng: np.random.Generator, reach_m: float, count: int) -> tuple[Array, Array]:

@@ -7,6 +7,7 @@ from pathlib import Path
 
 import numpy as np
 import yaml
+from numpy.typing import ArrayLike
 
 from terrain.formats import Raster, RasterError, read_raster
 from terrain.ground import RECIPES, Ground, GroundError
@@ -21,7 +22,7 @@ _A_M, _E2 = 6378137.0, 6.69437999014e-3  # WGS 84 ellipsoid: NIMA TR8350.2
 
 
 def metres_per_degree(latitude_deg: float) -> tuple[float, float]:
-    """Metres for a degree northward and eastward on the WGS 84 ellipsoid: its radii of curvature M and N cos(latitude)."""
+    """Metres for a degree northward and eastward on the WGS 84 ellipsoid, from its radii of curvature M, N cos(lat)."""
     sin2 = math.sin(math.radians(latitude_deg)) ** 2
     bend = 1.0 - _E2 * sin2
     north = _A_M * (1.0 - _E2) / bend**1.5
@@ -29,7 +30,7 @@ def metres_per_degree(latitude_deg: float) -> tuple[float, float]:
     return math.radians(north), math.radians(east)
 
 
-def height_in(raster: Raster, north: float | Array, east: float | Array) -> Array:
+def height_in(raster: Raster, north: ArrayLike, east: ArrayLike) -> Array:
     """Bilinear heights, m, at places in the raster's own coordinates; nan outside it and beside voids."""
     row = (raster.north - np.asarray(north, float)) / raster.step_north
     column = (np.asarray(east, float) - raster.west) / raster.step_east
@@ -75,13 +76,17 @@ def _window(name: str, raster: Raster, centre: tuple[float, float] | None) -> Gr
     north0, east0 = centre if centre is not None else (0.5 * (raster.north + south), 0.5 * (raster.west + east_end))
     unit_n, unit_e = metres_per_degree(north0) if raster.degrees else (1.0, 1.0)
     reach = min(
-        (raster.north - north0) * unit_n, (north0 - south) * unit_n, (east0 - raster.west) * unit_e,
-        (east_end - east0) * unit_e, REACH_M,
+        (raster.north - north0) * unit_n,
+        (north0 - south) * unit_n,
+        (east0 - raster.west) * unit_e,
+        (east_end - east0) * unit_e,
+        REACH_M,
     )
     if reach < LEAST_REACH_M:
         raise RasterError(
-            f"the display centre {north0:g} N {east0:g} E has {max(reach, 0.0):.0f} m of heights on its narrowest side, "
-            f"wanted {LEAST_REACH_M:.0f} m; the file covers {south:g} to {raster.north:g} N, {raster.west:g} to {east_end:g} E"
+            f"the display centre {north0:g} N {east0:g} E has {max(reach, 0.0):.0f} m of heights on its narrowest "
+            f"side, wanted {LEAST_REACH_M:.0f} m; the file covers {south:g} to {raster.north:g} N, "
+            f"{raster.west:g} to {east_end:g} E"
         )
     spacing = max(min(raster.step_north * unit_n, raster.step_east * unit_e), 5.0)
     count = int(reach / spacing)

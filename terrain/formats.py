@@ -1,4 +1,4 @@
-"""Elevation files as rasters: Esri ASCII, SRTM HGT, NumPy .npz, GeoTIFF. Every fault is a RasterError with its reason."""
+"""Elevation files as rasters: Esri ASCII, SRTM HGT, NumPy .npz, GeoTIFF. Faults are RasterErrors."""
 
 from __future__ import annotations
 
@@ -59,7 +59,9 @@ def read_asc(path: Path) -> Raster:
         parts = text[line].split()
         key = parts[0].lower()
         if len(parts) != 2 or key in header:
-            raise RasterError(f"line {line + 1}: read {text[line].strip()[:60]!r}, wanted one key and one number, each once")
+            raise RasterError(
+                f"line {line + 1}: read {text[line].strip()[:60]!r}, wanted one key and one number, each once"
+            )
         header[key] = _number(parts[1], line + 1)
         line += 1
     for key in ("ncols", "nrows", "cellsize"):
@@ -85,9 +87,10 @@ def read_asc(path: Path) -> Raster:
 
 
 def read_hgt(path: Path) -> Raster:
-    """SRTM tile: 1201 x 1201 or 3601 x 3601 big-endian int16, rows from the north, -32768 void, cell centres on the edges.
+    """SRTM tile: 1201 x 1201 or 3601 x 3601 big-endian int16, rows from the north, -32768 void.
 
-    The name gives the south-west corner: N45E007.hgt. Source: GDAL's SRTMHGT driver page.
+    Cell centres lie on the tile's edges. The name gives the south-west corner: N45E007.hgt.
+    Source: GDAL's SRTMHGT driver page.
     """
     found = re.match(r"([NS])(\d\d)([EW])(\d\d\d)", path.stem.upper())
     if found is None:
@@ -116,7 +119,9 @@ def read_npz(path: Path) -> Raster:
         raise RasterError(f"not a plain NumPy archive ({fault})") from fault
     name = "elevation" if "elevation" in have else "topo"
     if name not in have or have[name].ndim != 2 or have[name].dtype.kind not in "iuf":
-        raise RasterError(f"read {', '.join(sorted(have)) or 'nothing'}, wanted a table of numbers called elevation or topo")
+        raise RasterError(
+            f"read {', '.join(sorted(have)) or 'nothing'}, wanted a table of numbers called elevation or topo"
+        )
     heights = have[name].astype(float)
     rows, columns = heights.shape
     if {"longitude", "latitude"} <= have.keys():

@@ -51,7 +51,10 @@ def field_edges(plan: Plan, within_m: float, piece_m: float = 45.0) -> Lines:
     long = np.hypot(to_n - n, to_e - e) + 1e-9
     mid_n, mid_e = 0.5 * (n + to_n), 0.5 * (e + to_e)
     step_n, step_e = 2.0 * (to_e - e) / long, -2.0 * (to_n - n) / long
-    both = place_at(plan, mid_n + step_n, mid_e + step_e).enclosed & place_at(plan, mid_n - step_n, mid_e - step_e).enclosed
+    both = (
+        place_at(plan, mid_n + step_n, mid_e + step_e).enclosed
+        & place_at(plan, mid_n - step_n, mid_e - step_e).enclosed
+    )
     kept &= ~(both & (every[:, 4] > 0.5))
     return Lines(n[kept], e[kept], to_n[kept], to_e[kept])
 

@@ -118,17 +118,34 @@ def _airfield(recipe: Mapping[str, Any]) -> Airfield | None:
     if a is None:
         return None
     return Airfield(
-        float(np.radians(a["heading_deg"])), a["length"], a["width"], a["north"], a["east"],
-        (colour(a["grass"][0]), colour(a["grass"][1])), colour(a["surface"]), colour(a["apron"]),
+        float(np.radians(a["heading_deg"])),
+        a["length"],
+        a["width"],
+        a["north"],
+        a["east"],
+        (colour(a["grass"][0]), colour(a["grass"][1])),
+        colour(a["surface"]),
+        colour(a["apron"]),
     )
 
 
 def _standing(s: Mapping[str, Any]) -> Standing:
     hedge, wood = s["hedges"], s["woods"]
     return Standing(
-        hedge["height"], hedge["reach"], hedge["gaps"], hedge["trees"], tuple(s["trees"]), wood["kind"],
-        tuple(wood["trees"]), wood["tries"], s["lone_trees"], s["bushes"], tuple(s["bush_height"]), s["farms"],
-        s["houses"], s["vehicles"],
+        hedge["height"],
+        hedge["reach"],
+        hedge["gaps"],
+        hedge["trees"],
+        tuple(s["trees"]),
+        wood["kind"],
+        tuple(wood["trees"]),
+        wood["tries"],
+        s["lone_trees"],
+        s["bushes"],
+        tuple(s["bush_height"]),
+        s["farms"],
+        s["houses"],
+        s["vehicles"],
     )
 
 
@@ -136,15 +153,36 @@ def land_of(recipe: Mapping[str, Any], seed: int) -> Land:
     """The land of a recipe (see terrain/recipes/*.yaml) and a seed."""
     p, c = recipe["plan"], recipe["colours"]
     plan = Plan(
-        salt=float((seed * 37 + 5) % 289), grain_rad=np.radians(p["grain_deg"]), 
-        block_m=float(np.sqrt(FIELDS_OF_BLOCK * p["field"][0] * p["field"][1])), bend_m=p["bend"], enclosed=p["enclosed"], hedge_m=p["hedge"], road_m=p["road"],
-        road_rows=p["road_rows"], shore=_shore(recipe), road_every_m=p["road_every"], wood_part=p["wood_part"], wild_wood=p["wild_wood"],
+        salt=float((seed * 37 + 5) % 289),
+        grain_rad=np.radians(p["grain_deg"]),
+        block_m=float(np.sqrt(FIELDS_OF_BLOCK * p["field"][0] * p["field"][1])),
+        bend_m=p["bend"],
+        enclosed=p["enclosed"],
+        hedge_m=p["hedge"],
+        road_m=p["road"],
+        road_rows=p["road_rows"],
+        shore=_shore(recipe),
+        road_every_m=p["road_every"],
+        wood_part=p["wood_part"],
+        wild_wood=p["wild_wood"],
     )
     one, two, three = (colour(x) for x in c["wild"])
     return Land(
-        plan, (one, two, three), tuple(FieldKind(k[0], colour(k[1])) for k in c["fields"]),
-        c["crop_from"], colour(c["wood"]), colour(c["hedge"]), colour(c["road"]), colour(c["verge"]),
-        bool(recipe.get("road_line", False)), float(recipe.get("wild_level", 0.5)),
-        colour(c.get("sand", "#000000")), colour(c.get("deep", "#000000")), colour(c.get("shallow", "#000000")),
-        (colour(c["leaf"][0]), colour(c["leaf"][1])), colour(c["needle"]), _standing(recipe["standing"]), _airfield(recipe),
+        plan,
+        (one, two, three),
+        tuple(FieldKind(k[0], colour(k[1])) for k in c["fields"]),
+        c["crop_from"],
+        colour(c["wood"]),
+        colour(c["hedge"]),
+        colour(c["road"]),
+        colour(c["verge"]),
+        bool(recipe.get("road_line", False)),
+        float(recipe.get("wild_level", 0.5)),
+        colour(c.get("sand", "#000000")),
+        colour(c.get("deep", "#000000")),
+        colour(c.get("shallow", "#000000")),
+        (colour(c["leaf"][0]), colour(c["leaf"][1])),
+        colour(c["needle"]),
+        _standing(recipe["standing"]),
+        _airfield(recipe),
     )

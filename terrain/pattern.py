@@ -131,11 +131,18 @@ def place_at(plan: Plan, north_m: Array, east_m: Array) -> Place:
     enclosed = block < plan.enclosed * 289.0
     edge = np.minimum(np.minimum(to_left, to_right), np.minimum(below, above))
     wood = np.where(
-        enclosed, permute(key + 57.0) < plan.wood_part * 289.0,
+        enclosed,
+        permute(key + 57.0) < plan.wood_part * 289.0,
         value_noise(u / 600.0, v / 600.0, plan.salt) > plan.wild_wood,
     )
     return Place(
-        u, v, key, enclosed, np.where(enclosed, edge, edge_of_block), _road_m(plan, u, v), wood,
+        u,
+        v,
+        key,
+        enclosed,
+        np.where(enclosed, edge, edge_of_block),
+        _road_m(plan, u, v),
+        wood,
     )
 
 

@@ -40,8 +40,7 @@ class Boxes:
             return np.ones(north_m.shape, bool)
         far = np.hypot(north_m[:, None] - self.north_m, east_m[:, None] - self.east_m)
         half = 0.5 * np.hypot(self.length_m, self.width_m)
-        result: NDArray[np.bool_] = (far - half > more_m[:, None] + 1.0).all(axis=1)
-        return result
+        return np.asarray((far - half > more_m[:, None] + 1.0).all(axis=1))
 
 
 Row = tuple[str, float, float, float, float, float, float, float]
@@ -52,18 +51,20 @@ def yards(land: Land, rng: np.random.Generator, reach_m: float, free: Free) -> B
     rows = [*_airfield(land, rng), *_farms(land, rng, reach_m, free), *_traffic(land, rng, reach_m, free)]
     columns = list(zip(*rows, strict=True)) or [()] * 8
     kind = np.array(columns[0], dtype="U7")
-    numbers = [np.array(column, float) for column in columns[1:]]
-    return Boxes(kind, *numbers, rng.random(len(kind)))
+    north, east, bearing, length, width, height, ridge = (np.array(column, float) for column in columns[1:])
+    return Boxes(kind, north, east, bearing, length, width, height, ridge, rng.random(len(kind)))
 
 
 def _airfield(land: Land, rng: np.random.Generator) -> list[Row]:
-    """Beside the apron: two hangars, a tower, sheds, parked cars; beside the runway: boards, lamps, a windsock's mast."""
+    """Beside the apron: two hangars, a tower, sheds, parked cars; beside the runway: boards, lamps, a mast."""
     field = land.airfield
     if field is None:
         return []
     rows: list[Row] = []
 
-    def add(kind: str, along: float, across: float, turn: float, size: tuple[float, float, float], ridge: float = 0.0) -> None:
+    def add(
+        kind: str, along: float, across: float, turn: float, size: tuple[float, float, float], ridge: float = 0.0
+    ) -> None:
         n, e = field.north_east(along, across)
         rows.append((kind, float(n), float(e), field.heading_rad + turn, *size, ridge))
 
@@ -89,7 +90,9 @@ def _airfield(land: Land, rng: np.random.Generator) -> list[Row]:
     return rows
 
 
-def _beside_roads(land: Land, rng: np.random.Generator, reach_m: float, count: int, off_m: float) -> tuple[Array, Array, Array]:
+def _beside_roads(
+    land: Land, rng: np.random.Generator, reach_m: float, count: int, off_m: float
+) -> tuple[Array, Array, Array]:
     """Places (about) ``off_m`` from the middle of a road, and the road's bearing there."""
     radius, turn = reach_m * np.sqrt(rng.random(6000)), rng.uniform(0.0, 2.0 * np.pi, 6000)
     n, e = radius * np.cos(turn), radius * np.sin(turn)
@@ -120,11 +123,15 @@ def _farms(land: Land, rng: np.random.Generator, reach_m: float, free: Free) -> 
             if k == 0:
                 rows.append(("house", x, y, turn, 12.0, 8.0, 5.2, 3.0))
             else:
-                rows.append(("barn", x, y, turn, rng.uniform(18.0, 36.0), rng.uniform(10.0, 18.0), 4.8, rng.uniform(2.0, 3.5)))
+                rows.append(
+                    ("barn", x, y, turn, rng.uniform(18.0, 36.0), rng.uniform(10.0, 18.0), 4.8, rng.uniform(2.0, 3.5))
+                )
     n, e, bearing = _beside_roads(land, rng, reach_m, land.standing.houses, 16.0)
     ok = free(n, e, 25.0)
     for north, east, road in zip(n[ok], e[ok], bearing[ok], strict=True):
-        rows.append(("house", north, east, road + rng.choice([0.0, 0.5]) * np.pi, rng.uniform(9.0, 14.0), 7.5, 5.0, 2.8))
+        rows.append(
+            ("house", north, east, road + rng.choice([0.0, 0.5]) * np.pi, rng.uniform(9.0, 14.0), 7.5, 5.0, 2.8)
+        )
     return _apart(rows)
 
 

@@ -19,19 +19,24 @@ _NOISES = """
   vec2 q7 = vec2(0.1143 * q.x + 0.0857 * q.y, 0.1143 * q.y - 0.0857 * q.x);
   vec2 q1 = vec2(0.455 * q.x - 0.621 * q.y, 0.455 * q.y + 0.621 * q.x);
   float n7 = (noise(q7 + 11.3) - 0.5) * shown(7.0, px);
-  float n1 = (0.62 * noise(q1) - 0.31) * shown(1.3, px) + (0.55 * noise(q7 * 21.0 + q1 + 9.7) - 0.275) * shown(0.40, px);
+  float n1 = (0.62 * noise(q1) - 0.31) * shown(1.3, px);
+  n1 += (0.55 * noise(q7 * 21.0 + q1 + 9.7) - 0.275) * shown(0.40, px);
 """
 _LIGHT = """
   colour *= GROUND_LIGHT;
   fragOutput0 = vec4(haze(colour, length(ray)), 1.0);
 """
 _RELIEF_LIGHT = "(sunLight * max(dot(normalize(upward), sunDir), 0.0) + skyLight)"
-_COUNTRY = """
+_COUNTRY = (
+    """
   vec2 q = grain(place.xy);
-""" + _NOISES + """
+"""
+    + _NOISES
+    + """
   float n45 = (noise(q * (1.0 / 45.0)) - 0.5) * shown(45.0, px);
   vec3 colour = country(q, px, longest, n1, n7, n45);
 """
+)
 _SHORE = """
   float out_m = seaward(place.xy);
   float n7w = n7 + 0.6 * n45;
@@ -48,10 +53,13 @@ _SEA = """
   vec3 colour = seaColour(place.xy, ray, 1000.0, px);
   fragOutput0 = vec4(haze(colour, length(ray)), 1.0);
 """
-_AIRFIELD = """
+_AIRFIELD = (
+    """
   vec2 r = place.xy - AIRFIELD_AT;
   vec2 q = vec2(r.x * AIRFIELD_S + r.y * AIRFIELD_C, r.y * AIRFIELD_S - r.x * AIRFIELD_C);
-""" + _NOISES
+"""
+    + _NOISES
+)
 _MAINS = {
     "country": _START + _COUNTRY + _LIGHT,
     "shore": _START + _COUNTRY + _SHORE,
@@ -59,8 +67,13 @@ _MAINS = {
     "mown": _START + _AIRFIELD + "vec3 colour = mown(q, px, n1, n7);" + _LIGHT,
     "runway": _START + _AIRFIELD + "vec3 colour = runway(q, px, n1, n7);" + _LIGHT,
 }
-_PIECES = {"country": ("plan", "ground"), "mown": ("airfield",), "runway": ("airfield",), "shore": ("plan", "ground", "water"),
-           "sea": ("water",)}
+_PIECES = {
+    "country": ("plan", "ground"),
+    "mown": ("airfield",),
+    "runway": ("airfield",),
+    "shore": ("plan", "ground", "water"),
+    "sea": ("water",),
+}
 
 
 def ground_actors(ground: Ground, land: Land) -> list[vtk.vtkActor]:
@@ -76,9 +89,11 @@ def ground_actors(ground: Ground, land: Land) -> list[vtk.vtkActor]:
         attributes = {} if shape.level else {"normalUp": shape.normals[used]}
         vertex = glsl("rim") + ("" if shape.level else "in vec3 normalUp;\nout vec3 upward;\n")
         position = "setRim(place);\n" + ("" if shape.level else "upward = normalUp;\n")
-        actors.append(shaded_actor(
-            mesh(shape.points[used], renumbered.reshape(-1, 3)), code, _MAINS[kind], attributes, vertex, position
-        ))
+        actors.append(
+            shaded_actor(
+                mesh(shape.points[used], renumbered.reshape(-1, 3)), code, _MAINS[kind], attributes, vertex, position
+            )
+        )
     return actors
 
 
@@ -97,19 +112,40 @@ def _constants(land: Land) -> dict[str, object]:
     fields = np.sum([w * np.array(k.colour) for w, k in zip(weights, land.fields, strict=True)], axis=0)
     mean = p.enclosed * fields + (1.0 - p.enclosed) * np.mean(land.wild, axis=0)
     values: dict[str, object] = {
-        "COUNTRY_MEAN": mean, "FIELD": float(p.block_m / np.sqrt(8.0)), "SALT": p.salt,
-        "GRAIN_C": float(np.cos(p.grain_rad)), "GRAIN_S": float(np.sin(p.grain_rad)),
-        "BEND": float(p.bend_m), "BLOCK": float(p.block_m), "ENCLOSED": float(p.enclosed),
-        "HEDGE": float(p.hedge_m), "ROAD": float(p.road_m), "ROAD_ROWS": float(p.road_rows),
-        "ROADS_ACROSS": int(p.road_every_m > 0), "ROAD_EVERY": float(p.road_every_m), "WOOD_PART": float(p.wood_part),
-        "WILD_WOOD": float(p.wild_wood), "CROP_FROM": float(land.crop_from), "WILD_LEVEL": float(land.wild_level),
-        "WILD_A": land.wild[0], "WILD_B": land.wild[1], "WILD_C": land.wild[2], "WOOD": land.wood,
-        "HEDGE_COLOUR": land.hedge, "ROAD_COLOUR": land.road, "VERGE": land.verge, "ROAD_LINE": int(land.road_line),
+        "COUNTRY_MEAN": mean,
+        "FIELD": float(p.block_m / np.sqrt(8.0)),
+        "SALT": p.salt,
+        "GRAIN_C": float(np.cos(p.grain_rad)),
+        "GRAIN_S": float(np.sin(p.grain_rad)),
+        "BEND": float(p.bend_m),
+        "BLOCK": float(p.block_m),
+        "ENCLOSED": float(p.enclosed),
+        "HEDGE": float(p.hedge_m),
+        "ROAD": float(p.road_m),
+        "ROAD_ROWS": float(p.road_rows),
+        "ROADS_ACROSS": int(p.road_every_m > 0),
+        "ROAD_EVERY": float(p.road_every_m),
+        "WOOD_PART": float(p.wood_part),
+        "WILD_WOOD": float(p.wild_wood),
+        "CROP_FROM": float(land.crop_from),
+        "WILD_LEVEL": float(land.wild_level),
+        "WILD_A": land.wild[0],
+        "WILD_B": land.wild[1],
+        "WILD_C": land.wild[2],
+        "WOOD": land.wood,
+        "HEDGE_COLOUR": land.hedge,
+        "ROAD_COLOUR": land.road,
+        "VERGE": land.verge,
+        "ROAD_LINE": int(land.road_line),
     }
     if p.shore is not None:
         values |= {
-            "SHORE_C": float(np.cos(p.shore.bearing_rad)), "SHORE_S": float(np.sin(p.shore.bearing_rad)),
-            "SHORE_OUT": float(p.shore.distance_m), "SAND": land.sand, "DEEP": land.deep, "SHALLOW": land.shallow,
+            "SHORE_C": float(np.cos(p.shore.bearing_rad)),
+            "SHORE_S": float(np.sin(p.shore.bearing_rad)),
+            "SHORE_OUT": float(p.shore.distance_m),
+            "SAND": land.sand,
+            "DEEP": land.deep,
+            "SHALLOW": land.shallow,
         }
     if land.airfield is not None:
         values |= _airfield_constants(land.airfield)
@@ -121,20 +157,38 @@ def _airfield_constants(field: Airfield) -> dict[str, object]:
     other = (number + 17) % 36 + 1
     long = field.length_m >= 2400.0
     return {
-        "AIRFIELD_AT": (field.east_m, field.north_m), "AIRFIELD_C": float(np.cos(field.heading_rad)),
-        "AIRFIELD_S": float(np.sin(field.heading_rad)), "RUNWAY_L": float(field.length_m),
-        "RUNWAY_W": float(field.width_m), "MOWN_A": field.grass[0], "MOWN_B": field.grass[1],
-        "SURFACE": field.surface, "APRON": field.apron, "BARS": float(6 if field.width_m >= 45 else 4),
-        "AIM_AT": 400.0 if long else 300.0, "AIM_W": 9.0 if long else 6.0, "AIM_FAR": 1.0 if long else 0.0,
-        "FIGURE_A": _figure(number // 10), "FIGURE_B": _figure(number % 10),
-        "FIGURE_C": _figure(other // 10), "FIGURE_D": _figure(other % 10),
+        "AIRFIELD_AT": (field.east_m, field.north_m),
+        "AIRFIELD_C": float(np.cos(field.heading_rad)),
+        "AIRFIELD_S": float(np.sin(field.heading_rad)),
+        "RUNWAY_L": float(field.length_m),
+        "RUNWAY_W": float(field.width_m),
+        "MOWN_A": field.grass[0],
+        "MOWN_B": field.grass[1],
+        "SURFACE": field.surface,
+        "APRON": field.apron,
+        "BARS": float(6 if field.width_m >= 45 else 4),
+        "AIM_AT": 400.0 if long else 300.0,
+        "AIM_W": 9.0 if long else 6.0,
+        "AIM_FAR": 1.0 if long else 0.0,
+        "FIGURE_A": _figure(number // 10),
+        "FIGURE_B": _figure(number % 10),
+        "FIGURE_C": _figure(other // 10),
+        "FIGURE_D": _figure(other % 10),
     }
 
 
 def _figure(digit: int) -> int:
     """A digit as 15 bits: 3 x 5 cells, bit 0 top left."""
     rows = (
-        "111101101101111", "010010010010010", "111001111100111", "111001111001111", "101101111001001",
-        "111100111001111", "111100111101111", "111001001001001", "111101111101111", "111101111001111",
+        "111101101101111",
+        "010010010010010",
+        "111001111100111",
+        "111001111001111",
+        "101101111001001",
+        "111100111001111",
+        "111100111101111",
+        "111001001001001",
+        "111101111101111",
+        "111101111001111",
     )[digit]
     return sum(1 << k for k, bit in enumerate(rows) if bit == "1")

@@ -94,10 +94,13 @@ def _airfield_places(field: Airfield, spacing_m: float) -> tuple[Array, Array]:
     wide, long = 0.5 * field.width_m + EDGE_M, 0.5 * field.length_m + EDGE_M
     steps = np.linspace(-long, long, round(2.0 * long / 45.0) + 1)
     strip = [(steps, np.full_like(steps, side * wide)) for side in (-1.0, 1.0)]
-    a, b = (grid.ravel() for grid in np.meshgrid(
-        np.linspace(-half, half, round(2.0 * half / spacing_m) + 1)[1:-1],
-        np.linspace(low, high, round((high - low) / min(spacing_m, 100.0)) + 1)[1:-1],
-    ))
+    a, b = (
+        grid.ravel()
+        for grid in np.meshgrid(
+            np.linspace(-half, half, round(2.0 * half / spacing_m) + 1)[1:-1],
+            np.linspace(low, high, round((high - low) / min(spacing_m, 100.0)) + 1)[1:-1],
+        )
+    )
     clear = (np.abs(b) > wide + 40.0) | (np.abs(a) > long + 40.0)
     inside = [*strip, (a[clear], b[clear])]
 
@@ -110,20 +113,20 @@ def _airfield_places(field: Airfield, spacing_m: float) -> tuple[Array, Array]:
 
 def _by_kind(land: Land, places: Array, triangles: NDArray[np.int64]) -> dict[str, NDArray[np.int64]]:
     kinds: dict[str, NDArray[np.bool_]] = {}
-    rest = np.ones(len(triangles), bool)
+    rest: NDArray[np.bool_] = np.ones(len(triangles), bool)
     if land.airfield is not None:
         field = land.airfield
         along, across = field.along_across(places[:, 1], places[:, 0])
-        inside = _within(field, places, 0.5)[triangles].all(axis=1)
+        inside = np.asarray(_within(field, places, 0.5)[triangles].all(axis=1))
         wide, long = 0.5 * field.width_m + EDGE_M, 0.5 * field.length_m + EDGE_M
-        strip = ((np.abs(across) < wide + 0.5) & (np.abs(along) < long + 0.5))[triangles].all(axis=1)
+        strip = np.asarray(((np.abs(across) < wide + 0.5) & (np.abs(along) < long + 0.5))[triangles].all(axis=1))
         kinds = {"runway": strip, "mown": inside & ~strip}
-        rest = ~inside
+        rest &= ~inside
     if land.plan.shore is not None:
         seaward = land.plan.shore.seaward_m(places[:, 1], places[:, 0])[triangles]
         reach = land.plan.shore.blend_m
         kinds["sea"] = rest & (seaward.min(axis=1) > reach)
         kinds["shore"] = rest & (seaward.max(axis=1) > -reach) & ~kinds["sea"]
-        rest = rest & ~kinds["sea"] & ~kinds["shore"]
+        rest &= ~(kinds["sea"] | kinds["shore"])
     kinds["country"] = rest
     return {kind: triangles[chosen] for kind, chosen in kinds.items() if chosen.any()}

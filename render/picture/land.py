@@ -34,10 +34,12 @@ class Land:
         self._sky = sky_actor(self.light)
         cover = cover_of(ground, seed)
         self._trees = TreeField(cover.trees, ground, plan)
-        shadows = shadow_actor(cover, ground, self.light)
-        solid = [object_actor(cover, ground, plan, self.light), *ground_actors(ground, plan)]
-        self._eyed = [*solid, shadows, self._trees.actor]
-        self.actors: list[vtk.vtkActor] = [*solid, self._sky, shadows, self._trees.actor]
+        self.shadow_actor = shadow_actor(cover, ground, self.light)
+        self.ground_actors = ground_actors(ground, plan)
+        solid = [object_actor(cover, ground, plan, self.light), *self.ground_actors]
+        self._eyed = [*solid, self.shadow_actor, self._trees.actor]
+        #: In drawing order: what is opaque nearest first, then shadows and trees, which are see-through at their edges.
+        self.actors: list[vtk.vtkActor] = [*solid, self._sky, self.shadow_actor, self._trees.actor]
         for actor in self.actors:
             set_light(actor, self.light)
 
@@ -56,8 +58,12 @@ def set_light(actor: vtk.vtkActor, light: Light) -> None:
     """Hand an actor's shaders the day's light, and an eye to begin with."""
     uniforms = actor.GetShaderProperty().GetFragmentCustomUniforms()
     values = {
-        "eye": np.zeros(3), "sunDir": light.sun_d, "sunLight": light.sun, "skyLight": light.sky,
-        "flatLight": light.flat, "zenithColour": light.zenith,
+        "eye": np.zeros(3),
+        "sunDir": light.sun_d,
+        "sunLight": light.sun,
+        "skyLight": light.sky,
+        "flatLight": light.flat,
+        "zenithColour": light.zenith,
     }
     for name, value in values.items():
         uniforms.SetUniform3f(name, tuple(value))

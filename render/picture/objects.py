@@ -13,14 +13,20 @@ from terrain.ground import Ground
 from terrain.land import Land
 
 _WALLS = {
-    "house": ((.74, .66, .56), (.62, .40, .30), (.82, .79, .72)), "barn": ((.52, .50, .46), (.42, .46, .42), (.60, .54, .46)),
-    "hangar": ((.60, .64, .66), (.66, .68, .66)), "tower": ((.82, .82, .79),), "board": ((.80, .62, .12),),
-    "post": ((.86, .84, .80),), "lorry": ((.80, .80, .78), (.30, .38, .52), (.55, .16, .14)),
-    "car": ((.72, .73, .75), (.12, .13, .15), (.55, .13, .12), (.20, .28, .46), (.86, .86, .85)),
+    "house": ((0.74, 0.66, 0.56), (0.62, 0.40, 0.30), (0.82, 0.79, 0.72)),
+    "barn": ((0.52, 0.50, 0.46), (0.42, 0.46, 0.42), (0.60, 0.54, 0.46)),
+    "hangar": ((0.60, 0.64, 0.66), (0.66, 0.68, 0.66)),
+    "tower": ((0.82, 0.82, 0.79),),
+    "board": ((0.80, 0.62, 0.12),),
+    "post": ((0.86, 0.84, 0.80),),
+    "lorry": ((0.80, 0.80, 0.78), (0.30, 0.38, 0.52), (0.55, 0.16, 0.14)),
+    "car": ((0.72, 0.73, 0.75), (0.12, 0.13, 0.15), (0.55, 0.13, 0.12), (0.20, 0.28, 0.46), (0.86, 0.86, 0.85)),
 }
 _ROOFS = {
-    "house": ((.45, .25, .19), (.34, .33, .34), (.52, .34, .26)), "barn": ((.44, .45, .46), (.56, .57, .57), (.40, .30, .26)),
-    "hangar": ((.68, .71, .73),), "tower": ((.35, .37, .39),),
+    "house": ((0.45, 0.25, 0.19), (0.34, 0.33, 0.34), (0.52, 0.34, 0.26)),
+    "barn": ((0.44, 0.45, 0.46), (0.56, 0.57, 0.57), (0.40, 0.30, 0.26)),
+    "hangar": ((0.68, 0.71, 0.73),),
+    "tower": ((0.35, 0.37, 0.39),),
 }
 
 
@@ -59,11 +65,15 @@ def object_actor(cover: Cover, ground: Ground, land: Land, light: Light) -> vtk.
     _add_hedges(faces, cover, ground, land)
     points, colours, walls = (np.concatenate(x) for x in (faces.points, faces.colours, faces.walls))
     first = 4 * np.arange(len(points) // 4)[:, None]
-    triangles = np.concatenate([first + [0, 1, 2], first + [0, 2, 3]], axis=1).reshape(-1, 3)
+    triangles = (first + np.array([0, 1, 2, 0, 2, 3])).reshape(-1, 3)
     vertex = glsl("rim") + "in vec3 paintIn;\nin vec4 wallIn;\nout vec3 paint;\nout vec4 wall;\n"
     return shaded_actor(
-        mesh(points, triangles), glsl("common") + glsl("object"), "fragOutput0 = vec4(objectColour(), 1.0);\n",
-        {"paintIn": colours, "wallIn": walls}, vertex, "setRim(place);\npaint = paintIn;\nwall = wallIn;\n",
+        mesh(points, triangles),
+        glsl("common") + glsl("object"),
+        "fragOutput0 = vec4(objectColour(), 1.0);\n",
+        {"paintIn": colours, "wallIn": walls},
+        vertex,
+        "setRim(place);\npaint = paintIn;\nwall = wallIn;\n",
     )
 
 
@@ -84,8 +94,10 @@ def _add_boxes(faces: _Faces, cover: Cover, ground: Ground) -> None:
         quad = np.stack([corner(a, b, low), corner(c, d, low), corner(c, d, eaves), corner(a, b, eaves)], axis=1)
         faces.add(quad, wall, side_kind)
     for side in (1, -1):
-        quad = np.stack([corner(side, side, eaves), corner(-side, side, eaves), corner(-side, 0, ridge),
-                         corner(side, 0, ridge)], axis=1)
+        quad = np.stack(
+            [corner(side, side, eaves), corner(-side, side, eaves), corner(-side, 0, ridge), corner(side, 0, ridge)],
+            axis=1,
+        )
         faces.add(quad, roof)
     pitched = boxes.ridge_m > 0.0
     for end in (1, -1):

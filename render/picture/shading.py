@@ -11,6 +11,8 @@ import vtk
 from numpy.typing import NDArray
 from vtkmodules.util.numpy_support import numpy_to_vtk, numpy_to_vtkIdTypeArray
 
+from render.frames import Array
+
 SHADERS = Path(__file__).parent / "shaders"
 
 
@@ -35,7 +37,7 @@ def constants(values: Mapping[str, object]) -> str:
     return "\n".join(lines) + "\n"
 
 
-def mesh(points: NDArray[np.float32], triangles: NDArray[np.int64]) -> vtk.vtkPolyData:
+def mesh(points: Array, triangles: NDArray[np.int64]) -> vtk.vtkPolyData:
     """Polygons from points (P, 3) and corner numbers (T, 3)."""
     data = vtk.vtkPolyData()
     places = vtk.vtkPoints()
@@ -60,7 +62,7 @@ def shaded_actor(
     data: vtk.vtkPolyData,
     fragment: str,
     main: str,
-    attributes: Mapping[str, NDArray[np.float32]] | None = None,
+    attributes: Mapping[str, Array] | None = None,
     vertex: str = "",
     position: str = "",
 ) -> vtk.vtkActor:

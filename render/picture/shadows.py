@@ -43,8 +43,12 @@ def shadow_actor(cover: Cover, ground: Ground, light: Light) -> vtk.vtkActor:
     """
     position = "setShadow(place);\ngl_Position = MCDCMatrix * vertexMC;\n" + _LIFT
     actor = shaded_actor(
-        mesh(points, np.concatenate(triangles)), code, main, {"corner": np.concatenate(discs)},
-        glsl("rim") + glsl("shadow_place"), position,
+        mesh(points, np.concatenate(triangles)),
+        code,
+        main,
+        {"corner": np.concatenate(discs)},
+        glsl("rim") + glsl("shadow_place"),
+        position,
     )
     actor.ForceTranslucentOn()
     return actor
@@ -54,7 +58,7 @@ Part = tuple[Array, Array, NDArray[np.int64]]  # places (P, 2) east, north; disc
 
 
 def _crowns(cover: Cover, away: Array) -> Part:
-    """The shadow of an ellipsoid of half height b, half width a is an ellipse: hypot(b cot, a) along the sun, a across."""
+    """The shadow of an ellipsoid of half height b, half width a is an ellipse: hypot(b cot, a) by a."""
     trees = cover.trees
     slope = float(np.linalg.norm(away))
     along = away / (slope + 1e-9)
@@ -69,7 +73,10 @@ def _crowns(cover: Cover, away: Array) -> Part:
 
 def _strips(cover: Cover, away: Array) -> Part:
     hedges = cover.hedges
-    start, end = np.column_stack([hedges.east_m, hedges.north_m]), np.column_stack([hedges.to_east_m, hedges.to_north_m])
+    start, end = (
+        np.column_stack([hedges.east_m, hedges.north_m]),
+        np.column_stack([hedges.to_east_m, hedges.to_north_m]),
+    )
     off = cover.hedge_height_m * away
     places = np.stack([start, end, end + off, start + off], axis=1).reshape(-1, 2)
     return places, np.zeros_like(places), _quads(len(start))

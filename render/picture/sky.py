@@ -10,8 +10,9 @@ from render.picture.light import Light
 from render.picture.shading import constants, glsl, mesh, shaded_actor
 
 RADIUS_M = 65_000.0
-_RINGS_DEG = np.array([-89.0, -30.0, -8.0, -1.0, 0.0, 0.7, 1.5, 2.5, 4.0, 6.0, 9.0, 13.0, 18.0, 25.0, 34.0, 45.0, 58.0,
-                       72.0, 85.0, 90.0])
+_RINGS_DEG = np.array(
+    [-89.0, -30.0, -8.0, -1.0, 0.0, 0.7, 1.5, 2.5, 4.0, 6.0, 9.0, 13.0, 18.0, 25.0, 34.0, 45.0, 58.0, 72.0, 85.0, 90.0]
+)
 _SIDES = 72
 
 
@@ -40,7 +41,9 @@ def sky_actor(light: Light) -> vtk.vtkActor:
     """The dome; move it to the eye before each render."""
     height = np.radians(_RINGS_DEG)[:, None]
     turn = np.linspace(0.0, 2.0 * np.pi, _SIDES, endpoint=False)[None, :]
-    look = np.stack(np.broadcast_arrays(np.cos(height) * np.cos(turn), np.cos(height) * np.sin(turn), np.sin(height)), -1)
+    look = np.stack(
+        np.broadcast_arrays(np.cos(height) * np.cos(turn), np.cos(height) * np.sin(turn), np.sin(height)), -1
+    )
     rings = len(_RINGS_DEG)
     i, j = (grid.ravel() for grid in np.meshgrid(np.arange(rings - 1), np.arange(_SIDES), indexing="ij"))
     k = (j + 1) % _SIDES
@@ -55,7 +58,9 @@ def sky_actor(light: Light) -> vtk.vtkActor:
     copies = "".join(f"{outs[name]} = {name};\n" for name in inputs)
     colour = np.clip(0.30 * light.rim + 0.70 * (0.75 * light.sun + 0.6 * light.sky), 0.0, 1.0)
     code = constants({"VEIL": 0.6, "VEIL_FROM": 0.52, "VEIL_COLOUR": colour})
-    code += glsl("common").replace("in vec3 rimAt;\nin float fade;\n", "const vec3 rimAt = vec3(0.0);\nconst float fade = 1.0;\n")
+    code += glsl("common").replace(
+        "in vec3 rimAt;\nin float fade;\n", "const vec3 rimAt = vec3(0.0);\nconst float fade = 1.0;\n"
+    )
     code += glsl("sky")
     return shaded_actor(
         mesh(RADIUS_M * look, triangles), code, "fragOutput0 = vec4(skyColour(), 1.0);\n", inputs, head, copies

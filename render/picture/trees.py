@@ -32,10 +32,16 @@ class TreeField:
         code = constants({"LEAF_A": land.leaf[0], "LEAF_B": land.leaf[1], "NEEDLE": land.needle})
         code += glsl("common") + glsl("tree")
         self.actor = shaded_actor(
-            self._data, code, "fragOutput0 = treeColour();\n",
-            {"corner": np.tile(_CORNERS, (len(foot), 1)), "crown": np.repeat(crown, 4, axis=0),
-             "tint": np.repeat(tint, 4, axis=0)},
-            glsl("rim") + glsl("tree_place"), "gl_Position = MCDCMatrix * setTree(place);\n",
+            self._data,
+            code,
+            "fragOutput0 = treeColour();\n",
+            {
+                "corner": np.tile(_CORNERS, (len(foot), 1)),
+                "crown": np.repeat(crown, 4, axis=0),
+                "tint": np.repeat(tint, 4, axis=0),
+            },
+            glsl("rim") + glsl("tree_place"),
+            "gl_Position = MCDCMatrix * setTree(place);\n",
         )
         self.actor.ForceTranslucentOn()
 

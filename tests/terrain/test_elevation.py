@@ -98,8 +98,18 @@ def test_same_file_read_by_rasterio(tmp_path: Path, ending: str) -> None:
     else:
         path = tmp_path / "made.tif"
         transform = rasterio.transform.from_origin(500000.0, 5001500.0, 30.0, 30.0)
-        with rasterio.open(path, "w", driver="GTiff", height=50, width=60, count=1, dtype="float32", crs="EPSG:32632",
-                           transform=transform, nodata=-9999.0) as out:
+        with rasterio.open(
+            path,
+            "w",
+            driver="GTiff",
+            height=50,
+            width=60,
+            count=1,
+            dtype="float32",
+            crs="EPSG:32632",
+            transform=transform,
+            nodata=-9999.0,
+        ) as out:
             out.write(rng.uniform(0.0, 900.0, (50, 60)).astype("float32"), 1)
     ours = read_raster(path)
     with rasterio.open(path) as other:
