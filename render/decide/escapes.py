@@ -8,8 +8,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from render.decide.seats import states_at
-from render.flight import passes
 from render.flight import records as r
+from render.flight.escapes import fly_escapes
 from render.flight.plan import DT_S, Plan, escape_record
 from render.frames import Array
 from render.margin.escape import ESCAPE_DT_S, LONGEST_S
@@ -42,8 +42,8 @@ def lowest_of_escapes(
     for roll_first in (False, True):
         esc = np.concatenate([escape_record(p.scene.break_out, roll_first=roll_first, delay_s=delay_s) for p in plans])
         low, when = np.empty(n), np.empty(n)
-        passes.fly_escapes(states[todo], af, case, esc, away, throttles[todo], np.zeros(n), np.zeros(n), heights, grid,
-                           ESCAPE_DT_S, round(LONGEST_S / ESCAPE_DT_S), row, low, when)
+        fly_escapes(states[todo], af, case, esc, away, throttles[todo], np.zeros(n), np.zeros(n), heights, grid,
+                    ESCAPE_DT_S, round(LONGEST_S / ESCAPE_DT_S), row, low, when)
         best = np.maximum(best, low)
     out = np.full((b, m), np.nan)
     out[todo] = best

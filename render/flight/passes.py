@@ -1,4 +1,4 @@
-"""The passes over time: the lead by his script, a wing pilot on his slot, an escape.
+"""The passes over time: the lead by his script, a wing pilot on his slot.
 
 One flight is one call of a scalar kernel; a batch is the same kernel in a parallel loop, so
 that a batch equals its single flights to the last bit. Steps of classical Runge-Kutta, 4th order,
@@ -43,7 +43,6 @@ from render.flight.records import (
     CONTACT,
     ENGINE,
     LOOP,
-    NDEM,
     NOT_FINITE,
     NY,
     OK,
@@ -77,7 +76,7 @@ from render.flight.script import (
     loop_angle,
     step_done,
 )
-from render.flight.station import escape_commands, learn_trim, wing_commands
+from render.flight.station import learn_trim, wing_commands
 
 
 @njit(cache=True)
@@ -268,48 +267,6 @@ def fly_wing(
     return status, steps
 
 
-@njit(cache=True)
-def fly_escape(
-    y0: Array, af: Any, case: Any, esc: Any, away: float, throttle: float, fault_on: bool, stab_at_fault: float,
-    heights: Array, grid: Array, dt_s: float, steps: int, path: Array,
-) -> tuple[float, float]:
-    """Fly one escape; returns its lowest height above the ground, m, and when, s from the decision.
-
-    It goes on through the ground, so that the clearance of an escape that fails is a negative number.
-    path (P, 4): north, east, down, load factor of the first P steps (P may be 0).
-    """
-    y = y0.copy()
-    n0, _, _, _ = load_factor_of(y, af, case)
-    y[NDEM] = n0
-    k = np.zeros((5, NY))
-    lowest, when = 1e9, 0.0
-    for i in range(steps + 1):
-        t = i * dt_s
-        agl = -y[D] - ground_height(heights, grid, y[N], y[E])
-        if i < path.shape[0]:
-            path[i, 0], path[i, 1], path[i, 2] = y[N], y[E], y[D]
-            path[i, 3], _, _, _ = load_factor_of(y, af, case)
-        if agl < lowest:
-            lowest, when = agl, t
-        _, _, az = path_x(y)
-        # over hills the lowest point may come after the path is level: fly on until it climbs steeper
-        # than the ground can (30 deg)
-        if t > esc.delay_s + 0.5 and az <= (-0.05 if heights.size == 1 else -0.5) and agl > lowest + 30.0:
-            break
-        if not math.isfinite(y[V]) or y[V] < 5.0 or y[V] > 600.0:
-            break
-        for s in range(4):
-            c = 0.0 if s == 0 else (1.0 if s == 3 else 0.5)
-            for m in range(NY):
-                k[4, m] = y[m] + c * dt_s * k[max(s - 1, 0), m] if s > 0 else y[m]
-            n, onset, roll, thr, _ = escape_commands(t + c * dt_s, k[4], y0, n0, throttle, away, af, case, esc)
-            derivative(k[4], af, case, n, onset, roll, thr, fault_on, stab_at_fault, True, 0.0, k[s])
-        for m in range(NY):
-            y[m] += dt_s / 6.0 * (k[0, m] + 2.0 * k[1, m] + 2.0 * k[2, m] + k[3, m])
-        renormalise(y)
-    return lowest, when
-
-
 @njit(cache=True, parallel=True)
 def fly_leads(
     y0: Array, af: Any, case: Any, script: Array, knots: Array, coeffs: Array, heights: Array, grid: Array,
@@ -333,19 +290,4 @@ def fly_wings(
         status[b, 0], status[b, 1] = fly_wing(
             y0[b], af[b], case[b], slot[b], lead_y[lead], lead_a[lead], heights, grid, dt_s, int(last[lead]),
             out_y[b], out_a[b]
-        )
-
-
-@njit(cache=True, parallel=True)
-def fly_escapes(
-    y0: Array, af: Any, case: Any, esc: Any, away: Array, throttle: Array, fault_on: Array, stab_at_fault: Array,
-    heights: Array, grid: Array, dt_s: float, steps: int, row: Array, lowest_m: Array, when_s: Array,
-) -> None:
-    """A batch of escapes; row (B,): which airframe, case and escape record each uses."""
-    for b in prange(y0.shape[0]):
-        r = int(row[b])
-        nothing = np.empty((0, 4))
-        lowest_m[b], when_s[b] = fly_escape(
-            y0[b], af[r], case[r], esc[r], away[b], throttle[b], fault_on[b] > 0.5, stab_at_fault[b], heights, grid,
-            dt_s, steps, nothing
         )

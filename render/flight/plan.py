@@ -194,6 +194,12 @@ def escape_record(break_out: BreakOut, *, roll_first: bool, delay_s: float | Non
     return esc
 
 
+def escape_pair(break_out: BreakOut, *, delay_s: float | None = None) -> Any:
+    """The two escapes a break-out may be, (1, 2) of ESCAPE_DT: pulling as he is, and rolling first."""
+    pair = [escape_record(break_out, roll_first=roll_first, delay_s=delay_s) for roll_first in (False, True)]
+    return np.concatenate(pair).reshape(1, 2)
+
+
 def compile_scene(scene: Scene, airframes: tuple[Airframe, ...]) -> Plan:
     """Compile a scene; airframes (K,): the lead's, then each slot's.
 

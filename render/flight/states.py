@@ -3,14 +3,23 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from render.flight import records as r
 from render.frames import Array, quat_multiply
 from render.types import Flight
 
 
+def _path_quat(flight: Flight, k: int, rows: NDArray[np.int_]) -> Array:
+    """Attitude of the air-path axes, (n, 4): the body's, turned back by the angle of attack."""
+    half = flight.alpha_rad[rows, k] / 2.0
+    back = np.zeros((len(rows), 4))
+    back[:, 0], back[:, 2] = np.cos(half), -np.sin(half)
+    return quat_multiply(flight.quat_eb[rows, k], back)
+
+
 def state_rows(flight: Flight, k: int, times_s: Array) -> Array:
-    """States (n, NY) of aircraft k at times within the flight, linear between instants.
+    """States (n, NY) of aircraft k at times within the flight, linear between instants as the passes keep them.
 
     The pilot's integral part and the work sums are not kept in a Flight and begin at zero.
     """
@@ -27,11 +36,9 @@ def state_rows(flight: Flight, k: int, times_s: Array) -> Array:
     y = np.zeros((len(t), r.NY))
     y[:, r.N : r.D + 1] = at(flight.pos_e_m)
     y[:, r.V], y[:, r.ALPHA] = at(flight.speed_mps), at(flight.alpha_rad)
-    quat_eb = at(flight.quat_eb)
-    quat_eb = quat_eb / np.linalg.norm(quat_eb, axis=-1, keepdims=True)
-    back = np.zeros_like(quat_eb)
-    back[:, 0], back[:, 2] = np.cos(y[:, r.ALPHA] / 2.0), -np.sin(y[:, r.ALPHA] / 2.0)
-    y[:, r.Q0 : r.Q3 + 1] = quat_multiply(quat_eb, back)
+    quat_ew = _path_quat(flight, k, i)
+    quat_ew = quat_ew + part[:, None] * (_path_quat(flight, k, i + 1) - quat_ew)
+    y[:, r.Q0 : r.Q3 + 1] = quat_ew / np.linalg.norm(quat_ew, axis=-1, keepdims=True)
     rate_b = at(flight.rate_b_radps)
     y[:, r.PITCH] = rate_b[:, 1]
     y[:, r.ROLL] = rate_b[:, 0] * np.cos(y[:, r.ALPHA]) + rate_b[:, 2] * np.sin(y[:, r.ALPHA])

@@ -8,7 +8,7 @@ from typing import Any
 from numba import njit
 
 from render.flight.air import G0_MPS2
-from render.flight.kinematics import limit_demand, path_axes, path_x
+from render.flight.kinematics import limit_demand, limit_demand_in, path_axes, path_x
 from render.flight.records import (
     A_N,
     A_PUSH,
@@ -194,12 +194,12 @@ def learn_trim(trim: Array, error: Array, lead: Array, lead_before: Array, dt_s:
 
 @njit(cache=True)
 def escape_commands(
-    t: float, y: Array, start: Array, n_start: float, throttle_start: float, away: float, af: Any, case: Any, esc: Any
+    t: float, y: Array, start: Array, n_start: float, throttle_start: float, away: float, af: Any, rho: float, esc: Any
 ) -> tuple[float, float, float, float, int]:
     """The escape: wait the delay, bring the lift toward the sky (or pull as he is), pull to the limit.
 
     t: time since the decision; start: the state then; away: +1 if the formation is on the left
-    (bank to the right), -1 if on the right, 0 if neither.
+    (bank to the right), -1 if on the right, 0 if neither; rho: density of the air there, kg/m3.
     """
     power = int(esc.power_kind)
     throttle = throttle_start
@@ -227,7 +227,7 @@ def escape_commands(
             if abs(error) > 1.0:
                 # he does not pull toward the ground: unload, roll, then pull
                 n = min(n, max(0.5, n * math.cos(error)))
-    n, limit = limit_demand(y, af, case, n, 0.97 * af.cl_max)
+    n, limit = limit_demand_in(y, af, rho, n, 0.97 * af.cl_max)
     return n, esc.onset_gps, roll, throttle, limit
 
 

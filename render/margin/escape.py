@@ -8,15 +8,15 @@ from __future__ import annotations
 
 import numpy as np
 
-from render.flight import passes
-from render.flight.plan import Plan, escape_record
+from render.flight.escapes import ESCAPE_DT_S, LONGEST_S, better_escapes
+from render.flight.plan import Plan, escape_pair
 from render.flight.states import state_rows
 from render.frames import Array
 from render.types import Flight, Margin
 
-EVERY_S = 0.1
-ESCAPE_DT_S = 0.02
-LONGEST_S = 25.0
+__all__ = ["ESCAPE_DT_S", "EVERY_S", "LONGEST_S", "escape_heights", "find_margin", "seconds_left"]
+
+EVERY_S = 0.1  # instants of a flight an escape is begun from
 
 
 def escape_heights(
@@ -28,26 +28,21 @@ def escape_heights(
     """
     y = state_rows(flight, k, times_s)
     n = len(times_s)
-    away = _away(plan, k)
+    away = away_of(plan, k)
     throttle = np.interp(times_s, flight.time_s, flight.throttle[:, k])
     on = np.zeros(n)
     stab = np.zeros(n)
     if k == 0 and flight.fault_s is not None:
         on = (times_s >= flight.fault_s).astype(float)
         stab[:] = np.interp(flight.fault_s, flight.time_s, flight.stabilator_rad[:, 0])
-    best = np.full(n, -np.inf)
-    for roll_first in (False, True):
-        esc = escape_record(plan.scene.break_out, roll_first=roll_first, delay_s=delay_s)
-        lowest, when = np.empty(n), np.empty(n)
-        passes.fly_escapes(
-            y, plan.af[k : k + 1], plan.case, esc, np.full(n, away), throttle, on, stab, heights, grid, ESCAPE_DT_S,
-            round(LONGEST_S / ESCAPE_DT_S), np.zeros(n), lowest, when
-        )
-        best = np.maximum(best, lowest)
+    best = np.empty(n)
+    pair = escape_pair(plan.scene.break_out, delay_s=delay_s)
+    better_escapes(y, plan.af[k : k + 1], plan.case, pair, np.full(n, away), throttle, on, stab, heights, grid,
+                   np.zeros(n), best)
     return best
 
 
-def _away(plan: Plan, k: int) -> float:
+def away_of(plan: Plan, k: int) -> float:
     """+1 if the formation is on his left, -1 if on his right, 0 for the lead and those behind him."""
     if k == 0:
         return 0.0
@@ -97,10 +92,11 @@ def find_margin(plan: Plan, flight: Flight, heights: Array, grid: Array) -> Marg
         low = escape_heights(plan, flight, k, coarse, heights, grid)
         inside = time_s <= stop
         ground_m[inside, k] = np.interp(time_s[inside], coarse, low)
-        ground_left[:, k], last_g = seconds_left(time_s, ground_m[:, k])
-        floor_left[:, k], last_f = seconds_left(time_s, ground_m[:, k] - floor)
-        last_floor.append(last_f)
-        last_ground.append(last_g)
+        ground_left[:, k], _ = seconds_left(time_s, ground_m[:, k])
+        floor_left[:, k], _ = seconds_left(time_s, ground_m[:, k] - floor)
+        # from the instants flown, as ``last_pull`` finds it without flying all of them
+        last_floor.append(seconds_left(coarse, low - floor)[1])
+        last_ground.append(seconds_left(coarse, low)[1])
     fault = plan.scene.fault
     # a frozen or trailing surface does not answer the stick at all
     dead = flight.fault_s is not None and fault is not None and (

@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 from scipy.optimize import brentq
 
-from render.flight import passes
+from render.flight import escapes
 from render.flight import records as r
 from render.flight.fly import fly_scene, ground_arrays
 from render.flight.kinematics import derivative, ground_height, limit_demand, load_factor_of
@@ -92,7 +92,7 @@ def test_a_frozen_lead_gains_nothing_by_pulling(hero: tuple[Flight, Flight, Plan
     lowest, when = np.empty(n), np.empty(n)
     throttle = np.interp(times, faulted.time_s, faulted.throttle[:, 0])
     esc = escape_record(plan.scene.break_out, roll_first=False)
-    passes.fly_escapes(y, plan.af[:1], plan.case, esc, np.zeros(n), throttle, np.ones(n), held, FLAT, GRID, 0.02, 1200,
+    escapes.fly_escapes(y, plan.af[:1], plan.case, esc, np.zeros(n), throttle, np.ones(n), held, FLAT, GRID, 0.02, 1200,
                        np.zeros(n), lowest, when)
     assert np.all(lowest < 0.0)
     # full power, which the break-out asks for, adds speed and with it a little lift: metres in hundreds
@@ -126,7 +126,7 @@ def escape_path(plan: Plan, faulted: Flight, time_s: float, *, roll_first: bool 
     path = np.full((1200, 4), np.nan)
     esc = escape_record(plan.scene.break_out, roll_first=roll_first)
     throttle = float(np.interp(time_s, faulted.time_s, faulted.throttle[:, 1]))
-    passes.fly_escape(y[0], plan.af[1], plan.case[0], esc[0], 1.0, throttle, False, 0.0, heights, grid, 0.02, 1200,
+    escapes.fly_escape(y[0], plan.af[1], plan.case[0], esc[0], 1.0, throttle, False, 0.0, heights, grid, 0.02, 1200,
                        path)
     return path[np.isfinite(path[:, 0])]
 
@@ -214,7 +214,7 @@ def pulls(hero: tuple[Flight, Flight, Plan], late_s: float) -> list[tuple[float,
         y0[r.ENGINE] = 1.0
         path = np.empty((0, 4))
         esc = escape_record(plan.scene.break_out, roll_first=False)
-        low, _ = passes.fly_escape(y0, plan.af[1], plan.case[0], esc[0], 0.0, 1.0, False, 0.0, FLAT, GRID, 0.02, 1200,
+        low, _ = escapes.fly_escape(y0, plan.af[1], plan.case[0], esc[0], 0.0, 1.0, False, 0.0, FLAT, GRID, 0.02, 1200,
                                    path)
         rows.append((float(-y0[r.D]), low, float(np.min(-perfect_pull(plan, y0, late_s)[:, r.D]))))
     return rows
@@ -246,7 +246,7 @@ def test_a_slope_well_beyond_the_bottom_counts(hero: tuple[Flight, Flight, Plan]
     y0 = state_rows(faulted, 1, np.array([when]))[0]
     states = perfect_pull(plan, y0, 0.0, longer_s=6.0)
     expected = min(-y[r.D] - ground_height(heights, grid, y[r.N], y[r.E]) for y in states)
-    low, _ = passes.fly_escape(
+    low, _ = escapes.fly_escape(
         y0, plan.af[1], plan.case[0], escape_record(plan.scene.break_out, roll_first=False)[0], 0.0, 1.0, False, 0.0,
         heights, grid, 0.02, 1200, np.empty((0, 4)),
     )
