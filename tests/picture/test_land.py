@@ -1,4 +1,4 @@
-"""The land as drawn: every shader there, hills where the margin has them, true sizes, light and haze as the day says."""
+"""The land as drawn: every shader is there, hills where the margin has them, true sizes, the day's light and haze."""
 
 from __future__ import annotations
 
@@ -173,7 +173,9 @@ def test_slopes_toward_the_sun_are_brighter() -> None:
     ground = read_ground("hills", 3)
     bright = {}
     for bearing in (90.0, 270.0):
-        land = Land(ground, replace(DAY, sun_from_rad=float(np.radians(bearing)), sun_height_rad=0.3), 3)
+        land = Land(
+            ground, replace(DAY, sun_from_rad=float(np.radians(bearing)), sun_height_rad=0.3, visibility_m=1e5), 3
+        )
         with Lens(land, near_m=20.0) as lens:
             lens.show(*land.ground_actors)
             bright[bearing] = lens.look((2500.0, 1500.0, -2500.0), 0.0, -89.999).astype(float).sum(axis=-1)
