@@ -38,7 +38,7 @@ def build_cockpit(airframe: Airframe) -> tuple[Part, ...]:
     solid += [_bow(lid, bow, design.frame) for bow in lid.frames]
     solid += [lid.deck(design.deck_x_m), *(lid.coaming(*hood) for hood in design.coamings)]
     solid += panel(lid, design.deck_x_m)
-    solid += trim(lid, -place.eye_design_m[1])
+    solid += trim(lid, design.deck_x_m, -place.eye_design_m[1])
     eye = place.point((place.eye_design_m[0], 0.0, -place.eye_design_m[1]))
     near = [body_of_pilot(eye, design.suit), stick_and_throttle(eye)]
     if design.rear_eye_m is not None:

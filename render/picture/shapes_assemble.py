@@ -32,6 +32,7 @@ class Pieces:
     wing: Panel
     aileron: tuple[float, float, float]  # inner and outer span station, part of the chord of its hinge
     helmets: tuple[tuple[Colour, Colour], ...]  # (shell, stripe) of the front pilot and, if there is one, the rear
+    smoke_m: tuple[float, float, float]  # where a smoke trail is let out
     propeller: tuple[float, float, float] | None = None  # x, z of its hub, radius
 
 
@@ -70,7 +71,7 @@ def assemble(name: str, design: CockpitDesign, pieces: Pieces) -> Shape:
         hub = place.point((x, 0.0, z))
         disc = propeller_disc(hub, radius * place.length)
         parts.append(Part("propeller", disc, hub, np.array([1.0, 0.0, 0.0]), "propeller", specular=0.0, lit=False))
-    return Shape(name, tuple(parts))
+    return Shape(name, tuple(parts), place.point(pieces.smoke_m))
 
 
 def _red(surf: Surf) -> Surf:

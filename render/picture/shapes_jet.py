@@ -221,5 +221,6 @@ def build_jet(airframe: Airframe) -> Shape:
         wing=WING,
         aileron=AILERON,
         helmets=((WHITE, GOLD), (TEAL, WHITE)),
+        smoke_m=(-5.15, 0.0, 0.05),
     )
     return assemble("jet", jet_cockpit(airframe), pieces)

@@ -24,7 +24,7 @@ def panel(lid: Canopy, deck_x_m: float) -> list[Surf]:
     half = 0.86 * float(lid.width(np.array(deck_x_m)))
     # Its upper edge follows the hood's curve, just under it.
     across = np.linspace(-1.0, 1.0, 9)
-    edge = np.stack([np.full(9, x), half * across, top + 0.012 - 0.05 * (1 - across**2)], -1)
+    edge = np.stack([np.full(9, x), half * across, top + 0.034 - 0.05 * (1 - across**2)], -1)
     corners = np.concatenate([edge, [[x, half, top + 0.52], [x, -half, top + 0.52], [x, 0.0, top + 0.25]]])
     turn = np.arange(11)
     pieces = [surface(corners, np.stack([np.full(11, 11), (turn + 1) % 11, turn], -1), PANEL)]
@@ -40,22 +40,22 @@ def panel(lid: Canopy, deck_x_m: float) -> list[Surf]:
     return pieces
 
 
-def trim(lid: Canopy, eye_z_m: float) -> list[Surf]:
+def trim(lid: Canopy, deck_x_m: float, eye_z_m: float) -> list[Surf]:
     """Along each wall: canopy seal, latches, screws, a pocket, a jettison handle, console switches."""
-    front, back = lid.frames[0][0] - 0.05, lid.crown[-1, 0] + 0.5
+    front, back = deck_x_m - 0.04, lid.crown[-1, 0] + 0.5
     pieces = []
     for side in (-1.0, 1.0):
         for x in np.arange(front, back, -0.085):
             pieces.append(_stud(lid, x, side, 0.052, 0.0065, (132, 134, 132)))
-        for x in np.arange(front - 0.28, back, -0.42):
-            pieces.append(_block(lid, x, side, (0.018, 0.007, 0.011), 0.026, (140, 142, 140)))
-        for k, x in enumerate(np.arange(front - 0.30, front - 0.95, -0.055)):
+        for x in np.arange(front - 0.13, back, -0.42):
+            pieces.append(_block(lid, x, side, (0.020, 0.006, 0.010), 0.036, (92, 94, 92)))
+        for k, x in enumerate(np.arange(front - 0.15, front - 0.80, -0.055)):
             y = side * 0.70 * float(lid.width(np.array(x)))
             shade: Colour = (170, 64, 48) if k == 3 else (206, 204, 196) if k % 4 == 0 else (46, 48, 50)
             pieces.append(box((x - 0.012, y - 0.012, eye_z_m + 0.495), (x + 0.012, y + 0.012, eye_z_m + 0.535), shade))
-        x = front - 0.62
+        x = front - 0.46
         pieces.append(_block(lid, x, side, (0.17, 0.012, 0.11), 0.17, (70, 74, 70)))
-    handle = front - 0.36
+    handle = front - 0.20
     for k in range(6):
         colour: Colour = (232, 190, 40) if k % 2 == 0 else (26, 26, 28)
         pieces.append(_block(lid, handle - 0.022 * k, -1.0, (0.011, 0.016, 0.013), 0.10, colour))

@@ -45,6 +45,7 @@ class Shape:
 
     name: str
     parts: tuple[Part, ...]
+    smoke_b_m: Array  # (3,) where a smoke trail is let out
 
     def part(self, name: str) -> Part:
         """The part of that name."""

@@ -117,7 +117,7 @@ def _wing() -> tuple[Surf, Surf]:
     ])  # fmt: skip
     aileron = WING.loft(np.linspace(inner, outer, 5).tolist(), IVORY, start=hinge, points=9)
     painted = [paint(_bars(_rays(s)), lambda p: 3.72 - p[:, 1], PEACH) for s in (skin, aileron)]
-    skin = hinge_mark(painted[0], WING, AILERON, DARK)
+    skin = hinge_mark(painted[0], WING, AILERON, (142, 134, 152))
     return merge([skin, tip_light((0.30, 3.955, 0.40))]), painted[1]
 
 
@@ -200,6 +200,7 @@ def build_piston(airframe: Airframe) -> Shape:
         wing=WING,
         aileron=AILERON,
         helmets=((IVORY, VIOLET),),
+        smoke_m=(0.7, 0.0, 0.54),
         propeller=(1.88, THRUST_Z_M, 0.95),
     )
     return assemble("piston", piston_cockpit(airframe), pieces)

@@ -183,6 +183,7 @@ def build_turboprop(airframe: Airframe) -> Shape:
         wing=WING,
         aileron=AILERON,
         helmets=((SAND, CORAL), (SLATE, SAND)),
+        smoke_m=(1.6, 0.0, 0.58),
         propeller=(3.96, THRUST_Z_M, 1.18),
     )
     return assemble("turboprop", turboprop_cockpit(airframe), pieces)

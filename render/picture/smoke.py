@@ -23,12 +23,12 @@ _DENSITY = np.array([0.0, 0.62, 1.0, 0.62, 0.0])
 class SmokeLook:
     """How a trail looks. All figures are invented, of the size seen at displays; they make no claim."""
 
-    start_m: float = 0.35  # half width where it leaves the aircraft
-    grow_m: float = 0.9  # half width gained in the first second; grows as the square root of age after that
-    last_s: float = 9.0  # age at which nothing is left
+    start_m: float = 0.45  # half width where it leaves the aircraft
+    grow_m: float = 0.7  # half width gained in the first second; grows as the square root of age after that
+    last_s: float = 16.0  # age at which nothing is left
     alpha: float = 0.85  # density in the middle at the start
     colour: tuple[int, int, int] = (236, 238, 240)
-    step_s: float = 0.1  # age between two rows of the ribbon
+    step_s: float = 0.15  # age between two rows of the ribbon
 
 
 class Smoke:
@@ -82,7 +82,7 @@ class Smoke:
         half = look.start_m + look.grow_m * np.sqrt(np.maximum(age, 0.0)) * np.minimum(age, 1.0) ** 0.5
         points = middle[:, None, :] + (half[:, None] * _ACROSS)[..., None] * side[:, None, :]
         # Thinner as it spreads: the same smoke over a wider ribbon, and it clears towards the end.
-        fade = look.start_m / half * 1.6 * (1.0 - age / look.last_s)
+        fade = np.sqrt(look.start_m / half) * (1.0 - age / look.last_s)
         if np.isfinite(begin_s):
             fade = np.where(born <= begin_s + 1e-9, 0.0, fade)
         alpha = 255.0 * look.alpha * np.clip(fade, 0.0, 1.0)[:, None] * _DENSITY

@@ -22,11 +22,11 @@ def laid(smoke: Smoke, now_s: float, **more: object) -> tuple[np.ndarray, np.nda
 
 
 def test_starts_at_the_nozzle_and_follows_the_track() -> None:
-    points, _ = laid(Smoke(np.array([-5.0, 0.0, 0.2])), 12.0)
+    points, _ = laid(Smoke(np.array([-5.0, 0.0, 0.2])), 18.0)
     # Display axes: east, north, up.
-    assert points[0, 2] == pytest.approx([0.0, SPEED * 12.0 - 5.0, 199.8], abs=1e-3)
+    assert points[0, 2] == pytest.approx([0.0, SPEED * 18.0 - 5.0, 199.8], abs=1e-3)
     assert points[:, 2, 0] == pytest.approx(0.0, abs=1e-3)
-    assert points[:, 2, 1].min() == pytest.approx(SPEED * (12.0 - SmokeLook().last_s) - 5.0, abs=1e-2)
+    assert points[:, 2, 1].min() == pytest.approx(SPEED * (18.0 - SmokeLook().last_s) - 5.0, abs=1e-2)
 
 
 def test_wind_carries_it() -> None:
@@ -46,7 +46,7 @@ def test_ribbon_is_square_to_the_line_of_sight() -> None:
 
 
 def test_widens_and_thins_with_age() -> None:
-    points, alpha = laid(Smoke(np.zeros(3)), 12.0)
+    points, alpha = laid(Smoke(np.zeros(3)), 18.0)
     width = np.linalg.norm(points[:, 4] - points[:, 0], axis=1)
     assert width[0] == pytest.approx(2 * SmokeLook().start_m, rel=1e-3)
     assert np.all(np.diff(width) > -1e-3)
@@ -60,7 +60,7 @@ def test_rows_stand_still_in_the_air() -> None:
     second, _ = laid(smoke, 12.03)
     # The whole-step rows of both frames are the same places.
     shared = set(np.round(first[2:-2, 2, 1], 2)) & set(np.round(second[2:-2, 2, 1], 2))
-    assert len(shared) > 80
+    assert len(shared) > 70
 
 
 def test_none_before_it_is_switched_on_and_only_since() -> None:
