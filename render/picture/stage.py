@@ -14,13 +14,13 @@ import numpy as np
 from numpy.typing import NDArray
 from vtkmodules.util.numpy_support import vtk_to_numpy
 from vtkmodules.vtkCommonCore import vtkUnsignedCharArray
-from vtkmodules.vtkRenderingCore import vtkLight, vtkRenderer
+from vtkmodules.vtkRenderingCore import vtkRenderer
 
 from render.frames import Array, quat_rotate
 from render.picture.axes import DISPLAY_FROM_EARTH, body_to_display, to_display
 from render.picture.camera import Camera
 from render.picture.canopy import build_cockpit
-from render.picture.craft import NEAR_M, Craft
+from render.picture.craft import NEAR_M, Craft, craft_light
 from render.picture.craft_shadows import Shadows
 from render.picture.edges import smooth_edges
 from render.picture.instant import Instant
@@ -65,11 +65,11 @@ class Stage:
         width, height = self._size = size_px
         self._land = Land(ground, day, seed)
         light = self._land.light
-        ambient = 0.5 * float(np.mean(light.sky))
+        on_craft = craft_light(light)
         shapes = {frame: build_shape(frame) for frame in airframes}
-        self._craft = [Craft(shapes[frame].parts, ambient=ambient) for frame in airframes]
-        self._cockpit = None if own is None else Craft(build_cockpit(airframes[own]), ambient=ambient)
-        self._ghost = Craft(shapes[airframes[0]].parts, ambient=1.0, opacity=GHOST_OPACITY) if ghost else None
+        self._craft = [Craft(shapes[frame].parts, on_craft) for frame in airframes]
+        self._cockpit = None if own is None else Craft(build_cockpit(airframes[own]), on_craft)
+        self._ghost = Craft(shapes[airframes[0]].parts, on_craft, opacity=GHOST_OPACITY, lit=False) if ghost else None
         self._shadows = Shadows([shapes[frame] for frame in airframes], light.sun_d, ground.height_at)
         self.renderer = _renderer(light)
         nearest_first = [self._cockpit, *self._craft, self._ghost]
@@ -138,21 +138,23 @@ class Stage:
             self.renderer.AddActor(actor)
 
     def _place(self, instant: Instant, camera: Camera, ghost: Instant | None) -> None:
+        eye_d = to_display(camera.pos_e_m)
         for k, craft in enumerate(self._craft):
             if k >= len(instant.alive):
                 craft.hide()
                 continue
             matrix = body_to_display(instant.pos_e_m[k], instant.quat_eb[k])
-            craft.place(matrix, moved_parts(instant, k), own=k == self._own)
+            craft.place(matrix, moved_parts(instant, k), eye_d, own=k == self._own)
             if k == self._own and self._cockpit is not None:
-                self._cockpit.place(matrix, moved_parts(instant, k), own=True)
+                self._cockpit.place(matrix, moved_parts(instant, k), eye_d, own=True)
         self._shadows.lay(instant, camera.pos_e_m)
         if self._ghost is not None:
             apart = 0.0 if ghost is None else float(np.linalg.norm(ghost.pos_e_m[0] - instant.pos_e_m[0]))
             if ghost is None or apart < GHOST_APART_M:
                 self._ghost.hide()
             else:
-                self._ghost.place(body_to_display(ghost.pos_e_m[0], ghost.quat_eb[0]), moved_parts(ghost, 0), own=False)
+                matrix = body_to_display(ghost.pos_e_m[0], ghost.quat_eb[0])
+                self._ghost.place(matrix, moved_parts(ghost, 0), eye_d, own=False)
 
     def _aim(self, camera: Camera) -> None:
         vtk_camera = self.renderer.GetActiveCamera()
@@ -179,26 +181,6 @@ def moved_parts(instant: Instant, k: int) -> Mapping[str, float]:
 def _renderer(light: Light) -> vtkRenderer:
     renderer = vtkRenderer()
     renderer.SetUseOIT(False)
-    renderer.AutomaticLightCreationOff()
-    renderer.SetLightFollowCamera(False)
+    renderer.AutomaticLightCreationOff()  # every actor brings its own light
     renderer.SetBackground(*light.rim)
-    # Sun, the brighter upper sky, light thrown up by the ground; what comes from all round is each part's ambient term.
-    # The shares add up to about 1 on a face turned to the sun, so that white paint is not burnt out; by eye, no source.
-    ground = np.array([0.22, 0.23, 0.17]) * float(np.mean(light.sun)) * (0.3 + 0.7 * light.sun_d[2])
-    renderer.AddLight(_light(light.sun_d, 0.80 * light.sun, shines=True))
-    renderer.AddLight(_light(np.array([0.0, 0.0, 1.0]), 0.40 * light.sky, shines=False))
-    renderer.AddLight(_light(np.array([0.0, 0.0, -1.0]), ground, shines=False))
     return renderer
-
-
-def _light(toward_d: Array, colour: Array, *, shines: bool) -> vtkLight:
-    """Parallel light from a direction; shines: whether it makes highlights."""
-    light = vtkLight()
-    light.SetLightTypeToSceneLight()
-    light.SetPositional(False)
-    light.SetPosition(*toward_d)
-    light.SetFocalPoint(0.0, 0.0, 0.0)
-    light.SetColor(*np.clip(colour, 0.0, 1.0))
-    if not shines:
-        light.SetSpecularColor(0.0, 0.0, 0.0)
-    return light

@@ -99,7 +99,7 @@ def chase_camera(flight: Flight, time_s: float, field_rad: float, size_px: tuple
     """From astern of the lead, above and to his right, standing as he stood 0.5 s ago, so that a pull shows."""
     now, before = instant_at(flight, time_s), instant_at(flight, max(time_s - 0.5, float(flight.time_s[0])))
     span = max(float(np.ptp(now.pos_e_m @ _lateral(before))), flight.airframes[0].wing_span_m)
-    back = 12.0 + 1.1 * span
+    back = 9.0 + 0.9 * span
     quat = before.quat_eb[0]
     pos = now.pos_e_m[0] + quat_rotate(quat, np.array([-back, 0.45 * back, -0.22 * back]))
     # never below the ground the formation is over
