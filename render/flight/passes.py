@@ -78,6 +78,8 @@ from render.flight.script import (
 )
 from render.flight.station import learn_trim, wing_commands
 
+NOTHING = np.empty((0, 0))
+
 
 @njit(cache=True)
 def _note(
@@ -157,13 +159,17 @@ def _lead_step(
 @njit(cache=True)
 def fly_lead(
     y0: Array, af: Any, case: Any, script: Array, knots: Array, coeffs: Array, heights: Array, grid: Array,
-    dt_s: float, out_y: Array, out_a: Array, mem: Array,
+    dt_s: float, out_y: Array, out_a: Array, mem: Array, begin: int = 0, end_step: int = -1, tail: int = -1,
+    kept: Array = NOTHING,
 ) -> tuple[int, int]:
     """Fly the lead through his script: fills out_y (T, NY), out_a (T, NA) and mem (NM,).
 
     Returns why it stopped (OK: the time axis ended) and the last step flown. After a stop the rows
     hold the last state. The step in which the fault comes on is split at its point. A memory that says
     M_INSIDE begins inside the script, as it stands; any other is begun anew.
+    begin: the step y0 and mem are of; the rows before it are left as they are. kept (T, NM) takes the memory
+    at each step, to begin another flight from. Flown no further than the first step after ``end_step`` on
+    which the path does not go down, or ``tail`` steps after the script's end (negative: to the end of the axis).
     """
     steps = out_y.shape[0] - 1
     k = np.zeros((5, NY))
@@ -176,8 +182,10 @@ def fly_lead(
         begin_step(0.0, y, case, mem, script, first)
         mem[M_LOOPS] = 1.0 if int(script[0, S_KIND]) == LOOP else 0.0
     status = OK
-    for i in range(steps + 1):
+    for i in range(begin, steps + 1):
         t = i * dt_s
+        if kept.shape[0] > i:
+            kept[i] = mem
         n, onset, roll, throttle, limit = lead_commands(t, y, af, case, mem, script, knots, coeffs)
         on = mem[M_FAULT_ON] > 0.5
         derivative(y, af, case, n, onset, roll, throttle, on, mem[M_STAB], True, 0.0, k[0])
@@ -185,7 +193,9 @@ def fly_lead(
         status = _note(y, out_a[i], k[0], af, case, n, roll, throttle, limit, heights, grid)
         out_a[i, A_STEP] = mem[M_STEP]
         out_a[i, A_LOOP] = mem[M_LOOP]
-        if status != OK or i == steps:
+        done = end_step >= 0 and i > end_step and i > begin and out_y[i, D] <= out_y[i - 1, D]
+        done = done or (tail >= 0 and mem[M_SCRIPT_END_S] >= 0.0 and t >= mem[M_SCRIPT_END_S] + tail * dt_s)
+        if status != OK or i == steps or done:
             for j in range(i + 1, steps + 1):
                 out_y[j] = y
                 out_a[j] = out_a[i]
@@ -224,24 +234,32 @@ def fly_lead(
 @njit(cache=True)
 def fly_wing(
     y0: Array, af: Any, case: Any, slot: Array, lead_y: Array, lead_a: Array, heights: Array, grid: Array, dt_s: float,
-    last: int, out_y: Array, out_a: Array,
+    last: int, out_y: Array, out_a: Array, begin: int = 0, learnt: Array = NOTHING, kept: Array = NOTHING,
 ) -> tuple[int, int]:
     """Fly a wing pilot on his slot behind a flown lead: fills out_y (T, NY), out_a (T, NA).
 
     last: the step the lead's history is real up to. Returns status and last step as ``fly_lead``.
+    begin: the step y0 is of; the rows before it are there already. kept (T, 6) takes what he has learnt at
+    each step, learnt (T, 6) is what another flight kept, to begin from.
     """
     steps = out_y.shape[0] - 1
     k = np.zeros((5, NY))
     trim, error, unused = np.zeros(3), np.zeros(3), np.zeros(3)
     y = y0.copy()
     status = OK
-    for i in range(steps + 1):
+    if begin > 0 and learnt.shape[0] >= begin:
+        trim[:] = learnt[begin - 1, :3]
+        error[:] = learnt[begin - 1, 3:]
+    for i in range(begin, steps + 1):
         out_y[i] = y
         if i > 0:
             learn_trim(trim, error, lead_y[i], lead_y[i - 1], dt_s)
         n, onset, roll, throttle, limit = wing_commands(
             i, 0.0, y, af, case, slot, lead_y, lead_a, out_y, out_a, trim, error, dt_s
         )
+        if kept.shape[0] > i:
+            kept[i, :3] = trim
+            kept[i, 3:] = error
         derivative(y, af, case, n, onset, roll, throttle, False, 0.0, True, 0.0, k[0])
         status = _note(y, out_a[i], k[0], af, case, n, roll, throttle, limit, heights, grid)
         out_a[i, A_STEP] = lead_a[i, A_STEP]
