@@ -26,7 +26,7 @@ WORKS = {
     "1.46": "unattended events in simulated flight are missed (NASA; Haines 1991)",
     "1.47": "Wickens & Alexander 2009, Int J Aviat Psych 19:182-199: attentional tunnelling",
     "1.48": "Svard, Bargman & Victor 2021, Accid Anal Prev 150:105853: evidence falls off the gaze",
-    "1.49": "peripheral vision in brake reactions during crashes, HFES 2021: a linear fall of evidence with eccentricity",
+    "1.49": "peripheral vision in brake reactions in crashes, HFES 2021: evidence falls linearly off the gaze",
     "1.50": "Maddox & Kiefer 2012, HFES 56:700-704: looming in the laboratory against crashes",
     "1.51": "position of a reference (Westheimer and others); scatter of a held slot, no single work",
     "2.3": "Benson, Hutt & Brown 1989, Aviat Space Environ Med 60:205-213: thresholds of felt rotation",
