@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from terrain.pattern import Array, Plan, from_grain, grain, hash2, permute, place_at
+from terrain.pattern import Array, Plan, from_grain, grain, permute, place_at, row_key
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -30,15 +30,15 @@ def field_edges(plan: Plan, within_m: float, piece_m: float = 45.0) -> Lines:
     u0, v0 = (float(x) for x in grain(plan, np.zeros(()), np.zeros(())))
     pieces: list[Array] = []
     for row in range(int(np.floor((v0 - reach) / side)), int(np.ceil((v0 + reach) / side)) + 1):
-        shift = float(permute(np.array(row + plan.salt))) / 289.0
+        shift = float(row_key(np.array(row), plan.salt))
         first, last = int(np.floor((u0 - reach) / side)), int(np.ceil((u0 + reach) / side)) + 1
         for column in range(first, last):
-            block = float(hash2(np.array(float(column)), np.array(float(row)), plan.salt))
+            block = float(permute(np.array(column + shift)))
             if block < plan.enclosed * 289.0:
                 lines = _block_lines(block, side)
                 if block % 2 > 0.5:
                     lines = lines[:, [1, 0, 3, 2]]
-                corner = np.array([(column - shift) * side, row * side])
+                corner = np.array([(column - shift / 289.0) * side, row * side])
                 pieces.append(_split(lines + np.tile(corner, 2), piece_m))
     if not pieces:
         empty = np.zeros(0)

@@ -72,7 +72,7 @@ _PIECES = {
     "mown": ("airfield",),
     "runway": ("airfield",),
     "shore": ("plan", "ground", "water"),
-    "sea": ("water",),
+    "sea": ("plan", "water"),
 }
 
 

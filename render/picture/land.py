@@ -67,8 +67,8 @@ def set_light(actor: vtk.vtkActor, light: Light) -> None:
     }
     for name, value in values.items():
         uniforms.SetUniform3f(name, tuple(value))
-    uniforms.SetUniformf("extinction", light.extinction_per_m / np.log(2.0))
+    uniforms.SetUniformf("extinction", light.extinction_per_m)
     uniforms = actor.GetShaderProperty().GetVertexCustomUniforms()
-    uniforms.SetUniformf("extinction", light.extinction_per_m / np.log(2.0))
+    uniforms.SetUniformf("extinction", light.extinction_per_m)
     for name, value in {**values, "rimColour": light.rim, "rimGlow": light.glow}.items():
         uniforms.SetUniform3f(name, tuple(value))

@@ -3,12 +3,14 @@ float permute(float x) { float y = (34.0 * x + 10.0) * x; return y - floor((y + 
 float valueNoise(vec2 p, float salt) {
   vec2 i = floor(p), f = p - i;
   f = f * f * (3.0 - 2.0 * f);
-  float a = permute(i.x + salt), b = permute(i.x + 1.0 + salt);
-  return mix(mix(permute(a + i.y), permute(b + i.y), f.x), mix(permute(a + i.y + 1.0), permute(b + i.y + 1.0), f.x), f.y) * (1.0 / 289.0);
+  float c = 17.0 * i.x + 29.0 * i.y + salt;
+  c -= floor((c + 0.5) * (1.0 / 289.0)) * 289.0;
+  return mix(mix(permute(c), permute(c + 17.0), f.x), mix(permute(c + 29.0), permute(c + 46.0), f.x), f.y) * (1.0 / 289.0);
 }
+float wave(float x) { float t = abs(fract(x) - 0.5); return t * t * (24.0 - 32.0 * t) - 1.0; }
 vec2 grain(vec2 p) {
   vec2 q = vec2(GRAIN_C * p.x + GRAIN_S * p.y, -GRAIN_S * p.x + GRAIN_C * p.y);
-  return q + BEND * sin(q.yx * vec2(0.0061, 0.0053) + vec2(1.0, 2.0));
+  return q + BEND * vec2(wave(q.y * 0.00097 + 0.2), wave(q.x * 0.00084 + 0.7));
 }
 void cutInTwo(float x, inout float low, inout float high, inout float key) {
   float cut = low + (0.36 + 0.28 / 289.0 * key) * (high - low);
@@ -21,10 +23,10 @@ void cutInTwo(float x, inout float low, inout float high, inout float key) {
 void fieldAt(vec2 q, out float key, out float edge, out bool enclosed, out vec2 within) {
   vec2 g = q * (1.0 / BLOCK);
   float row = floor(g.y);
-  float shift = permute(row + SALT) * (1.0 / 289.0);
-  float column = floor(g.x + shift);
-  vec2 at = (g - vec2(column - shift, row)) * BLOCK;
-  key = permute(permute(column + SALT) + row);
+  float shift = permute(row + SALT);
+  float column = floor(g.x + shift * (1.0 / 289.0));
+  vec2 at = (g - vec2(column - shift * (1.0 / 289.0), row)) * BLOCK;
+  key = permute(column + shift);
   enclosed = key < ENCLOSED * 289.0;
   at = fract(key * 0.5) > 0.25 ? at.yx : at;
   float l = 0.0, r = BLOCK, b = 0.0, t = BLOCK;
@@ -40,7 +42,7 @@ float roadAt(vec2 q) {          // distance to the middle of the nearest road
   float near = floor(q.y * (1.0 / BLOCK) + 0.5);
   float road = permute(near + SALT + 31.0) < ROAD_ROWS * 289.0 ? abs(q.y - near * BLOCK) : 1e9;
 #if ROADS_ACROSS
-  float turn = (q.x + 70.0 * sin(q.y * 0.0043)) * (1.0 / ROAD_EVERY) + 0.5;
+  float turn = (q.x + 70.0 * wave(q.y * 0.00068)) * (1.0 / ROAD_EVERY) + 0.5;
   road = min(road, abs(fract(turn) - 0.5) * ROAD_EVERY);
 #endif
   return road;

@@ -2,4 +2,4 @@
 in vec2 corner;
 out vec2 disc;
 out float left;                 // haze left
-void setShadow(vec3 place) { disc = corner; setRim(place); left = exp2(-extinction * length(place - eye)) * fade; }
+void setShadow(vec3 place) { disc = corner; setRim(place); left = exp(-extinction * length(place - eye)) * fade; }

@@ -15,6 +15,6 @@ vec4 setTree(vec3 foot) {
   disc = MARGIN * corner;
   sunSeen = vec3(dot(sunDir, right), dot(sunDir, up), -dot(sunDir, look));
   setRim(middle);
-  leaf = vec4(tint, crown.w * (1.0 - look.z * look.z), exp2(-extinction * d) * fade);
+  leaf = vec4(tint, crown.w * (1.0 - look.z * look.z), exp(-extinction * d) * fade);
   return vec4(middle + MARGIN * (corner.x * crown.y * right + corner.y * tall * up), 1.0);
 }

@@ -1,7 +1,7 @@
 // Sea and shore. seaward: the same arithmetic as terrain/pattern.py.
 float seaward(vec2 p) {         // metres out to sea, negative on land
   float t = p.x * SHORE_C - p.y * SHORE_S;
-  return p.y * SHORE_C + p.x * SHORE_S - SHORE_OUT - 130.0 * sin(t * 0.00131 + 0.7) - 55.0 * sin(t * 0.0047 + 2.1) - 14.0 * sin(t * 0.0171);
+  return p.y * SHORE_C + p.x * SHORE_S - SHORE_OUT - 130.0 * wave(t * 0.00021 + 0.1) - 55.0 * wave(t * 0.00075 + 0.6) - 14.0 * wave(t * 0.0027);
 }
 // out: seaward distance. Ripples of 1.5, 6 and 40 m tilt the surface, reflect sky and sun; each fades with its pixel.
 vec3 seaColour(vec2 p, vec3 ray, float out_m, float px) {
