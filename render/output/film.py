@@ -5,6 +5,7 @@ Both cores of a small machine are then full; what limits a film is the work per 
 
 from __future__ import annotations
 
+import itertools
 import json
 import os
 import queue
@@ -15,18 +16,19 @@ import sys
 import threading
 import time
 from collections.abc import Callable
-from dataclasses import asdict
+from dataclasses import asdict, replace
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 
 from render.errors import LatepullError, MachineError
-from render.files import claim_output, move_whole, scratch_folder
+from render.files import claim_output, move_whole
 from render.output.card import card_texts
 from render.output.encode import encoder_path, join_segments
 from render.output.events import slot_title
-from render.output.film_worker import Job
+from render.output.film_worker import Job, segment_paths
+from render.output.parts import film_folder, film_key
 from render.output.shot import Shot, plan_shot
 from render.output.source import SourceSpec
 from render.output.words import CAUTION
@@ -36,6 +38,7 @@ from render.types import Study
 Reports = queue.Queue[tuple[int, dict[str, Any] | None]]
 Progress = Callable[[int, int], None]
 END_WAIT_S = 3.0
+PIECE = 120  # frames of a piece that is kept when the work is cut off
 REPEATED_COST = 0.15  # a held frame or a card against a drawn one, to share the work evenly
 
 
@@ -53,12 +56,15 @@ def write_film(
     note: str = "",
     preset: str = "superfast",
     progress: Progress | None = None,
+    keep: bool = False,
+    resume: bool = False,
 ) -> Path:
     """Film a slot into ``path`` (mp4: H.264, yuv420p, fast start); returns the path.
 
     shot: default ``plan_shot(study, slot)``. overlay False: the plain version. plain_path: also write the plain
     version, from the same drawing. note: a line that stays in the caption. progress(done, total) is called in
-    this thread. Each film appears whole or not at all, also on Ctrl-C; no process is left.
+    this thread. Each film appears whole or not at all, also on Ctrl-C; no process is left. keep: pieces finished
+    when the work is cut off stay, hidden beside the film (``parts.kept_frames``); resume: go on with them.
     Raises OutputExists, MachineError (encoder, drawing, disk), LatepullError.
     """
     shot = plan_shot(study, slot) if shot is None else shot
@@ -69,13 +75,15 @@ def write_film(
     for one in targets.values():
         claim_output(one, force=force)
     encoder_path()
-    with scratch_folder(target) as folder:
+    jobs = _jobs(shot, targets, source or SourceSpec(), workers, note, preset, PIECE if keep else len(shot))
+    with film_folder(target, film_key(study, jobs), keep=keep, resume=resume) as folder:
         try:
             save_study(study, folder / "study")
-            jobs = _jobs(shot, folder, targets, source or SourceSpec(), workers, note, preset)
+            jobs = [_placed(job, folder, i) for i, job in enumerate(jobs)]
             _run(jobs, folder, progress)
             for kind in targets:
-                segments = [Path(p) for job in jobs if (p := getattr(job, f"{kind}_path"))]
+                segments = [p for job in jobs for i in range(len(job.pieces)) for p in segment_paths(job, i)
+                            if p.name.startswith(kind)]
                 metadata = film_metadata(study, slot, plain=kind == "plain", note=note)
                 join_segments(segments, folder / f"{kind}.mp4", metadata)
         except MachineError as exc:
@@ -94,10 +102,18 @@ def film_metadata(study: Study, slot: str, *, plain: bool, note: str = "") -> di
     return {"title": title, "comment": f"{CAUTION} {texts.source} {texts.viewing}{picture}"}
 
 
+def _placed(job: Job, folder: Path, index: int) -> Job:
+    """A job with its files in the film's folder."""
+    def at(kind: str | None) -> str | None:
+        return None if kind is None else str(folder / f"{kind}{index}.mp4")
+
+    return replace(job, study=str(folder / "study"), overlay_path=at(job.overlay_path), plain_path=at(job.plain_path))
+
+
 def _jobs(
-    shot: Shot, folder: Path, targets: dict[str, Path], source: SourceSpec, workers: int, note: str, preset: str
+    shot: Shot, targets: dict[str, Path], source: SourceSpec, workers: int, note: str, preset: str, piece: int
 ) -> list[Job]:
-    """The shot cut into contiguous runs of about equal work."""
+    """The shot cut into contiguous runs of about equal work, each in pieces of about ``piece`` frames."""
     repeated = shot.card | np.concatenate(([False], np.diff(shot.time_s) == 0.0))
     work = np.cumsum(np.where(repeated, REPEATED_COST, 1.0))
     count = max(1, min(workers, int(work[-1] // 8)))  # a worker takes a second to start: not for a handful of frames
@@ -105,13 +121,15 @@ def _jobs(
     # a run begins on a drawn frame: a hold must not be drawn twice, and a plain run must not be empty
     ends = [_next_drawn(repeated, end) for end in ends[:-1]] + [len(shot)]
     jobs = []
-    for i, (first, last) in enumerate(zip([0, *ends[:-1]], ends, strict=True)):
+    for first, last in zip([0, *ends[:-1]], ends, strict=True):
         if first >= last:
             continue
-        paths = {f"{kind}_path": str(folder / f"{kind}{i}.mp4") for kind in targets}
+        cuts = [first]
+        while cuts[-1] < last:
+            cuts.append(min(_next_drawn(repeated, cuts[-1] + piece), last))
         jobs.append(
             Job(
-                study=str(folder / "study"),
+                study="",
                 slot=shot.slot,
                 size_px=shot.size_px,
                 rate_fps=shot.rate_fps,
@@ -122,10 +140,11 @@ def _jobs(
                 card=shot.card[first:last].tolist(),
                 factory=source.factory,
                 options=dict(source.options),
-                overlay_path=paths.get("overlay_path"),
-                plain_path=paths.get("plain_path"),
+                overlay_path="overlay" if "overlay" in targets else None,
+                plain_path="plain" if "plain" in targets else None,
                 note=note,
                 preset=preset,
+                pieces=[b - a for a, b in itertools.pairwise(cuts)],
             )
         )
     return jobs

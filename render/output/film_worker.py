@@ -8,12 +8,14 @@ is gone the report fails and the worker ends with it.
 from __future__ import annotations
 
 import json
+import os
 import signal
 import sys
 import time
-from collections.abc import Iterator
-from contextlib import ExitStack
+from collections.abc import Generator, Iterator
+from contextlib import ExitStack, closing
 from dataclasses import dataclass
+from itertools import islice
 from pathlib import Path
 from typing import Any
 
@@ -49,10 +51,19 @@ class Job:
     plain_path: str | None
     note: str
     preset: str
+    pieces: list[int]  # frames of each piece; a finished piece need not be drawn again
 
 
-def frames(job: Job, study: Study) -> Iterator[tuple[Frame | None, Frame | None]]:
-    """Each frame with its overlay and plain, None where that version isn't wanted or (plain) stands still in a hold."""
+def segment_paths(job: Job, piece: int) -> list[Path]:
+    """The files of one piece: with overlay, plain, as wanted."""
+    return [Path(p).with_name(f"{Path(p).stem}_{piece:03d}.mp4") for p in (job.overlay_path, job.plain_path) if p]
+
+
+def frames(job: Job, study: Study, first: int = 0) -> Generator[tuple[Frame | None, Frame | None], None, None]:
+    """Each frame with its overlay and plain, None where that version isn't wanted or (plain) stands still in a hold.
+
+    first: the frame to begin with.
+    """
     with ExitStack() as stack:
         source = None
         overlay = None
@@ -62,7 +73,8 @@ def frames(job: Job, study: Study) -> Iterator[tuple[Frame | None, Frame | None]
         picture: Frame | None = None
         canvas = np.empty((job.size_px[1], job.size_px[0], 3), np.uint8)
         shown = float("nan")
-        for time_s, caption, card in zip(job.time_s, job.caption, job.card, strict=True):
+        rows = list(zip(job.time_s, job.caption, job.card, strict=True))
+        for time_s, caption, card in rows[first:]:
             if card:
                 yield (cards[False] if job.overlay_path else None), (cards[True] if job.plain_path else None)
                 continue
@@ -81,19 +93,30 @@ def frames(job: Job, study: Study) -> Iterator[tuple[Frame | None, Frame | None]
 
 
 def work(job: Job) -> Iterator[int]:
-    """Draw and encode a job; yields how many frames are done. Raises LatepullError."""
+    """Draw and encode a job, piece by piece; yields how many frames are done. Raises LatepullError."""
     study = load_study(job.study)
-    with ExitStack() as stack:
-        paths = (job.overlay_path, job.plain_path)
-        writers = [
-            stack.enter_context(SegmentWriter(Path(p), job.size_px, job.rate_fps, job.preset)) if p else None
-            for p in paths
-        ]
-        for done, versions in enumerate(frames(job, study), start=1):
-            for writer, frame in zip(writers, versions, strict=True):
-                if writer is not None and frame is not None:
-                    writer.write(frame)
-            yield done
+    done = first = 0
+    while first < len(job.pieces) and all(path.exists() for path in segment_paths(job, first)):
+        done += job.pieces[first]
+        first += 1
+    yield done
+    drawn = frames(job, study, done)
+    with closing(drawn):
+        for piece in range(first, len(job.pieces)):
+            paths = segment_paths(job, piece)
+            parts = [path.with_suffix(".part") for path in paths]
+            with ExitStack() as stack:
+                made = iter([SegmentWriter(p, job.size_px, job.rate_fps, job.preset) for p in parts])
+                writers = [stack.enter_context(next(made)) if wanted else None
+                           for wanted in (job.overlay_path, job.plain_path)]
+                for versions in islice(drawn, job.pieces[piece]):
+                    for writer, frame in zip(writers, versions, strict=True):
+                        if writer is not None and frame is not None:
+                            writer.write(frame)
+                    done += 1
+                    yield done
+            for part, path in zip(parts, paths, strict=True):
+                os.replace(part, path)
 
 
 def main(path: str) -> int:

@@ -42,7 +42,9 @@ def grey_of(since_s: float) -> int:
 @contextmanager
 def open_grey(
     study: Study, slot: str, size_px: tuple[int, int], *, start_s: float = 0.0, fail: str = "", fail_s: float = 0.0,
-    slow_s: float = 0.0,
+    slow_s: float = 0.0, fail_while: str = "",
 ) -> Iterator[Grey]:
-    """Open the grey source."""
+    """Open the grey source; it misbehaves only while the file ``fail_while`` is there, if one is named."""
+    if fail_while and not os.path.exists(fail_while):
+        fail = ""
     yield Grey(size_px, start_s, fail, fail_s, slow_s)
