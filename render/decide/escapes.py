@@ -9,17 +9,12 @@ from numpy.typing import NDArray
 
 from render.decide.seats import states_at
 from render.flight import records as r
-from render.flight.escapes import fly_escapes
-from render.flight.plan import DT_S, Plan, escape_record
+from render.flight.escapes import better_escapes
+from render.flight.plan import DT_S, Plan, escape_pair
 from render.frames import Array
-from render.margin.escape import ESCAPE_DT_S, LONGEST_S
+from render.margin.escape import away_of
 
 FIRST_PARTS, NEXT_PARTS, ROUNDS = 6, 4, 3
-
-
-def away_of(right_m: float) -> float:
-    """+1 if the formation is on his left, -1 if on his right, 0 for those behind the lead."""
-    return float(np.sign(right_m)) if abs(right_m) > 1.0 else 0.0
 
 
 def lowest_of_escapes(
@@ -35,16 +30,12 @@ def lowest_of_escapes(
     states, throttles = states_at(y, a, np.where(todo, steps, 0.0))
     row = np.repeat(np.arange(b), m).reshape(b, m)[todo].astype(float)
     n = row.size
-    best = np.full(n, -np.inf)
-    af = np.concatenate([p.af[k : k + 1] for p in plans])
-    case = np.concatenate([p.case for p in plans])
-    away = np.array([away_of(p.slots[k - 1, 1]) if k else 0.0 for p in plans])[row.astype(int)]
-    for roll_first in (False, True):
-        esc = np.concatenate([escape_record(p.scene.break_out, roll_first=roll_first, delay_s=delay_s) for p in plans])
-        low, when = np.empty(n), np.empty(n)
-        fly_escapes(states[todo], af, case, esc, away, throttles[todo], np.zeros(n), np.zeros(n), heights, grid,
-                    ESCAPE_DT_S, round(LONGEST_S / ESCAPE_DT_S), row, low, when)
-        best = np.maximum(best, low)
+    best = np.empty(n)
+    esc = np.concatenate([escape_pair(p.scene.break_out, delay_s=delay_s) for p in plans])
+    away = np.array([away_of(p, k) for p in plans])[row.astype(int)]
+    better_escapes(states[todo], np.concatenate([p.af[k : k + 1] for p in plans]),
+                   np.concatenate([p.case for p in plans]), esc, away, throttles[todo], np.zeros(n), np.zeros(n),
+                   heights, grid, row, best)
     out = np.full((b, m), np.nan)
     out[todo] = best
     return out

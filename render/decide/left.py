@@ -13,7 +13,7 @@ from render.decide.seats import seats
 from render.flight import records as r
 from render.flight import script as s
 from render.flight.batch import Raw, fly_batch
-from render.flight.fly import ground_arrays
+from render.flight.fly import AFTER_SCRIPT_S, ground_arrays
 from render.flight.plan import DT_S, Plan
 from render.frames import Array
 from render.sight import cues as c
@@ -180,16 +180,18 @@ def _chunk(
 def _over(healthy: Raw, raw: Raw, twin: NDArray[np.int_]) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
     """The step with which each flight is over, (F,), and whether it came to that (the rule of ``fly``).
 
-    The end of the twin's script, later if the lead still goes down then: what follows is no part of the scene.
+    The end of the twin's script, later if the lead still goes down then, for a while: what follows is no part of
+    the scene.
     """
     last = raw.y.shape[1] - 1
     end_s = healthy.mem[twin, s.M_SCRIPT_END_S]
     end = np.where(end_s >= 0.0, np.minimum(np.round(end_s / DT_S), last), last).astype(np.int64)
+    longest = round(AFTER_SCRIPT_S / DT_S)
     over, ended = np.full(len(end), last), np.zeros(len(end), dtype=bool)
     for i, first in enumerate(end):
-        level = np.flatnonzero(np.diff(raw.y[i, first:, 0, r.D]) <= 0.0)
-        if level.size:
-            over[i], ended[i] = first + level[0], True
+        level = np.flatnonzero(np.diff(raw.y[i, first : first + longest + 1, 0, r.D]) <= 0.0)
+        if level.size or first + longest <= last:
+            over[i], ended[i] = first + (level[0] if level.size else longest), True
     return over, ended
 
 
