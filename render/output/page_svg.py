@@ -36,7 +36,7 @@ class Svg:
     data: dict[str, str] = field(default_factory=dict)
     _parts: list[str] = field(default_factory=list)
 
-    def add(self, tag: str, text: str | None = None, **attributes: object) -> None:
+    def add(self, tag: str, text: str | None = None, /, **attributes: object) -> None:
         """One element; ``cls`` is its class, ``_`` in a name a hyphen."""
         inner = "" if text is None else escape(text)
         self._parts.append(f"<{tag}{_attributes(attributes)}>{inner}</{tag}>")
