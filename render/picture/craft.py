@@ -11,13 +11,10 @@ from vtkmodules.vtkCommonMath import vtkMatrix4x4
 from vtkmodules.vtkRenderingCore import vtkActor, vtkPolyDataMapper
 
 from render.frames import Array
-from render.picture.camera import Camera
-from render.picture.edges import Rect
 from render.picture.light import Light
 from render.picture.shading import glsl
 from render.picture.shapes import Part, part_matrix
 
-NEAR_M = 0.15  # nearest drawn
 OPEN_SHEETS = ("cabin",)  # parts with surfaces that are seen from both sides
 
 
@@ -56,7 +53,6 @@ class Craft:
         for actor, is_clear in zip(self._actors, self._clear, strict=True):
             actor.SetForceTranslucent(is_clear)
             actor.SetForceOpaque(not is_clear)
-        self._corners = tuple(outermost(np.asarray(part.mesh.points, float)) for part in self._parts)
         self._matrices = [np.eye(4) for _ in self._parts]
 
     def actors(self, *, clear: bool) -> list[vtkActor]:
@@ -99,23 +95,6 @@ class Craft:
         ]
         return np.concatenate(found)
 
-    def rects(self, camera: Camera, display_to_earth: Array, margin_px: int = 3) -> list[Rect]:
-        """Rectangles of the picture that hold the visible parts, right for parts that reach behind the camera."""
-        found = []
-        for corners, actor, matrix in zip(self._corners, self._actors, self._matrices, strict=True):
-            if not actor.GetVisibility():
-                continue
-            points_d = corners @ matrix[:3, :3].T + matrix[:3, 3]
-            points_c = in_front(camera.to_camera(points_d @ display_to_earth.T), NEAR_M)
-            if len(points_c) == 0:
-                continue
-            px = camera.project_c(points_c)
-            low = np.clip(px.min(axis=0) - margin_px, -1e6, 1e6).astype(int)
-            high = np.clip(px.max(axis=0) + margin_px + 1, -1e6, 1e6).astype(int)
-            if high[0] > 0 and high[1] > 0 and low[0] < camera.width_px and low[1] < camera.height_px:
-                found.append((int(low[0]), int(low[1]), int(high[0]), int(high[1])))
-        return found
-
 
 def part_actor(part: Part, light: CraftLight | None, opacity: float = 1.0) -> vtkActor:
     """A part as an actor with vertex colours and a user matrix of its own; light None: its colours as they are."""
@@ -150,21 +129,3 @@ def blended(part: Part) -> bool:
     """Whether a part is see-through: its opacity, or an alpha among its colours."""
     colour = np.asarray(part.mesh.point_data["colour"])
     return part.opacity < 1.0 or (colour.shape[1] == 4 and bool(np.any(colour[:, 3] < 255)))
-
-
-def outermost(points: Array) -> Array:
-    """The points (N, 3) farthest out in 26 directions, (<= 26, 3): their hull all but holds the mesh."""
-    axis = np.array([-1.0, 0.0, 1.0])
-    ways = np.array(np.meshgrid(axis, axis, axis)).reshape(3, -1).T
-    ways = ways[np.any(ways != 0.0, axis=1)]
-    return np.asarray(points[np.unique(np.argmax(points @ ways.T, axis=0))])
-
-
-def in_front(points_c: Array, near_m: float) -> Array:
-    """The part of a point set's hull in front of the near plane: points kept, joining lines cut at the plane."""
-    ahead = points_c[:, 2] >= near_m
-    if np.all(ahead) or not np.any(ahead):
-        return points_c[ahead]
-    one, two = points_c[ahead][:, None], points_c[~ahead][None, :]
-    part = (one[..., 2:] - near_m) / (one[..., 2:] - two[..., 2:])
-    return np.concatenate([points_c[ahead], (one + part * (two - one)).reshape(-1, 3)])

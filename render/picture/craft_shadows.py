@@ -9,6 +9,7 @@ from vtkmodules.vtkRenderingCore import vtkActor, vtkPolyDataMapper
 
 from render.frames import Array
 from render.picture.axes import DISPLAY_FROM_EARTH
+from render.picture.camera import Camera
 from render.picture.instant import Instant
 from render.picture.shadow import Shadow, cast_samples
 from render.picture.shapes_parts import Shape
@@ -16,6 +17,7 @@ from render.sight.geometry import HeightAt
 
 #: Along the sun's ray, m; beyond it the half-shadow (9.3 m wide there) has eaten the shadow of a small aircraft.
 REACH_M = 1_000.0
+WIDE_M = 60.0  # no shadow reaches farther from where the middle of its aircraft casts it
 
 
 class Shadows:
@@ -29,19 +31,23 @@ class Shadows:
         self._shadows = [Shadow(samples[id(shape)]) for shape in shapes]
         self.actors = [_actor(shadow) for shadow in self._shadows]
 
-    def lay(self, instant: Instant, eye_e_m: Array) -> None:
-        """Lay the shadows of an instant, for an eye at (3,) m."""
+    def lay(self, instant: Instant, camera: Camera) -> None:
+        """Lay the shadows of an instant that a camera may have in its picture."""
         for k, (shadow, actor) in enumerate(zip(self._shadows, self.actors, strict=True)):
-            actor.SetVisibility(k < len(instant.alive) and self._laid(shadow, instant, k, eye_e_m))
+            actor.SetVisibility(k < len(instant.alive) and self._laid(shadow, instant, k, camera))
 
-    def _laid(self, shadow: Shadow, instant: Instant, k: int, eye_e_m: Array) -> bool:
+    def _laid(self, shadow: Shadow, instant: Instant, k: int, camera: Camera) -> bool:
         pos = instant.pos_e_m[k]
         rise = -float(self._sun_e[2])
         height = -float(pos[2]) - float(self._height_at(pos[0], pos[1]))
         if rise < 0.05 or height / rise > REACH_M:
             return False
+        middle_c = camera.to_camera(pos - height / rise * self._sun_e)
+        away = float(np.linalg.norm(middle_c))
+        corner = float(np.arctan(np.hypot(camera.width_px, camera.height_px) / 2.0 / camera.focal_px))
+        if away > WIDE_M and np.arccos(middle_c[2] / away) > corner + np.arcsin(WIDE_M / away):
+            return False  # laying one costs 4 ms; most of the time none is in the picture
         # a depth buffer of 24 bits tells depths apart to d^2 / (near 2^24): 0.4 m at 1 km
-        away = float(np.linalg.norm(pos - height / rise * self._sun_e - eye_e_m))
         return shadow.update(pos, instant.quat_eb[k], self._sun_e, self._height_at, 0.05 + (away / 1000.0) ** 2)
 
 

@@ -20,7 +20,7 @@ from render.frames import Array, quat_rotate
 from render.picture.axes import DISPLAY_FROM_EARTH, body_to_display, to_display
 from render.picture.camera import Camera
 from render.picture.canopy import build_cockpit
-from render.picture.craft import NEAR_M, Craft, craft_light
+from render.picture.craft import Craft, craft_light
 from render.picture.craft_shadows import Shadows
 from render.picture.edges import smooth_edges
 from render.picture.instant import Instant
@@ -33,7 +33,7 @@ from scenes.model import Day
 from terrain.ground import Ground
 
 Frame = NDArray[np.uint8]
-FAR_M = 70_000.0
+NEAR_M, FAR_M = 0.15, 70_000.0  # nearest and farthest drawn
 GHOST_OPACITY = 0.35
 GHOST_APART_M = 1.0  # nearer than this the two leads would only flicker in each other
 
@@ -119,9 +119,7 @@ class Stage:
         self._window.GetPixelData(0, 0, width - 1, height - 1, 0, self._pixels, 0)
         np.copyto(self._frame, vtk_to_numpy(self._pixels).reshape(height, width, 3)[::-1])
         if self._smooth:
-            seen = [craft for craft in (*self._craft, self._cockpit) if craft is not None]
-            rects = [rect for craft in seen for rect in craft.rects(camera, DISPLAY_FROM_EARTH.T)]
-            smooth_edges(self._frame, rects)
+            smooth_edges(self._frame)
         return self._frame
 
     @property
@@ -147,7 +145,7 @@ class Stage:
             craft.place(matrix, moved_parts(instant, k), eye_d, own=k == self._own)
             if k == self._own and self._cockpit is not None:
                 self._cockpit.place(matrix, moved_parts(instant, k), eye_d, own=True)
-        self._shadows.lay(instant, camera.pos_e_m)
+        self._shadows.lay(instant, camera)
         if self._ghost is not None:
             apart = 0.0 if ghost is None else float(np.linalg.norm(ghost.pos_e_m[0] - instant.pos_e_m[0]))
             if ghost is None or apart < GHOST_APART_M:
