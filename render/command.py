@@ -8,7 +8,9 @@ from __future__ import annotations
 import argparse
 import json
 import os
+import signal
 import sys
+import threading
 import time
 from collections.abc import Callable, Sequence
 from pathlib import Path
@@ -60,6 +62,11 @@ def build_parser() -> argparse.ArgumentParser:
         if name == "film":
             sub.add_argument("--from", dest="start_s", type=float, metavar="S", help="first second of the script")
             sub.add_argument("--to", dest="end_s", type=float, metavar="S", help="last second of the script")
+            sub.add_argument("--both", action="store_true", help="also the plain version, from the same drawing")
+            sub.add_argument("--holds", action="store_true", help="hold the picture at the key moments, with words")
+            sub.add_argument("--slow", action="append", default=[], metavar="FROM:TO:TIMES",
+                             help="slow motion between two seconds of the script, as 33:35:4; may be given again")
+            sub.add_argument("--resume", action="store_true", help="go on with what an interrupted film has kept")
         if name == "still":
             sub.add_argument("--at", dest="at_s", type=float, metavar="S", help="second of the script")
             sub.add_argument("--key-moments", action="store_true", help="one still for each key moment")
@@ -155,21 +162,49 @@ def _kind(args: argparse.Namespace) -> str:
     return "".join(f"_{word}" for word in words if word)
 
 
+def _slow(texts: Sequence[str]) -> tuple[Any, ...]:
+    from render.errors import LatepullError
+    from render.output.shot import Slow
+
+    made = []
+    for text in texts:
+        try:
+            start_s, end_s, times = (float(part) for part in text.split(":"))
+        except ValueError:
+            start_s = end_s = times = float("nan")
+        if not (start_s < end_s and 1.0 <= times <= 100.0):
+            raise LatepullError(f"--slow: read {text}, wanted FROM:TO:TIMES in seconds of the script and times slower "
+                                "(1 to 100), as 33:35:4")
+        made.append(Slow(start_s, end_s, times))
+    return tuple(made)
+
+
 def _film(args: argparse.Namespace) -> int:
     from render.output.film import write_film
-    from render.output.shot import plan_shot
+    from render.output.parts import kept_frames
+    from render.output.shot import key_holds, plan_shot
     from scenes.reader import read_scene
 
     folder = Path("out") / read_scene(args.scene).name
+    slow = _slow(args.slow)
     study = _study(args.scene, folder)
     slot = _slot(study, args.slot)
-    kind = _kind(args)
-    target = _target(args.out, folder, f"{slot}{kind}.mp4")
-    shot = plan_shot(study, slot, start_s=args.start_s, end_s=args.end_s, draft=args.draft)
+    target = _target(args.out, folder, f"{slot}{_kind(args)}.mp4")
+    shot = plan_shot(study, slot, start_s=args.start_s, end_s=args.end_s, draft=args.draft, slow=slow,
+                     holds=key_holds(study, slot) if args.holds and not args.plain else ())
     source, note = _picture(args, shot.size_px)
-    path = write_film(study, slot, target, shot=shot, overlay=not args.plain, force=args.force, source=source,
-                      note=note, progress=progress_bar())
-    _say(args, {"film": str(path), "frames": len(shot)}, f"{path}: {len(shot)} frames")
+    plain = target.with_name(f"{target.stem}_plain.mp4") if args.both and not args.plain else None
+    try:
+        write_film(study, slot, target, shot=shot, overlay=not args.plain, plain_path=plain, force=args.force,
+                   source=source, note=note, progress=progress_bar(), keep=True, resume=args.resume)
+    except BaseException:
+        done, total = kept_frames(target)
+        if done:
+            print(f"\n{done} of {total} frames are kept; the same command with --resume goes on from them",
+                  file=sys.stderr)
+        raise
+    films = [str(target), *([str(plain)] if plain else [])]
+    _say(args, {"films": films, "frames": len(shot)}, f"{', '.join(films)}: {len(shot)} frames")
     return 0
 
 
@@ -272,8 +307,14 @@ COMMANDS: dict[str, Callable[[argparse.Namespace], int]] = {
 }
 
 
+def _interrupted(*_: object) -> None:
+    raise KeyboardInterrupt
+
+
 def main(argv: Sequence[str] | None = None) -> int:
     """Run one command; returns the exit code."""
+    if threading.current_thread() is threading.main_thread():
+        signal.signal(signal.SIGTERM, _interrupted)  # ends as Ctrl-C does: no process, no half file
     for stream in (sys.stdout, sys.stderr):
         if (stream.encoding or "").lower().replace("-", "") != "utf8" and hasattr(stream, "reconfigure"):
             stream.reconfigure(errors="backslashreplace")  # a title in Greek must not end a command on a Latin terminal

@@ -105,3 +105,9 @@ def test_interrupt_is_130(run: Run, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr("render.study.work_through", interrupted)
     code, _, err = run("fly", "healthy_loop")
     assert code == 130 and "nothing half-made is left" in err
+
+
+@pytest.mark.parametrize("text", ["33", "35:33:4", "33:35:0.5", "a:b:c", "33:35:nan", "33:35:4:5"])
+def test_slow_motion_that_is_none_is_named(run: Run, text: str) -> None:
+    code, _, err = run("film", "late_freeze", "--slow", text)
+    assert code == 2 and f"--slow: read {text}, wanted FROM:TO:TIMES" in err
