@@ -24,7 +24,7 @@ class SideView:
         k = slot_index(study, slot)
         self._size, self._u, self._end_s = size, unit_px, end_s
         self._flight, self._k = study.faulted, k
-        along_e = _entry_direction(study.healthy)
+        along_e = entry_direction(study.healthy)
         self._along = study.faulted.pos_e_m[:, k, :2] @ along_e
         twin_along = study.healthy.pos_e_m[:, k, :2] @ along_e
         shown = (study.faulted.time_s >= start_s) & (study.faulted.time_s <= end_s + 1e-9)
@@ -106,7 +106,7 @@ class SideView:
         return image
 
 
-def _entry_direction(flight: Flight) -> Array:
+def entry_direction(flight: Flight) -> Array:
     """Horizontal unit vector (north, east) of the lead's first flight direction."""
     velocity = flight.vel_e_mps[0, 0, :2]
     speed = float(np.hypot(velocity[0], velocity[1]))
