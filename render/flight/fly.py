@@ -10,7 +10,8 @@ import numpy as np
 from render.errors import FlightError
 from render.flight import records as r
 from render.flight import script as s
-from render.flight.batch import Raw, close_loops, fly_batch
+from render.flight.batch import Raw, fly_batch
+from render.flight.closing import close_loops
 from render.flight.plan import DT_S, Plan, compile_scene
 from render.frames import Array, quat_multiply
 from render.types import Flight
@@ -96,7 +97,7 @@ def _fly_departed(plan: Plan, briefed: Plan, heights: Array, grid: Array) -> tup
 def _cut(raw: Raw, end_s: float) -> int:
     """Last step worth keeping: the script's end, later if the lead still goes down then, or his contact before."""
     end = min(round(end_s / DT_S), raw.y.shape[1] - 1)
-    down = np.diff(raw.y[0, end:, 0, r.D]) > 0.0
+    down = np.diff(raw.y[0, end : end + round(AFTER_SCRIPT_S / DT_S) + 1, 0, r.D]) > 0.0
     level = np.flatnonzero(~down)
     cut = end + (int(level[0]) if level.size else len(down))
     if raw.status[0, 0, 0] == r.CONTACT and raw.status[0, 0, 1] <= cut:

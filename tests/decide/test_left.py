@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 
 from render.decide.left import all_slots, only, unlike_slots, work_left
-from render.flight.batch import close_loops
+from render.flight.closing import close_loops
 from render.flight.inside import begin_at, crossing, fly_far, frozen_at
 from render.flight.plan import compile_scene
 from render.study import work_through

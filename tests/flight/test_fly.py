@@ -6,7 +6,8 @@ import numpy as np
 import pytest
 
 from render.errors import FlightError
-from render.flight.batch import DT_S, close_loops, fly_batch
+from render.flight.batch import DT_S, fly_batch
+from render.flight.closing import close_loops
 from render.flight.fly import fly_scene, ground_arrays
 from render.flight.plan import compile_scene
 from render.flight.station import slot_place
