@@ -12,7 +12,7 @@ from render.frames import Array
 from render.picture.axes import to_display
 from render.picture.ground_look import ground_actors
 from render.picture.light import Light, light_of
-from render.picture.objects import object_actor
+from render.picture.objects import object_actors
 from render.picture.shadows import shadow_actor
 from render.picture.sky import sky_actor
 from render.picture.trees import TreeField
@@ -31,15 +31,17 @@ class Land:
     def __init__(self, ground: Ground, day: Day, seed: int) -> None:
         self.light: Light = light_of(day)
         plan = land_of(ground.recipe, seed)
-        self._sky = sky_actor(self.light)
+        self.sky_actor = sky_actor(self.light)
         cover = cover_of(ground, seed)
         self._trees = TreeField(cover.trees, ground, plan)
+        self.tree_actor = self._trees.actor
         self.shadow_actor = shadow_actor(cover, ground, self.light)
         self.ground_actors = ground_actors(ground, plan)
-        solid = [object_actor(cover, ground, plan, self.light), *self.ground_actors]
-        self._eyed = [*solid, self.shadow_actor, self._trees.actor]
+        self.object_actors = object_actors(cover, ground, plan, self.light)
+        solid = [*self.object_actors, *self.ground_actors]
+        self._eyed = [*solid, self.shadow_actor, self.tree_actor]
         #: In drawing order: what is opaque nearest first, then shadows and trees, which are see-through at their edges.
-        self.actors: list[vtk.vtkActor] = [*solid, self._sky, self.shadow_actor, self._trees.actor]
+        self.actors: list[vtk.vtkActor] = [*solid, self.sky_actor, self.shadow_actor, self.tree_actor]
         for actor in self.actors:
             set_light(actor, self.light)
 
@@ -51,7 +53,7 @@ class Land:
             shader = actor.GetShaderProperty()
             shader.GetVertexCustomUniforms().SetUniform3f("eye", eye)
             shader.GetFragmentCustomUniforms().SetUniform3f("eye", eye)
-        self._sky.SetPosition(*eye)
+        self.sky_actor.SetPosition(*eye)
 
 
 def set_light(actor: vtk.vtkActor, light: Light) -> None:

@@ -30,6 +30,7 @@ _ROOFS = {
 }
 
 
+SQUARE_M = 1_300.0
 _PLAIN, _PANES, _DOOR, _GLASS, _SCREEN, _LEAVES = (float(k) for k in range(6))  # as in shaders/object.glsl
 _SIDES = {"house": _PANES, "hangar": _DOOR, "tower": _GLASS, "car": _SCREEN}
 
@@ -58,23 +59,31 @@ class _Faces:
         self.walls.append(np.stack([np.column_stack([x, y, long, kinds]) for x, y in wall], axis=1).reshape(-1, 4))
 
 
-def object_actor(cover: Cover, ground: Ground, land: Land, light: Light) -> vtk.vtkActor:
-    """One opaque actor of all boxes and standing hedges."""
+def object_actors(cover: Cover, ground: Ground, land: Land, light: Light) -> list[vtk.vtkActor]:
+    """Opaque actors of all boxes and standing hedges, one for each square of land, so that VTK can leave out
+    those that are not in view."""
     faces = _Faces(light)
     _add_boxes(faces, cover, ground)
     _add_hedges(faces, cover, ground, land)
     points, colours, walls = (np.concatenate(x) for x in (faces.points, faces.colours, faces.walls))
-    first = 4 * np.arange(len(points) // 4)[:, None]
-    triangles = (first + np.array([0, 1, 2, 0, 2, 3])).reshape(-1, 3)
+    square = np.floor(points[::4, :2] / SQUARE_M).astype(int)
     vertex = glsl("rim") + "in vec3 paintIn;\nin vec4 wallIn;\nout vec3 paint;\nout vec4 wall;\n"
-    return shaded_actor(
-        mesh(points, triangles),
-        glsl("common") + glsl("object"),
-        "fragOutput0 = vec4(objectColour(), 1.0);\n",
-        {"paintIn": colours, "wallIn": walls},
-        vertex,
-        "setRim(place);\npaint = paintIn;\nwall = wallIn;\n",
-    )
+    actors = []
+    for key in np.unique(square, axis=0):
+        chosen = np.repeat((square == key).all(axis=1), 4)
+        first = 4 * np.arange(int(chosen.sum()) // 4)[:, None]
+        triangles = (first + np.array([0, 1, 2, 0, 2, 3])).reshape(-1, 3)
+        actors.append(
+            shaded_actor(
+                mesh(points[chosen], triangles),
+                glsl("common") + glsl("object"),
+                "fragOutput0 = vec4(objectColour(), 1.0);\n",
+                {"paintIn": colours[chosen], "wallIn": walls[chosen]},
+                vertex,
+                "setRim(place);\npaint = paintIn;\nwall = wallIn;\n",
+            )
+        )
+    return actors
 
 
 def _add_boxes(faces: _Faces, cover: Cover, ground: Ground) -> None:

@@ -8,6 +8,7 @@ import vtk
 from render.frames import Array
 from render.picture.light import Light
 from render.picture.shading import constants, glsl, mesh, shaded_actor
+from terrain.pattern import value_noise
 
 RADIUS_M = 65_000.0
 _RINGS_DEG = np.array(
@@ -50,14 +51,18 @@ def sky_actor(light: Light) -> vtk.vtkActor:
     a, b, c, d = i * _SIDES + j, i * _SIDES + k, (i + 1) * _SIDES + k, (i + 1) * _SIDES + j
     triangles = np.concatenate([np.column_stack([a, b, c]), np.column_stack([a, c, d])])
     look = look.reshape(-1, 3)
-    veil = look + np.array([0.0, 0.0, 0.13])
-    veil[:, 2] = np.maximum(veil[:, 2], 0.02)
+    lifted = np.maximum(look[:, 2] + 0.13, 0.02)
+    q = look[:, :2] / lifted[:, None]
+    thick = 0.75 * value_noise(0.6 * q[:, 0] + 3.7, 1.7 * q[:, 1] + 3.7, 41.0) - 0.58
+    thick -= 1.2 * np.clip(1.0 - 4.0 * (look[:, 2] - 0.03), 0.0, 1.0)  # none near the horizon
+    veil = np.column_stack([look[:, :2], lifted, thick])
     inputs = {"clearIn": clear_sky(look, light), "veilIn": veil, "sunIn": look - light.sun_d}
     outs = {"clearIn": "clearSky", "veilIn": "veilAt", "sunIn": "fromSun"}
-    head = "".join(f"in vec3 {name};\nout vec3 {outs[name]};\n" for name in inputs)
+    kinds = {name: f"vec{values.shape[1]}" for name, values in inputs.items()}
+    head = "".join(f"in {kinds[name]} {name};\nout {kinds[name]} {outs[name]};\n" for name in inputs)
     copies = "".join(f"{outs[name]} = {name};\n" for name in inputs)
     colour = np.clip(0.30 * light.rim + 0.70 * (0.75 * light.sun + 0.6 * light.sky), 0.0, 1.0)
-    code = constants({"VEIL": 0.6, "VEIL_FROM": 0.52, "VEIL_COLOUR": colour})
+    code = constants({"VEIL": 0.6, "VEIL_COLOUR": colour})
     code += glsl("common").replace(
         "in vec3 rimAt;\nin float fade;\n", "const vec3 rimAt = vec3(0.0);\nconst float fade = 1.0;\n"
     )

@@ -25,13 +25,15 @@ def test_every_shader_draws(name: str) -> None:
     """A shader that does not compile leaves its actor out without an error."""
     land = Land(read_ground(name), DAY, 1)
     with Lens(land) as lens:
-        for k, actor in enumerate(land.actors):
-            lens.show(actor)
+        kinds = {"objects": land.object_actors, "sky": [land.sky_actor], "shadows": [land.shadow_actor]}
+        kinds |= {"trees": [land.tree_actor]} | {f"ground {k}": [a] for k, a in enumerate(land.ground_actors)}
+        for kind, actors in kinds.items():
+            lens.show(*actors)
             seen = max(
                 int(drawn(lens.look(eye, bearing, down)).sum())
                 for eye, bearing, down in (((-500.0, 0.0, -700.0), 350.0, -20.0), ((600.0, 900.0, -60.0), 250.0, -5.0))
             )
-            assert seen > 30, f"actor {k} of {name} draws {seen} pixels"
+            assert seen > 30, f"{kind} of {name}: {seen} pixels"
         lens.show()
         assert drawn(lens.look((0.0, 0.0, -100.0), 350.0, 0.0)).all()
 
@@ -116,7 +118,7 @@ def test_a_hangar_has_its_size_in_pixels() -> None:
     land = Land(ground, DAY, 1)
     k = int(np.argmax(boxes.kind == "hangar"))
     with Lens(land, field_deg=20.0) as lens:
-        lens.show(land.actors[0])
+        lens.show(*land.object_actors)
         bearing = float(np.degrees(boxes.bearing_rad[k])) - 90.0
         eye = (
             float(boxes.north_m[k]) - 300.0 * np.cos(np.radians(bearing)),
