@@ -10,6 +10,7 @@ import vtk
 
 from render.frames import Array
 from render.picture.axes import to_display
+from render.picture.clouds import cloud_actor
 from render.picture.ground_look import ground_actors
 from render.picture.light import Light, light_of
 from render.picture.objects import object_actors
@@ -42,6 +43,11 @@ class Land:
         self._eyed = [*solid, self.shadow_actor, self.tree_actor]
         #: In drawing order: what is opaque nearest first, then shadows and trees, which are see-through at their edges.
         self.actors: list[vtk.vtkActor] = [*solid, self.sky_actor, self.shadow_actor, self.tree_actor]
+        base_m = getattr(day, "cloud_base_m", None)
+        self.cloud_actor = None if base_m is None else cloud_actor(base_m)
+        if self.cloud_actor is not None:
+            self.actors.append(self.cloud_actor)
+            self._eyed.append(self.cloud_actor)
         for actor in self.actors:
             set_light(actor, self.light)
 
@@ -54,6 +60,8 @@ class Land:
             shader.GetVertexCustomUniforms().SetUniform3f("eye", eye)
             shader.GetFragmentCustomUniforms().SetUniform3f("eye", eye)
         self.sky_actor.SetPosition(*eye)
+        if self.cloud_actor is not None:
+            self.cloud_actor.SetPosition(eye[0], eye[1], 0.0)
 
 
 def set_light(actor: vtk.vtkActor, light: Light) -> None:
