@@ -96,15 +96,17 @@ def progress_bar() -> Callable[[int, int], None] | None:
 
 def _study(name: str, folder: Path) -> Any:
     """The study of a scene: the saved one if its scene is unchanged, else flown now and saved."""
-    from render.study import work_through
     from render.study_io import StudyError, load_study, save_study
     from scenes.reader import read_airframe, read_scene, scene_text
-    from terrain.ground import read_ground
 
     scene, text = read_scene(name), scene_text(name)
     try:
         return load_study(folder, scene_text=text)
     except StudyError:
+        # only here: the flight code takes a second to load, and a still of a saved study shows after three
+        from render.study import work_through
+        from terrain.ground import read_ground
+
         study = work_through(scene, read_airframe, read_ground(scene.ground, scene.seed), text)
         save_study(study, folder)
         return study

@@ -27,16 +27,18 @@ class Shadows:
         """shapes: (K,); sun_d: toward the sun, display axes; height_at: the ground's height, m."""
         self._sun_e = np.asarray(sun_d, float) @ DISPLAY_FROM_EARTH
         self._height_at = height_at
-        samples = {id(shape): cast_samples(shape.parts) for shape in shapes}
-        self._shadows = [Shadow(samples[id(shape)]) for shape in shapes]
-        self.actors = [_actor(shadow) for shadow in self._shadows]
+        self._shapes = tuple(shapes)
+        self._shadows: list[Shadow | None] = [None] * len(shapes)  # made when first needed: many films never do
+        self._samples: dict[int, Array] = {}
+        self._mappers = [_mapper() for _ in shapes]
+        self.actors = [_actor(mapper) for mapper in self._mappers]
 
     def lay(self, instant: Instant, camera: Camera) -> None:
         """Lay the shadows of an instant that a camera may have in its picture."""
-        for k, (shadow, actor) in enumerate(zip(self._shadows, self.actors, strict=True)):
-            actor.SetVisibility(k < len(instant.alive) and self._laid(shadow, instant, k, camera))
+        for k, actor in enumerate(self.actors):
+            actor.SetVisibility(k < len(instant.alive) and self._laid(instant, k, camera))
 
-    def _laid(self, shadow: Shadow, instant: Instant, k: int, camera: Camera) -> bool:
+    def _laid(self, instant: Instant, k: int, camera: Camera) -> bool:
         pos = instant.pos_e_m[k]
         rise = -float(self._sun_e[2])
         height = -float(pos[2]) - float(self._height_at(pos[0], pos[1]))
@@ -48,16 +50,30 @@ class Shadows:
         if away > WIDE_M and np.arccos(middle_c[2] / away) > corner + np.arcsin(WIDE_M / away):
             return False  # laying one costs 4 ms; most of the time none is in the picture
         # a depth buffer of 24 bits tells depths apart to d^2 / (near 2^24): 0.4 m at 1 km
-        return shadow.update(pos, instant.quat_eb[k], self._sun_e, self._height_at, 0.05 + (away / 1000.0) ** 2)
+        lift_m = 0.05 + (away / 1000.0) ** 2
+        return self._shadow(k).update(pos, instant.quat_eb[k], self._sun_e, self._height_at, lift_m)
+
+    def _shadow(self, k: int) -> Shadow:
+        shadow = self._shadows[k]
+        if shadow is None:
+            shape = self._shapes[k]
+            if id(shape) not in self._samples:
+                self._samples[id(shape)] = cast_samples(shape.parts)
+            shadow = self._shadows[k] = Shadow(self._samples[id(shape)])
+            self._mappers[k].SetInputData(shadow.mesh)
+        return shadow
 
 
-def _actor(shadow: Shadow) -> vtkActor:
+def _mapper() -> vtkPolyDataMapper:
     mapper = vtkPolyDataMapper()
-    mapper.SetInputData(shadow.mesh)
     mapper.SetVBOShiftScaleMethod(0)
     mapper.SetScalarModeToUsePointFieldData()
     mapper.SelectColorArray("colour")
     mapper.SetColorModeToDirectScalars()
+    return mapper
+
+
+def _actor(mapper: vtkPolyDataMapper) -> vtkActor:
     actor = vtkActor()
     actor.SetMapper(mapper)
     actor.GetProperty().SetLighting(False)

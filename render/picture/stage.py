@@ -66,7 +66,7 @@ class Stage:
         self._land = Land(ground, day, seed)
         light = self._land.light
         on_craft = craft_light(light)
-        shapes = {frame: build_shape(frame) for frame in airframes}
+        shapes = {frame: build_shape(frame) for frame in dict.fromkeys(airframes)}
         self._craft = [Craft(shapes[frame].parts, on_craft) for frame in airframes]
         self._cockpit = None if own is None else Craft(build_cockpit(airframes[own]), on_craft)
         self._ghost = Craft(shapes[airframes[0]].parts, on_craft, opacity=GHOST_OPACITY, lit=False) if ghost else None
