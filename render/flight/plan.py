@@ -200,21 +200,29 @@ def escape_pair(break_out: BreakOut, *, delay_s: float | None = None) -> Any:
     return np.concatenate(pair).reshape(1, 2)
 
 
-def compile_scene(scene: Scene, airframes: tuple[Airframe, ...]) -> Plan:
-    """Compile a scene; airframes (K,): the lead's, then each slot's.
+Memo = dict[tuple[Any, ...], Any]
+"""What scenes that are variants of one share when compiled: trims, records, script tables."""
+
+
+def compile_scene(scene: Scene, airframes: tuple[Airframe, ...], memo: Memo | None = None) -> Plan:
+    """Compile a scene; airframes (K,): the lead's, then each slot's; memo: kept between variants of a scene.
 
     Raises FlightError if an aircraft can't fly the entry.
     """
     first = scene.script[0]
     if not isinstance(first, Level):
         raise FlightError("the script must begin with a level step that gives speed, height and heading")
+    memo = {} if memo is None else memo
     case = case_record(scene, airframes[0])
     dt_k = float(case["temp_offset_k"][0])
     states, recs = [], []
     for airframe in airframes:
-        y, stab = entry_state(airframe, first, scene.day.field_elevation_m, dt_k)
-        states.append(y)
-        recs.append(r.airframe_record(airframe, stab))
+        key = (airframe, first, scene.day.field_elevation_m, dt_k)
+        if key not in memo:
+            y, stab = entry_state(airframe, first, scene.day.field_elevation_m, dt_k)
+            memo[key] = y, r.airframe_record(airframe, stab)
+        states.append(memo[key][0])
+        recs.append(memo[key][1])
     entry = np.array(states)
     slots = np.array([[sl.aft_m, sl.right_m, sl.down_m] for sl in scene.formation]).reshape(-1, 3)
     heading = first.heading_rad or 0.0
@@ -223,6 +231,8 @@ def compile_scene(scene: Scene, airframes: tuple[Airframe, ...]) -> Plan:
         entry[k, r.E] = -aft * math.sin(heading) + right * math.cos(heading)
         entry[k, r.D] += down
         entry[k, r.V] = entry[0, r.V]
-    table, knots, coeffs, longest = script_table(scene)
+    if scene.script not in memo:
+        memo[scene.script] = script_table(scene)
+    table, knots, coeffs, longest = memo[scene.script]
     return Plan(scene, airframes, np.concatenate(recs), case, entry, table, knots, coeffs, slots,
                 escape_record(scene.break_out, roll_first=True), longest)
