@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
-import vtk
+from vtkmodules.vtkRenderingCore import vtkActor
 
 from render.picture.ground_mesh import ground_mesh
 from render.picture.shading import constants, glsl, mesh, shaded_actor
@@ -76,7 +76,7 @@ _PIECES = {
 }
 
 
-def ground_actors(ground: Ground, land: Land) -> list[vtk.vtkActor]:
+def ground_actors(ground: Ground, land: Land) -> list[vtkActor]:
     """The surface of a ground with a land's look, to be lit and given an eye (see ``land.set_light``)."""
     shape = ground_mesh(ground, land)
     head = constants(_constants(land))

@@ -6,7 +6,7 @@ Display axes: x east, y north, z up, metres, from the display centre at field el
 from __future__ import annotations
 
 import numpy as np
-import vtk
+from vtkmodules.vtkRenderingCore import vtkActor
 
 from render.frames import Array
 from render.picture.axes import to_display
@@ -42,7 +42,7 @@ class Land:
         solid = [*self.object_actors, *self.ground_actors]
         self._eyed = [*solid, self.shadow_actor, self.tree_actor]
         #: In drawing order: what is opaque nearest first, then shadows and trees, which are see-through at their edges.
-        self.actors: list[vtk.vtkActor] = [*solid, self.sky_actor, self.shadow_actor, self.tree_actor]
+        self.actors: list[vtkActor] = [*solid, self.sky_actor, self.shadow_actor, self.tree_actor]
         base_m = getattr(day, "cloud_base_m", None)
         self.cloud_actor = None if base_m is None else cloud_actor(base_m)
         if self.cloud_actor is not None:
@@ -64,7 +64,7 @@ class Land:
             self.cloud_actor.SetPosition(eye[0], eye[1], 0.0)
 
 
-def set_light(actor: vtk.vtkActor, light: Light) -> None:
+def set_light(actor: vtkActor, light: Light) -> None:
     """Hand an actor's shaders the day's light, and an eye to begin with."""
     uniforms = actor.GetShaderProperty().GetFragmentCustomUniforms()
     values = {

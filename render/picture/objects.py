@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
-import vtk
+from vtkmodules.vtkRenderingCore import vtkActor
 
 from render.frames import Array
 from render.picture.light import Light
@@ -59,7 +59,7 @@ class _Faces:
         self.walls.append(np.stack([np.column_stack([x, y, long, kinds]) for x, y in wall], axis=1).reshape(-1, 4))
 
 
-def object_actors(cover: Cover, ground: Ground, land: Land, light: Light) -> list[vtk.vtkActor]:
+def object_actors(cover: Cover, ground: Ground, land: Land, light: Light) -> list[vtkActor]:
     """Opaque actors of all boxes and standing hedges, one for each square of land, so that VTK can leave out
     those that are not in view."""
     faces = _Faces(light)

@@ -7,9 +7,11 @@ from functools import cache
 from pathlib import Path
 
 import numpy as np
-import vtk
 from numpy.typing import NDArray
 from vtkmodules.util.numpy_support import numpy_to_vtk, numpy_to_vtkIdTypeArray
+from vtkmodules.vtkCommonCore import vtkPoints
+from vtkmodules.vtkCommonDataModel import vtkCellArray, vtkDataObject, vtkPolyData
+from vtkmodules.vtkRenderingCore import vtkActor, vtkPolyDataMapper
 
 from render.frames import Array
 
@@ -37,19 +39,19 @@ def constants(values: Mapping[str, object]) -> str:
     return "\n".join(lines) + "\n"
 
 
-def mesh(points: Array, triangles: NDArray[np.int64]) -> vtk.vtkPolyData:
+def mesh(points: Array, triangles: NDArray[np.int64]) -> vtkPolyData:
     """Polygons from points (P, 3) and corner numbers (T, 3)."""
-    data = vtk.vtkPolyData()
-    places = vtk.vtkPoints()
+    data = vtkPolyData()
+    places = vtkPoints()
     places.SetData(numpy_to_vtk(np.ascontiguousarray(points, np.float32), deep=True))
     data.SetPoints(places)
     data.SetPolys(cells(triangles))
     return data
 
 
-def cells(triangles: NDArray[np.int64]) -> vtk.vtkCellArray:
+def cells(triangles: NDArray[np.int64]) -> vtkCellArray:
     """Triangles (T, 3) as VTK's own."""
-    array = vtk.vtkCellArray()
+    array = vtkCellArray()
     offsets = np.arange(0, 3 * len(triangles) + 1, 3, dtype=np.int64)
     array.SetData(
         numpy_to_vtkIdTypeArray(offsets, deep=True),
@@ -59,13 +61,13 @@ def cells(triangles: NDArray[np.int64]) -> vtk.vtkCellArray:
 
 
 def shaded_actor(
-    data: vtk.vtkPolyData,
+    data: vtkPolyData,
     fragment: str,
     main: str,
     attributes: Mapping[str, Array] | None = None,
     vertex: str = "",
     position: str = "",
-) -> vtk.vtkActor:
+) -> vtkActor:
     """An unlit actor: ``fragment`` are declarations and functions, ``main`` writes ``fragOutput0``.
 
     attributes: name to (P, C) values at the points, handed to the vertex shader under that name.
@@ -73,7 +75,7 @@ def shaded_actor(
     ``gl_Position``; without it the fragment gets ``place``, where it is.
     A shader that does not compile makes the actor vanish without an error: test by pixels.
     """
-    mapper = vtk.vtkPolyDataMapper()
+    mapper = vtkPolyDataMapper()
     mapper.SetInputData(data)
     mapper.ScalarVisibilityOff()
     mapper.SetVBOShiftScaleMethod(0)
@@ -81,8 +83,8 @@ def shaded_actor(
         array = numpy_to_vtk(np.ascontiguousarray(values, np.float32), deep=True)
         array.SetName(name)
         data.GetPointData().AddArray(array)
-        mapper.MapDataArrayToVertexAttribute(name, name, vtk.vtkDataObject.FIELD_ASSOCIATION_POINTS, -1)
-    actor = vtk.vtkActor()
+        mapper.MapDataArrayToVertexAttribute(name, name, vtkDataObject.FIELD_ASSOCIATION_POINTS, -1)
+    actor = vtkActor()
     actor.SetMapper(mapper)
     actor.GetProperty().SetLighting(False)
     shader = actor.GetShaderProperty()

@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import numpy as np
-import vtk
 from numpy.typing import NDArray
 from scipy.spatial import ConvexHull
+from vtkmodules.vtkRenderingCore import vtkActor
 
 from render.frames import Array
 from render.picture.light import Light
@@ -19,7 +19,7 @@ _FACES = np.array([[0, 1, 2], [0, 2, 3]])
 _LIFT = "gl_Position.z -= 2e-6 * gl_Position.w;\n"
 
 
-def shadow_actor(cover: Cover, ground: Ground, light: Light) -> vtk.vtkActor:
+def shadow_actor(cover: Cover, ground: Ground, light: Light) -> vtkActor:
     """Ellipses for crowns, outlines for boxes, strips for hedges, on ground taken as level round each."""
     up = max(float(light.sun_d[2]), 0.12)
     flat = float(np.linalg.norm(light.sun_d[:2]))

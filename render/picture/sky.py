@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
-import vtk
+from vtkmodules.vtkRenderingCore import vtkActor
 
 from render.frames import Array
 from render.picture.light import Light
@@ -38,7 +38,7 @@ def clear_sky(look_d: Array, light: Light) -> Array:
     return result
 
 
-def sky_actor(light: Light) -> vtk.vtkActor:
+def sky_actor(light: Light) -> vtkActor:
     """The dome; move it to the eye before each render."""
     height = np.radians(_RINGS_DEG)[:, None]
     turn = np.linspace(0.0, 2.0 * np.pi, _SIDES, endpoint=False)[None, :]
