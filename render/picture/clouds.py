@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
-import vtk
+from vtkmodules.vtkRenderingCore import vtkActor
 
 from render.picture.shading import glsl, mesh, shaded_actor
 
@@ -11,7 +11,7 @@ _RADII_M = np.concatenate([[0.0], np.geomspace(150.0, 45_000.0, 26)])
 _SIDES = 48
 
 
-def cloud_actor(base_m: float) -> vtk.vtkActor:
+def cloud_actor(base_m: float) -> vtkActor:
     """A level disc at ``base_m`` above the field, to be moved under or over the eye; see-through, drawn last."""
     turn = np.linspace(0.0, 2.0 * np.pi, _SIDES, endpoint=False)
     ring = np.stack([np.cos(turn), np.sin(turn)], axis=-1)
