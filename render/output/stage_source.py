@@ -81,6 +81,7 @@ class StageSource:
         self.stage = Stage(
             self._flight.airframes, ground, study.scene.day, size_px if self._wide is None else self._wide.source_px,
             seed=study.scene.seed, own=self._k if options.view == "seat" else None, ghost=options.twin == "ghost",
+            smoke=self._flight if study.scene.film.smoke else None,
         )  # fmt: skip
 
     def frame(self, time_s: float) -> Frame:

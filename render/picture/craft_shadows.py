@@ -30,8 +30,8 @@ class Shadows:
         self._shapes = tuple(shapes)
         self._shadows: list[Shadow | None] = [None] * len(shapes)  # made when first needed: many films never do
         self._samples: dict[int, Array] = {}
-        self._mappers = [_mapper() for _ in shapes]
-        self.actors = [_actor(mapper) for mapper in self._mappers]
+        self._mappers = [unlit_mapper() for _ in shapes]
+        self.actors = [unlit_actor(mapper) for mapper in self._mappers]
 
     def lay(self, instant: Instant, camera: Camera) -> None:
         """Lay the shadows of an instant that a camera may have in its picture."""
@@ -64,7 +64,8 @@ class Shadows:
         return shadow
 
 
-def _mapper() -> vtkPolyDataMapper:
+def unlit_mapper() -> vtkPolyDataMapper:
+    """A mapper of point colours as they are."""
     mapper = vtkPolyDataMapper()
     mapper.SetVBOShiftScaleMethod(0)
     mapper.SetScalarModeToUsePointFieldData()
@@ -73,7 +74,8 @@ def _mapper() -> vtkPolyDataMapper:
     return mapper
 
 
-def _actor(mapper: vtkPolyDataMapper) -> vtkActor:
+def unlit_actor(mapper: vtkPolyDataMapper) -> vtkActor:
+    """A see-through actor without light."""
     actor = vtkActor()
     actor.SetMapper(mapper)
     actor.GetProperty().SetLighting(False)

@@ -28,6 +28,10 @@ from render.picture.land import Land
 from render.picture.light import Light
 from render.picture.probe import new_window, require_drawing
 from render.picture.shapes import build_shape
+from render.picture.trails import Trails
+from render.picture.views import angles
+from render.sight.geometry import direction_b
+from render.types import Flight
 from scenes.airframe import Airframe
 from scenes.model import Day
 from terrain.ground import Ground
@@ -35,6 +39,8 @@ from terrain.ground import Ground
 Frame = NDArray[np.uint8]
 NEAR_M, FAR_M = 0.15, 70_000.0  # nearest and farthest drawn
 GHOST_OPACITY = 0.35
+HEAD_TURN_RAD = float(np.radians(80.0))
+PROPELLER_RPS = 33.0  # about 2,000 a minute; common practice, no source
 GHOST_APART_M = 1.0  # nearer than this the two leads would only flicker in each other
 
 
@@ -54,11 +60,12 @@ class Stage:
         seed: int = 1,
         own: int | None = None,
         ghost: bool = False,
+        smoke: Flight | None = None,
         smooth: bool = True,
     ) -> None:
-        """airframes: (K,) of the formation; own: whose cockpit the camera sits in (None: outside all of them);
-        size_px: width and height; ghost: whether a second lead may be drawn faintly; smooth: whether silhouettes
-        are antialiased.
+        """airframes: (K,) of the formation; size_px: width and height; seed: the one the ground was read with;
+        own: whose cockpit the camera sits in (None: outside all of them); ghost: whether a second lead may be
+        drawn faintly; smoke: the flight whose aircraft trail it; smooth: whether silhouettes are antialiased.
         """
         require_drawing()
         self._own, self._smooth = own, smooth
@@ -71,12 +78,14 @@ class Stage:
         self._cockpit = None if own is None else Craft(build_cockpit(airframes[own]), on_craft)
         self._ghost = Craft(shapes[airframes[0]].parts, on_craft, opacity=GHOST_OPACITY, lit=False) if ghost else None
         self._shadows = Shadows([shapes[frame] for frame in airframes], light.sun_d, ground.height_at)
+        self._trails = None if smoke is None else Trails(smoke, [shapes[frame] for frame in airframes], day.wind)
         self.renderer = _renderer(light)
         nearest_first = [self._cockpit, *self._craft, self._ghost]
         for craft in nearest_first:
             self._add(() if craft is None else craft.actors(clear=False))
         self._add(self._land.actors)
         self._add(self._shadows.actors)
+        self._add(() if self._trails is None else self._trails.actors)
         for craft in reversed(nearest_first):
             self._add(() if craft is None else craft.actors(clear=True))
         self._window = new_window()
@@ -146,6 +155,8 @@ class Stage:
             if k == self._own and self._cockpit is not None:
                 self._cockpit.place(matrix, moved_parts(instant, k), eye_d, own=True)
         self._shadows.lay(instant, camera)
+        if self._trails is not None:
+            self._trails.lay(instant.time_s, camera)
         if self._ghost is not None:
             apart = 0.0 if ghost is None else float(np.linalg.norm(ghost.pos_e_m[0] - instant.pos_e_m[0]))
             if ghost is None or apart < GHOST_APART_M:
@@ -167,12 +178,21 @@ class Stage:
 
 
 def moved_parts(instant: Instant, k: int) -> Mapping[str, float]:
-    """Angles of the moving parts of aircraft k, rad, by who moves them."""
+    """Angles of the moving parts of aircraft k, rad, by who moves them.
+
+    The lead's head looks ahead, a wing pilot's at the lead as far as a neck turns (80 deg, NOTICING 1.37).
+    """
     aileron = float(instant.aileron_rad[k])
+    head = 0.0
+    if k > 0:
+        azimuth, _ = angles(direction_b(instant.pos_e_m[0] - instant.pos_e_m[k], instant.quat_eb[k]))
+        head = float(np.clip(azimuth, -HEAD_TURN_RAD, HEAD_TURN_RAD))
     return {
         "stabilator": float(instant.stabilator_rad[k]),
         "aileron_left": aileron,  # rolls right: left trailing edge down, right up
         "aileron_right": -aileron,
+        "head": head,
+        "propeller": float((2.0 * np.pi * PROPELLER_RPS * instant.time_s) % (2.0 * np.pi)),
     }
 
 
