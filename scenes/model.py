@@ -265,6 +265,17 @@ class Watch:
 
 
 @dataclass(frozen=True, slots=True)
+class Captions:
+    """Words of the held moments, in the team's own language; ``{seconds}`` stands for the time since the fault."""
+
+    fault: str = quantity("text", "words at the fault", default="")
+    early: str = quantity("text", "words where the early observer could notice", default="")
+    likely: str = quantity("text", "words where the likely observer could notice", default="")
+    late: str = quantity("text", "words where the late observer could notice", default="")
+    last_pull: str = quantity("text", "words at the last pull", default="")
+
+
+@dataclass(frozen=True, slots=True)
 class FilmPlan:
     """How the scene is filmed."""
 
@@ -277,6 +288,8 @@ class FilmPlan:
     rate_fps: int = quantity("count", "frames a second", 5, 60, key="rate", default=30)
     units: str = quantity("word", "units of the overlay", choices=("feet", "metres"), default="feet")
     smoke: bool = quantity("flag", "whether the aircraft trail smoke", default=False)
+    captions: Captions | None = quantity("part", "words of the held moments, where not in English", default=None,
+                                         part=Captions)
 
 
 @dataclass(frozen=True, slots=True)

@@ -12,6 +12,7 @@ from render.frames import Array
 from render.output.events import Event, slot_index, study_events
 from render.output.words import seconds
 from render.types import Study, freeze_arrays
+from scenes.model import Captions
 
 CARD_S = 5.0
 BEFORE_S, AFTER_S = 3.0, 2.0  # shown before the top or the fault, and after the bottom
@@ -95,8 +96,11 @@ def key_events(study: Study, slot: str) -> tuple[Event, ...]:
     return tuple(e for e in study_events(study, slot) if e.kind in wanted)
 
 
-def event_caption(event: Event, fault_s: float | None) -> str:
-    """What a held picture says of its moment."""
+def event_caption(event: Event, fault_s: float | None, words: Captions | None = None) -> str:
+    """What a held picture says of its moment; words: the scene's own, where it has them."""
+    own = "" if words is None else str(getattr(words, event.kind.removeprefix("visible_").removesuffix("_floor"), ""))
+    if own:
+        return own.replace("{seconds}", f"{event.time_s - (fault_s or 0.0):.1f}")
     since = "" if fault_s is None else f", {seconds(event.time_s - fault_s)} after the fault"
     if event.kind == "fault":
         return f"The fault: {event.detail}"
@@ -107,8 +111,8 @@ def event_caption(event: Event, fault_s: float | None) -> str:
 
 def key_holds(study: Study, slot: str, for_s: float = 2.5) -> tuple[Hold, ...]:
     """Holds at all key moments of a slot."""
-    fault_s = study.faulted.fault_s
-    return tuple(Hold(e.time_s, for_s, event_caption(e, fault_s)) for e in key_events(study, slot))
+    fault_s, words = study.faulted.fault_s, study.scene.film.captions
+    return tuple(Hold(e.time_s, for_s, event_caption(e, fault_s, words)) for e in key_events(study, slot))
 
 
 def plan_shot(

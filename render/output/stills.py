@@ -84,7 +84,7 @@ def write_key_stills(
     with context as opened:
         for event, path in zip(events, paths, strict=True):
             assert opened is not None
-            caption = event_caption(event, study.faulted.fault_s)
+            caption = event_caption(event, study.faulted.fault_s, study.scene.film.captions)
             _save(still_frame(study, slot, event.time_s, opened, size, caption=caption, note=note), path, force)
     return paths
 

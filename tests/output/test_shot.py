@@ -2,12 +2,16 @@
 
 from __future__ import annotations
 
+import dataclasses
+
 import numpy as np
 import pytest
 
 from render.errors import LatepullError
+from render.output.ink import font
 from render.output.shot import Hold, Slow, default_range, key_holds, plan_shot
 from render.types import Study
+from scenes.model import Captions
 
 
 def test_default_film_runs_from_before_the_top_to_contact(study: Study) -> None:
@@ -56,3 +60,20 @@ def test_range_outside_the_flight(study: Study) -> None:
         plan_shot(study, "right", start_s=30.0, end_s=20.0)
     with pytest.raises(LatepullError, match="rate 500"):
         plan_shot(study, "right", rate_fps=500)
+
+
+def test_captions_of_the_scene_take_the_place_of_the_english_ones(study: Study) -> None:
+    words = Captions(fault="Стабилизатор застыл", last_pull="Τελευταίο τράβηγμα, {seconds} s")
+    film = dataclasses.replace(study.scene.film, captions=words)
+    told = dataclasses.replace(study, scene=dataclasses.replace(study.scene, film=film))
+    english = {h.caption for h in key_holds(study, "right")}
+    captions = [h.caption for h in key_holds(told, "right")]
+    pull_s = study.margin.last_pull_floor_s[1] - study.faulted.fault_s
+    assert captions[0] == "Стабилизатор застыл" and f"Τελευταίο τράβηγμα, {pull_s:.1f} s" in captions
+    assert len(set(captions) & english) == len(captions) - 2
+
+
+def test_fonts_hold_latin_cyrillic_and_greek() -> None:
+    blank = bytes(font(20).getmask("\uffff"))  # what is drawn for a letter that a font hasn't
+    shapes = [bytes(font(20).getmask(letter)) for letter in "ÄñőЖщяΩψξ"]
+    assert blank not in shapes and len(set(shapes)) == len(shapes)
