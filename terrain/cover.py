@@ -86,9 +86,11 @@ def _trees(land: Land, rng: np.random.Generator, edges: Lines, boxes: Boxes) -> 
     e = edges.east_m + along * (edges.to_east_m - edges.east_m)
     groups.append((n[chosen], e[chosen], "broadleaf", stand.tree_height_m, 0.75))
     # in woods: thick along the edge of the wood and near, thin inside and far
-    n, e = _scatter(rng, REACH_M, stand.wood_tries)
+    near, wide = _scatter(rng, 1_000.0, stand.wood_tries), _scatter(rng, REACH_M, stand.wood_tries // 2)
+    n, e = np.concatenate([near[0], wide[0]]), np.concatenate([near[1], wide[1]])
     depth = _depth_of_wood(plan, n, e)
-    thin = np.where(depth < 22.0, 1.0, 0.16) * np.clip(1.35 - np.hypot(n, e) / REACH_M, 0.2, 1.0)
+    far = np.hypot(n, e)
+    thin = np.where(depth < 22.0, 1.0, np.clip(1.1 - far / 1_300.0, 0.12, 1.0)) * np.clip(1.35 - far / REACH_M, 0.2, 1.0)
     chosen = (depth > 0.0) & (rng.random(len(n)) < thin)
     groups.append(
         (n[chosen], e[chosen], stand.wood_kind, stand.wood_height_m, 0.55 if stand.wood_kind == "conifer" else 0.8)

@@ -42,7 +42,7 @@ class Airfield:
     @property
     def across_m(self) -> tuple[float, float]:
         """Where its bounds lie to the right (negative) and to the left of the runway's middle line."""
-        return -150.0, 340.0
+        return -330.0, 340.0
 
     def along_across(self, north_m: Any, east_m: Any) -> tuple[Any, Any]:
         """Distance along the runway from its middle, and to the left of its heading, m."""

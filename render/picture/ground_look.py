@@ -160,6 +160,8 @@ def _airfield_constants(field: Airfield) -> dict[str, object]:
         "AIRFIELD_AT": (field.east_m, field.north_m),
         "AIRFIELD_C": float(np.cos(field.heading_rad)),
         "AIRFIELD_S": float(np.sin(field.heading_rad)),
+        "BOUNDS": (field.half_along_m, 0.5 * (field.across_m[1] - field.across_m[0])),
+        "BOUNDS_MID": float(0.5 * sum(field.across_m)),
         "RUNWAY_L": float(field.length_m),
         "RUNWAY_W": float(field.width_m),
         "MOWN_A": field.grass[0],

@@ -27,7 +27,7 @@ vec3 mown(vec2 s, float px, float n1, float n7) {
   float n45 = (noise(s * vec2(0.013, 0.019) + 4.4) - 0.5);
   vec3 colour = mix(MOWN_A, MOWN_B, 0.5 + swath * (1.0 - 0.8 * rough) + 0.5 * rough * (n7 + n45)) * (1.0 + 0.20 * n7 + 0.50 * n1 + 0.20 * n45);
   colour *= mix(vec3(1.0), vec3(1.02, 0.97, 0.84), rough * (0.5 + n45));
-  vec2 bounds = vec2(half_l + 240.0, 245.0) - abs(s - vec2(0.0, 95.0));
+  vec2 bounds = BOUNDS - abs(s - vec2(0.0, BOUNDS_MID));
   float rim_m = min(bounds.x, bounds.y);
   colour = mix(colour, vec3(0.47, 0.45, 0.40), band(abs(rim_m - 14.0), 2.2, max(w.x, w.y)) * 0.9);
   colour = mix(colour, colour * 0.55, band(abs(rim_m - 1.5), 1.2, max(w.x, w.y)));

@@ -9,7 +9,7 @@ vec4 cloudColour() {
   float cover = clamp(thick * 11.0, 0.0, 1.0);
   float deep = clamp(thick * 5.0, 0.0, 1.0);
   vec3 white = sunLight * 0.62 + skyLight * 0.42, grey = skyLight * 0.85 + sunLight * 0.16;
-  vec3 top = (sunLight * 0.72 + skyLight * 0.46) * (0.86 + 0.55 * (n - 0.45));
+  vec3 top = min((sunLight * 0.80 + skyLight * 0.66) * (0.92 + 0.5 * (n - 0.5)), vec3(1.0));
   vec3 colour = ray.z > 0.0 ? mix(white, grey, deep) : top;
   float y = min(extinction * d * (1.0 / 32.0), 1.0);
   float left = 1.0 - y + 0.5 * y * y;

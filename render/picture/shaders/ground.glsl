@@ -20,7 +20,7 @@ vec3 country(vec2 q, float px, float longest, float n1, float n7, float n45) {
   colour *= 1.0 + (enclosed ? 0.16 : 0.30) * (1.5 * n1 + 1.2 * n7 + 0.9 * n45) + 0.20 * (n600 - 0.5);
 
   float wooded = clamp(enclosed ? (kind < WOOD_PART ? 0.5 * (edge - 2.0) : 0.0) : (n600 - WILD_WOOD) * 90.0, 0.0, 1.0);
-  colour = mix(colour, WOOD * (1.0 + 1.1 * n7 + 0.5 * n45), wooded);
+  colour = mix(colour, WOOD * (1.0 + 0.8 * n7 + 0.5 * n45 + 0.5 * n1), wooded);
   // far off many fields share a pixel: toward their mean, so that the rim of the land does not glitter
   colour = mix(colour, COUNTRY_MEAN, clamp(longest * (0.35 / FIELD) - 0.25, 0.0, 0.85));
   float wh = fwidth(edge);

@@ -11,10 +11,12 @@ vec3 seaColour(vec2 p, vec3 ray, float out_m, float px) {
   float n40 = (noise(w * vec2(1.0 / 60.0, 1.0 / 24.0)) - 0.5) * shown(40.0, px);
   float n6 = (noise(w * vec2(1.0 / 9.0, 1.0 / 4.5) + 7.7) - 0.5) * shown(7.0, px);
   float n1 = (noise(w * vec2(1.0 / 2.2, 1.0 / 1.1) + 3.3) - 0.5) * shown(1.5, px);
+  float n500 = noise(w * vec2(1.0 / 900.0, 1.0 / 380.0) + 1.9) - 0.5;   // catspaws
   vec2 slope = vec2(0.30 * n6 + 0.26 * n1, 0.22 * n40 - 0.26 * n6 + 0.22 * n1);
   vec3 normal = normalize(vec3(slope, 1.0));
   float facing = clamp(-dot(look, normal), 0.0, 1.0), away = 1.0 - facing;
   float mirror = 0.02 + 0.98 * away * away * away * away * away;       // Schlick 1994, water
+  mirror *= 1.0 - 0.5 * n500;
   mirror = mix(mirror, 0.55 * mirror, clamp(px * 0.3, 0.0, 1.0));      // far waves show their near faces
   vec3 back = reflect(look, normal);
   float up = clamp(back.z, 0.0, 1.0);
@@ -22,9 +24,9 @@ vec3 seaColour(vec2 p, vec3 ray, float out_m, float px) {
   float spread = max(dot(back, sunDir), 0.0);
   spread *= spread; spread *= spread; spread *= spread; spread *= spread; spread *= spread;
   float depth = clamp(out_m * (1.0 / 260.0) + 0.3 * n40, 0.0, 1.0);
-  vec3 body = mix(SHALLOW, DEEP, depth * (2.0 - depth)) * flatLight * (1.0 + 0.35 * n6 + 0.30 * n1 + 0.25 * n40);
+  vec3 body = mix(SHALLOW, DEEP, depth * (2.0 - depth)) * flatLight * (1.0 + 0.35 * n6 + 0.30 * n1 + 0.25 * n40 + 0.22 * n500);
   vec3 colour = mix(body, sky, mirror) + sunLight * 0.35 * spread;
-  float caps = clamp((n6 + 0.8 * n1 + 0.5 * n40 - 0.36) * 8.0, 0.0, 1.0);
+  float caps = clamp((n6 + 0.9 * n1 + 0.7 * n40 - 0.52) * 5.0, 0.0, 1.0);
   return mix(colour, vec3(0.86) * flatLight, 0.55 * caps);
 }
 float foamAt(float out_m, vec2 p, float px, float n7) {
