@@ -25,6 +25,7 @@ VIEWS = ("seat", "chase", "spectator")
 # The lead is framed off the middle, so that the ground ahead of him and his horizon are in the picture: measured on
 # sketches in line abreast, 7 deg toward the nose and 5 deg down.
 FRAME_NOSEWARD_RAD, FRAME_DOWN_RAD = np.radians([7.0, 5.0])
+FRAME_LOWEST_RAD = float(np.radians(-10.0))
 GAUGES_DOWN_RAD = float(np.radians(24.0))  # the panel below the coaming, as the cockpits are drawn
 # A large turn of the gaze takes 0.5-0.9 s, latency included (NOTICING 1.38, Guitton & Volle 1987, as remembered).
 TURN_S = 0.6
@@ -139,7 +140,9 @@ def _framed(eyes_b: Array) -> Array:
     """The picture's axis for eyes on the lead: moved toward the nose and down; less where he is high or low."""
     azimuth, elevation = angles(eyes_b)
     shift = min(float(FRAME_NOSEWARD_RAD), abs(azimuth)) * np.cos(elevation)
-    return direction(azimuth - np.sign(azimuth) * shift, max(elevation - float(FRAME_DOWN_RAD), -1.5))
+    # Not down into the cockpit when he is low: then he stands below the middle instead, by 10 deg at most.
+    down = min(max(elevation - float(FRAME_DOWN_RAD), FRAME_LOWEST_RAD), elevation + float(np.radians(10.0)))
+    return direction(azimuth - np.sign(azimuth) * shift, down)
 
 
 def _lifted(eyes_b: Array) -> Array:
