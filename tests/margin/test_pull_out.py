@@ -10,7 +10,7 @@ from scipy.optimize import brentq
 
 from render.margin.escape import escape_heights, find_margin
 from tests.margin.dives import exact_plan, straight_dive
-from tests.reference.closed_forms import DEG, G, pull_height_change, pull_speed
+from tests.reference.closed_forms import DEG, G, pull_distance, pull_height_change, pull_speed
 
 FLAT, GRID = np.zeros((1, 1)), np.array([0.0, 0.0, 1.0])
 
@@ -87,3 +87,26 @@ def test_a_delay_costs_the_dive_flown_meanwhile(delay_s: float) -> None:
     at_once = escape_heights(now, flight, 0, np.array([1.0]), FLAT, GRID, delay_s=0.0)
     # at least the height of the dive at the speed of the start (the rule of thumb), more as it gathers speed
     assert at_once[0] - late[0] > (speed + G * math.sin(dive)) * math.sin(dive) * delay_s
+
+
+@pytest.mark.parametrize("foot_m", [500.0, 700.0, 900.0])
+@pytest.mark.parametrize("slope_deg", [12.0, 20.0, 27.0])
+def test_rising_ground_ahead_counts_after_the_path_has_turned_up(foot_m: float, slope_deg: float) -> None:
+    """A 2.5 g pull from level flight at 200 m/s, 150 m up, over a plain that rises from a foot ahead on.
+
+    The path is E1's: where it is nearest to the slope is worked out from the closed form, to 2 m.
+    """
+    speed, height, n = 200.0, 150.0, 2.5
+    plan = exact_plan(n)
+    flight = straight_dive(plan, speed_mps=speed, dive_rad=0.0, height_m=height, end_s=0.1, n=n)
+    north = np.arange(-100.0, 12_001.0, 10.0)
+    rise = np.maximum(north - foot_m, 0.0) * math.tan(slope_deg * DEG)
+    heights, grid = np.stack([rise, rise], axis=1), np.array([-100.0, 0.0, 10.0])
+    gammas = np.linspace(0.0, 60.0 * DEG, 600)
+    above = []
+    for gamma in gammas:
+        x = pull_distance(speed, 0.0, n, gamma)
+        ground = max(x - foot_m, 0.0) * math.tan(slope_deg * DEG)
+        above.append(height + pull_height_change(speed, 0.0, n, gamma) - ground)
+    found = float(escape_heights(plan, flight, 0, np.array([0.0]), heights, grid)[0])
+    assert found == pytest.approx(min(above), abs=2.0)
