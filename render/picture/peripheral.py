@@ -2,7 +2,8 @@
 
 The minimum resolvable angle grows by a straight line, MAR(E) = MAR0 + m E, MAR0 = 1 arcmin, m = 1.5 arcmin a degree
 of eccentricity E (B. Guenter et al., Foveated 3D graphics, ACM TOG 31(6) 2012: m = 1.32 to 1.65; NOTICING 1.32);
-the same line that noticing works with. Each pixel becomes the mean of a patch one MAR wide.
+the same line that noticing works with. Bars one MAR wide, the finest that are resolved, keep a third of their contrast,
+bars twice as wide two thirds, bars of half the width nothing.
 
 Acuity only: motion is seen well off the gaze (NOTICING 1.33), crowding, colour and contrast are not in it, and at the
 true viewing distance the eye does the same once more.
