@@ -90,7 +90,8 @@ def _trees(land: Land, rng: np.random.Generator, edges: Lines, boxes: Boxes) -> 
     n, e = np.concatenate([near[0], wide[0]]), np.concatenate([near[1], wide[1]])
     depth = _depth_of_wood(plan, n, e)
     far = np.hypot(n, e)
-    thin = np.where(depth < 22.0, 1.0, np.clip(1.1 - far / 1_300.0, 0.12, 1.0)) * np.clip(1.35 - far / REACH_M, 0.2, 1.0)
+    inner = np.clip(1.1 - far / 1_300.0, 0.12, 1.0)
+    thin = np.where(depth < 22.0, 1.0, inner) * np.clip(1.35 - far / REACH_M, 0.2, 1.0)
     chosen = (depth > 0.0) & (rng.random(len(n)) < thin)
     groups.append(
         (n[chosen], e[chosen], stand.wood_kind, stand.wood_height_m, 0.55 if stand.wood_kind == "conifer" else 0.8)

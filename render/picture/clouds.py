@@ -24,7 +24,12 @@ def cloud_actor(base_m: float) -> vtkActor:
     # The disc moves with the eye, its cloud does not: the shader works with where it is on the land.
     position = "place = vertexMC.xyz + vec3(eye.xy, 0.0);\nsetRim(place);\n"
     actor = shaded_actor(
-        mesh(points, triangles), glsl("common") + glsl("cloud"), "fragOutput0 = cloudColour();\n", None, glsl("rim"), position
+        mesh(points, triangles),
+        glsl("common") + glsl("cloud"),
+        "fragOutput0 = cloudColour();\n",
+        None,
+        glsl("rim"),
+        position,
     )
     actor.ForceTranslucentOn()
     return actor

@@ -19,7 +19,8 @@ from terrain.land import Airfield, Land
 
 REACH_M = 60_000.0
 #: Half side and spacing of the nested squares about the display centre, m.
-RELIEF_SQUARES = ((4_000.0, 100.0), (9_000.0, 250.0), (18_000.0, 750.0), (REACH_M, 5_000.0))
+OUTER_SQUARES = ((9_000.0, 250.0), (18_000.0, 750.0), (REACH_M, 5_000.0))  # round the fine square of a relief
+FINE_HALF_M, FINE_STEP_M = 4_000.0, 60.0
 FLAT_SQUARES = ((2_400.0, 400.0), (9_000.0, 1_500.0), (REACH_M, 8_500.0))
 SHORE_SQUARES = ((6_000.0, 150.0), (12_000.0, 600.0), (REACH_M, 6_000.0))
 EDGE_M = 2.0  # how far past the tarmac the runway's strip goes
@@ -38,7 +39,7 @@ class GroundMesh:
 def ground_mesh(ground: Ground, land: Land) -> GroundMesh:
     """The mesh of a ground with the land on it."""
     level = float(np.ptp(ground.heights_m)) == 0.0
-    squares = FLAT_SQUARES if level else SHORE_SQUARES if land.plan.shore is not None else RELIEF_SQUARES
+    squares = FLAT_SQUARES if level else SHORE_SQUARES if land.plan.shore is not None else _relief_squares(ground)
     places = _nested(squares)
     if land.airfield is not None:
         outside = ~_within(land.airfield, places, squares[0][1] * 0.45)
@@ -49,6 +50,12 @@ def ground_mesh(ground: Ground, land: Land) -> GroundMesh:
     triangles[turn < 0.0] = triangles[turn < 0.0][:, [0, 2, 1]]
     points = np.column_stack([places, ground.height_at(places[:, 1], places[:, 0])])
     return GroundMesh(points, _normals(ground, places), _by_kind(land, places, triangles), level)
+
+
+def _relief_squares(ground: Ground) -> tuple[tuple[float, float], ...]:
+    """Nested squares whose innermost has its corners on the ground's own grid, or on each second, third ... of it."""
+    step = ground.spacing_m * float(np.ceil(FINE_STEP_M / ground.spacing_m))
+    return ((round(FINE_HALF_M / step) * step, step), *OUTER_SQUARES)
 
 
 def _normals(ground: Ground, places: Array, step_m: float = 60.0) -> Array:

@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from pathlib import Path
 
+import matplotlib
 import numpy as np
 import pytest
 
@@ -255,3 +257,37 @@ def test_water_is_level() -> None:
     assert len(sea) > 10_000
     assert np.abs(sea + shore.below_m).max() < 0.5
     assert ground.height_at(0.0, 0.0) == 0.0
+
+
+def test_cloud_lies_at_its_base_and_is_seen_from_both_sides() -> None:
+    land = Land(read_ground("heath"), replace(DAY, cloud_base_m=900.0), 1)
+    assert land.cloud_actor is not None
+    with Lens(land, near_m=5.0) as lens:
+        for height_m, up in ((300.0, 30.0), (1500.0, -30.0)):
+            lens.show()
+            with_cloud = lens.look((0.0, 0.0, -height_m), 20.0, up).astype(int)
+            lens.show(*(actor for actor in land.actors if actor is not land.cloud_actor))
+            without = lens.look((0.0, 0.0, -height_m), 20.0, up).astype(int)
+            changed = np.abs(with_cloud - without).sum(axis=-1) > 20
+            assert 0.1 < changed.mean() < 0.9  # broken cloud
+        lens.show()
+        below = lens.look((0.0, 0.0, -300.0), 20.0, -30.0)
+        lens.show(*(actor for actor in land.actors if actor is not land.cloud_actor))
+        assert np.array_equal(below, lens.look((0.0, 0.0, -300.0), 20.0, -30.0))  # none below its base
+    assert Land(read_ground("heath"), DAY, 1).cloud_actor is None
+
+
+def test_a_real_relief_is_drawn_without_an_airfield() -> None:
+    """matplotlib's sample heights (USGS), see tests/terrain/test_elevation.py."""
+    ground = read_ground(str(Path(matplotlib.get_data_path()) / "sample_data" / "jacksboro_fault_dem.npz"))
+    land = Land(ground, DAY, 1)
+    with Lens(land, near_m=20.0) as lens:
+        lens.show(*land.ground_actors)
+        lens.look((0.0, 0.0, -900.0), 330.0, -25.0)
+        at = lens.places()
+    off = np.abs(at[..., 2] - ground.height_at(at[..., 1], at[..., 0]))
+    near = np.hypot(at[..., 0], at[..., 1]) < 3500.0
+    assert near.sum() > 10_000
+    # The mesh has the heights' own corners, 75 m apart; left is the bend of a cell cut in two, on slopes up to 60 %.
+    assert np.percentile(off[near], 90) < 1.5
+    assert off[near].max() < 12.0

@@ -1,5 +1,8 @@
 // Runway, taxiway, apron, mown grass. a: along the runway from its middle, b: to the left of its heading.
-// Sizes of the markings: ICAO Annex 14 volume I, chapter 5 (from memory).
+// Sizes of the markings. Aiming point: EASA CS ADR-DSN.L.540 table L-1. Number of threshold stripes: FAA AIM table
+// 2-3-2 (30 m: 8, 45 m: 12). Touchdown zone pairs from 150 m (500 ft), 22.5 m long, none within 50 m of the aiming point.
+// Threshold stripes 30 m from 6 m on, figures 9 m high 12 m behind them, centre line 30 m on 20 m off: ICAO Annex 14
+// volume I chapter 5, from memory.
 float boxes(vec2 d, vec2 w) { vec2 c = clamp(0.5 - d / max(w, vec2(0.02)), 0.0, 1.0); return c.x * c.y; }
 float slot(float x, float lo, float hi, float w) {  // cover of lo..hi by a pixel w wide at x
   w = max(w, 0.02);
