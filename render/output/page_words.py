@@ -86,12 +86,11 @@ def _noticed_clause(study: Study, slot: str) -> str:
     notes = _notices(study, slot)
     times = [n.time_s - fault_s for n in notes if n.time_s is not None]
     if not times:
-        return f"{_pilot(slot).capitalize()} could not have noticed before the flight ends"
+        return "He could not have noticed before the flight ends"
     if len(times) == len(notes):
-        return f"{_pilot(slot).capitalize()} could have noticed {span(times[0], times[-1])} after the fault"
+        return f"He could have noticed {span(times[0], times[-1])} after the fault"
     never = " and ".join(n.observer for n in notes if n.time_s is None)
-    return (f"{_pilot(slot).capitalize()} could have noticed {span(times[0], times[-1])} after the fault, "
-            f"a {never} observer not at all")
+    return f"He could have noticed {span(times[0], times[-1])} after the fault, a {never} observer not at all"
 
 
 def answer(study: Study, slot: str) -> str:
@@ -114,11 +113,12 @@ def answer(study: Study, slot: str) -> str:
         reach = _reach(min(lows), max(lows), units)
         return (f"{noticed}; the margin above the floor does not run out in this flight, and a break-out then has its "
                 f"lowest point {reach}.")
-    pull = f"the last pull to clear the floor is {last_pull_words(study, slot, 'floor')}"
+    words = last_pull_words(study, slot, "floor")
+    pull = f"the last pull to clear the floor is {words.removesuffix(' after the fault')}"
     late = [n.lateness_s for n in _notices(study, slot) if n.lateness_s is not None]
     if not late:
         return f"{noticed}; {pull}."
-    return f"{noticed}; {pull}, so that with his reaction he breaks out {lateness_break(late)}."
+    return f"{noticed}, {pull}: with his reaction he breaks out {lateness_break(late)}."
 
 
 def _reach(low_m: float, high_m: float, units: Units) -> str:
