@@ -22,13 +22,14 @@ def least_values(
 ) -> tuple[Array, Array]:
     """Least values from which on nothing is wanting, (I, O), and what is left there, (I, O); NaN where there is none.
 
-    low (I,): where each item's ladder begins; rungs (R,): added to it, rising, the first 0. The least is that
+    low (I,): where each item's ladder begins; rungs (R,) or (I, R): added to it, rising, the first 0. The least is that
     above the last rung that fails. tolerance: how near the value that fails lies below the one that holds;
     near: what is left there may be this much at most before the search stops early.
     """
-    items, r = len(low), len(rungs)
+    items, r = len(low), rungs.shape[-1]
     which = np.repeat(np.arange(items), r)
-    seen = left(which, np.repeat(low, r) + np.tile(rungs, items)).reshape(items, r, -1)
+    ladder = low[:, None] + np.broadcast_to(rungs, (items, r))
+    seen = left(which, ladder.ravel()).reshape(items, r, -1)
     observers = seen.shape[2]
     fails = seen < 0.0
     last = r - 1 - np.argmax(fails[:, ::-1], axis=1)  # (I, O)
@@ -39,7 +40,7 @@ def least_values(
     there[last == -1] = seen[:, 0][last == -1]
     i, o = np.nonzero((last >= 0) & (last < r - 1))
     at = last[i, o]
-    a, b = low[i] + rungs[at], low[i] + rungs[at + 1]
+    a, b = ladder[i, at], ladder[i, at + 1]
     f_a, f_b = seen[i, at, o], seen[i, at + 1, o]
     side = np.zeros(len(i))
     w_a, w_b = f_a.copy(), f_b.copy()  # the weights of false position (Illinois)
