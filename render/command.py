@@ -16,6 +16,8 @@ from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Any
 
+from render.command_page import add_page, page_command
+
 PURPOSE = ("How late a lead's lost pitch control becomes visible in a low formation loop, and how little is left then: "
            "fly a scene, film what a wing pilot sees, print the figures.")
 CAUTION = (
@@ -74,6 +76,7 @@ def build_parser() -> argparse.ArgumentParser:
     add("schema", "print the JSON Schema of the scene file").add_argument(
         "--airframe", action="store_true", help="that of the airframe file")
     add("doctor", "can this machine draw and encode")
+    add_page(add)
     return parser
 
 
@@ -306,6 +309,7 @@ def _doctor(args: argparse.Namespace) -> int:
 
 COMMANDS: dict[str, Callable[[argparse.Namespace], int]] = {
     "check": _check, "fly": _fly, "film": _film, "still": _still, "list": _list, "schema": _schema, "doctor": _doctor,
+    "page": page_command,
 }
 
 

@@ -12,7 +12,8 @@ import json
 import os
 import shutil
 from collections.abc import Sequence
-from dataclasses import dataclass
+from contextlib import ExitStack
+from dataclasses import dataclass, replace
 from importlib.resources import files
 from pathlib import Path
 
@@ -23,12 +24,13 @@ from PIL import Image, UnidentifiedImageError
 from render.errors import LatepullError, OutputExists
 from render.files import claim_output, output_error, scratch_folder, whole_file
 from render.output.page_films import Pictures, study_key
+from render.output.page_pdf import write_pdf
 from render.output.page_scene import InlineFilm, Picture, Refs, SceneView, scene_view
 from render.output.words import CAUTION
 from render.types import Study
 
 FORMAT = 1
-INDEX, MANIFEST, FILES = "index.html", "page.json", "files"
+INDEX, MANIFEST, FILES, PDF = "index.html", "page.json", "files", "briefing.pdf"
 SCRIPTS = ("page_film.js", "page_sitting.js", "page_main.js")
 STYLES = ("page.css", "print.css")
 EXTRAS = (("map*", "Map"), ("gate_card*", "Gate card"), ("gates*", "Gates"), ("scatter*", "Scatter of technique"),
@@ -102,8 +104,13 @@ def render_page(views: Sequence[SceneView], *, made: str, version: str) -> str:
         page_title=title, generator=f"latepull {version}", made=made, caution=CAUTION)
 
 
-def write_page(scenes: Sequence[PageScene], folder: str | Path, *, made: str, force: bool = False) -> Path:
-    """Write a page's folder; returns its index.html. Raises OutputExists, LatepullError, MachineError."""
+def write_page(
+    scenes: Sequence[PageScene], folder: str | Path, *, made: str, force: bool = False, pdf: bool = False
+) -> Path:
+    """Write a page's folder, with its PDF if asked; returns its index.html.
+
+    Raises OutputExists, LatepullError, MachineError; nothing is left then, and an old page stands as it was.
+    """
     folder = Path(folder)
     claim_page(folder, force=force)
     with scratch_folder(folder) as scratch:
@@ -113,17 +120,31 @@ def write_page(scenes: Sequence[PageScene], folder: str | Path, *, made: str, fo
                  for i, s in enumerate(scenes, start=1)]
         version = str(scenes[0].study.versions.get("latepull", ""))
         (part / INDEX).write_text(render_page(views, made=made, version=version), encoding="utf-8", newline="\n")
+        if pdf:
+            write_pdf(part / INDEX, part / PDF)
         (part / MANIFEST).write_text(manifest(scenes, part, version), encoding="utf-8")
         _take_place(part, folder, scratch)
     return folder / INDEX
 
 
-def write_single(scenes: Sequence[PageScene], path: str | Path, *, made: str, force: bool = False) -> Path:
-    """Write a page as one file with its films and pictures inside; returns the path. Raises as write_page does."""
+def write_single(
+    scenes: Sequence[PageScene], path: str | Path, *, made: str, force: bool = False, pdf: Path | None = None
+) -> Path:
+    """Write a page as one file with its films and pictures inside, and its PDF if asked; returns the path.
+
+    Raises as write_page does.
+    """
     version = str(scenes[0].study.versions.get("latepull", ""))
-    with whole_file(path, force=force) as part:
+    with ExitStack() as stack:
+        part = stack.enter_context(whole_file(path, force=force))
+        pdf_part = stack.enter_context(whole_file(pdf, force=force)) if pdf is not None else None
         views = [scene_view(s.study, s.slot, s.pictures, _inlined(s, i), i) for i, s in enumerate(scenes, start=1)]
         part.write_text(render_page(views, made=made, version=version), encoding="utf-8", newline="\n")
+        if pdf_part is not None:  # paper has no use for films, and reading past them takes minutes
+            scratch = stack.enter_context(scratch_folder(Path(path)))
+            bare = [replace(view, inline_films=()) for view in views]
+            (scratch / INDEX).write_text(render_page(bare, made=made, version=version), encoding="utf-8")
+            write_pdf(scratch / INDEX, pdf_part)
     return Path(path)
 
 
@@ -148,6 +169,21 @@ def page_scenes(scenes: Sequence[PageScene]) -> list[dict[str, object]]:
     """The scenes of a page as its manifest names them."""
     return [{"name": s.study.scene.name, "slot": s.slot, "study": study_key(s.study),
              "size_px": list(s.pictures.shot.size_px), "rate_fps": s.pictures.shot.rate_fps} for s in scenes]
+
+
+def stands(scenes: Sequence[PageScene], folder: str | Path) -> bool:
+    """Whether a folder holds just this page; raises LatepullError, by name, for a file of it that is gone."""
+    folder = Path(folder)
+    try:
+        data = json.loads((folder / MANIFEST).read_text(encoding="utf-8"))
+        same = data["format"] == FORMAT and data["scenes"] == page_scenes(scenes)
+        lost = [name for name, size in data["files"].items()
+                if not (folder / name).is_file() or (folder / name).stat().st_size != size]
+    except (OSError, ValueError, KeyError, TypeError, AttributeError):
+        return False
+    if lost:
+        raise LatepullError(f"{folder} is not whole: {', '.join(lost)} missing or changed; --force makes it again")
+    return same
 
 
 def _copied(scene: PageScene, folder: Path, number: int) -> Refs:
