@@ -13,6 +13,7 @@ from render.output.ink import BACK, FAINT, QUIET, WHITE, YELLOW, fit_text, font,
 from render.output.overlay import Frame
 from render.output.tables import last_pull_words
 from render.output.words import CAUTION, Units, cue_words, lateness_words, seconds
+from render.picture.camera import PANINI_FROM_RAD
 from render.types import Study
 
 
@@ -32,9 +33,11 @@ class CardTexts:
 def viewing_widths(field_rad: float) -> float:
     """Viewing distance at which a picture's angles are true, in picture widths: 1 / (2 tan(field/2)).
 
-    field_rad: horizontal field of a rectilinear picture, 0..pi.
+    field_rad: horizontal field, 0..pi. Above 100 deg the picture is the Pannini projection (d = 1), true about its
+    middle only: half its width is there 2 sin(field/2) / (1 + cos(field/2)) distances, which is 2 tan(field/4).
     """
-    return 1.0 / (2.0 * math.tan(field_rad / 2.0))
+    half = math.tan(field_rad / 2.0) if field_rad <= PANINI_FROM_RAD else 2.0 * math.tan(field_rad / 4.0)
+    return 1.0 / (2.0 * half)
 
 
 def card_texts(study: Study, slot: str) -> CardTexts:
@@ -74,7 +77,7 @@ def card_texts(study: Study, slot: str) -> CardTexts:
         caution=CAUTION,
         viewing=(
             f"Angles are true from {viewing_widths(study.scene.film.field_rad):.2f} picture widths away "
-            f"(field {field_deg:.0f} deg)."
+            f"(field {field_deg:.0f} deg{', in its middle' if field_deg > math.degrees(PANINI_FROM_RAD) else ''})."
         ),
         source=f"Scene: {study.scene.name}. {versions}.",
     )

@@ -14,7 +14,7 @@ from render.frames import quat_rotate
 from render.output.events import slot_index
 from render.output.overlay import strip_px
 from render.output.source import FrameSource, SourceSpec
-from render.picture.camera import FIELD_MAX_RAD, Camera
+from render.picture.camera import FIELD_MAX_RAD, PANINI_FROM_RAD, Camera
 from render.picture.instant import Instant, instant_at
 from render.picture.panini import Panini
 from render.picture.peripheral import Peripheral, patch_px
@@ -37,7 +37,6 @@ Frame = NDArray[np.uint8]
 
 FLIGHTS = ("faulted", "healthy")
 TWINS = ("side", "stack", "ghost")
-PANINI_FROM_RAD = float(np.radians(100.0))  # a plane stretches the edges of wider fields to more than 2.4 times
 SPECTATOR_FIELD_RAD = float(np.radians(40.0))  # he turns with the aircraft and attends to little beside it
 
 

@@ -16,6 +16,8 @@ from render.frames import Array, quat_conj, quat_rotate
 from render.types import freeze_arrays
 
 FIELD_MAX_RAD = float(np.radians(160.0))
+#: Wider fields are drawn by the Pannini projection: a plane stretches the edges of this one 2.4 times.
+PANINI_FROM_RAD = float(np.radians(100.0))
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -18,6 +18,7 @@ from render.output.overlay import STRIP, Overlay
 from render.output.side_view import SideView
 from render.output.texts import overlay_texts
 from render.output.timeline import Timeline
+from render.picture.panini import Panini
 from render.types import Study
 from tests.output.made_up import made_up_study
 
@@ -181,6 +182,9 @@ def test_viewing_distance() -> None:
     """width / (2 tan(field/2)): a right angle is true from half a width; 53.13 deg (3-4-5 triangle) from one width."""
     assert viewing_widths(math.pi / 2) == pytest.approx(0.5, rel=1e-12)
     assert viewing_widths(2 * math.atan(0.5)) == pytest.approx(1.0, rel=1e-12)
+    # wide pictures are squeezed: a field of 120 deg fills 2 x 2 tan(30 deg) distances, not 2 tan(60 deg)
+    assert viewing_widths(math.radians(120)) == pytest.approx(math.sqrt(3) / 4, rel=1e-12)
+    assert viewing_widths(math.radians(120)) == pytest.approx(Panini(math.radians(120), (640, 360)).focal_px / 640)
 
 
 def test_card_says_what_it_must(study: Study) -> None:
