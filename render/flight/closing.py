@@ -1,165 +1,113 @@
 """Loops closed: the back half's demand scaled until the healthy lead bottoms at the height asked.
 
-The scale does nothing before the top, so each try is flown from there on. Compiled; a batch equals its
-single loops to the last bit.
+The scale does nothing before the top, so each try is flown from there on; many loops try side by side.
 """
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from typing import Any
+from collections.abc import Generator, Sequence
 
 import numpy as np
-from numba import njit, prange
 
 from render.errors import FlightError
+from render.flight import passes
 from render.flight import records as r
-from render.flight.passes import fly_lead
+from render.flight import script as s
+from render.flight.batch import fly_lead_kept
 from render.flight.plan import DT_S, Plan
-from render.flight.records import A_LIMIT, A_STEP, NA, NY, Array, D
-from render.flight.script import M_INSIDE, M_SCRIPT_END_S, M_TOP_S, NM
+from render.frames import Array
 from scenes.model import Loop
 
 FOOT_M = 0.3048
 CLOSE_TOL_M = 0.02
-SCALE_LOW, SCALE_HIGH, SCALES = 0.25, 3.0, 9
+SCALES = np.geomspace(0.25, 3.0, 9)
 TRIES = 25
-# What the search leaves behind, one row a loop.
-C_SCALE, C_MISSED, C_LOW, C_HIGH, C_LIMIT, C_TOPPED, C_FOUND = range(7)
+CHUNK = 64  # loops closed side by side, about 1.5 MB each
+# a ground far below, so that a loop that would hit has a bottom too
+BELOW, BELOW_GRID = np.full((1, 1), -20_000.0), np.array([0.0, 0.0, 1.0])
+
+Try = tuple[float, int]  # the bottom, m (NaN: none), and the limits met on the way
+Found = tuple[float, str | None]  # the scale, or why there is none
+Search = Generator[float, Try, Found]
 
 
-@njit(cache=True)
-def bottom_of(y: Array, a: Array, mem: Array, loop: int, dt_s: float) -> tuple[float, float]:
-    """Lowest height after the top in the closing loop and the step after it, m, and the limits met on the way.
+def _search(name: str, want_m: float) -> Search:
+    """Yields scales to try, is sent their bottoms: a grid outward from its middle, then Illinois false position."""
+    missed: dict[int, float] = {}
+    limits = 0
 
-    By a parabola through three instants; NaN if there is none. Nothing after the script's end counts.
-    """
-    top = round(mem[M_TOP_S] / dt_s) + 1
-    end = mem[M_SCRIPT_END_S]
-    until = min(round(end / dt_s) + 1, y.shape[0]) if end >= 0.0 else y.shape[0]
-    last, count = -1, 0
-    for i in range(top, until):
-        if a[i, A_STEP] <= loop + 1:
-            last = i
-            count += 1
-    if count < 3:
-        return np.nan, 0.0
-    low = top
-    for i in range(top, last + 1):
-        if y[i, D] > y[low, D]:
-            low = i
-    limit = 0.0
-    for i in range(top, low + 1):
-        limit = max(limit, a[i, A_LIMIT])
-    bottom = -y[low, D]
-    if top < low < last:
-        left, right = -y[low - 1, D], -y[low + 1, D]
-        bend = left - 2.0 * bottom + right
-        if bend > 0.0:
-            bottom -= (right - left) ** 2 / (8.0 * bend)
-    return bottom, limit
+    def miss(j: int) -> Generator[float, Try, float]:
+        nonlocal limits
+        if j not in missed:
+            bottom, limit = yield float(SCALES[j])
+            missed[j] = bottom - want_m
+            if np.isfinite(bottom):
+                limits = max(limits, limit)
+        return missed[j]
 
-
-@njit(cache=True)
-def _try(
-    scale: float, begin: int, y0: Array, mem0: Array, af: Any, case: Any, script: Array, knots: Array, coeffs: Array,
-    below: Array, grid: Array, dt_s: float, y: Array, a: Array, loop: int,
-) -> tuple[float, float]:
-    """Fly from the top on with a scale; the bottom and the limits met."""
-    case[0].loop_scale = scale
-    mem = mem0.copy()
-    mem[M_INSIDE] = 1.0
-    fly_lead(y0, af, case[0], script, knots, coeffs, below, grid, dt_s, y, a, mem, begin, -1, 0)
-    return bottom_of(y, a, mem, loop, dt_s)
-
-
-@njit(cache=True)
-def close_one(
-    y0: Array, memory: Array, af: Any, case: Any, script: Array, knots: Array, coeffs: Array, want_m: float, loop: int,
-    steps: int, dt_s: float, out: Array,
-) -> None:
-    """Search the scale of one loop: grid of scales outward from the middle, then Illinois false position.
-
-    case (1,): changed; loop: step of the script that closes; out (7,): the scale, by how much the bottom misses,
-    the lowest and highest miss seen, limits met, whether the top came, whether a bracket was found.
-    """
-    # a ground far below, so that a loop that would hit has a bottom too
-    below, grid = np.full((1, 1), -20_000.0), np.array([0.0, 0.0, 1.0])
-    y, a, kept = np.empty((steps + 1, NY)), np.empty((steps + 1, NA)), np.empty((steps + 1, NM))
-    mem = memory.copy()
-    case[0].fault_kind = 0.0
-    case[0].loop_scale = 1.0
-    _, flown = fly_lead(y0, af, case[0], script, knots, coeffs, below, grid, dt_s, y, a, mem, 0, -1, 0, kept)
-    out[C_SCALE], out[C_MISSED], out[C_LOW], out[C_HIGH] = 1.0, np.nan, np.inf, -np.inf
-    out[C_LIMIT], out[C_FOUND] = 0.0, 0.0
-    out[C_TOPPED] = 1.0 if mem[M_TOP_S] >= 0.0 else 0.0
-    if out[C_TOPPED] < 0.5:
-        return
-    begin = min(max(int(mem[M_TOP_S] / dt_s), 0), flown)
-    y_top, mem_top = y[begin].copy(), kept[begin].copy()
-    scales = SCALE_LOW * (SCALE_HIGH / SCALE_LOW) ** (np.arange(SCALES) / (SCALES - 1.0))
-    missed = np.full(SCALES, np.inf)  # infinite: not flown yet
-    lo, hi = -1, -1
-    # from the middle to where the miss changes sign; if that fails all of them, upward
-    for sweep in range(2):
-        j = SCALES // 2 if sweep == 0 else 0
-        up = True
-        lo, hi = -1, -1
-        while 0 <= j < SCALES:
-            if np.isinf(missed[j]):
-                b, limit = _try(scales[j], begin, y_top, mem_top, af, case, script, knots, coeffs, below, grid, dt_s,
-                                y, a, loop)
-                missed[j] = b - want_m
-                if not np.isnan(b):
-                    out[C_LIMIT] = max(out[C_LIMIT], limit)
-                    out[C_LOW], out[C_HIGH] = min(out[C_LOW], missed[j]), max(out[C_HIGH], missed[j])
-            if np.isnan(missed[j]):
-                if sweep == 0:
-                    break
-            elif missed[j] < 0.0:
-                lo = j
-            elif lo >= 0 or sweep == 0:
-                hi = j
-            if lo >= 0 and hi >= 0:
-                break
-            if sweep == 0:
-                up = lo >= 0
-            j += 1 if up else -1
-        if lo >= 0 and hi >= 0:
+    lo = hi = -1
+    j = len(SCALES) // 2
+    f = yield from miss(j)
+    step = 1 if f < 0.0 else -1
+    while 0 <= j < len(SCALES) and not (lo >= 0 and hi >= 0):
+        f = yield from miss(j)
+        if not np.isfinite(f):
             break
+        lo, hi = (j, hi) if f < 0.0 else (lo, j)
+        j += step
     if lo < 0 or hi < 0:
-        return
-    out[C_FOUND] = 1.0
-    s_lo, f_lo, s_hi, f_hi = scales[lo], missed[lo], scales[hi], missed[hi]
-    out[C_SCALE], out[C_MISSED] = s_lo, f_lo
-    side = 0
+        # not one clean change of sign from the middle: all of them, upward
+        lo = hi = -1
+        for j in range(len(SCALES)):
+            f = yield from miss(j)
+            if f < 0.0:
+                lo = j
+            elif f >= 0.0 and lo >= 0:
+                hi = j
+                break
+    if lo < 0 or hi < 0:
+        return 1.0, _cannot_close(name, want_m, missed, limits)
+    s_lo, f_lo, s_hi, f_hi = SCALES[lo], missed[lo], SCALES[hi], missed[hi]
+    best, f_best, side = s_lo, f_lo, 0
     for _ in range(TRIES):
         mid = (s_lo * f_hi - s_hi * f_lo) / (f_hi - f_lo)
-        b, _ = _try(mid, begin, y_top, mem_top, af, case, script, knots, coeffs, below, grid, dt_s, y, a, loop)
-        f = b - want_m
-        if abs(f) < abs(out[C_MISSED]):
-            out[C_SCALE], out[C_MISSED] = mid, f
-        if abs(out[C_MISSED]) < CLOSE_TOL_M:
+        bottom, _ = yield float(mid)
+        f = bottom - want_m
+        if abs(f) < abs(f_best):
+            best, f_best = mid, f
+        if abs(f_best) < CLOSE_TOL_M:
             break
         if f < 0.0:
-            if side == 1:
-                f_hi *= 0.5
+            f_hi = 0.5 * f_hi if side == 1 else f_hi
             s_lo, f_lo, side = mid, f, 1
         else:
-            if side == -1:
-                f_lo *= 0.5
+            f_lo = 0.5 * f_lo if side == -1 else f_lo
             s_hi, f_hi, side = mid, f, -1
+    if abs(f_best) > FOOT_M:
+        return 1.0, (f"the loop of '{name}' does not close within 1 ft of {want_m / FOOT_M:.0f} ft: the nearest bottom "
+                     f"found is {(want_m + f_best) / FOOT_M:.1f} ft")
+    return float(best), None
 
 
-@njit(cache=True, parallel=True)
-def close_many(
-    y0: Array, memory: Array, af: Any, case: Any, script: Array, knots: Array, coeffs: Array, want_m: Array,
-    loop: Array, steps: int, dt_s: float, out: Array,
-) -> None:
-    """``close_one`` of a batch; case (B, 1), out (B, 7)."""
-    for b in prange(y0.shape[0]):
-        close_one(y0[b], memory[b], af[b], case[b], script[b], knots[b], coeffs[b], want_m[b], int(loop[b]), steps,
-                  dt_s, out[b])
+def _bottom(y: Array, a: Array, mem: Array, loop: int) -> Try:
+    """Lowest height after the top in the closing loop and the step after it, by a parabola; limits met before it.
+
+    It belongs to the loop and the step after it, not to a dive later, nor to what follows the script.
+    """
+    top, end_s = round(mem[s.M_TOP_S] / DT_S) + 1, mem[s.M_SCRIPT_END_S]
+    until = round(end_s / DT_S) + 1 if end_s >= 0.0 else len(y)
+    inside = np.flatnonzero(a[top:until, r.A_STEP] <= loop + 1)
+    if inside.size < 3:
+        return np.nan, 0
+    height = -y[top : top + inside[-1] + 1, r.D]
+    i = int(np.argmin(height))
+    limit = int(np.max(a[top : top + i + 1, r.A_LIMIT], initial=0.0))
+    bottom = float(height[i])
+    if 0 < i < len(height) - 1:
+        left, right = height[i - 1], height[i + 1]
+        bend = left - 2.0 * bottom + right
+        bottom -= float((right - left) ** 2 / (8.0 * bend)) if bend > 0.0 else 0.0
+    return bottom, limit
 
 
 def close_each(plans: Sequence[Plan], longest_s: float) -> tuple[Array, list[str | None]]:
@@ -169,28 +117,49 @@ def close_each(plans: Sequence[Plan], longest_s: float) -> tuple[Array, list[str
     """
     scale = np.ones(len(plans))
     why: list[str | None] = [None] * len(plans)
-    closing = [(i, *_closes(p)) for i, p in enumerate(plans)]
-    todo = [(i, loop, want) for i, loop, want in closing if loop >= 0]
-    if not todo:
-        return scale, why
-    work = [plans[i] for i, _, _ in todo]
-    want = np.array([w for _, _, w in todo])
-    out = np.empty((len(todo), 7))
-    close_many(
-        np.stack([p.entry[0] for p in work]), np.stack([p.memory for p in work]),
-        np.concatenate([p.af[:1] for p in work]), np.concatenate([p.case for p in work]).reshape(-1, 1),
-        np.stack([p.script for p in work]), np.stack([p.knots for p in work]), np.stack([p.coeffs for p in work]),
-        want, np.array([float(loop) for _, loop, _ in todo]), round(longest_s / DT_S), DT_S, out,
-    )
-    for (i, _, w), row in zip(todo, out, strict=True):
-        scale[i] = row[C_SCALE]
-        name = plans[i].scene.name
-        if row[C_FOUND] < 0.5:
-            why[i] = _cannot_close(name, w, row)
-        elif not abs(row[C_MISSED]) <= FOOT_M:
-            why[i] = (f"the loop of '{name}' does not close within 1 ft of {w / FOOT_M:.0f} ft: the nearest bottom "
-                      f"found is {(w + row[C_MISSED]) / FOOT_M:.1f} ft")
+    todo = [i for i, plan in enumerate(plans) if _closes(plan) is not None]
+    for at in range(0, len(todo), CHUNK):
+        rows = todo[at : at + CHUNK]
+        for i, (found, reason) in zip(rows, _close([plans[i] for i in rows], longest_s), strict=True):
+            scale[i], why[i] = found, reason
     return scale, why
+
+
+def _close(plans: Sequence[Plan], longest_s: float) -> list[Found]:
+    """Searches of some loops in step, each try flown for all of them that still search."""
+    y, a, mem, kept = fly_lead_kept(plans, np.ones(len(plans)), round(longest_s / DT_S), BELOW, BELOW_GRID)
+    found: list[Found] = [(1.0, None)] * len(plans)
+    open_: dict[int, tuple[Search, float]] = {}
+    loops = [_closes(plan) or (0, 0.0) for plan in plans]
+    y0, mem0 = np.zeros((len(plans), r.NY)), np.zeros((len(plans), s.NM))
+    begin = np.zeros(len(plans))
+    for i, plan in enumerate(plans):
+        if mem[i, s.M_TOP_S] < 0.0:
+            found[i] = 1.0, _no_top(plan.scene.name)
+            continue
+        begin[i] = int(mem[i, s.M_TOP_S] / DT_S)
+        y0[i], mem0[i] = y[i, int(begin[i])], kept[i, int(begin[i])]
+        search = _search(plan.scene.name, loops[i][1])
+        open_[i] = search, next(search)
+    af = np.concatenate([p.af[:1] for p in plans])
+    script, knots, coeffs = (np.stack([getattr(p, n) for p in plans]) for n in ("script", "knots", "coeffs"))
+    mem0[:, s.M_INSIDE] = 1.0
+    while open_:
+        rows = np.array(list(open_))
+        n = rows.size
+        case = np.concatenate([plans[i].case for i in rows])
+        case["fault_kind"], case["loop_scale"] = 0.0, [scale for _, scale in open_.values()]
+        memory = mem0[rows]
+        passes.fly_leads(y0[rows], af, case, script, knots, coeffs, rows.astype(float), BELOW, BELOW_GRID, DT_S,
+                         begin[rows], np.full(n, -1.0), 0, y[:n], a[:n], memory, np.zeros((n, 2)), np.empty((n, 0, 0)))
+        for j, i in enumerate(rows):
+            search, _ = open_[int(i)]
+            try:
+                open_[int(i)] = search, search.send(_bottom(y[j], a[j], memory[j], loops[i][0]))
+            except StopIteration as done:
+                found[i] = done.value
+                del open_[int(i)]
+    return found
 
 
 def close_loops(plans: Sequence[Plan], longest_s: float) -> Array:
@@ -205,20 +174,23 @@ def close_loops(plans: Sequence[Plan], longest_s: float) -> Array:
     return scale
 
 
-def _closes(plan: Plan) -> tuple[int, float]:
-    """The step of the script that closes, and at which height, m; -1 if none does."""
+def _closes(plan: Plan) -> tuple[int, float] | None:
+    """The step of the script that closes, and at which height, m."""
     for i, step in enumerate(plan.scene.script):
         if isinstance(step, Loop) and step.close_at_m is not None:
             return i, step.close_at_m
-    return -1, np.nan
+    return None
 
 
-def _cannot_close(name: str, want_m: float, row: Array) -> str:
-    if row[C_TOPPED] < 0.5:
-        return (f"the loop of '{name}' never reaches its top: the aircraft runs out of speed on the way up; "
-                "enter faster, pull earlier, or use more power")
+def _no_top(name: str) -> str:
+    return (f"the loop of '{name}' never reaches its top: the aircraft runs out of speed on the way up; "
+            "enter faster, pull earlier, or use more power")
+
+
+def _cannot_close(name: str, want_m: float, missed: dict[int, float], limits: int) -> str:
     what = {r.LIMIT_BUFFET: "the wing's buffet limit", r.LIMIT_N_MAX: "the airframe's load factor limit"}.get(
-        int(row[C_LIMIT]), "the demand's shape (scaled from 0.25 to 3)")
-    low_ft, high_ft = (want_m + row[C_LOW]) / FOOT_M, (want_m + row[C_HIGH]) / FOOT_M
+        limits, "the demand's shape (scaled from 0.25 to 3)")
+    known = [m for m in missed.values() if np.isfinite(m)] or [np.nan]
+    low_ft, high_ft = (want_m + min(known)) / FOOT_M, (want_m + max(known)) / FOOT_M
     return (f"the loop of '{name}' can't close at {want_m / FOOT_M:.0f} ft: with the back half scaled, bottoms from "
             f"{low_ft:.0f} ft to {high_ft:.0f} ft are reachable; limited by {what}")

@@ -90,7 +90,7 @@ def fly_escapes(
         nothing = np.empty((0, 4))
         lowest_m[b], when_s[b] = fly_escape(
             y0[b], af[r], case[r], esc[r], away[b], throttle[b], fault_on[b] > 0.5, stab_at_fault[b], heights, grid,
-            dt_s, steps, nothing
+            dt_s, steps, nothing, -1e9
         )
 
 
@@ -124,5 +124,6 @@ def better_escapes(
     for b in prange(y0.shape[0]):
         r = int(row[b])
         lowest_m[b] = better_escape(
-            y0[b], af[r], case[r], esc[r], away[b], throttle[b], fault_on[b] > 0.5, stab_at_fault[b], heights, grid
+            y0[b], af[r], case[r], esc[r], away[b], throttle[b], fault_on[b] > 0.5, stab_at_fault[b], heights, grid,
+            -1e9
         )

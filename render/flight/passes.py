@@ -134,6 +134,17 @@ def _fault_reached(t: float, y: Array, case: Any, mem: Array, angle: float) -> f
 
 
 @njit(cache=True)
+def fault_step(case: Any, y: Array, kept: Array, script: Array, dt_s: float) -> int:
+    """The step of a flight without fault, y (T, NY), kept (T, NM), after which a case's fault comes on; -1: never."""
+    for i in range(y.shape[0] - 1):
+        mem, t = kept[i], i * dt_s
+        angle = loop_angle(y[i + 1], mem) if int(script[int(mem[M_STEP]), S_KIND]) == LOOP else mem[M_LOOP]
+        if _fault_reached(t + dt_s, y[i + 1], case, mem, angle) >= 0.0:
+            return i
+    return -1
+
+
+@njit(cache=True)
 def _lead_step(
     t: float, dt_s: float, y: Array, af: Any, case: Any, mem: Array, script: Array, knots: Array, coeffs: Array,
     k: Array,
@@ -287,25 +298,46 @@ def fly_wing(
 
 @njit(cache=True, parallel=True)
 def fly_leads(
-    y0: Array, af: Any, case: Any, script: Array, knots: Array, coeffs: Array, heights: Array, grid: Array,
-    dt_s: float, out_y: Array, out_a: Array, mem: Array, status: Array,
+    y0: Array, af: Any, case: Any, script: Array, knots: Array, coeffs: Array, row: Array, heights: Array, grid: Array,
+    dt_s: float, begin: Array, end_step: Array, tail: int, out_y: Array, out_a: Array, mem: Array, status: Array,
+    kept: Array,
 ) -> None:
-    """A batch of leads, batch in front of every array; status (B, 2): why and when it stopped."""
+    """A batch of leads: y0, case, begin, end_step and what is filled in have B in front, the rest row (B,) picks.
+
+    status (B, 2): why and when each stopped; kept (B, T, NM), or (B, 0, 0) if nothing is to be kept. One that is
+    to begin at a negative step is left as it is.
+    """
     for b in prange(y0.shape[0]):
-        status[b, 0], status[b, 1] = fly_lead(
-            y0[b], af[b], case[b], script[b], knots[b], coeffs[b], heights, grid, dt_s, out_y[b], out_a[b], mem[b]
-        )
+        at, r = int(begin[b]), int(row[b])
+        if at >= 0:
+            status[b, 0], status[b, 1] = fly_lead(
+                y0[b], af[r], case[b], script[r], knots[r], coeffs[r], heights, grid, dt_s, out_y[b], out_a[b], mem[b],
+                at, int(end_step[b]), tail, kept[b]
+            )
 
 
 @njit(cache=True, parallel=True)
 def fly_wings(
     y0: Array, af: Any, case: Any, slot: Array, lead_y: Array, lead_a: Array, lead_of: Array, heights: Array,
-    grid: Array, dt_s: float, last: Array, out_y: Array, out_a: Array, status: Array,
+    grid: Array, dt_s: float, last: Array, begin: Array, learnt: Array, row: Array, out_y: Array, out_a: Array,
+    status: Array, kept: Array,
 ) -> None:
-    """A batch of wing pilots; lead_of (W,): which row of the leads each one follows."""
-    for b in prange(y0.shape[0]):
-        lead = int(lead_of[b])
-        status[b, 0], status[b, 1] = fly_wing(
-            y0[b], af[b], case[b], slot[b], lead_y[lead], lead_a[lead], heights, grid, dt_s, int(last[lead]),
-            out_y[b], out_a[b]
-        )
+    """A batch of wing pilots; lead_of (W,): the row of the leads, cases, last and begin each one follows.
+
+    row (W,): his own of airframes, slots and of what was learnt, (R, T, 6) or (R, 0, 0); kept as in ``fly_leads``.
+    """
+    for w in prange(y0.shape[0]):
+        b, r = int(lead_of[w]), int(row[w])
+        if begin[b] >= 0:
+            status[w, 0], status[w, 1] = fly_wing(
+                y0[w], af[r], case[b], slot[r], lead_y[b], lead_a[b], heights, grid, dt_s, int(last[b]),
+                out_y[w], out_a[w], int(begin[b]), learnt[r], kept[w]
+            )
+
+
+@njit(cache=True, parallel=True)
+def fault_steps(case: Any, twin_y: Array, kept: Array, script: Array, row: Array, dt_s: float, step: Array) -> None:
+    """``fault_step`` of a batch of cases; row (B,): the twin of each, twin_y (W, T, NY), kept (W, T, NM)."""
+    for b in prange(step.shape[0]):
+        w = int(row[b])
+        step[b] = fault_step(case[b], twin_y[w], kept[w], script[w], dt_s)
