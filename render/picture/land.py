@@ -14,8 +14,8 @@ from render.picture.clouds import cloud_actor
 from render.picture.ground_look import ground_actors
 from render.picture.light import Light, light_of
 from render.picture.objects import object_actors
-from render.picture.shadows import shadow_actor
-from render.picture.sky import sky_actor
+from render.picture.shadows import shadow_actors
+from render.picture.sky import sky_actors
 from render.picture.trees import TreeField
 from scenes.model import Day
 from terrain.cover import cover_of
@@ -32,17 +32,17 @@ class Land:
     def __init__(self, ground: Ground, day: Day, seed: int) -> None:
         self.light: Light = light_of(day)
         plan = land_of(ground.recipe, seed)
-        self.sky_actor = sky_actor(self.light)
+        self.sky_actors = sky_actors(self.light)
         cover = cover_of(ground, seed)
         self._trees = TreeField(cover.trees, ground, plan)
         self.tree_actor = self._trees.actor
-        self.shadow_actor = shadow_actor(cover, ground, self.light)
+        self.shadow_actors = shadow_actors(cover, ground, self.light)
         self.ground_actors = ground_actors(ground, plan)
         self.object_actors = object_actors(cover, ground, plan, self.light)
         solid = [*self.object_actors, *self.ground_actors]
-        self._eyed = [*solid, self.shadow_actor, self.tree_actor]
+        self._eyed = [*solid, *self.shadow_actors, self.tree_actor]
         #: In drawing order: what is opaque nearest first, then shadows and trees, which are see-through at their edges.
-        self.actors: list[vtkActor] = [*solid, self.sky_actor, self.shadow_actor, self.tree_actor]
+        self.actors: list[vtkActor] = [*solid, *self.sky_actors, *self.shadow_actors, self.tree_actor]
         base_m = getattr(day, "cloud_base_m", None)
         self.cloud_actor = None if base_m is None else cloud_actor(base_m)
         if self.cloud_actor is not None:
@@ -51,15 +51,21 @@ class Land:
         for actor in self.actors:
             set_light(actor, self.light)
 
-    def set_eye(self, pos_e_m: Array) -> None:
-        """Tell the shaders where the picture is seen from: (3,) m, earth axes. Call before each render."""
-        self._trees.set_eye(to_display(np.asarray(pos_e_m, float)))
+    def set_eye(self, pos_e_m: Array, axis_e: Array | None = None, half_field_rad: float = np.pi) -> None:
+        """Tell the land where the picture is seen from: (3,) m, earth axes. Call before each render.
+
+        axis_e, half_field_rad: the axis of view and the angle from it to the corners of the picture,
+        if known: trees outside are then left out, which is only faster.
+        """
         eye = tuple(to_display(np.asarray(pos_e_m, float)))
+        axis_d = None if axis_e is None else to_display(np.asarray(axis_e, float))
+        self._trees.set_eye(np.array(eye), axis_d, half_field_rad)
         for actor in self._eyed:
             shader = actor.GetShaderProperty()
             shader.GetVertexCustomUniforms().SetUniform3f("eye", eye)
             shader.GetFragmentCustomUniforms().SetUniform3f("eye", eye)
-        self.sky_actor.SetPosition(*eye)
+        for actor in self.sky_actors:
+            actor.SetPosition(*eye)
         if self.cloud_actor is not None:
             self.cloud_actor.SetPosition(eye[0], eye[1], 0.0)
 

@@ -14,24 +14,24 @@ from terrain.cover import Cover
 from terrain.ground import Ground
 
 _CORNERS = np.array([[-1.0, -1.0], [1.0, -1.0], [1.0, 1.0], [-1.0, 1.0]])
+SQUARE_M = 1_300.0
 _FACES = np.array([[0, 1, 2], [0, 2, 3]])
 #: Toward the eye in depth, so that the ground does not show through: parts of the whole depth range.
 _LIFT = "gl_Position.z -= 2e-6 * gl_Position.w;\n"
 
 
-def shadow_actor(cover: Cover, ground: Ground, light: Light) -> vtkActor:
-    """Ellipses for crowns, outlines for boxes, strips for hedges, on ground taken as level round each."""
+def shadow_actors(cover: Cover, ground: Ground, light: Light) -> list[vtkActor]:
+    """Ellipses for crowns, outlines for boxes, strips for hedges, on ground taken as level round each.
+
+    One actor for each square of land, so that VTK can leave out those that are not in view.
+    """
     up = max(float(light.sun_d[2]), 0.12)
     flat = float(np.linalg.norm(light.sun_d[:2]))
     away = -light.sun_d[:2] / (flat + 1e-9) * min(flat / up, 6.0)  # shift of a point's shadow for each metre of height
     parts = [_crowns(cover, away), _strips(cover, away), *_outlines(cover, away)]
-    places, discs, triangles, count = [], [], [], 0
-    for place, disc, faces in parts:
-        places.append(place)
-        discs.append(disc)
-        triangles.append(faces + count)
-        count += len(place)
-    place = np.concatenate(places)
+    first = np.cumsum([0, *(len(place) for place, _, _ in parts)])
+    place, disc = (np.concatenate([part[k] for part in parts]) for k in (0, 1))
+    triangles = np.concatenate([faces + start for (_, _, faces), start in zip(parts, first, strict=False)])
     points = np.column_stack([place, ground.height_at(place[:, 1], place[:, 0])])
     strength = 0.62 * np.clip(light.sun_d[2] * 4.0, 0.25, 1.0)
     code = constants({"STRENGTH": float(strength), "SHADE": 0.25 * light.sky}) + glsl("common")
@@ -42,16 +42,21 @@ def shadow_actor(cover: Cover, ground: Ground, light: Light) -> vtkActor:
       fragOutput0 = vec4(SHADE, STRENGTH * cover * left);
     """
     position = "setShadow(place);\ngl_Position = MCDCMatrix * vertexMC;\n" + _LIFT
-    actor = shaded_actor(
-        mesh(points, np.concatenate(triangles)),
-        code,
-        main,
-        {"corner": np.concatenate(discs)},
-        glsl("rim") + glsl("shadow_place"),
-        position,
-    )
-    actor.ForceTranslucentOn()
-    return actor
+    square = np.floor(points[triangles[:, 0], :2] / SQUARE_M).astype(int)
+    actors = []
+    for key in np.unique(square, axis=0):
+        used, renumbered = np.unique(triangles[(square == key).all(axis=1)], return_inverse=True)
+        actor = shaded_actor(
+            mesh(points[used], renumbered.reshape(-1, 3)),
+            code,
+            main,
+            {"corner": disc[used]},
+            glsl("rim") + glsl("shadow_place"),
+            position,
+        )
+        actor.ForceTranslucentOn()
+        actors.append(actor)
+    return actors
 
 
 Part = tuple[Array, Array, NDArray[np.int64]]  # places (P, 2) east, north; disc (P, 2); triangles (T, 3)

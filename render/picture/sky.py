@@ -15,6 +15,7 @@ _RINGS_DEG = np.array(
     [-89.0, -30.0, -8.0, -1.0, 0.0, 0.7, 1.5, 2.5, 4.0, 6.0, 9.0, 13.0, 18.0, 25.0, 34.0, 45.0, 58.0, 72.0, 85.0, 90.0]
 )
 _SIDES = 72
+NO_VEIL_UP = 0.157  # sine of the height below which the veil is nowhere thick enough to show
 
 
 def rim_colour(look_d: Array, light: Light) -> Array:
@@ -38,8 +39,8 @@ def clear_sky(look_d: Array, light: Light) -> Array:
     return result
 
 
-def sky_actor(light: Light) -> vtkActor:
-    """The dome; move it to the eye before each render."""
+def sky_actors(light: Light) -> list[vtkActor]:
+    """The dome in two parts, without and with cloud; move both to the eye before each render."""
     height = np.radians(_RINGS_DEG)[:, None]
     turn = np.linspace(0.0, 2.0 * np.pi, _SIDES, endpoint=False)[None, :]
     look = np.stack(
@@ -61,12 +62,15 @@ def sky_actor(light: Light) -> vtkActor:
     kinds = {name: f"vec{values.shape[1]}" for name, values in inputs.items()}
     head = "".join(f"in {kinds[name]} {name};\nout {kinds[name]} {outs[name]};\n" for name in inputs)
     copies = "".join(f"{outs[name]} = {name};\n" for name in inputs)
-    colour = np.clip(0.30 * light.rim + 0.70 * (0.75 * light.sun + 0.6 * light.sky), 0.0, 1.0)
-    code = constants({"VEIL": 0.6, "VEIL_COLOUR": colour})
+    white = np.clip(0.30 * light.rim + 0.70 * (0.75 * light.sun + 0.6 * light.sky), 0.0, 1.0)
+    code = constants({"VEIL": 0.6, "VEIL_COLOUR": white})
     code += glsl("common").replace(
         "in vec3 rimAt;\nin float fade;\n", "const vec3 rimAt = vec3(0.0);\nconst float fade = 1.0;\n"
     )
     code += glsl("sky")
-    return shaded_actor(
-        mesh(RADIUS_M * look, triangles), code, "fragOutput0 = vec4(skyColour(), 1.0);\n", inputs, head, copies
-    )
+    low = (look[triangles, 2] < NO_VEIL_UP).all(axis=1)
+    points, parts = RADIUS_M * look, ((low, "clearSky + sunDisc()"), (~low, "skyColour()"))
+    return [
+        shaded_actor(mesh(points, triangles[chosen]), code, f"fragOutput0 = vec4({rgb}, 1.0);\n", inputs, head, copies)
+        for chosen, rgb in parts
+    ]

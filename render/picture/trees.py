@@ -13,7 +13,7 @@ from terrain.land import Land
 
 _CORNERS = np.array([[-1.0, -1.0], [1.0, -1.0], [1.0, 1.0], [-1.0, 1.0]])
 _FACES = np.array([[0, 1, 2], [0, 2, 3]])
-SORT_STEP_M = 8.0  # trees are put in order of distance anew when the eye enters another cube of this size
+SPARE_M = 30.0  # a tree this far outside the field may still show a part of its crown
 
 
 class TreeField:
@@ -22,7 +22,6 @@ class TreeField:
     def __init__(self, trees: Trees, ground: Ground, land: Land) -> None:
         foot = np.column_stack([trees.east_m, trees.north_m, ground.height_at(trees.north_m, trees.east_m)])
         self._foot = foot
-        self._cell: tuple[int, ...] | None = None
         bush = trees.kind == "bush"
         half = trees.height_m * np.where(bush, 0.55, np.where(trees.kind == "conifer", 0.49, 0.46))
         middle = trees.height_m * np.where(bush, 0.42, np.where(trees.kind == "conifer", 0.51, 0.54))
@@ -45,14 +44,17 @@ class TreeField:
         )
         self.actor.ForceTranslucentOn()
 
-    def set_eye(self, eye_d: Array) -> None:
-        """Order by distance from the middle of the eye's cube: the same eye always gives the same order."""
-        cell = tuple(int(x) for x in np.floor(eye_d / SORT_STEP_M))
-        if cell == self._cell:
-            return
-        self._cell = cell
-        middle = (np.array(cell) + 0.5) * SORT_STEP_M
-        order = np.argsort(-np.sum((self._foot - middle) ** 2, axis=1), kind="stable")
+    def set_eye(self, eye_d: Array, axis_d: Array | None, half_field_rad: float) -> None:
+        """Draw far trees before near ones, and none that lie outside a cone round the axis of view.
+
+        The same eye and axis always give the same order.
+        """
+        ray = self._foot - eye_d
+        away = np.sqrt(np.einsum("nk,nk->n", ray, ray))
+        seen = np.arange(len(away))
+        if axis_d is not None and half_field_rad < 0.5 * np.pi:
+            seen = np.nonzero(ray @ axis_d + SPARE_M > away * np.cos(half_field_rad))[0]
+        order = seen[np.argsort(-away[seen], kind="stable")]
         self._data.SetPolys(cells(quads(order)))
 
 

@@ -61,6 +61,10 @@ class Lens:
         self._axes = np.stack([np.cross(axis, top), top, axis])
         self._eye = eye
         self.land.set_eye(np.array(pos_e_m))
+        return self.again()
+
+    def again(self) -> NDArray[np.uint8]:
+        """The picture drawn once more."""
         self.window.Render()
         data = vtk.vtkUnsignedCharArray()
         self.window.GetPixelData(0, 0, self.width - 1, self.height - 1, 0, data, 0)

@@ -27,7 +27,7 @@ def test_every_shader_draws(name: str) -> None:
     """A shader that does not compile leaves its actor out without an error."""
     land = Land(read_ground(name), DAY, 1)
     with Lens(land) as lens:
-        kinds = {"objects": land.object_actors, "sky": [land.sky_actor], "shadows": [land.shadow_actor]}
+        kinds = {"objects": land.object_actors, "sky": land.sky_actors, "shadows": land.shadow_actors}
         kinds |= {"trees": [land.tree_actor]} | {f"ground {k}": [a] for k, a in enumerate(land.ground_actors)}
         for kind, actors in kinds.items():
             lens.show(*actors)
@@ -204,7 +204,7 @@ def test_a_shadow_lies_where_the_sun_says() -> None:
         lens.show(*solid)
         eye = (float(boxes.north_m[k]), float(boxes.east_m[k]), -200.0)
         bare = lens.look(eye, 0.0, -89.999).astype(int).sum(axis=-1)
-        lens.show(*solid, land.shadow_actor)
+        lens.show(*solid, *land.shadow_actors)
         shaded = lens.look(eye, 0.0, -89.999).astype(int).sum(axis=-1)
         at = lens.places()
     dark = (bare - shaded > 60) & (np.hypot(at[..., 0] - eye[1], at[..., 1] - eye[0]) < 60.0)
@@ -291,3 +291,15 @@ def test_a_real_relief_is_drawn_without_an_airfield() -> None:
     # The mesh has the heights' own corners, 75 m apart; left is the bend of a cell cut in two, on slopes up to 60 %.
     assert np.percentile(off[near], 90) < 1.5
     assert off[near].max() < 12.0
+
+
+def test_trees_outside_the_field_are_left_out_without_a_change_of_the_picture() -> None:
+    land = Land(read_ground("farmland"), DAY, 1)
+    eye, bearing = np.array([100.0, -200.0, -90.0]), np.radians(350.0)
+    with Lens(land) as lens:
+        whole = lens.look((100.0, -200.0, -90.0), 350.0, 0.0)
+        count = land.tree_actor.GetMapper().GetInput().GetNumberOfCells()
+        corner = np.arctan(np.hypot(200.0, 150.0) / lens.focal_px)
+        land.set_eye(eye, np.array([np.cos(bearing), np.sin(bearing), 0.0]), float(corner))
+        assert land.tree_actor.GetMapper().GetInput().GetNumberOfCells() < 0.6 * count
+        assert np.array_equal(lens.again(), whole)
