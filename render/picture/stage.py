@@ -174,7 +174,8 @@ class Stage:
         vtk_camera.SetViewUp(*up)
         vtk_camera.SetViewAngle(float(np.degrees(camera.field_vertical_rad)))
         vtk_camera.SetClippingRange(NEAR_M, FAR_M)
-        self._land.set_eye(camera.pos_e_m)
+        corner = np.hypot(np.tan(0.5 * camera.field_rad), np.tan(0.5 * camera.field_vertical_rad))
+        self._land.set_eye(camera.pos_e_m, axis @ DISPLAY_FROM_EARTH, float(np.arctan(corner)))
 
 
 def moved_parts(instant: Instant, k: int) -> Mapping[str, float]:
