@@ -135,7 +135,7 @@ def test_the_horizon_stands_at_the_dip_of_the_lands_edge(land: Stage, height_m: 
     camera = Camera(
         np.array([0.0, 0.0, -height_m]), quat_multiply(quat_from_euler(0.0, 0.0, bank), LEVEL), np.radians(60.0), *SIZE
     )
-    skies = [actor for actor in land.land_actors if actor.GetBounds()[5] > 20e3]  # domes: they reach far up
+    skies = [actor for actor in land.land_actors if actor.GetBounds()[5] > 5e3]  # domes: they reach far up
     for sky in skies:
         sky.SetVisibility(False)
     land.renderer.SetBackground(1.0, 0.0, 1.0)
