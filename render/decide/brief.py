@@ -20,7 +20,7 @@ from render.frames import Array
 from scenes.airframe import Airframe
 from scenes.model import Level, Loop, Scene
 
-TOP, VERTICAL_DOWN = math.pi, 1.5 * math.pi
+VERTICAL_UP, TOP, VERTICAL_DOWN = 0.5 * math.pi, math.pi, 1.5 * math.pi
 GATE_ANGLES = {"top": TOP, "vertical_down": VERTICAL_DOWN}
 CLOSED_M = 0.02  # how near to the base a solved gate brings the loop
 AHEAD_S = {"top": 24.0, "vertical_down": 16.0}  # how long a pass is flown from a gate, at first
@@ -34,6 +34,7 @@ class Brief:
     plan: Plan
     scale: float
     base_m: float  # where the loop closes, above the field
+    up: Crossing  # vertical up
     gates: dict[str, Crossing]
     speed_max_mps: float  # calibrated, of the lead
     load_factor_max: float
@@ -84,7 +85,7 @@ def briefs(plans: Sequence[Plan], scale: Array | None = None) -> list[Brief]:
         scale = close_loops(plans, longest)
     raw = fly_far(plans, scale, longest)
     return [
-        Brief(p.scene, p, float(scale[b]), base_of(p.scene),
+        Brief(p.scene, p, float(scale[b]), base_of(p.scene), crossing(p, raw, b, VERTICAL_UP),
               {name: crossing(p, raw, b, angle) for name, angle in GATE_ANGLES.items()},
               float(np.max(_flown(p, raw, b)[:, r.A_CAS])), float(np.max(_flown(p, raw, b)[:, r.A_N])))
         for b, p in enumerate(plans)

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import dataclasses
-from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -15,8 +14,6 @@ from render.decide.worst import Count, Worst, freeze_angles, worst_freezes
 from render.flight.inside import begin_at
 from render.frames import Array
 from render.types import freeze_arrays
-from scenes.airframe import Airframe
-from scenes.model import Scene
 from terrain.ground import Ground
 
 STEP_RAD = np.radians(10.0)  # between freeze points, at first
@@ -40,34 +37,9 @@ class Gate:
     there_s: Array  # (V, O) seconds left in the worst freeze at (c)
     worst_rad: Array  # (V, O) where that freeze is
     none: str  # why (c) has no height for the likely observer where it has none; empty if it has
-    held_s: Array  # (O,) seconds left in the worst freeze of the loop as briefed
-    held_rad: Array  # (O,)
 
     def __post_init__(self) -> None:
         freeze_arrays(self)
-
-
-@dataclass(frozen=True, slots=True)
-class Need:
-    """A value solved for the three observers; NaN where there is none, and why for the likely one."""
-
-    value: tuple[float, float, float]
-    none: str = ""
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Gates:
-    """All that the gate card says; SI."""
-
-    scene: Scene
-    airframe: Airframe
-    briefed: Brief
-    want_s: float
-    from_hand: bool
-    gates: Mapping[str, Gate]
-    base: Need  # base height at which the loop, lifted as a whole, leaves the wanted seconds
-    floats: Mapping[str, float]  # largest float, s of extra time over the top: briefed, limit, early, likely, late
-    days: Mapping[str, Mapping[str, tuple[float, float, float]]]  # day -> gate -> change of (a), (b), (c likely), m
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -78,6 +50,7 @@ class Solver:
     ground: Ground
     want_s: float
     from_hand: bool
+    who: tuple[int, ...] = (0, 1, 2)  # observers solved for, of OBSERVERS
     count: Count | None = None
 
     def worst(self, gate: str, cas_mps: Array, height_m: Array, angle_rad: Array) -> Worst:
@@ -94,20 +67,20 @@ class Solver:
 
 
 def solve_gate(solver: Solver, gate: str, cas_mps: Array) -> Gate:
-    """Solve one gate for calibrated speeds (V,)."""
+    """Solve one gate for calibrated speeds (V,) that rise."""
     briefed = closing_heights(solver.briefed, gate, cas_mps, limit=False)
     limit = closing_heights(solver.briefed, gate, cas_mps, limit=True)
     state = solver.briefed.gates[gate]
     flown = int(np.argmin(np.abs(cas_mps - state.cas_mps)))
     noticed, there, at, why = _noticed(solver, gate, cas_mps, solver.floor_heights(gate, cas_mps), flown)
-    held = _fine(solver, gate, np.array([state.cas_mps]), np.array([state.height_m]))
-    return Gate(gate, cas_mps.copy(), flown, state.height_m, briefed, limit, noticed, there, at, why,
-                held.least_s[0].copy(), held.at_rad[0].copy())
+    return Gate(gate, cas_mps.copy(), flown, state.height_m, briefed, limit, noticed, there, at, why)
 
 
-def _fine(solver: Solver, gate: str, cas_mps: Array, height_m: Array) -> Worst:
+def held(solver: Solver, gate: str) -> Worst:
+    """The worst freeze from a gate on of the loop as briefed, which goes through it where it does."""
+    state = solver.briefed.gates[gate]
     angles = freeze_angles(GATE_ANGLES[gate], FINE_RAD)
-    return solver.worst(gate, cas_mps, height_m, angles)
+    return solver.worst(gate, np.array([state.cas_mps]), np.array([state.height_m]), angles)
 
 
 def _noticed(solver: Solver, gate: str, cas_mps: Array, low_m: Array, mid: int) -> tuple[Array, Array, Array, str]:
@@ -119,29 +92,33 @@ def _noticed(solver: Solver, gate: str, cas_mps: Array, low_m: Array, mid: int) 
     """
     coarse = freeze_angles(GATE_ANGLES[gate], STEP_RAD)
     start = np.where(np.isfinite(low_m), low_m, np.nanmax(low_m))
+    who = list(solver.who)
     gaps, _, worst, _ = _solve(solver, gate, cas_mps[[mid]], start[[mid]], RUNGS_M, coarse)
-    angles = coarse[np.any(worst.each_s <= worst.least_s[:, None] + KEEP_S, axis=(0, 2))]
+    angles = coarse[np.any(worst.each_s[:, :, who] <= worst.least_s[:, None, who] + KEEP_S, axis=(0, 2))]
     gaps = np.broadcast_to(gaps, (len(cas_mps), gaps.shape[1]))
     for _ in range(4):
         gaps, there, worst, rows = _solve(solver, gate, cas_mps, start, _rungs(gaps), angles)
-        if rows[0].size == 0:
+        if rows[0].size == 0:  # nobody has a height at any speed
             break
         v, o = rows
         at = np.arange(v.size)
-        near = np.concatenate([_around(float(a), coarse) for a in worst.at_rad[at, o]])
+        mine = np.array(who)[o]
+        near = np.concatenate([_around(float(a), coarse) for a in worst.at_rad[at, mine]])
         every = np.unique(np.round(np.concatenate([coarse, near]), 9))
         worst = solver.worst(gate, cas_mps[v], (start[:, None] + gaps)[v, o], every)
-        worse = worst.least_s[at, o] - solver.want_s < -NEAR_S
+        beyond = worst.least_s[at, mine] - solver.want_s
+        worse = beyond < -NEAR_S
         if not np.any(worse):
             there = there.copy()
-            there[v, o] = worst.least_s[at, o] - solver.want_s
+            there[v, o] = beyond
             break
-        angles = np.unique(np.round(np.concatenate([angles, worst.at_rad[at, o][worse]]), 9))
+        angles = np.unique(np.round(np.concatenate([angles, worst.at_rad[at, mine][worse]]), 9))
     at_rad = np.full(gaps.shape, np.nan)
-    at_rad[rows] = worst.at_rad[np.arange(rows[0].size), rows[1]]
+    if rows[0].size:
+        at_rad[rows] = worst.at_rad[np.arange(rows[0].size), np.array(who)[rows[1]]]
     why = ""
-    if np.any(np.isnan(gaps[:, 1])):
-        why = _why_none(gaps, solver.worst(gate, cas_mps, start + RUNGS_M[-1], coarse))
+    if np.any(np.isnan(gaps[:, who.index(1)])):
+        why = _why_none(gaps[:, [who.index(1)]], solver.worst(gate, cas_mps, start + RUNGS_M[-1], coarse))
     return start[:, None] + gaps, there + solver.want_s, at_rad, why
 
 
@@ -151,11 +128,12 @@ def _solve(
     """Gaps above the start (V, O), what is left beyond the wanted, the worst there, and its rows (speed, observer)."""
 
     def left(item: NDArray[np.int_], height: Array) -> Array:
-        return solver.worst(gate, cas_mps[item], height, angles).least_s - solver.want_s
+        return solver.worst(gate, cas_mps[item], height, angles).least_s[:, list(solver.who)] - solver.want_s
 
     found, there = least_values(left, start_m, rungs, TOLERANCE_M, NEAR_S)
     v, o = np.nonzero(np.isfinite(found))
-    worst = solver.worst(gate, cas_mps[v], found[v, o], angles)
+    at = (cas_mps[v], found[v, o]) if v.size else (cas_mps, start_m + rungs[..., -1])
+    worst = solver.worst(gate, *at, angles)
     return found - start_m[:, None], there, worst, (v, o)
 
 
@@ -174,11 +152,8 @@ def _around(angle_rad: float, angles: Array) -> Array:
 
 
 def _why_none(found: Array, top: Worst) -> str:
-    """Why the likely observer has no height at some speed, from what the highest rung leaves him."""
-    missing = np.flatnonzero(np.isnan(found[:, 1]))
-    if missing.size == 0:
-        return ""
-    i = int(missing[0])
+    """Why the likely observer has no height at some speed, from what the highest rung leaves him there."""
+    i = int(np.flatnonzero(np.any(np.isnan(found), axis=1))[0])
     deg = float(np.degrees(top.at_rad[i, 1]))
     if top.cut[i, 1]:
         return f"a freeze at {deg:.0f} deg leaves the range the model is valid in"
