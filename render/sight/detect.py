@@ -3,37 +3,44 @@
 from __future__ import annotations
 
 import numpy as np
+from numba import guvectorize
 
 from render.frames import Array
 from render.sight.observers import DWELL_S, SIGMAS
 
 
+@guvectorize(["void(float64[:], float64[:], float64, float64[:])"], "(t),(t),()->()", cache=True)
+def _dwells(time_s: Array, ratio: Array, dwell_s: float, found: Array) -> None:
+    crossed = np.inf
+    found[0] = np.inf
+    for i in range(time_s.size):
+        if not ratio[i] > 1.0:
+            crossed = np.inf
+            continue
+        if crossed == np.inf:
+            crossed = time_s[i]
+            # If the series begins above one there is no crossing to interpolate.
+            if i > 0 and ratio[i] > ratio[i - 1]:
+                part = min(max((1.0 - ratio[i - 1]) / (ratio[i] - ratio[i - 1]), 0.0), 1.0)
+                crossed = time_s[i - 1] + part * (time_s[i] - time_s[i - 1])
+        if time_s[i] - crossed >= dwell_s - 1e-9:
+            found[0] = crossed + dwell_s
+            return
+
+
 def first_dwell(time_s: Array, ratio: Array, dwell_s: float = DWELL_S) -> Array:
     """When a ratio has exceeded one for a dwell without a break, (...); infinity if never.
 
-    time_s: (T,), ratio: (..., T). The crossing is interpolated between samples. A larger ratio at every
-    sample never gives a later time: where the smaller one stays above one, so does the larger, and it
-    crossed no later. That is what orders the observers.
+    time_s: (T,) or with leading axes of the ratio's, ratio: (..., T). The crossing is interpolated between
+    samples. A larger ratio at every sample never gives a later time: where the smaller one stays above one, so
+    does the larger, and it crossed no later. That is what orders the observers.
     """
-    above = ratio > 1.0
-    index = np.arange(time_s.size)
-    last_below = np.maximum.accumulate(np.where(above, -1, index), axis=-1)  # (..., T), -1: none yet
-    start = np.minimum(last_below + 1, time_s.size - 1)
-    before = np.maximum(start - 1, 0)
-    r0 = np.take_along_axis(ratio, before, -1)
-    r1 = np.take_along_axis(ratio, start, -1)
-    part = np.where((start > before) & (r1 > r0), (1.0 - r0) / np.where(r1 > r0, r1 - r0, 1.0), 1.0)
-    # If the series begins above one there is no crossing to interpolate.
-    crossed = np.where(start > before, time_s[before] + np.clip(part, 0.0, 1.0) * (time_s[start] - time_s[before]),
-                       time_s[start])
-    done = above & (time_s - crossed >= dwell_s - 1e-9)
-    first = np.argmax(done, axis=-1)[..., None]
-    found = np.take_along_axis(crossed, first, -1)[..., 0] + dwell_s
-    return np.where(np.any(done, axis=-1), found, np.inf)
+    own = time_s.reshape(time_s.shape[:-1] + (1,) * (ratio.ndim - time_s.ndim) + time_s.shape[-1:])
+    return np.asarray(_dwells(own, ratio, dwell_s))
 
 
 def notice(time_s: Array, difference: Array, sigma: Array) -> Array:
-    """When |difference| exceeds two sigma for the dwell, (...); infinity if never. Both (..., T)."""
+    """When |difference| exceeds two sigma for the dwell, (...); infinity if never. Both (..., T), time as there."""
     return first_dwell(time_s, np.abs(difference) / (SIGMAS * sigma))
 
 

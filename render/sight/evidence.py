@@ -1,6 +1,6 @@
 """All cues of one pilot against the noise of the three observers, ready for a detector; for one flight or thousands.
 
-Leading axes (...) are free: none for one flight, (B,) for a batch that shares one time axis. Work a batch in
+Leading axes (...) are free: none for one flight, (B,) for a batch on one time axis or each on its own. Work it in
 chunks: a view takes about 12 kB per instant and case.
 """
 
@@ -47,11 +47,11 @@ def wing_evidence(
 ) -> Evidence:
     """What a wing pilot has to go by. The healthy seat may lack the batch axis: one twin for many faults.
 
-    time_s: (T,) even; counts: (..., T), true between the fault and contact; display_line_rad: the azimuth the
-    ground patches are laid about; called_s: (..., 3), when the lead's three observers notice (infinity: never).
+    time_s: even, (T,) or (..., T), all of one step; counts: (..., T), true between the fault and contact;
+    display_line_rad: the azimuth the ground patches are laid about; called_s: (..., 3), when the lead's three observers notice (infinity: never).
     healthy_view: its view if it is at hand already, to save half the work.
     """
-    step = float(time_s[1] - time_s[0])
+    step = _step_s(time_s)
     if healthy_view is None:
         healthy_view = c.view(healthy, height_at, display_line_rad, watch.look_at)
     faulted_view = c.view(faulted, height_at, display_line_rad, watch.look_at)
@@ -75,7 +75,7 @@ def lead_evidence(
 ) -> Evidence:  # fmt: skip
     """What the lead has to go by: load and stick force, healthy and faulted, (..., T)."""
     found = c.lead_cues(load_h, load_f, demand_h, demand_f, force_h_n, force_f_n)
-    return _ready(_late(found, float(time_s[1] - time_s[0])), counts, np.full(load_f.shape, np.inf))
+    return _ready(_late(found, _step_s(time_s)), counts, np.full(load_f.shape, np.inf))
 
 
 def first_notice(time_s: Array, evidence: Evidence) -> tuple[Array, Array]:
@@ -85,6 +85,11 @@ def first_notice(time_s: Array, evidence: Evidence) -> tuple[Array, Array]:
     """
     when = detect.notice(time_s, evidence.difference[..., :, None, :], evidence.sigma)  # (..., C, 3)
     return np.min(when, axis=-2), np.argmin(when, axis=-2)
+
+
+def _step_s(time_s: Array) -> float:
+    first, second = np.ravel(time_s)[:2]
+    return float(second - first)
 
 
 def _late(found: dict[str, c.Cue], step_s: float) -> dict[str, c.Cue]:
