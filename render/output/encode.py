@@ -58,6 +58,8 @@ class SegmentWriter:
             "-vf", "scale=out_color_matrix=bt709:out_range=tv,format=yuv420p,"
             "setparams=range=tv:colorspace=bt709:color_primaries=bt709:color_trc=bt709",
             "-c:v", "libx264", "-preset", preset, "-crf", "20", "-threads", "1", "-bf", "0",
+            # a whole picture each half second: a page's film can be scrubbed (a quarter larger, seeks a fifth as long)
+            "-g", str(max(1, round(rate_fps / 2))),
             "-video_track_timescale", str(TIMESCALE), "-f", "mp4", str(path),
         ]  # fmt: skip
         try:
