@@ -118,6 +118,8 @@ def bottoms(plans: Sequence[Plan], raw: Raw) -> Array:
             left, mid, right = h[i - 1], h[i], h[i + 1]
             bend = left - 2.0 * mid + right
             out[b] = mid - (right - left) ** 2 / (8.0 * bend) if bend > 0.0 else mid
+        elif end_s >= 0.0:
+            out[b] = h[i]  # it sinks a little to the end of the script
     return out
 
 
