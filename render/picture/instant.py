@@ -12,6 +12,8 @@ from render.types import Flight, freeze_arrays
 #: Drawn travel of an aileron at the greatest roll rate; a plausible figure, no source.
 AILERON_MAX_RAD = float(np.radians(18.0))
 
+ROLL_STEP_S = 0.06
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Instant:
@@ -70,16 +72,19 @@ def drawn_aileron_rad(flight: Flight, time_s: float) -> Array:
     Roll answers its control as a first-order lag, so the control asked for the steady rate p + T dp/dt;
     the drawn angle is that rate as a part of the greatest, limited to the drawn travel.
     """
-    i, part = _place(flight.time_s, time_s)
     # 0.06 s to each side: a finer difference shows the integrator's steps
-    reach = max(1, round(0.06 / float(flight.time_s[1] - flight.time_s[0])))
-    low, high = max(i - reach, 0), min(i + reach + 1, len(flight.time_s) - 1)
-    roll = flight.rate_b_radps[:, :, 0]
-    rate = (1.0 - part) * roll[i] + part * roll[i + 1]
-    change = (roll[high] - roll[low]) / (flight.time_s[high] - flight.time_s[low])
+    before, now, after = (_rolling(flight, time_s + shift) for shift in (-ROLL_STEP_S, 0.0, ROLL_STEP_S))
+    change = (after - before) / (2.0 * ROLL_STEP_S)
     lag = np.array([frame.roll_s for frame in flight.airframes])
     most = np.array([frame.roll_rate_max_radps for frame in flight.airframes])
-    return np.asarray(np.clip((rate + lag * change) / most, -1.0, 1.0) * AILERON_MAX_RAD)
+    return np.asarray(np.clip((now + lag * change) / most, -1.0, 1.0) * AILERON_MAX_RAD)
+
+
+def _rolling(flight: Flight, time_s: float) -> Array:
+    """Roll rates (K,) at a time, rad/s."""
+    i, part = _place(flight.time_s, time_s)
+    roll = flight.rate_b_radps[:, :, 0]
+    return np.asarray((1.0 - part) * roll[i] + part * roll[i + 1])
 
 
 def _place(times_s: Array, time_s: float) -> tuple[int, float]:
