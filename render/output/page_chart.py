@@ -59,7 +59,7 @@ def margin_chart(study: Study, slot: str, start_s: float, end_s: float, name: st
         _lane(svg, study, slot, note, x, lanes_top + i * lay.lane, lay)
     _axis(svg, study, x, plot_top, axis, lay)
     _events(svg, study, slot, x, plot_top, axis, lay)
-    svg.line(x.p0, plot_top - 2, x.p0, axis, ps.INK, "cursor", stroke_width=2)
+    svg.line(x.p0, plot_top - 2, x.p0, axis, ps.INK, "cursor", stroke_width=2, display="none")
     return svg.render()
 
 

@@ -78,7 +78,8 @@ def strip_chart(study: Study, slot: str, strip: Strip, start_s: float, end_s: fl
     base = study.faulted.fault_s or 0.0
     for tick in ps.ticks(start_s - base, end_s - base, 6):
         svg.text(x.at(tick + base), TOP + PLOT + 15, f"{tick:g}", "t", ps.QUIET, SIZE - 1, "middle")
-    svg.line(x.p0, TOP, x.p0, TOP + PLOT, ps.INK, "cursor", stroke_width=1.5)
+    svg.line(x.p0, TOP, x.p0, TOP + PLOT, ps.INK, "cursor", stroke_width=1.5,
+             display="none")
     return svg.render()
 
 
@@ -182,7 +183,8 @@ def _path_view(
     _scale_bar(svg, units, scale, height)
     where = _at(flown, k, along, up, times_s)
     x, y = px(where[0]), py(where[1])
-    svg.add("circle", r=6, cx=float(x[0]), cy=float(y[0]), fill=ps.INK, cls="here", stroke=ps.BACK, stroke_width=2)
+    svg.add("circle", r=6, cx=float(x[0]), cy=float(y[0]), fill=ps.INK, cls="here", stroke=ps.BACK, stroke_width=2,
+            display="none")
     return PathView(svg.render(), x, y)
 
 

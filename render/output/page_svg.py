@@ -7,7 +7,6 @@ class, by which the style sheet gives it the theme's colour.
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field
 from xml.sax.saxutils import escape, quoteattr
 
@@ -139,18 +138,6 @@ def ticks(low: float, high: float, most: int = 6) -> list[float]:
     first = math.ceil(low / step - 1e-9)
     last = math.floor(high / step + 1e-9)
     return [i * step + 0.0 for i in range(first, last + 1)]
-
-
-def rows_of(spans: Iterable[tuple[float, float]], most: int) -> Sequence[int]:
-    """A row for each label's span so that none overlaps another in its row; -1 where none is free."""
-    ends = [-math.inf] * most
-    found = []
-    for first, last in spans:
-        row = next((i for i, end in enumerate(ends) if first >= end), -1)
-        if row >= 0:
-            ends[row] = last + 4.0
-        found.append(row)
-    return found
 
 
 def hatch(name: str, colour: str) -> str:

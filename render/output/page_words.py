@@ -114,7 +114,8 @@ def answer(study: Study, slot: str) -> str:
         return (f"{noticed}; the margin above the floor does not run out in this flight, and a break-out then has its "
                 f"lowest point {reach}.")
     words = last_pull_words(study, slot, "floor")
-    pull = f"the last pull to clear the floor is {words.removesuffix(' after the fault')}"
+    when = f"at {words.removesuffix(' after the fault')}" if words.endswith(" after the fault") else words
+    pull = f"the last pull to clear the floor was {when}"
     late = [n.lateness_s for n in _notices(study, slot) if n.lateness_s is not None]
     if not late:
         return f"{noticed}; {pull}."
@@ -204,6 +205,10 @@ def slot_rows(study: Study, slot: str) -> tuple[SlotRow, ...]:
     rows = []
     for n in _notices(study, slot):
         seen = n.time_s is not None
+        if seen and study.margin.no_pull_left[slot_index(study, slot)]:
+            rows.append(SlotRow(n.observer, seconds((n.time_s or 0.0) - fault_s), cue_words(n.cue), "no pull left",
+                                seconds(n.reaction_s), "-", "a pull does nothing", "plain"))
+            continue
         rows.append(SlotRow(
             observer=n.observer,
             noticed=seconds(n.time_s - fault_s) if n.time_s is not None else "never",
