@@ -29,6 +29,10 @@ def rounded_up(units: Units, height_m: float) -> str:
     return f"{math.ceil(units.length_value(height_m) / STEP - 1e-6) * STEP:,} {units.length_unit}"
 
 
+def _nearest(units: Units, height_m: float) -> str:
+    return units.height_calm(height_m) if math.isfinite(height_m) else "none"
+
+
 def _figure(units: Units, height_m: float) -> str:
     return rounded_up(units, height_m).removesuffix(f" {units.length_unit}")
 
@@ -80,8 +84,8 @@ def rows(sheet: GateSheet, name: str) -> list[tuple[str, str]]:
     band = " / ".join(_figure(units, float(h)) for h in gate.noticed_m[i])
     return [
         ("this loop", units.height_calm(gate.flown_height_m)),
-        (f"closes at {base}, briefed pull", rounded_up(units, float(gate.briefed_m[i]))),
-        (f"closes at {base}, limit pull ({sheet.airframe.n_max:.1f} g)", rounded_up(units, float(gate.limit_m[i]))),
+        (f"closes at {base}, briefed pull", _nearest(units, float(gate.briefed_m[i]))),
+        (f"closes at {base}, limit pull ({sheet.airframe.n_max:.1f} g)", _nearest(units, float(gate.limit_m[i]))),
         (f"any freeze leaves {seconds(sheet.want_s)}: early / likely / late", f"{band} {unit}"),
     ]
 
@@ -145,8 +149,8 @@ def assumptions(sheet: GateSheet) -> list[str]:
     air = "standard air" if day.temperature_k is None else f"{day.temperature_k - 273.15:.0f} degC"
     invented = "an invented airframe" if sheet.airframe.invented else "the airframe's figures as entered"
     return [
-        f"Heights above the field, calibrated speeds; field {units.length(day.field_elevation_m)}, {air}. Heights are "
-        f"rounded up. Floor {units.length(scene.floor_m)} as the scene says.",
+        f"Heights above the field, calibrated speeds; field {units.length(day.field_elevation_m)}, {air}. Heights "
+        f"that a freeze needs are rounded up. Floor {units.length(scene.floor_m)} as the scene says.",
         f"{sheet.airframe.title}: {invented}, limit {sheet.airframe.n_max:.1f} g. Break-out "
         f"{scene.break_out.load_factor:.1f} g at {scene.break_out.onset_gps:.1f} g/s. Limit pull: to that limit or "
         "buffet; no formation follows it.",
@@ -195,6 +199,7 @@ def plain_sheet(sheet: GateSheet) -> Mapping[str, Any]:
 def sheet_text(sheet: GateSheet) -> str:
     """The card as lines of text."""
     units = Units(sheet.scene.film.units)
+    unit = units.length_unit
     lines = [sheet.scene.title, f"Gates that leave {wanted(sheet)}, after any freeze of the lead's stabilator from "
              "there on.", ""]
     for name, gate in sheet.gates.items():
@@ -209,9 +214,12 @@ def sheet_text(sheet: GateSheet) -> str:
         each = [f"{float(v) / KNOT_MPS:.0f} kt" if units.name == "feet" else units.speed(float(v))
                 for v in gate.speed_mps]
         lines.append("  " + f"{'speed':<26}" + "".join(f"{s:>10}" for s in each))
-        for what, column in (("closes, briefed pull", gate.briefed_m), ("closes, limit pull", gate.limit_m),
-                             *((f"any freeze, {o}", gate.noticed_m[:, i]) for i, o in enumerate(OBSERVERS))):
-            lines.append(f"  {what:<26}" + "".join(f"{_figure(units, float(h)):>10}" for h in column))
+        for what, column in (("closes, briefed pull", gate.briefed_m), ("closes, limit pull", gate.limit_m)):
+            each = [_nearest(units, float(h)).removesuffix(f" {unit}") for h in column]
+            lines.append(f"  {what:<26}" + "".join(f"{h:>10}" for h in each))
+        for i, o in enumerate(OBSERVERS):
+            each = [_figure(units, float(h)) for h in gate.noticed_m[:, i]]
+            lines.append(f"  {f'any freeze, {o}':<26}" + "".join(f"{h:>10}" for h in each))
         lines.append("")
     lines += [base_words(sheet), float_words(sheet), day_words(sheet), "", *assumptions(sheet), CAUTION]
     return "\n".join(lines) + "\n"
