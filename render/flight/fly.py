@@ -13,7 +13,8 @@ from render.flight import script as s
 from render.flight.batch import Raw, fly_batch
 from render.flight.closing import close_loops
 from render.flight.plan import DT_S, Plan, compile_scene
-from render.frames import Array, quat_multiply
+from render.flight.states import body_motion
+from render.frames import Array
 from render.types import Flight
 from scenes.airframe import Airframe
 from scenes.model import Scene
@@ -51,25 +52,42 @@ def fly_scene(scene: Scene, airframe_of: Callable[[str], Airframe], ground: Grou
     scale = close_loops([plan], plan.longest_s)
     steps = round((plan.longest_s + AFTER_SCRIPT_S) / DT_S)
     healthy = fly_batch([plan], scale, steps, heights, grid, healthy=True)
-    end_s = healthy.mem[0, s.M_SCRIPT_END_S]
-    if healthy.status[0, 0, 0] == r.CONTACT and (end_s < 0.0 or healthy.status[0, 0, 1] * DT_S < end_s):
-        end_s = healthy.status[0, 0, 1] * DT_S
-    elif end_s < 0.0:
-        raise FlightError(f"the script of '{scene.name}' does not end: step {int(healthy.mem[0, s.M_STEP]) + 1} "
-                          f"is never finished within {steps * DT_S:.0f} s")
-    cut = _cut(healthy, end_s)
-    check_raw(plan, healthy, 0, "the healthy flight", cut)
+    end_s, cut = healthy_end(plan, healthy)
     if scene.fault is None:
         twin = to_flight(plan, healthy, 0, cut, float(scale[0]))
         return twin, twin, plan
     faulted = fly_batch([plan], scale, steps, heights, grid, healthy=False)
+    cut = faulted_end(plan, healthy, faulted, end_s, cut)
+    return (to_flight(plan, healthy, 0, cut, float(scale[0])), to_flight(plan, faulted, 0, cut, float(scale[0])), plan)
+
+
+def healthy_end(plan: Plan, healthy: Raw) -> tuple[float, int]:
+    """When the script of one healthy flight ends, s, and the last step worth keeping. Raises FlightError."""
+    end_s = float(healthy.mem[0, s.M_SCRIPT_END_S])
+    steps = healthy.y.shape[1] - 1
+    if healthy.status[0, 0, 0] == r.CONTACT and (end_s < 0.0 or healthy.status[0, 0, 1] * DT_S < end_s):
+        end_s = float(healthy.status[0, 0, 1] * DT_S)
+    elif end_s < 0.0:
+        raise FlightError(f"the script of '{plan.scene.name}' does not end: step {int(healthy.mem[0, s.M_STEP]) + 1} "
+                          f"is never finished within {steps * DT_S:.0f} s")
+    cut = _cut(healthy, end_s)
+    check_raw(plan, healthy, 0, "the healthy flight", cut)
+    return end_s, cut
+
+
+def faulted_end(plan: Plan, healthy: Raw, faulted: Raw, end_s: float, healthy_cut: int) -> int:
+    """The last step worth keeping of one faulted flight and its twin. Raises FlightError.
+
+    end_s, healthy_cut: as ``healthy_end`` gives them.
+    """
     fault_s = faulted.mem[0, s.M_FAULT_S]
     if fault_s < 0.0 or fault_s > end_s:
-        raise FlightError(f"the fault's point is never reached: {_point_words(scene)} is not passed before the script "
-                          f"ends at {end_s:.1f} s")
+        raise FlightError(f"the fault's point is never reached: {_point_words(plan.scene)} is not passed before the "
+                          f"script ends at {end_s:.1f} s")
     cut = _cut(faulted, end_s)
     check_raw(plan, faulted, 0, "the faulted flight", cut)
-    return (to_flight(plan, healthy, 0, cut, float(scale[0])), to_flight(plan, faulted, 0, cut, float(scale[0])), plan)
+    # the twin's bottom belongs to the picture also where the faulted flight ends before it
+    return max(cut, min(healthy_cut, _bottom_step(healthy, healthy_cut) + round(1.0 / DT_S)))
 
 
 def _fly_departed(plan: Plan, briefed: Plan, heights: Array, grid: Array) -> tuple[Flight, Flight, Plan]:
@@ -78,20 +96,30 @@ def _fly_departed(plan: Plan, briefed: Plan, heights: Array, grid: Array) -> tup
     steps = round((longest_s + AFTER_SCRIPT_S) / DT_S)
     scales = [close_loops([p], p.longest_s) for p in (briefed, plan)]
     raws = [fly_batch([p], k, steps, heights, grid, healthy=True) for p, k in zip((briefed, plan), scales, strict=True)]
-    ended = [float(raw.mem[0, s.M_SCRIPT_END_S]) for raw in raws]
-    stop = raws[1].status[0, 0]
-    contact_s = stop[1] * DT_S if stop[0] == r.CONTACT else np.inf
-    if ended[1] < 0.0 and not np.isfinite(contact_s):
-        raise FlightError(f"the script of '{plan.scene.name}' does not end within {steps * DT_S:.0f} s")
-    cut = _cut(raws[1], min(ended[1], contact_s) if ended[1] >= 0.0 else contact_s)
-    check_raw(briefed, raws[0], 0, "the flight as briefed", cut)
-    check_raw(plan, raws[1], 0, "the flight", cut)
+    cut, fault_s = departed_end(briefed, plan, raws[0], raws[1])
     healthy, flown = (to_flight(p, raw, 0, cut, float(k[0])) for p, raw, k in
                       zip((briefed, plan), raws, scales, strict=True))
-    apart = np.abs(healthy.load_factor_demand[:, 0] - flown.load_factor_demand[:, 0]) > DEPARTS_G
+    return healthy, dataclasses.replace(flown, fault_s=fault_s), plan
+
+
+def departed_end(briefed: Plan, plan: Plan, healthy: Raw, flown: Raw) -> tuple[int, float]:
+    """The last step worth keeping of one flight that is not the briefed one, and when the two part, s.
+
+    Raises FlightError.
+    """
+    end_s = float(flown.mem[0, s.M_SCRIPT_END_S])
+    stop = flown.status[0, 0]
+    contact_s = stop[1] * DT_S if stop[0] == r.CONTACT else np.inf
+    if end_s < 0.0 and not np.isfinite(contact_s):
+        raise FlightError(f"the script of '{plan.scene.name}' does not end within "
+                          f"{(flown.y.shape[1] - 1) * DT_S:.0f} s")
+    cut = _cut(flown, min(end_s, contact_s) if end_s >= 0.0 else contact_s)
+    check_raw(briefed, healthy, 0, "the flight as briefed", cut)
+    check_raw(plan, flown, 0, "the flight", cut)
+    apart = np.abs(healthy.a[0, : cut + 1, 0, r.A_NCMD] - flown.a[0, : cut + 1, 0, r.A_NCMD]) > DEPARTS_G
     if not apart.any():
         raise FlightError(f"the script of '{plan.scene.name}' never departs from the briefed one by {DEPARTS_G} g")
-    return healthy, dataclasses.replace(flown, fault_s=float(flown.time_s[int(np.argmax(apart))])), plan
+    return cut, float(np.arange(cut + 1, dtype=np.float64)[int(np.argmax(apart))] * DT_S)
 
 
 def _cut(raw: Raw, end_s: float) -> int:
@@ -104,6 +132,13 @@ def _cut(raw: Raw, end_s: float) -> int:
         # the wings' contact may come a little later than the lead's
         return min(int(np.max(raw.status[0, :, 1])) + round(1.0 / DT_S), raw.y.shape[1] - 1)
     return cut
+
+
+def _bottom_step(raw: Raw, cut: int) -> int:
+    """The step of the lead's lowest point after the top of his loop, up to step ``cut``; 0 without one."""
+    top_s = float(raw.mem[0, s.M_TOP_S])
+    top = round(top_s / DT_S)
+    return 0 if top_s < 0.0 else top + int(np.argmax(raw.y[0, top : cut + 1, 0, r.D]))
 
 
 def check_raw(plan: Plan, raw: Raw, b: int, which: str, cut: int) -> None:
@@ -143,11 +178,14 @@ def _crossing(time_s: Array, value: Array, level: float) -> float | None:
     return float(time_s[j] + (time_s[j + 1] - time_s[j]) * (level - value[j]) / (value[j + 1] - value[j]))
 
 
-def find_events(time_s: Array, loop_rad: Array, height_m: Array, step: Array) -> dict[str, float]:
+def find_events(
+    time_s: Array, loop_rad: Array, height_m: Array, step: Array, script_end_s: float = -1.0
+) -> dict[str, float]:
     """Times of entry, vertical up, top, vertical down and bottom of the first loop, s; those that happened.
 
     The bottom is the lowest point after the top, in the loop's step or the one after it, found by a
-    parabola through three samples. step (T,): index of the script's step.
+    parabola through three samples. step (T,): index of the script's step. script_end_s: after that nothing
+    counts; negative if the script did not end.
     """
     events: dict[str, float] = {}
     inside = np.flatnonzero(loop_rad > 0.0)
@@ -162,7 +200,10 @@ def find_events(time_s: Array, loop_rad: Array, height_m: Array, step: Array) ->
             events[name] = t
     if "top" in events:
         i0 = int(np.searchsorted(time_s, events["top"]))
-        own = height_m[i0:][step[i0:] <= step[i0] + 1]
+        counts = step[i0:] <= step[i0] + 1
+        if script_end_s >= 0.0:
+            counts &= time_s[i0:] <= script_end_s + 0.5 * (time_s[1] - time_s[0])
+        own = height_m[i0:][counts]
         i = i0 + int(np.argmin(own))
         shift = 0.0
         if i0 < i < len(time_s) - 1:
@@ -178,43 +219,34 @@ def to_flight(plan: Plan, raw: Raw, b: int, last: int, scale: float) -> Flight:
     y = raw.y[b, : last + 1]
     a = raw.a[b, : last + 1]
     time_s: Array = np.arange(last + 1, dtype=np.float64) * DT_S
-    quat_ew = y[..., r.Q0 : r.Q3 + 1]
-    alpha = y[..., r.ALPHA]
-    half = np.zeros((*alpha.shape, 4))
-    half[..., 0], half[..., 2] = np.cos(alpha / 2.0), np.sin(alpha / 2.0)
-    w, qa, qb, qc = np.moveaxis(quat_ew, -1, 0)
-    x_w = np.stack([w * w + qa * qa - qb * qb - qc * qc, 2 * (qa * qb + w * qc), 2 * (qa * qc - w * qb)], axis=-1)
-    down_y = 2.0 * (qb * qc + w * qa)
-    speed = y[..., r.V]
     case = plan.case[0]
     wind = np.array([case["wind_n_mps"], case["wind_e_mps"], 0.0])
-    yaw = 9.80665 * down_y / speed
-    roll = y[..., r.ROLL]
-    ca, sa = np.cos(alpha), np.sin(alpha)
-    rate_b = np.stack([roll * ca - yaw * sa, y[..., r.PITCH], roll * sa + yaw * ca], axis=-1)
+    quat_eb, rate_b, vel_e = body_motion(y, wind)
+    gamma = np.arcsin(np.clip(-(vel_e[..., 2] / y[..., r.V]), -1.0, 1.0))
     loop = a[:, :, r.A_LOOP].copy()
     loop[:, 1:] = np.nan
     contact: list[float | None] = []
     for k in range(len(plan.airframes)):
         why, at = int(raw.status[b, k, 0]), int(raw.status[b, k, 1])
-        contact.append(_contact_time(a[:, k, r.A_AGL], at) if why == r.CONTACT and at <= last else None)
+        contact.append(contact_time(a[:, k, r.A_AGL], at) if why == r.CONTACT and at <= last else None)
     names = ("lead", *(slot.name for slot in plan.scene.formation))
     fault_s = float(raw.mem[b, s.M_FAULT_S])
     return Flight(
-        time_s=time_s, pos_e_m=y[..., r.N : r.D + 1].copy(), vel_e_mps=x_w * speed[..., None] + wind,
-        quat_eb=quat_multiply(quat_ew, half), rate_b_radps=rate_b, speed_mps=speed.copy(),
-        cas_mps=a[..., r.A_CAS].copy(), alpha_rad=alpha.copy(), load_factor=a[..., r.A_N].copy(),
+        time_s=time_s, pos_e_m=y[..., r.N : r.D + 1].copy(), vel_e_mps=vel_e,
+        quat_eb=quat_eb, rate_b_radps=rate_b, speed_mps=y[..., r.V].copy(),
+        cas_mps=a[..., r.A_CAS].copy(), alpha_rad=y[..., r.ALPHA].copy(), load_factor=a[..., r.A_N].copy(),
         load_factor_demand=a[..., r.A_NCMD].copy(), stick=y[..., r.STICK].copy(),
         stick_force_n=a[..., r.A_STICK_FORCE].copy(), stabilator_rad=y[..., r.STAB].copy(),
         thrust_n=a[..., r.A_THRUST].copy(), throttle=a[..., r.A_THROTTLE].copy(), engine=y[..., r.ENGINE].copy(),
-        gamma_rad=np.arcsin(np.clip(-x_w[..., 2], -1.0, 1.0)), loop_angle_rad=loop, height_m=-y[..., r.D],
+        gamma_rad=gamma, loop_angle_rad=loop, height_m=-y[..., r.D],
         height_agl_m=a[..., r.A_AGL].copy(), step=a[:, 0, r.A_STEP].copy(), airframes=plan.airframes, names=names,
         fault_s=fault_s if fault_s >= 0.0 else None, contact_s=tuple(contact),
-        events=find_events(time_s, a[:, 0, r.A_LOOP], -y[:, 0, r.D], a[:, 0, r.A_STEP]), loop_scale=scale,
+        events=find_events(time_s, a[:, 0, r.A_LOOP], -y[:, 0, r.D], a[:, 0, r.A_STEP],
+                           float(raw.mem[b, s.M_SCRIPT_END_S])), loop_scale=scale,
     )
 
 
-def _contact_time(agl_m: Array, at: int) -> float:
+def contact_time(agl_m: Array, at: int) -> float:
     """When the ground was met: between the last step above it and the first below, linear."""
     if at == 0:
         return 0.0

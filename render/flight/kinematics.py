@@ -58,6 +58,7 @@ HAND_LAG_S = 0.12
 DEMAND_LAG_S = 0.10
 GAIN_P = 0.15
 GAIN_I = 0.70  # 1/s
+EXPECTED_LAG_S = 0.22  # in a steady change of demand he does not hold on against the lag he knows
 GAIN_LEAD = 1.35  # he leads a change by this over the short-period frequency
 GAIN_DAMP = 1.3  # and damps the nose by this times it, up to
 DAMP_MAX_PS = 3.2
@@ -161,7 +162,7 @@ def stick_wanted(
     asked = stab + (GAIN_P * missed + lead + y[INTEG]) * per_g + damping * (y[PITCH] - pitch)
     stick = (af.stab_trim_rad - asked) / (af.stab_trim_rad - af.stab_min_rad)
     forward = (af.stab_trim_rad - af.stab_max_rad) / (af.stab_trim_rad - af.stab_min_rad)
-    rate = GAIN_I * missed
+    rate = GAIN_I * (missed - EXPECTED_LAG_S * n_rate)
     if stick > 1.0:
         stick = 1.0
         rate = min(rate, 0.0)

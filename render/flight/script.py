@@ -36,7 +36,7 @@ NM = 17
 (S_KIND, S_CAS, S_HEIGHT, S_FOR, S_POWER, S_PART, S_ANGLE, S_RATE, S_LOAD, S_SCHEDULE) = range(10)
 NS = 10
 
-GAIN_PATH = 1.0  # 1/s, flight path angle held by the lead
+GAIN_PATH = 2.0  # 1/s, flight path angle held by the lead
 GAIN_HEIGHT = 0.25  # 1/s, sink asked per metre of height missed
 GAIN_ROLL = 2.5  # 1/s
 LEVEL_N_MIN, LEVEL_N_MAX = 0.6, 3.0  # what a lead asks of his formation in level flight (common practice, no source)

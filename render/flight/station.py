@@ -31,8 +31,8 @@ from render.flight.script import throttle_for_speed
 # healthy loop to a metre or two (common practice, no source): pursuit of position and closing rate,
 # a slow trim of what stays, an anticipation of the load factor he knows from the lead's nose, a delay.
 DELAY_S = 0.16  # inside the published 0.1-0.2 s of pure delay (McRuer and Krendel 1974)
-ANTICIPATE_S = 0.28
-ANTICIPATE_MAX_G = 0.4
+ANTICIPATE_S = 0.34
+ANTICIPATE_MAX_G = 0.9
 GAIN_POS = 0.60  # 1/s2
 GAIN_VEL = 1.30  # 1/s
 GAIN_ACC = 0.30  # his own load factor, felt, against the lead's, seen

@@ -92,6 +92,7 @@ class MarginBar:
         self._size, self._u = size, unit_px
         self._pad = 22 * unit_px
         self._y0, self._y1 = round(34 * unit_px), round(76 * unit_px)
+        self._too_late: tuple[float, float] | None = None
         self._rest = self._resting()
         width, height = size[0], self._y1 - self._y0
         self._left = self._full(width, height)
@@ -133,8 +134,8 @@ class MarginBar:
         # in the widest room between the marks of the observers
         edges = sorted([self._pad, zero, *(self.x(left) for _, left in scale.notices.values() if left < 0)])
         room, spot = max((b - a, (a + b) / 2) for a, b in itertools.pairwise(edges))
-        if room > text_width("too late", font(17 * u)) + 8 * u:
-            draw.text((spot, middle), "too late", fill=QUIET, font=font(17 * u), anchor="mm")
+        half = text_width("too late", font(17 * u)) / 2
+        self._too_late = (spot - half, spot + half) if room > 2 * half + 8 * u else None
         self._reaction_frame(image, draw, zero)
         below = self._y1 + 5 * u
         step = 1 if scale.right_s - scale.left_s <= 8 else 2
@@ -199,6 +200,8 @@ class MarginBar:
             image.paste(self._left.crop((round(zero), 0, round(x), self._left.height)), (round(zero), self._y0))
         else:
             image.paste(self._gone.crop((round(x), 0, round(zero), self._gone.height)), (round(x), self._y0))
+        if self._too_late is not None and self._too_late[1] < x - 4 * u:  # the bar has not come so far
+            put_words(image, self._too_late[0], (self._y0 + self._y1) / 2, "too late", font(17 * u), QUIET)
         self._moving(image, draw, x, zero, left, time_s)
         return image
 

@@ -72,8 +72,8 @@ def even_size(width: int, height: int) -> tuple[int, int]:
 def default_range(study: Study, slot: str) -> tuple[float, float]:
     """First and last instant of the default film, s.
 
-    From shortly before the top (or the fault, if that is earlier; or the start) to the slot's contact, or to
-    2 s after the bottom (without one, the slot's lowest point that follows).
+    From shortly before the top (or the fault, if that is earlier; or the start) to the slot's contact, to 2 s
+    after the bottom, or without a loop to the lead's contact or the end.
     """
     flight, k = study.faulted, slot_index(study, slot)
     first, last = float(flight.time_s[0]), float(flight.time_s[-1])
@@ -82,12 +82,13 @@ def default_range(study: Study, slot: str) -> tuple[float, float]:
     contact = flight.contact_s[k]
     if contact is not None:
         return start, min(contact, last)
-    after = flight.time_s >= max(marks, default=first)
     # the loop's own bottom where the flight has one: level flight after it may sink a foot further
     lowest = flight.events.get("bottom")
-    if lowest is None:
-        lowest = float(flight.time_s[after][int(np.argmin(flight.height_agl_m[after, k]))])
-    return start, min(lowest + AFTER_S, last)
+    if lowest is not None:
+        return start, min(lowest + AFTER_S, last)
+    # no loop: to the lead's end, or the flight's
+    ends = flight.contact_s[0]
+    return start, last if ends is None else min(ends, last)
 
 
 def key_events(study: Study, slot: str) -> tuple[Event, ...]:
