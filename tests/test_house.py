@@ -28,6 +28,7 @@ EVERYWHERE = {"render.errors"}
 ALONE = {
     "pyvista": "render.picture", "vtk": "render.picture", "vtkmodules": "render.picture",
     "matplotlib": "render.output", "imageio": "render.output", "imageio_ffmpeg": "render.output",
+    "jinja2": "render.output", "weasyprint": "render.output",
 }
 # Processes of our own whose standard output is a pipe to their parent, not a person's screen.
 WORKERS = {"render.output.film_worker", "render.picture.probe"}

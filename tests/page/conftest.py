@@ -72,9 +72,25 @@ def scenes(tmp_path_factory: pytest.TempPathFactory) -> list[PageScene]:
 
 @pytest.fixture(scope="session")
 def page_folder(scenes: list[PageScene], tmp_path_factory: pytest.TempPathFactory) -> Path:
-    """A page of both scenes with its PDF, in a folder with a name that needs quoting."""
+    """A page of both scenes (with its PDF where that can be made), in a folder with a name that needs quoting."""
     folder = tmp_path_factory.mktemp("p") / "Seite für #1 50%"
-    return write_page(scenes, folder, made="1 December 2026", pdf=True).parent
+    return write_page(scenes, folder, made="1 December 2026", pdf=has_pango()).parent
+
+
+def has_pango() -> bool:
+    """Whether WeasyPrint finds its system libraries."""
+    try:
+        import weasyprint  # noqa: F401
+    except OSError:
+        return False
+    return True
+
+
+@pytest.fixture
+def pango() -> None:
+    """Skip without Pango, but never on CI."""
+    if not has_pango():
+        (pytest.fail if os.environ.get("CI") else pytest.skip)("no Pango here: apt-get install libpango-1.0-0")
 
 
 @pytest.fixture(scope="session")

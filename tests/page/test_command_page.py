@@ -56,7 +56,7 @@ def everything(folder: Path) -> list[str]:
     return sorted(p.relative_to(folder).as_posix() for p in folder.rglob("*") if p.is_file())
 
 
-def test_a_page_a_single_file_and_paper(command: Any, tmp_path: Path) -> None:
+def test_a_page_a_single_file_and_paper(pango: None, command: Any, tmp_path: Path) -> None:
     code, out, _ = command(SCENE, "--pdf", "--json")
     said = json.loads(out)
     assert (code, said["page"], said["scenes"]) == (0, f"out/{SCENE}/page/index.html", 1)
@@ -191,7 +191,7 @@ class TestNoHalfPage:
         assert list(tmp_path.iterdir()) == []
 
 
-def test_a_page_that_lost_a_file_is_named(scenes: Any, page_folder: Path, tmp_path: Path) -> None:
+def test_a_page_that_lost_a_file_is_named(pango: None, scenes: Any, page_folder: Path, tmp_path: Path) -> None:
     folder = tmp_path / "copy"
     shutil.copytree(page_folder, folder)
     assert stands(scenes, folder) and not stands(scenes[:1], folder)
@@ -205,7 +205,7 @@ def test_a_page_that_lost_a_file_is_named(scenes: Any, page_folder: Path, tmp_pa
     assert not stands(scenes, folder)
 
 
-def test_the_pdf_reads_nothing_else(page_folder: Path, tmp_path: Path) -> None:
+def test_the_pdf_reads_nothing_else(pango: None, page_folder: Path, tmp_path: Path) -> None:
     folder = tmp_path / "copy"
     shutil.copytree(page_folder, folder)
     page = folder / INDEX

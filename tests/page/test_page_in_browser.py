@@ -194,5 +194,5 @@ def test_printed_by_the_browser(watched: Any, server: PageServer, scenes: Any, t
     check_sheets(texts_of(tmp_path / "print.pdf"), scenes)
 
 
-def test_printed_by_the_command(page_folder: Path, scenes: Any) -> None:
+def test_printed_by_the_command(pango: None, page_folder: Path, scenes: Any) -> None:
     check_sheets(texts_of(page_folder / "briefing.pdf"), scenes)
