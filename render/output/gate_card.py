@@ -2,22 +2,22 @@
 
 from __future__ import annotations
 
-import textwrap
 from collections.abc import Callable
 from pathlib import Path
-from typing import Any
 
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.backends.backend_pdf import FigureCanvasPdf
 from matplotlib.figure import Figure
+from matplotlib.lines import Line2D
 
 from render.decide.gate_sheet import GateSheet
 from render.decide.gates import Gate
 from render.files import whole_file
 from render.frames import Array
 from render.output import gate_words as words
+from render.output.ink import font, wrap_text
 from render.output.words import CAUTION, KNOT_MPS, Units, seconds
 
 A5_INCH = (148.0 / 25.4, 210.0 / 25.4)
@@ -25,50 +25,52 @@ DPI = 200
 INK, QUIET, RULE = "#11151a", "#5a6570", "#c9d0d6"
 BLUE, ORANGE, VERMILION = "#0072b2", "#e69f00", "#d55e00"  # Okabe and Ito, as ink.py
 TONES = {"short": VERMILION, "none": VERMILION, "level": INK, "over": INK}
-LEFT, RIGHT = 0.075, 0.955
+LEFT, RIGHT = 0.065, 0.955
+MEASURE = 10.0  # texts are measured this much larger than they are set, since fonts are measured in whole pixels
 
 
 def gate_figure(sheet: GateSheet) -> Figure:
     """The card as a figure of A5 size."""
     figure = Figure(figsize=A5_INCH, dpi=DPI, facecolor="white")
-    _say(figure, LEFT, 0.968, sheet.scene.title, 9.5, weight="bold", wide=66)
-    _say(figure, LEFT, 0.945, f"Gates that leave {words.wanted(sheet)}, wherever from there on the lead's stabilator "
-         "freezes", 7.2, colour=QUIET, wide=100)
-    for i, name in enumerate(sheet.gates):
+    y = _say(figure, LEFT, 0.975, sheet.scene.title, 9.5, weight="bold") - 0.002
+    y = _say(figure, LEFT, y, f"Least heights from which any freeze of the lead's stabilator leaves "
+             f"{words.wanted(sheet).replace(' left', '', 1)}", 6.8, colour=QUIET) - 0.007
+    for name in sheet.gates:
         text, tone = words.headline(sheet, name)
-        _say(figure, LEFT, 0.921 - 0.024 * i, text, 11.0, weight="bold", colour=TONES[tone], wide=70)
+        y = _say(figure, LEFT, y, text, 11.5, weight="bold", colour=TONES[tone]) - 0.001
     width = 0.395
     for i, name in enumerate(sheet.gates):
-        axes = figure.add_axes((LEFT + 0.035 + i * (width + 0.088), 0.565, width - 0.012, 0.285))
+        axes = figure.add_axes((LEFT + 0.04 + i * (width + 0.088), 0.583, width - 0.022, y - 0.030 - 0.583))
         draw_gate(axes, sheet, name, first=i == 0)
-        _figures(figure, sheet, name, LEFT + i * (width + 0.088), 0.517)
-    line = figure.add_artist(_rule(0.352))
-    del line
-    y = 0.340
-    for text in (*(words.held_words(sheet, name) for name in sheet.gates), words.base_words(sheet),
-                 words.float_words(sheet), words.day_words(sheet)):
-        y = _say(figure, LEFT, y, text, 6.6, wide=112) - 0.005
-    figure.add_artist(_rule(y - 0.001))
-    y -= 0.011
+        _figures(figure, sheet, name, LEFT + i * (width + 0.088), 0.534)
+    _rule(figure, 0.386)
+    y = 0.377
+    for head, lines in words.extras(sheet):
+        figure.text(LEFT, y, head, fontsize=6.4, weight="bold", color=INK, va="top", linespacing=1.25)
+        for text in lines:
+            y = _say(figure, LEFT + 0.135, y, text, 6.4)
+        y -= 0.005
+    y -= 0.002
+    _rule(figure, y)
+    y -= 0.008
     for text in words.assumptions(sheet):
-        y = _say(figure, LEFT, y, text, 5.4, colour=QUIET, wide=138) - 0.0015
-    _say(figure, LEFT, 0.024, CAUTION, 6.2, weight="bold", wide=125, bottom=True)
+        y = _say(figure, LEFT, y, text, 5.7, colour=QUIET) - 0.0015
+    _say(figure, LEFT, 0.018, CAUTION, 6.4, weight="bold", bottom=True)
     return figure
 
 
-def _rule(y: float) -> Any:
-    from matplotlib.lines import Line2D
-
-    return Line2D([LEFT, RIGHT], [y, y], color=RULE, linewidth=0.8)
+def _rule(figure: Figure, y: float) -> None:
+    figure.add_artist(Line2D([LEFT, RIGHT], [y, y], color=RULE, linewidth=0.8))
 
 
 def _say(figure: Figure, x: float, y: float, text: str, size: float, *, weight: str = "normal", colour: str = INK,
-         wide: int, bottom: bool = False) -> float:
-    """Write text broken at ``wide`` letters from its top (or bottom) at y; returns the y below it."""
-    lines = textwrap.wrap(text, wide)
+         bottom: bool = False, right: float = RIGHT) -> float:
+    """Write text, broken where it would pass ``right``, from its top (or bottom) at y; returns the y below it."""
+    face = font(size * MEASURE, bold=weight == "bold")
+    lines = wrap_text(text, face, (right - x) * A5_INCH[0] * 72.0 * MEASURE)
     figure.text(x, y, "\n".join(lines), fontsize=size, weight=weight, color=colour, va="bottom" if bottom else "top",
                 linespacing=1.25)
-    return y - len(lines) * size * 1.25 / 72.0 / A5_INCH[1]
+    return y - len(lines) * size * 1.32 / 72.0 / A5_INCH[1]
 
 
 def draw_gate(axes: Axes, sheet: GateSheet, name: str, *, first: bool) -> None:
@@ -137,19 +139,24 @@ def _labels(axes: Axes, sheet: GateSheet, gate: Gate, x: Array, lines: tuple[Arr
             tone: str) -> None:
     """Words on the lines themselves, each in its line's colour, kept apart in height."""
     early, likely, late, briefed, limit = lines
-    at = 2
-    said = [(float(likely[at]), f"any freeze leaves {seconds(sheet.want_s)}", BLUE, "bold"),
-            (float(briefed[at]), "closes, briefed pull", INK, "normal"),
-            (float(limit[at]), "closes, limit pull", QUIET, "normal")]
     low, high = axes.get_ylim()
-    last = -np.inf
-    for y, text, colour, weight in sorted((s for s in said if np.isfinite(s[0])), key=lambda s: s[0]):
-        place = max(y + 0.012 * (high - low), last + 0.052 * (high - low))
-        last = place
-        axes.text(x[at], place, text, fontsize=6.4, color=colour, weight=weight, va="bottom", ha="left",
-                  bbox={"facecolor": "white", "edgecolor": "none", "alpha": 0.75, "pad": 0.6})
-    axes.text(own_x + 0.03 * (x[-1] - x[0]), own - 0.015 * (high - low), "this loop", fontsize=7.0, color=tone,
-              weight="bold", va="top", ha="left")
+    above = bool(np.nanmean(likely) >= np.nanmean(briefed)) if np.any(np.isfinite(likely)) else True
+    for line, text, colour, weight, over in (
+        (likely, f"any freeze leaves {seconds(sheet.want_s)}", BLUE, "bold", above),
+        (briefed, "closes, briefed pull", INK, "normal", not above),
+        (limit, "closes, limit pull", QUIET, "normal", True),
+    ):
+        at = 4
+        if not (np.isfinite(line[at]) and np.isfinite(line[at + 24])):
+            continue
+        (x0, y0), (x1, y1) = axes.transData.transform([(x[at], line[at]), (x[at + 24], line[at + 24])])
+        slope = float(np.degrees(np.arctan2(y1 - y0, x1 - x0)))
+        axes.annotate(text, (x[at], line[at]), (0, 3 if over else -3), textcoords="offset points", fontsize=6.4,
+                      color=colour, weight=weight, rotation=slope, rotation_mode="anchor", ha="left",
+                      va="bottom" if over else "top")
+    axes.annotate("this loop", (own_x, own), (7, -3), textcoords="offset points", fontsize=7.0, color=tone,
+                  weight="bold", va="top", ha="left", zorder=6,
+                  bbox={"facecolor": "white", "edgecolor": "none", "alpha": 0.8, "pad": 0.5})
     if np.nanmax(late - early) > 0.06 * (high - low):
         for line, text, side in ((early, "early", "top"), (late, "late", "bottom")):
             axes.text(x[-1], line[-1] + (-0.008 if side == "top" else 0.008) * (high - low), text, fontsize=5.6,
@@ -173,7 +180,7 @@ def _figures(figure: Figure, sheet: GateSheet, name: str, x: float, y: float) ->
             figure.text(x + 0.395, y, value, fontsize=7.4, color=INK, va="top", ha="right", weight="bold")
     note = gate.none or ("from there on every freeze ends above the floor by itself" if words.jump(gate) else "")
     if note:
-        figure.text(x, y - 0.0235, "\n".join(textwrap.wrap(note, 58)), fontsize=5.9, color=BLUE, va="top")
+        _say(figure, x, y - 0.0235, note, 5.9, colour=BLUE, right=x + 0.41)
 
 
 def write_gate_card(sheet: GateSheet, stem: str | Path, *, force: bool = False) -> tuple[Path, Path]:

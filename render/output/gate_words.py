@@ -59,20 +59,19 @@ def headline(sheet: GateSheet, name: str) -> tuple[str, str]:
 
 
 def held_words(sheet: GateSheet, name: str) -> str:
-    """What the worst freeze of the loop as briefed leaves the likely observer."""
+    """What the worst freeze of the loop as briefed, from a gate on, leaves the likely observer."""
     worst = sheet.held[name]
     left, deg = float(worst.least_s[0, LIKELY]), float(np.degrees(worst.at_rad[0, LIKELY]))
     when = "his hand moves" if sheet.from_hand else "he notices"
+    place = f"from the {PLACES[name]} on" if name == "top" else f"from {PLACES[name]} on"
     if math.isinf(left) and left > 0.0:
-        return f"As flown, after any freeze from the {PLACES[name]} on the aircraft stay above the floor by themselves."
+        return f"{place}: whatever the freeze, the aircraft stay above the floor by themselves."
     if math.isinf(left):
-        return f"As flown, nothing shows a freeze at {deg:.0f} deg to the likely pilot before the floor is broken."
+        return f"{place}: at {deg:.0f} deg; nothing shows it to the likely pilot before the floor is broken."
     cue = cue_words(worst.cue[0][LIKELY])
     if left < 0.0:
-        return (f"As flown, the worst freeze from here on is at {deg:.0f} deg: {when} {seconds(-left)} after the last "
-                f"pull (likely pilot, by {cue}).")
-    return (f"As flown, the worst freeze from here on is at {deg:.0f} deg: {seconds(left)} left when {when} (likely "
-            f"pilot, by {cue}).")
+        return f"{place}: at {deg:.0f} deg; {when} {seconds(-left)} after the last pull (likely, by {cue})."
+    return f"{place}: at {deg:.0f} deg; {seconds(left)} left when {when} (likely, by {cue})."
 
 
 def rows(sheet: GateSheet, name: str) -> list[tuple[str, str]]:
@@ -81,12 +80,14 @@ def rows(sheet: GateSheet, name: str) -> list[tuple[str, str]]:
     i = gate.flown
     base = units.length(sheet.briefed.base_m)
     unit = units.length_unit
-    band = " / ".join(_figure(units, float(h)) for h in gate.noticed_m[i])
+    each = [_figure(units, float(h)) for h in gate.noticed_m[i]]
+    band = each[0] if len(set(each)) == 1 else " / ".join(each)
+    who = "all three observers" if len(set(each)) == 1 else "early / likely / late"
     return [
         ("this loop", units.height_calm(gate.flown_height_m)),
         (f"closes at {base}, briefed pull", _nearest(units, float(gate.briefed_m[i]))),
         (f"closes at {base}, limit pull ({sheet.airframe.n_max:.1f} g)", _nearest(units, float(gate.limit_m[i]))),
-        (f"any freeze leaves {seconds(sheet.want_s)}: early / likely / late", f"{band} {unit}"),
+        (f"any freeze leaves {seconds(sheet.want_s)}: {who}", f"{band} {unit}".replace(f"none {unit}", "none")),
     ]
 
 
@@ -101,8 +102,8 @@ def base_words(sheet: GateSheet) -> str:
     early, likely, late = (float(b) for b in sheet.base_m)
     now = units.length(sheet.briefed.base_m)
     if not math.isfinite(likely):
-        return f"Base height: no base leaves it ({sheet.base_none}); now {now}."
-    return (f"Base height, the same loop lifted: {rounded_up(units, likely)} (early {_figure(units, early)}, late "
+        return f"the same loop, lifted: none; {sheet.base_none}; now {now}."
+    return (f"the same loop, lifted: {rounded_up(units, likely)} (early {_figure(units, early)}, late "
             f"{_figure(units, late)}); now {now}.")
 
 
@@ -113,32 +114,40 @@ def float_words(sheet: GateSheet) -> str:
     def one(key: str) -> str:
         x = floats[key]
         if x.none:
-            return "none"
-        return f"{'over ' if x.whole else ''}{seconds(x.longer_s)} (-{x.less_g:.2f} g)"
+            return "none at all"
+        return f"{'more than ' if x.whole else ''}{seconds(x.longer_s)} ({x.less_g:.2f} g less)"
 
-    wanted_s = seconds(sheet.want_s)
-    return (f"Largest float over the top, as extra time: {one('briefed')} until the briefed pull breaks the floor, "
-            f"{one('limit')} until the limit pull no longer closes, {one('likely')} until a freeze leaves less than "
-            f"{wanted_s} (likely).")
+    return (f"extra time over the top: {one('briefed')} before the briefed pull breaks the floor; {one('limit')} "
+            f"before the limit pull no longer closes; {one('likely')} that still leaves {seconds(sheet.want_s)} "
+            "(likely).")
 
 
-def day_words(sheet: GateSheet) -> str:
-    """What another day adds to the gates."""
+def day_words(sheet: GateSheet) -> list[str]:
+    """What another day adds to the gates, a line for each day."""
     units = Units(sheet.scene.film.units)
-    names = {"hotter": "10 degC warmer", "higher": "Field 1,000 ft higher"}
+    names = {"hotter": "10 degC warmer", "higher": "field 1,000 ft higher"}
 
     def change(value_m: float) -> str:
         if not math.isfinite(value_m):
-            return "no height"
-        return f"{round(units.length_value(value_m) / STEP) * STEP:+,} {units.length_unit}"
+            return "none"
+        return f"{round(units.length_value(value_m) / STEP) * STEP:+,}"
 
-    parts = []
-    for day, words in names.items():
-        gates = sheet.days[day]
-        each = ", ".join(f"{PLACES[g]} {change(gates[g][0])} (closing) and {change(gates[g][2])} (freeze, likely)"
-                         for g in sheet.gates)
-        parts.append(f"{words}: {each}.")
-    return " ".join(parts)
+    lines = []
+    for day, title in names.items():
+        each = "; ".join(f"{PLACES[g]} {change(sheet.days[day][g][0])} to close, {change(sheet.days[day][g][2])} for a "
+                         f"freeze" for g in sheet.gates)
+        lines.append(f"{title}, {units.length_unit}: {each} (likely).")
+    return lines
+
+
+def extras(sheet: GateSheet) -> list[tuple[str, list[str]]]:
+    """What stands beside the gates: a few words, and the lines they head."""
+    return [
+        ("Worst freeze", [held_words(sheet, name) for name in sheet.gates]),
+        ("Base height", [base_words(sheet)]),
+        ("Largest float", [float_words(sheet)]),
+        ("Another day", day_words(sheet)),
+    ]
 
 
 def assumptions(sheet: GateSheet) -> list[str]:
@@ -206,7 +215,6 @@ def sheet_text(sheet: GateSheet) -> str:
         speed = units.speed(float(gate.speed_mps[gate.flown]))
         lines.append(f"{headline(sheet, name)[0]} (at {speed}).")
         lines += [f"  {what:<52} {value}" for what, value in rows(sheet, name)]
-        lines += [f"  {held_words(sheet, name)}"]
         if gate.none:
             lines.append(f"  No such height at some speed: {gate.none}.")
         if jump(gate):
@@ -221,9 +229,11 @@ def sheet_text(sheet: GateSheet) -> str:
             each = [_figure(units, float(h)) for h in gate.noticed_m[:, i]]
             lines.append(f"  {f'any freeze, {o}':<26}" + "".join(f"{h:>10}" for h in each))
         lines.append("")
-    lines += [base_words(sheet), float_words(sheet), day_words(sheet), "", *assumptions(sheet), CAUTION]
+    for head, said in extras(sheet):
+        lines += [f"{head if i == 0 else '':<15}{text}" for i, text in enumerate(said)]
+    lines += ["", *assumptions(sheet), CAUTION]
     return "\n".join(lines) + "\n"
 
 
 __all__ = ["FOOT_M", "assumptions", "base_words", "day_words", "float_words", "headline", "held_words", "jump",
-           "plain_sheet", "rounded_up", "rows", "sheet_text", "wanted"]
+           "extras", "plain_sheet", "rounded_up", "rows", "sheet_text", "wanted"]
