@@ -16,6 +16,7 @@ from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Any
 
+from render.command_gates import add_gates, gates_command
 from render.command_page import add_page, page_command
 
 PURPOSE = ("How late a lead's lost pitch control becomes visible in a low formation loop, and how little is left then: "
@@ -77,6 +78,7 @@ def build_parser() -> argparse.ArgumentParser:
         "--airframe", action="store_true", help="that of the airframe file")
     add("doctor", "can this machine draw and encode")
     add_page(add)
+    add_gates(add)
     return parser
 
 
@@ -309,7 +311,7 @@ def _doctor(args: argparse.Namespace) -> int:
 
 COMMANDS: dict[str, Callable[[argparse.Namespace], int]] = {
     "check": _check, "fly": _fly, "film": _film, "still": _still, "list": _list, "schema": _schema, "doctor": _doctor,
-    "page": page_command,
+    "page": page_command, "gates": gates_command,
 }
 
 
