@@ -6,23 +6,28 @@ is a row with its error, not an exception.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Hashable, Sequence
 from dataclasses import dataclass, fields
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
+from render.decide.case_flights import GATES, Errors, Flown, blocks, compile_cases, fly_cases, gate_points, shape_key
+from render.decide.case_notices import Sink, look
 from render.errors import LatepullError
+from render.flight import records as r
+from render.flight import script as s
+from render.flight.fly import ground_arrays
+from render.flight.plan import DT_S, Plan
 from render.frames import Array
-from render.study import work_through
-from render.types import OBSERVERS, Study, freeze_arrays
+from render.margin.last_pull import clearances, last_pulls
+from render.sight.observers import TABLE
+from render.types import OBSERVERS, freeze_arrays
 from scenes.airframe import Airframe
-from scenes.complaint import SceneError
 from scenes.model import Scene
 from terrain.ground import Ground
 
-GATES = ("entry", "vertical_up", "top", "vertical_down", "bottom")
 GATE_COLUMNS = ("time_s", "height_m", "speed_mps", "load_factor")
 # every cue there is; a cue of a case is an index into this, -1 for none
 CUES = ("tilt", "turning", "flow", "closing", "growth", "lead", "load", "felt rate", "stick force", "gauge", "call")
@@ -45,9 +50,9 @@ class Cases:
     contact_s: Array  # (B, K)
     lowest_m: Array  # (B, K) above the ground after the fault (after the top without one); 0 at contact
     loop_scale: Array  # (B,)
-    gates: Array  # (B, 5, 4) of the healthy lead: GATES x GATE_COLUMNS, height above ground, calibrated speed
-    load_factor_max: Array  # (B,) of the healthy lead, greatest
-    speed_max_mps: Array  # (B,) of the healthy lead, calibrated
+    gates: Array  # (B, 5, 4) of the lead without fault: GATES x GATE_COLUMNS, height above ground, calibrated speed
+    load_factor_max: Array  # (B,) of the lead without fault, greatest
+    speed_max_mps: Array  # (B,) of the lead without fault, calibrated
     last_pull_floor_s: Array  # (B, S)
     last_pull_ground_s: Array  # (B, S)
     lead_notice_s: Array  # (B, O)
@@ -80,10 +85,13 @@ def work_cases(
     *,
     chunk: int = CHUNK,
     progress: Progress | None = None,
+    threads: int = 2,
+    sink: Sink | None = None,
 ) -> Cases:
     """Work through scenes with the same slots over one ground; in chunks of ``chunk`` cases.
 
-    progress: called with cases done and all cases after each chunk. A case equals ``work_through`` of its scene.
+    progress: called with cases done and all cases after each chunk. sink: called with each case's number, aircraft,
+    times and evidence, from any thread (for another detector). A case equals ``work_through`` of its scene.
     Raises LatepullError if there is no scene or the slots differ.
     """
     if not scenes:
@@ -94,7 +102,7 @@ def work_cases(
             raise LatepullError(f"cases of one table need the same slots: read {scene.name} with others than {names}")
     parts = []
     for at in range(0, len(scenes), chunk):
-        parts.append(_chunk(scenes[at : at + chunk], names, airframe_of, ground))
+        parts.append(_chunk(scenes[at : at + chunk], names, airframe_of, ground, threads, sink, at))
         if progress is not None:
             progress(min(at + chunk, len(scenes)), len(scenes))
     return join(parts)
@@ -116,58 +124,78 @@ def take(cases: Cases, rows: Sequence[int] | NDArray[np.int_]) -> Cases:
                  **columns)
 
 
-def _chunk(
-    scenes: Sequence[Scene], names: tuple[str, ...], airframe_of: Callable[[str], Airframe], ground: Ground
-) -> Cases:
-    from render.sight.observers import TABLE
-
-    b, s, o = len(scenes), len(names), len(OBSERVERS)
-    col: dict[str, Any] = {
-        "fault_s": np.full(b, np.nan), "contact_s": np.full((b, s + 1), np.nan),
-        "lowest_m": np.full((b, s + 1), np.nan), "loop_scale": np.full(b, np.nan),
-        "gates": np.full((b, len(GATES), len(GATE_COLUMNS)), np.nan), "load_factor_max": np.full(b, np.nan),
-        "speed_max_mps": np.full(b, np.nan), "last_pull_floor_s": np.full((b, s), np.nan),
-        "last_pull_ground_s": np.full((b, s), np.nan), "lead_notice_s": np.full((b, o), np.nan),
-        "notice_s": np.full((b, s, o), np.nan), "cue": np.full((b, s, o), -1, dtype=np.int64),
-        "lateness_s": np.full((b, s, o), np.nan), "clearance_floor_m": np.full((b, s, o), np.nan),
-        "clearance_ground_m": np.full((b, s, o), np.nan),
+def _blank(b: int, s: int) -> dict[str, Any]:
+    """Columns of cases that are not worked through yet: everything NaN, no cue."""
+    o = len(OBSERVERS)
+    shapes: dict[str, tuple[int, ...]] = {
+        "fault_s": (b,), "contact_s": (b, s + 1), "lowest_m": (b, s + 1), "loop_scale": (b,),
+        "gates": (b, len(GATES), len(GATE_COLUMNS)), "load_factor_max": (b,), "speed_max_mps": (b,),
+        "last_pull_floor_s": (b, s), "last_pull_ground_s": (b, s), "lead_notice_s": (b, o), "notice_s": (b, s, o),
+        "lateness_s": (b, s, o), "clearance_floor_m": (b, s, o), "clearance_ground_m": (b, s, o),
     }
-    errors: list[str | None] = []
-    for i, scene in enumerate(scenes):
-        try:
-            study = work_through(scene, airframe_of, ground, "")
-        except (LatepullError, SceneError) as exc:
-            errors.append(str(exc))
-            continue
-        errors.append(None)
-        _fill(col, i, study)
-    return Cases(names=names, error=tuple(errors), reaction_s=np.array([TABLE[w].reaction.value for w in OBSERVERS]),
-                 **col)
+    columns: dict[str, Any] = {name: np.full(shape, np.nan) for name, shape in shapes.items()}
+    columns["cue"] = np.full((b, s, o), -1, dtype=np.int64)
+    return columns
 
 
-def _none(value: float | None) -> float:
-    return np.nan if value is None else value
+def _chunk(
+    scenes: Sequence[Scene], names: tuple[str, ...], airframe_of: Callable[[str], Airframe], ground: Ground,
+    threads: int, sink: Sink | None, first: int,
+) -> Cases:
+    columns = _blank(len(scenes), len(names))
+    errors: Errors = {}
+    heights, grid = ground_arrays(ground)
+    groups: dict[Hashable, list[tuple[int, Plan, Plan | None]]] = {}
+    for case in compile_cases(scenes, airframe_of, errors):
+        groups.setdefault(shape_key(*case[1:]), []).append(case)
+    for group in groups.values():
+        for part in blocks(group):
+            flown = fly_cases(part, heights, grid, errors)
+            if flown is not None:
+                _fill(columns, flown, ground, heights, grid, threads, sink, first)
+    why = tuple(errors.get(i) for i in range(len(scenes)))
+    return Cases(names=names, error=why, reaction_s=_reactions(), **columns)
 
 
-def _fill(col: dict[str, Any], i: int, study: Study) -> None:
-    flight, twin = study.faulted, study.healthy
-    col["fault_s"][i] = _none(flight.fault_s)
-    col["contact_s"][i] = [_none(c) for c in flight.contact_s]
-    since = flight.fault_s if flight.fault_s is not None else twin.events.get("top", 0.0)
-    col["lowest_m"][i] = np.maximum(np.min(flight.height_agl_m[flight.time_s >= since], axis=0), 0.0)
-    col["loop_scale"][i] = twin.loop_scale
-    for j, gate in enumerate(GATES):
-        if gate in study.verdict["points"]:
-            col["gates"][i, j] = [study.verdict["points"][gate][c] for c in GATE_COLUMNS]
-    col["load_factor_max"][i] = np.max(twin.load_factor[:, 0])
-    col["speed_max_mps"][i] = np.max(twin.cas_mps[:, 0])
-    col["last_pull_floor_s"][i] = [_none(p) for p in study.margin.last_pull_floor_s[1:]]
-    col["last_pull_ground_s"][i] = [_none(p) for p in study.margin.last_pull_ground_s[1:]]
-    col["lead_notice_s"][i] = [_none(n.time_s) for n in study.notices["lead"]]
-    for j, name in enumerate(flight.names[1:]):
-        for m, note in enumerate(study.notices[name]):
-            col["notice_s"][i, j, m] = _none(note.time_s)
-            col["cue"][i, j, m] = -1 if note.cue is None else CUES.index(note.cue)
-            col["lateness_s"][i, j, m] = _none(note.lateness_s)
-            col["clearance_floor_m"][i, j, m] = _none(note.clearance_m)
-            col["clearance_ground_m"][i, j, m] = _none(note.clearance_ground_m)
+def _reactions() -> Array:
+    return np.array([TABLE[o].reaction.value for o in OBSERVERS])
+
+
+def _fill(
+    columns: dict[str, Any], flown: Flown, ground: Ground, heights: Array, grid: Array, threads: int,
+    sink: Sink | None, first: int,
+) -> None:
+    """Write the rows of cases flown together: margins, notices and what a break-out buys."""
+    rows = flown.case
+    wing_y, wing_a, own = flown.y[1:], flown.a[1:], flown.contact_s[:, 1:]
+    floor_s, ground_s = last_pulls(flown.plans, wing_y, wing_a, flown.last, own, heights, grid)
+    seen = look(flown, ground.height_at, threads, None if sink is None else lambda i, k, t, e: sink(first + i, k, t, e))
+    notice_s = np.where(np.isfinite(seen.when_s), seen.when_s, np.nan)
+    act_s = notice_s[:, 1:] + _reactions()
+    end_s = (flown.last * DT_S)[:, None, None]
+    contact = own[:, :, None]
+    inside = (act_s <= end_s) & (np.isnan(contact) | (act_s < contact))
+    low = clearances(flown.plans, wing_y, wing_a, flown.last, np.where(inside, act_s, np.nan), heights, grid)
+    # he meets the ground before his hand moves
+    low = np.where(~inside & np.isfinite(act_s) & np.isfinite(contact), 0.0, low)
+    floor_m = np.array([plan.scene.floor_m for plan in flown.plans])[:, None, None]
+    columns["fault_s"][rows], columns["contact_s"][rows] = flown.fault_s, flown.contact_s
+    columns["loop_scale"][rows] = flown.scale
+    columns["last_pull_floor_s"][rows], columns["last_pull_ground_s"][rows] = floor_s, ground_s
+    columns["lead_notice_s"][rows], columns["notice_s"][rows] = notice_s[:, 0], notice_s[:, 1:]
+    columns["cue"][rows] = np.vectorize(lambda name: CUES.index(name) if name else -1, otypes=[int])(seen.cue[:, 1:])
+    columns["lateness_s"][rows] = act_s - floor_s[:, :, None]
+    columns["clearance_ground_m"][rows], columns["clearance_floor_m"][rows] = low, low - floor_m
+    twin = flown.twins.raw
+    for b, i in enumerate(rows):
+        departs = flown.plans[b].scene.briefed is not None
+        y, a = (flown.y[0, b], flown.a[0, b]) if departs else (twin.y[flown.twin_of[b], :, 0],
+                                                               twin.a[flown.twin_of[b], :, 0])
+        script_end = -1.0 if departs else float(twin.mem[flown.twin_of[b], s.M_SCRIPT_END_S])
+        points = gate_points(y, a, int(flown.gate_end[b]), script_end)
+        columns["gates"][i] = points
+        end = int(flown.gate_end[b]) + 1
+        columns["load_factor_max"][i], columns["speed_max_mps"][i] = a[:end, r.A_N].max(), a[:end, r.A_CAS].max()
+        since = flown.fault_s[b] if np.isfinite(flown.fault_s[b]) else np.nan_to_num(points[2, 0])
+        begin = int(np.searchsorted(np.arange(flown.last[b] + 1) * DT_S, since))
+        columns["lowest_m"][i] = np.maximum(flown.a[:, b, begin : flown.last[b] + 1, r.A_AGL].min(axis=1), 0.0)

@@ -144,7 +144,7 @@ def fly_faulted(
     script = np.stack([p.script for p in of])
     twin_y, twin_a = twins.raw.y.transpose(2, 0, 1, 3), twins.raw.a.transpose(2, 0, 1, 3)
     row, begin = twin_of.astype(float), np.empty(b)
-    passes.fault_steps(case, twin_y[0], twins.lead, script, row, DT_S, begin)
+    passes.fault_steps(case, twin_y[0], twins.lead, twins.raw.status[:, 0, 1].copy(), script, row, DT_S, begin)
     begin[begin >= steps] = -1.0
     y, a = np.empty((k, b, steps + 1, r.NY)), np.empty((k, b, steps + 1, r.NA))
     mem, status = np.zeros((b, s.NM)), np.zeros((k, b, 2))

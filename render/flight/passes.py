@@ -134,9 +134,12 @@ def _fault_reached(t: float, y: Array, case: Any, mem: Array, angle: float) -> f
 
 
 @njit(cache=True)
-def fault_step(case: Any, y: Array, kept: Array, script: Array, dt_s: float) -> int:
-    """The step of a flight without fault, y (T, NY), kept (T, NM), after which a case's fault comes on; -1: never."""
-    for i in range(y.shape[0] - 1):
+def fault_step(case: Any, y: Array, kept: Array, last: int, script: Array, dt_s: float) -> int:
+    """The step of a flight without fault, y (T, NY), kept (T, NM), after which a case's fault comes on; -1: never.
+
+    last: the last step that was flown.
+    """
+    for i in range(last):
         mem, t = kept[i], i * dt_s
         angle = loop_angle(y[i + 1], mem) if int(script[int(mem[M_STEP]), S_KIND]) == LOOP else mem[M_LOOP]
         if _fault_reached(t + dt_s, y[i + 1], case, mem, angle) >= 0.0:
@@ -336,8 +339,10 @@ def fly_wings(
 
 
 @njit(cache=True, parallel=True)
-def fault_steps(case: Any, twin_y: Array, kept: Array, script: Array, row: Array, dt_s: float, step: Array) -> None:
-    """``fault_step`` of a batch of cases; row (B,): the twin of each, twin_y (W, T, NY), kept (W, T, NM)."""
+def fault_steps(
+    case: Any, twin_y: Array, kept: Array, last: Array, script: Array, row: Array, dt_s: float, step: Array
+) -> None:
+    """``fault_step`` of a batch of cases; row (B,): the twin of each, twin_y (W, T, NY), kept (W, T, NM), last (W,)."""
     for b in prange(step.shape[0]):
         w = int(row[b])
-        step[b] = fault_step(case[b], twin_y[w], kept[w], script[w], dt_s)
+        step[b] = fault_step(case[b], twin_y[w], kept[w], int(last[w]), script[w], dt_s)

@@ -1,4 +1,4 @@
-"""States for the kernels taken back out of a Flight, at any instant."""
+"""What a state of the kernels is in body and earth axes, and states taken back out of a Flight, at any instant."""
 
 from __future__ import annotations
 
@@ -6,8 +6,25 @@ import numpy as np
 from numpy.typing import NDArray
 
 from render.flight import records as r
+from render.flight.air import G0_MPS2
 from render.frames import Array, quat_multiply
 from render.types import Flight
+
+
+def body_motion(y: Array, wind_e_mps: Array) -> tuple[Array, Array, Array]:
+    """Attitude earth <- body (..., 4), body rates (..., 3) and velocity over the ground (..., 3) of states (..., NY).
+
+    wind_e_mps: (3,), or broadcast against (..., 3). The yaw rate is that of flight without sideslip.
+    """
+    alpha, speed, roll = y[..., r.ALPHA], y[..., r.V], y[..., r.ROLL]
+    half = np.zeros((*alpha.shape, 4))
+    half[..., 0], half[..., 2] = np.cos(alpha / 2.0), np.sin(alpha / 2.0)
+    w, qa, qb, qc = np.moveaxis(y[..., r.Q0 : r.Q3 + 1], -1, 0)
+    x_w = np.stack([w * w + qa * qa - qb * qb - qc * qc, 2 * (qa * qb + w * qc), 2 * (qa * qc - w * qb)], axis=-1)
+    yaw = G0_MPS2 * 2.0 * (qb * qc + w * qa) / speed
+    ca, sa = np.cos(alpha), np.sin(alpha)
+    rate_b = np.stack([roll * ca - yaw * sa, y[..., r.PITCH], roll * sa + yaw * ca], axis=-1)
+    return quat_multiply(y[..., r.Q0 : r.Q3 + 1], half), rate_b, x_w * speed[..., None] + wind_e_mps
 
 
 def _path_quat(flight: Flight, k: int, rows: NDArray[np.int_]) -> Array:

@@ -13,6 +13,7 @@ from typing import Any
 
 import numpy as np
 from numba import njit, prange
+from numpy.typing import NDArray
 
 from render.flight.escapes import better_escape
 from render.flight.plan import DT_S, Plan, escape_pair
@@ -144,7 +145,7 @@ def _last_pulls(
 
 
 def last_pulls(
-    plans: Sequence[Plan], y: Array, a: Array, last: Array, contact_s: Array, heights: Array, grid: Array
+    plans: Sequence[Plan], y: Array, a: Array, last: NDArray[np.int64], contact_s: Array, heights: Array, grid: Array
 ) -> tuple[Array, Array]:
     """Last pulls of all wings of many flights against floor and ground, s, both (B, S).
 
@@ -185,7 +186,7 @@ def _clearances(
 
 
 def clearances(
-    plans: Sequence[Plan], y: Array, a: Array, last: Array, at_s: Array, heights: Array, grid: Array
+    plans: Sequence[Plan], y: Array, a: Array, last: NDArray[np.int64], at_s: Array, heights: Array, grid: Array
 ) -> Array:
     """Lowest height above the ground of the break-outs begun at at_s (B, S, O) without further delay, m.
 

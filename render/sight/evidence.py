@@ -48,7 +48,8 @@ def wing_evidence(
     """What a wing pilot has to go by. The healthy seat may lack the batch axis: one twin for many faults.
 
     time_s: even, (T,) or (..., T), all of one step; counts: (..., T), true between the fault and contact;
-    display_line_rad: the azimuth the ground patches are laid about; called_s: (..., 3), when the lead's three observers notice (infinity: never).
+    display_line_rad: the azimuth the ground patches are laid about; called_s: (..., 3), when the lead's three
+    observers notice (infinity: never).
     healthy_view: its view if it is at hand already, to save half the work.
     """
     step = _step_s(time_s)
