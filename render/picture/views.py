@@ -22,9 +22,9 @@ from scenes.model import Watch
 LOOKS = ("lead", "ahead", "ground", "gaze")
 VIEWS = ("seat", "chase", "spectator")
 
-# The lead is framed off the middle, so that the ground ahead of him and his horizon are in the picture: measured on
-# sketches in line abreast, 7 deg toward the nose and 5 deg down.
-FRAME_NOSEWARD_RAD, FRAME_DOWN_RAD = np.radians([7.0, 5.0])
+# The lead is framed a little off the middle: low, so that the ground ahead of him and his horizon are in the picture,
+# and so far aft that in line abreast at 75 deg his stabilator is too, by whose angle a frozen one can be told.
+FRAME_NOSEWARD_RAD, FRAME_DOWN_RAD = np.radians([0.5, 5.0])
 FRAME_LOWEST_RAD = float(np.radians(-10.0))
 GAUGES_DOWN_RAD = float(np.radians(24.0))  # the panel below the coaming, as the cockpits are drawn
 # A large turn of the gaze takes 0.5-0.9 s, latency included (NOTICING 1.38, Guitton & Volle 1987, as remembered).
