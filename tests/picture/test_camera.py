@@ -82,13 +82,16 @@ def test_the_lead_abreast_is_framed_aft_of_the_middle_and_above_it() -> None:
     frames = (invented_jet(), invented_jet())
     instant = abreast(1.4, -0.7, 0.0)
     seen = views.sightline(instant, frames, 1, "lead")
-    assert np.degrees(views.angles(seen.axis_b)) == pytest.approx([-83.0, -5.0])  # DRAWING.md 9
+    assert np.degrees(views.angles(seen.axis_b)) == pytest.approx([-89.5, -5.0])
     cam = views.seat_camera(instant, frames, 1, seen.axis_b, np.radians(75.0), SIZE)
     head = cam.project(views.eye_of(instant, frames, 0))
-    # closed form for a direction at azimuth -90, elevation 0 from an axis at -83, -5 with the head upright
-    turn, up = np.radians(-7.0), np.radians(5.0)
+    # closed form for a direction at azimuth -90, elevation 0 from an axis at -89.5, -5 with the head upright
+    turn, up = np.radians(-0.5), np.radians(5.0)
     ray = np.array([np.sin(turn), -np.sin(up) * np.cos(turn), np.cos(up) * np.cos(turn)])
     assert head == pytest.approx([640.0 + cam.focal_px * ray[0] / ray[2], 360.0 + cam.focal_px * ray[1] / ray[2]])
+    # the whole lead is in the picture, 6 m ahead of his centre to 6 m behind it: his stabilator too
+    ends = cam.project(instant.pos_e_m[0] + quat_rotate(instant.quat_eb[0], np.array([[6.0, 0, 0], [-6.0, 0, 0]])))
+    assert 0.0 < ends[1, 0] < ends[0, 0] < 1280.0
 
 
 def test_the_ground_look_follows_down_and_never_jumps() -> None:
