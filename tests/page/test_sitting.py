@@ -65,6 +65,14 @@ def test_a_call_is_right_within_a_frame_and_saved(watched: Any, server: PageServ
     assert [url for url in page.seen["requests"] if not url.startswith((server.url, "blob:" + server.url))] == []
 
 
+def test_a_call_before_the_fault_is_no_credit(watched: Any, server: PageServer) -> None:
+    page = opened(watched, server.url)
+    sit(page, START_S + 0.2)
+    assert page.inner_text("#sitting-words").endswith("before the fault. Nothing had failed yet.")
+    page.click("#sitting-close")
+    assert page.locator("#calls-table tbody td").all_inner_texts()[7] == "called before the fault"
+
+
 def test_no_call_is_kept_as_none_and_a_reload_loses_nothing(watched: Any, server: PageServer) -> None:
     page = opened(watched, server.url)
     sit(page, None)

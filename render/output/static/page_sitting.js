@@ -10,6 +10,7 @@ function makeSitting(players, current) {
   const known = new Map(players.map((p) => [p.data.key, p.data]));
   let calls = load();
   let run = null;
+  let opener = null;
 
   function load() {
     try {
@@ -37,6 +38,7 @@ function makeSitting(players, current) {
     return value < 0 ? `${seconds(value)} before the fault` : seconds(value);
   }
   function against(data, time) {
+    if (time !== null && data.fault !== null && time < data.fault) return "called before the fault";
     if (time === null || data.lastPull === null) return "-";
     const value = time - data.lastPull;
     return value > 0 ? `too late by ${seconds(value)}` : `${seconds(value)} in hand`;
@@ -91,7 +93,8 @@ function makeSitting(players, current) {
     document.getElementById("calls-status").textContent = `${calls.length} run(s) saved as calls.csv.`;
   }
 
-  function open() {
+  function open(event) {
+    if (event) opener = event.currentTarget;
     const player = current();
     player.videos[player.state.kind].pause();
     run = { player, frame: null, shown: 0, state: "ready" };
@@ -169,8 +172,8 @@ function makeSitting(players, current) {
     keep();
     draw();
     wordsAt.textContent = time === null ? "You called no break-out in this run."
-      : `You called at ${since(data, time)}${data.fault !== null && time >= data.fault ? " after the fault" : ""}. `
-        + (data.lastPull === null ? "The margin does not run out here."
+      : `You called ${since(data, time)}${data.fault !== null && time >= data.fault ? " after the fault" : ""}. `
+        + (data.fault !== null && time < data.fault ? "Nothing had failed yet." : data.lastPull === null ? "The margin does not run out here."
           : `Against the last pull: ${against(data, time)}.`);
     go.textContent = "Next run";
     go.disabled = false;
@@ -182,7 +185,7 @@ function makeSitting(players, current) {
     film.pause();
     film.removeAttribute("src");
     film.load();
-    document.getElementById("start-sitting").focus();
+    if (opener) opener.focus();
   }
 
   film.addEventListener("ended", end);
@@ -196,7 +199,7 @@ function makeSitting(players, current) {
     if (!event.repeat) press();
   });
   go.addEventListener("keyup", (event) => { if (event.key === " ") event.preventDefault(); });
-  document.getElementById("start-sitting").addEventListener("click", open);
+  for (const button of document.querySelectorAll("#start-sitting, [data-call]")) button.addEventListener("click", open);
   document.getElementById("save-calls").addEventListener("click", save);
   document.getElementById("clear-calls").addEventListener("click", () => { calls = []; keep(); draw(); });
   draw();
