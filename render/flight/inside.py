@@ -86,10 +86,10 @@ def begin_at(plan: Plan, gate: Crossing, cas_mps: float | None = None, height_m:
     faster_mps = tas_from_cas(cas, pressure, sound) - y[0, r.V]
     for k in range(len(y)):
         load = float(gate.a[k, r.A_N])
-        before = _steady(plan.af[k], case, y[k], load)
+        before = steady_angles(plan.af[k], case, y[k], load)
         y[k, r.D] -= height - gate.height_m
         y[k, r.V] += faster_mps
-        after = _steady(plan.af[k], case, y[k], load)
+        after = steady_angles(plan.af[k], case, y[k], load)
         y[k, [r.ALPHA, r.PITCH, r.STAB, r.STICK]] += np.array(after) - np.array(before)
     memory = np.zeros(s.NM)
     first = plan.scene.script[0]
@@ -103,7 +103,7 @@ def begin_at(plan: Plan, gate: Crossing, cas_mps: float | None = None, height_m:
     return dataclasses.replace(plan, entry=y, memory=memory)
 
 
-def _steady(af: Any, case: Any, y: Array, load: float) -> tuple[float, float, float, float]:
+def steady_angles(af: Any, case: Any, y: Array, load: float) -> tuple[float, float, float, float]:
     """Angle of attack, path rate, surface and stick at a load factor in steady flight in this state."""
     _, _, rho, sound = air_at(case["field_elevation_m"] - y[r.D], case["temp_offset_k"])
     if case["density_held_kgm3"] > 0.0:
