@@ -12,7 +12,7 @@ from render.decide.escapes import last_pulls
 from render.decide.seats import seats
 from render.flight import records as r
 from render.flight import script as s
-from render.flight.batch import Raw, fly_batch
+from render.flight.batch import Raw, fly_faulted, fly_kept
 from render.flight.fly import AFTER_SCRIPT_S, ground_arrays
 from render.flight.plan import DT_S, Plan
 from render.frames import Array
@@ -149,11 +149,14 @@ def _chunk(
 ) -> Left:
     steps = round(seconds / DT_S)
     used = np.unique(of)
-    healthy = fly_batch([twins[int(w)] for w in used], scale[used], steps, heights, grid, healthy=True)
-    twin = np.searchsorted(used, of)
-    raw = fly_batch(plans, scale[of], steps, heights, grid, healthy=False)
+    kept = fly_kept([twins[int(w)] for w in used], scale[used], steps, heights, grid,
+                    tail=round(AFTER_SCRIPT_S / DT_S) + 2)
+    healthy, twin = kept.raw, np.searchsorted(used, of)
+    ended_s = healthy.mem[twin, s.M_SCRIPT_END_S]
+    end_step = np.where(ended_s >= 0.0, np.round(ended_s / DT_S), steps).astype(np.int64)
+    raw, begin = fly_faulted(plans, kept, twin, end_step, steps, heights, grid)
     f, slots = len(plans), len(plans[0].airframes) - 1
-    fault_s = np.where(raw.mem[:, s.M_FAULT_S] >= 0.0, raw.mem[:, s.M_FAULT_S], np.nan)
+    fault_s = np.where((begin >= 0) & (raw.mem[:, s.M_FAULT_S] >= 0.0), raw.mem[:, s.M_FAULT_S], np.nan)
     over, ended = _over(healthy, raw, twin)
     ends = np.minimum(np.minimum(raw.status[:, :, 1], raw.status[:, :1, 1]), over[:, None]).astype(np.int64)
     contact = (raw.status[:, 0, 0] == r.CONTACT) & (raw.status[:, 0, 1] <= over)
