@@ -128,7 +128,7 @@ class MarginBar:
         draw.rectangle((self._pad, self._y0, self._size[0] - self._pad, self._y1), fill=PANEL)
         if scale.endless:
             return image
-        zero, middle = self.x(0.0), (self._y0 + self._y1) / 2
+        zero = self.x(0.0)
         dead = hatch((round(zero - self._pad), self._y1 - self._y0), (66, 52, 46), PANEL, 16 * u, 0.5)
         image.paste(dead, (round(self._pad), self._y0))
         # in the widest room between the marks of the observers
