@@ -8,7 +8,6 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from render.decide.escapes import last_pulls
 from render.decide.seats import seats
 from render.flight import records as r
 from render.flight import script as s
@@ -16,6 +15,7 @@ from render.flight.batch import Raw, fly_faulted, fly_kept
 from render.flight.fly import AFTER_SCRIPT_S, ground_arrays
 from render.flight.plan import DT_S, Plan
 from render.frames import Array
+from render.margin.last_pull import last_pulls
 from render.sight import cues as c
 from render.sight.evidence import Evidence, first_notice, lead_evidence, wing_evidence
 from render.sight.notice import SAMPLE_S
@@ -165,11 +165,15 @@ def _chunk(
     cue = np.full((f, slots, len(OBSERVERS)), NO_CUE, dtype=object)
     hit = np.flatnonzero(np.isfinite(fault_s))
     if hit.size:
-        for k in range(1, slots + 1):
-            last[hit, k - 1], low[hit, k - 1] = last_pulls(
-                [plans[int(i)] for i in hit], k, raw.y[hit, :, k], raw.a[hit, :, k], fault_s[hit] / DT_S, ends[hit, k],
-                plans[0].scene.floor_m, heights, grid,
-            )
+        stop = stopped_s(raw)[hit, 1:]
+        met = (raw.status[hit, 1:, 0] == r.CONTACT) & (raw.status[hit, 1:, 1] <= ends[hit, :1])
+        ys, as_ = (np.ascontiguousarray(v.transpose(2, 0, 1, 3)[1:, hit]) for v in (raw.y, raw.a))
+        pulls, _ = last_pulls([plans[int(i)] for i in hit], ys, as_, ends[hit, 0], np.where(met, stop, np.nan), heights,
+                              grid)
+        last[hit] = np.where(np.isnan(pulls), np.inf, pulls)
+        for i in hit:
+            since = raw.a[i, int(np.ceil(fault_s[i] / DT_S)) : ends[i, 0] + 1, 1:, r.A_AGL]
+            low[i] = np.maximum(np.min(since, axis=0, initial=np.inf), 0.0)
         _look(plans, healthy, raw, twin, hit, fault_s, over, ground, offset_s, notice, cue, cases, sink)
     # outside the model's range nothing is known: what was there at its edge is all that counts
     cut = (raw.status[:, 0, 0] != r.OK) & (raw.status[:, 0, 0] != r.CONTACT) & (raw.status[:, 0, 1] <= over)

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import numpy as np
-from numpy.typing import NDArray
 
 from render.flight import records as r
 from render.flight.air import G0_MPS2
@@ -47,22 +46,3 @@ def seats(plan: Plan, y: Array, a: Array, k: int) -> Seat:
         y[:, :, k, r.N : r.D + 1].copy(), vel, quat, rate, a[:, :, k, r.A_N].copy(), a[:, :, k, r.A_CAS].copy(),
         -y[:, :, k, r.D], own.eye_forward_m, own.eye_up_m, lead_eye,
     )
-
-
-def states_at(y: Array, a: Array, steps: Array) -> tuple[Array, Array]:
-    """States and throttles at fractional steps of flights, linear between steps, as an escape begins from.
-
-    y (B, T, NY) and a (B, T, NA) of one aircraft; steps (B, M). Returns (B, M, NY) and (B, M).
-    """
-    i = np.clip(np.floor(steps).astype(np.int64), 0, y.shape[1] - 2)
-    part = np.clip(steps - i, 0.0, 1.0)
-    row: NDArray[np.int64] = np.arange(len(y))[:, None]
-    states = y[row, i] + part[..., None] * (y[row, i + 1] - y[row, i])
-    quat = states[..., r.Q0 : r.Q3 + 1]
-    states[..., r.Q0 : r.Q3 + 1] = quat / np.linalg.norm(quat, axis=-1, keepdims=True)
-    loads = a[row, i, r.A_N] + part * (a[row, i + 1, r.A_N] - a[row, i, r.A_N])
-    throttles = a[row, i, r.A_THROTTLE] + part * (a[row, i + 1, r.A_THROTTLE] - a[row, i, r.A_THROTTLE])
-    # his integral part and the work sums begin at zero, as in state_rows
-    states[..., r.INTEG], states[..., r.NDEM] = 0.0, loads
-    states[..., r.WORK_T], states[..., r.WORK_D] = 0.0, 0.0
-    return states, throttles
