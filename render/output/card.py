@@ -30,6 +30,11 @@ class CardTexts:
     source: str
 
 
+# What a picture's note says where no viewing distance makes its angles a wing pilot's.
+NOT_A_SEAT = ("not at true size", "seen from")
+UNTRUE = "Angles in this picture are not those that the wing pilot sees."
+
+
 def viewing_widths(field_rad: float) -> float:
     """Viewing distance at which a picture's angles are true, in picture widths: 1 / (2 tan(field/2)).
 
@@ -40,8 +45,8 @@ def viewing_widths(field_rad: float) -> float:
     return 1.0 / (2.0 * half)
 
 
-def card_texts(study: Study, slot: str) -> CardTexts:
-    """The card's words for one slot."""
+def card_texts(study: Study, slot: str, note: str = "") -> CardTexts:
+    """The card's words for one slot; note: what the picture shows, where that is not what the seat sees."""
     units = Units(study.scene.film.units)
     k = slot_index(study, slot)
     fault_s = study.faulted.fault_s
@@ -75,7 +80,7 @@ def card_texts(study: Study, slot: str) -> CardTexts:
         figures=tuple(figures),
         observers=tuple(observers),
         caution=CAUTION,
-        viewing=(
+        viewing=UNTRUE if any(words in note for words in NOT_A_SEAT) else (
             f"Angles are true from {viewing_widths(study.scene.film.field_rad):.2f} picture widths away "
             f"(field {field_deg:.0f} deg{', in its middle' if field_deg > math.degrees(PANINI_FROM_RAD) else ''})."
         ),
@@ -83,9 +88,11 @@ def card_texts(study: Study, slot: str) -> CardTexts:
     )
 
 
-def card_frame(study: Study, slot: str, size_px: tuple[int, int], *, plain: bool = False) -> Frame:
+def card_frame(
+    study: Study, slot: str, size_px: tuple[int, int], *, plain: bool = False, note: str = ""
+) -> Frame:
     """The card as a frame (h, w, 3); plain: without title and figures, for pilots who should call it themselves."""
-    texts = card_texts(study, slot)
+    texts = card_texts(study, slot, note)
     if plain:
         versions = texts.source.partition(". ")[2]
         texts = replace(texts, title="What did you see, and when?", figures=(), observers=(), source=versions)

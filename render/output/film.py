@@ -96,7 +96,7 @@ def write_film(
 
 def film_metadata(study: Study, slot: str, *, plain: bool, note: str = "") -> dict[str, str]:
     """What stands inside the file; the plain version's title gives nothing away. note: what its picture shows."""
-    texts = card_texts(study, slot)
+    texts = card_texts(study, slot, note)
     title = f"Formation flight, {slot_title(slot).lower()}" if plain else f"{texts.title} ({texts.slot.lower()})"
     picture = f" Picture: {note}." if note else ""
     return {"title": title, "comment": f"{CAUTION} {texts.source} {texts.viewing}{picture}"}

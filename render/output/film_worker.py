@@ -69,7 +69,7 @@ def frames(job: Job, study: Study, first: int = 0) -> Generator[tuple[Frame | No
         overlay = None
         if job.overlay_path:
             overlay = Overlay(study, job.slot, job.size_px, job.start_s, job.end_s, job.note)
-        cards = {plain: card_frame(study, job.slot, job.size_px, plain=plain) for plain in (False, True)}
+        cards = {plain: card_frame(study, job.slot, job.size_px, plain=plain, note=job.note) for plain in (False, True)}
         picture: Frame | None = None
         canvas = np.empty((job.size_px[1], job.size_px[0], 3), np.uint8)
         shown = float("nan")

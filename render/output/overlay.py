@@ -100,12 +100,18 @@ class Overlay:
             (16, 99, texts.margin_note, 17.0, False, WHITE),
         )
         for x, y, text, size, bold, ink in rows:
+            if text.startswith("a pull now ") and text_width(text, self._fitted(text, size * u, bold)) > self._room:
+                text = text.removeprefix("a pull now ")  # in a small draft the letters can't shrink further
             put_words(image, x * u, y * u, text, self._fitted(text, size * u, bold), ink)
         return image
 
+    @property
+    def _room(self) -> float:
+        return self._text_width - 26 * self._u
+
     def _fitted(self, text: str, size: float, bold: bool) -> Font:
         """The font, smaller where the text would not fit beside the bar."""
-        room = self._text_width - 26 * self._u
+        room = self._room
         width = text_width(text, font(size, bold))
         return font(size if width <= room else size * room / width, bold)
 

@@ -10,6 +10,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
+from render.output.card import UNTRUE, card_texts
 from render.output.events import study_events
 from render.output.texts import OverlayTexts, margin_at, overlay_texts
 from render.output.words import Units, cue_words, lateness_words, seconds
@@ -122,3 +123,9 @@ def test_number_words() -> None:
 def test_unknown_slot_names_the_known_ones(study: Study) -> None:
     with pytest.raises(KeyError, match="no slot 'tail' in this study; it has lead, right, left"):
         margin_at(study, "tail", 0.0)
+
+
+def test_the_card_says_where_no_distance_makes_the_angles_true(study: Study) -> None:
+    assert "Angles are true from" in card_texts(study, "right").viewing
+    for note in ("left: without the fault, right: with it; not at true size", "seen from the ground"):
+        assert card_texts(study, "right", note).viewing == UNTRUE
