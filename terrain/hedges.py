@@ -7,7 +7,18 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from terrain.pattern import Array, Plan, from_grain, grain, permute, place_at, row_key
+from terrain.pattern import (
+    Array,
+    Plan,
+    block_key,
+    cut_part,
+    from_grain,
+    grain,
+    is_turned,
+    next_key,
+    place_at,
+    row_key,
+)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -30,15 +41,15 @@ def field_edges(plan: Plan, within_m: float, piece_m: float = 45.0) -> Lines:
     u0, v0 = (float(x) for x in grain(plan, np.zeros(()), np.zeros(())))
     pieces: list[Array] = []
     for row in range(int(np.floor((v0 - reach) / side)), int(np.ceil((v0 + reach) / side)) + 1):
-        shift = float(row_key(np.array(row), plan.salt))
+        shift = float(row_key(np.array(float(row)), plan.salt))
         first, last = int(np.floor((u0 - reach) / side)), int(np.ceil((u0 + reach) / side)) + 1
         for column in range(first, last):
-            block = float(permute(np.array(column + shift)))
-            if block < plan.enclosed * 289.0:
+            block = float(block_key(np.array(float(column)), np.array(shift)))
+            if block < plan.enclosed:
                 lines = _block_lines(block, side)
-                if block % 2 > 0.5:
+                if is_turned(np.array(block)):
                     lines = lines[:, [1, 0, 3, 2]]
-                corner = np.array([(column - shift / 289.0) * side, row * side])
+                corner = np.array([(column - shift) * side, row * side])
                 pieces.append(_split(lines + np.tile(corner, 2), piece_m))
     if not pieces:
         empty = np.zeros(0)
@@ -59,26 +70,18 @@ def field_edges(plan: Plan, within_m: float, piece_m: float = 45.0) -> Lines:
     return Lines(n[kept], e[kept], to_n[kept], to_e[kept])
 
 
-def _part(key: float) -> float:
-    return 0.36 + 0.28 / 289.0 * key
-
-
-def _next(key: float, far: bool) -> float:
-    return float(permute(np.array(key + (101.0 if far else 13.0))))
-
-
 def _block_lines(block: float, side: float) -> Array:
     """Lines x, y, to x, to y (N, 4) of one block's outline (first four) and its seven cuts."""
     lines = [(0.0, 0.0, 0.0, side), (0.0, 0.0, side, 0.0), (side, 0.0, side, side), (0.0, side, side, side)]
-    cut = _part(block) * side
+    cut = float(cut_part(np.array(block))) * side
     lines.append((cut, 0.0, cut, side))
     for far in (False, True):
         left, right = (cut, side) if far else (0.0, cut)
-        key = _next(block, far)
-        across = _part(key) * side
+        key = next_key(np.array(block), np.array(far))
+        across = float(cut_part(key)) * side
         lines.append((left, across, right, across))
         for above in (False, True):
-            x = left + _part(_next(key, above)) * (right - left)
+            x = left + float(cut_part(next_key(key, np.array(above)))) * (right - left)
             lines.append((x, across, x, side) if above else (x, 0.0, x, across))
     return np.array(lines)
 

@@ -153,7 +153,7 @@ def land_of(recipe: Mapping[str, Any], seed: int) -> Land:
     """The land of a recipe (see terrain/recipes/*.yaml) and a seed."""
     p, c = recipe["plan"], recipe["colours"]
     plan = Plan(
-        salt=float((seed * 37 + 151) % 289),
+        salt=float((seed * 37 + 151) % 512) / 512.0,
         grain_rad=np.radians(p["grain_deg"]),
         block_m=float(np.sqrt(FIELDS_OF_BLOCK * p["field"][0] * p["field"][1])),
         bend_m=p["bend"],

@@ -53,7 +53,7 @@ def _rolling(north: Array, east: Array, scale_m: float, seed: int) -> Array:
     for k, (part, weight) in enumerate(_OCTAVES):
         length = scale_m * part
         total += weight * value_noise(
-            u / length + 0.37 * k, v / length + 0.61 * k, float((seed * 53 + 101 * k + 11) % 289)
+            u / length + 0.37 * k, v / length + 0.61 * k, float((seed * 53 + 101 * k + 11) % 512) / 512.0
         )
     result: Array = np.clip(total / sum(w for _, w in _OCTAVES) * 1.25 - 0.12, 0.0, 1.0)
     return result

@@ -1,8 +1,8 @@
 """The plan of a land: where its fields, hedges, roads, woods and shore lie, worked out at any place from a seed.
 
 The picture's ground shader (render/picture/shaders/plan.glsl) does the same arithmetic for each pixel. The hash
-is a permutation polynomial on integers below 2**24, so that single precision there and double precision here
-give the same numbers, and a tree planted here stands on the hedge painted there.
+is a permutation polynomial on 512ths, exact in single precision there and in double precision here: the numbers are
+the same, and a tree planted here stands on the hedge painted there.
 
     x east, y north -> u along the land's own grain, v across it
     block: a square, rows shifted by a hash; each block is cut three times into 8 fields
@@ -19,24 +19,15 @@ Array = NDArray[np.float64]
 FIELDS_OF_BLOCK = 8  # each square block is cut in two, each half in two across, each quarter in two again
 
 
-def permute(x: Array) -> Array:
-    """A fixed shuffle of the integers to 0..288; exact for whole numbers within 460 of zero in single precision.
+def shuffle(key: Array) -> Array:
+    """A fixed shuffle of the 512ths 0, 1/512 .. 511/512; takes any 512th within 620/512 of zero.
 
-    Source: (34 x + 10) x mod 289, the permutation polynomial of webgl-noise (Gustavson, McEwan et al. 2012,
-    "Efficient computational noise in GLSL"; from memory).
+    ``(38 x + 197) x mod 512`` with x = 512 key: an even and an odd factor make it a permutation modulo a
+    power of two. Source: Rivest 2001, "Permutation polynomials modulo 2^w", theorem 1 (from memory).
+    Every step is a whole number below 2**24 divided by a power of two, so single precision is exact.
     """
-    y = (34.0 * x + 10.0) * x
-    return y - np.floor((y + 0.5) / 289.0) * 289.0
-
-
-def wrap(x: Array) -> Array:
-    """Whole numbers to 0..288."""
-    return x - np.floor((x + 0.5) / 289.0) * 289.0
-
-
-def row_key(row: Array, salt: float) -> Array:
-    """0..288 for a row of blocks within 140 of zero; salt tells lands apart."""
-    return permute(row + salt)
+    y = (512.0 * 38.0 * key + 197.0) * key
+    return y - np.floor(y)
 
 
 def value_noise(u: Array, v: Array, salt: float) -> Array:
@@ -44,10 +35,11 @@ def value_noise(u: Array, v: Array, salt: float) -> Array:
     i, j = np.floor(u), np.floor(v)
     f, g = u - i, v - j
     f, g = f * f * (3.0 - 2.0 * f), g * g * (3.0 - 2.0 * g)
-    corner = wrap(17.0 * i + 29.0 * j + salt)
-    low = permute(corner) * (1.0 - f) + permute(corner + 17.0) * f
-    high = permute(corner + 29.0) * (1.0 - f) + permute(corner + 46.0) * f
-    result: Array = (low * (1.0 - g) + high * g) / 289.0
+    corner = (17.0 * i + 29.0 * j) / 512.0 + salt
+    corner = corner - np.floor(corner)
+    low = shuffle(corner) * (1.0 - f) + shuffle(corner + 17.0 / 512.0) * f
+    high = shuffle(corner + 29.0 / 512.0) * (1.0 - f) + shuffle(corner + 46.0 / 512.0) * f
+    result: Array = low * (1.0 - g) + high * g
     return result
 
 
@@ -81,7 +73,7 @@ class Shore:
 class Plan:
     """Sizes and chances of a land's plan, from its recipe (see ``plan_of``); lengths in metres."""
 
-    salt: float  # 0..288, from the seed
+    salt: float  # a 512th, from the seed
     grain_rad: float  # direction of u, from east toward north
     block_m: float  # side of a block
     bend_m: float  # how far straight lines are bent
@@ -101,7 +93,7 @@ class Place:
 
     u_m: Array
     v_m: Array
-    key: Array  # 0..288, one for each field
+    key: Array  # a 512th, one for each field
     enclosed: NDArray[np.bool_]  # inside a block that is cut into fields
     edge_m: Array  # distance to the nearest edge of the field (block, where it is not enclosed)
     road_m: Array  # distance to the middle of the nearest road
@@ -125,6 +117,31 @@ def from_grain(plan: Plan, u_m: Array, v_m: Array) -> tuple[Array, Array]:
     return s * u + c * v, c * u - s * v
 
 
+def row_key(row: Array, salt: float) -> Array:
+    """The key of a row of blocks, which is also how far it is shifted, in blocks."""
+    return shuffle(row / 512.0 + salt)
+
+
+def block_key(column: Array, shift: Array) -> Array:
+    """The key of a block in a row of that key."""
+    return shuffle(column / 512.0 + shift)
+
+
+def is_turned(block: Array) -> NDArray[np.bool_]:
+    """Whether a block's first cut runs across instead of along."""
+    return np.asarray(np.mod(block, 0.25) >= 0.125)
+
+
+def cut_part(key: Array) -> Array:
+    """Where between its ends a length is cut, 0..1."""
+    return 0.36 + 0.28 * key
+
+
+def next_key(key: Array, far: NDArray[np.bool_]) -> Array:
+    """The key of the near or the far part of a cut."""
+    return shuffle(key + np.where(far, 101.0, 13.0) / 512.0)
+
+
 def place_at(plan: Plan, north_m: Array, east_m: Array) -> Place:
     """The plan at places of any (broadcast) shape."""
     n, e = np.broadcast_arrays(np.asarray(north_m, float), np.asarray(east_m, float))
@@ -132,20 +149,20 @@ def place_at(plan: Plan, north_m: Array, east_m: Array) -> Place:
     side = plan.block_m
     row = np.floor(v / side)
     shift = row_key(row, plan.salt)
-    column = np.floor(u / side + shift / 289.0)
-    x, y = u - (column - shift / 289.0) * side, v - row * side
-    block = permute(column + shift)
-    turned = np.mod(block, 2.0) > 0.5
+    column = np.floor(u / side + shift)
+    x, y = u - (column - shift) * side, v - row * side
+    block = block_key(column, shift)
+    turned = is_turned(block)
     x, y = np.where(turned, y, x), np.where(turned, x, y)
     edge_of_block = np.minimum(np.minimum(x, side - x), np.minimum(y, side - y))
     to_left, to_right, key = _cut(x, np.zeros_like(x), np.full_like(x, side), block)
     below, above, key = _cut(y, np.zeros_like(y), np.full_like(y, side), key)
     to_left, to_right, key = _cut(x, x - to_left, x + to_right, key)
-    enclosed = block < plan.enclosed * 289.0
+    enclosed = block < plan.enclosed
     edge = np.minimum(np.minimum(to_left, to_right), np.minimum(below, above))
     wood = np.where(
         enclosed,
-        permute(key + 57.0) < plan.wood_part * 289.0,
+        shuffle(key + 57.0 / 512.0) < plan.wood_part,
         value_noise(u / 600.0, v / 600.0, plan.salt) > plan.wild_wood,
     )
     return Place(
@@ -161,16 +178,16 @@ def place_at(plan: Plan, north_m: Array, east_m: Array) -> Place:
 
 def _cut(x: Array, low: Array, high: Array, key: Array) -> tuple[Array, Array, Array]:
     """Cut low..high in two where the key says: distances to the near and far end of x's part, and its key."""
-    cut = low + (0.36 + 0.28 / 289.0 * key) * (high - low)
+    cut = low + cut_part(key) * (high - low)
     far = x > cut
     part_low, part_high = np.where(far, cut, low), np.where(far, high, cut)
-    return x - part_low, part_high - x, permute(key + np.where(far, 101.0, 13.0))
+    return x - part_low, part_high - x, next_key(key, far)
 
 
 def _road_m(plan: Plan, u: Array, v: Array) -> Array:
     """Distance to the middle of the nearest road: along some rows of blocks, and winding across them."""
     near = np.floor(v / plan.block_m + 0.5)
-    has = permute(near + plan.salt + 31.0) < plan.road_rows * 289.0
+    has = shuffle((near + 31.0) / 512.0 + plan.salt) < plan.road_rows
     along = np.where(has, np.abs(v - near * plan.block_m), 1e9)
     if plan.road_every_m <= 0.0:
         return along

@@ -54,7 +54,7 @@ def sky_actors(light: Light) -> list[vtkActor]:
     look = look.reshape(-1, 3)
     lifted = np.maximum(look[:, 2] + 0.13, 0.02)
     q = look[:, :2] / lifted[:, None]
-    thick = 0.75 * value_noise(0.6 * q[:, 0] + 3.7, 1.7 * q[:, 1] + 3.7, 41.0) - 0.58
+    thick = 0.75 * value_noise(0.6 * q[:, 0] + 3.7, 1.7 * q[:, 1] + 3.7, 41.0 / 512.0) - 0.58
     thick -= 1.2 * np.clip(1.0 - 4.0 * (look[:, 2] - 0.03), 0.0, 1.0)  # none near the horizon
     veil = np.column_stack([look[:, :2], lifted, thick])
     inputs = {"clearIn": clear_sky(look, light), "veilIn": veil, "sunIn": look - light.sun_d}

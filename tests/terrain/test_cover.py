@@ -9,7 +9,7 @@ from terrain.cover import cover_of
 from terrain.ground import ground_names, read_ground
 from terrain.hedges import field_edges
 from terrain.land import land_of
-from terrain.pattern import from_grain, grain, permute, place_at
+from terrain.pattern import from_grain, grain, place_at, shuffle
 
 
 @pytest.mark.parametrize("name", ground_names())
@@ -82,13 +82,13 @@ def test_grain_and_back() -> None:
     assert np.allclose(back_n, north, atol=1e-6) and np.allclose(back_e, east, atol=1e-6)
 
 
-def test_the_hash_is_the_same_in_single_precision() -> None:
-    """All whole numbers within 460 of zero, which is what the plan uses, as the ground's shader works them out."""
-    x = np.arange(-460.0, 461.0)
-    y = ((np.float32(34.0) * x.astype("f4") + np.float32(10.0)) * x.astype("f4")).astype("f4")
-    single = y - np.floor((y + np.float32(0.5)) * np.float32(1.0 / 289.0)) * np.float32(289.0)
-    assert single.dtype == np.float32
-    assert np.array_equal(single, permute(x))
-    exact = [(34 * int(k) + 10) * int(k) % 289 for k in x]  # Python's whole numbers
-    assert np.array_equal(permute(x), exact)
-    assert sorted(permute(np.arange(289.0))) == list(range(289))
+def test_the_hash_is_exact_and_the_same_in_single_precision() -> None:
+    """All 512ths within 620 of zero, against Python's whole numbers and as the ground's shader works them out."""
+    x = np.arange(-620, 621)
+    exact = [(38 * int(k) + 197) * int(k) % 512 / 512 for k in x]
+    assert np.array_equal(shuffle(x / 512.0), exact)
+    key = (x / 512.0).astype("f4")
+    y = (np.float32(512.0 * 38.0) * key + np.float32(197.0)) * key
+    assert y.dtype == np.float32
+    assert np.array_equal(y - np.floor(y), np.array(exact, "f4"))
+    assert sorted(exact[620 : 620 + 512]) == [k / 512 for k in range(512)]

@@ -4,7 +4,7 @@ vec3 country(vec2 q, float px, float longest, float n1, float n7, float n45) {
   fieldAt(q, key, edge, enclosed, within);
   float road = roadAt(q);
   float n600 = valueNoise(q * (1.0 / 600.0), SALT);
-  float kind = permute(key + 57.0) * (1.0 / 289.0), tone = key * (1.0 / 289.0);
+  float kind = shuffle(key + 57.0 / 512.0), tone = key;
 
   float patches = n600 + 0.5 * n45;
   vec3 wild = mix(WILD_A, WILD_B, clamp(0.5 + 4.0 * (patches - WILD_LEVEL), 0.0, 1.0));

@@ -1,11 +1,10 @@
 // The plan of the land; the same arithmetic as terrain/pattern.py, which says why it is exact.
-float permute(float x) { float y = (34.0 * x + 10.0) * x; return y - floor((y + 0.5) * (1.0 / 289.0)) * 289.0; }
+float shuffle(float key) { return fract((512.0 * 38.0 * key + 197.0) * key); }
 float valueNoise(vec2 p, float salt) {
   vec2 i = floor(p), f = p - i;
   f = f * f * (3.0 - 2.0 * f);
-  float c = 17.0 * i.x + 29.0 * i.y + salt;
-  c -= floor((c + 0.5) * (1.0 / 289.0)) * 289.0;
-  return mix(mix(permute(c), permute(c + 17.0), f.x), mix(permute(c + 29.0), permute(c + 46.0), f.x), f.y) * (1.0 / 289.0);
+  float c = fract((17.0 * i.x + 29.0 * i.y) * (1.0 / 512.0) + salt);
+  return mix(mix(shuffle(c), shuffle(c + 17.0 / 512.0), f.x), mix(shuffle(c + 29.0 / 512.0), shuffle(c + 46.0 / 512.0), f.x), f.y);
 }
 float wave(float x) { float t = abs(fract(x) - 0.5); return t * t * (24.0 - 32.0 * t) - 1.0; }
 vec2 grain(vec2 p) {
@@ -13,22 +12,22 @@ vec2 grain(vec2 p) {
   return q + BEND * vec2(wave(q.y * 0.00097 + 0.2), wave(q.x * 0.00084 + 0.7));
 }
 void cutInTwo(float x, inout float low, inout float high, inout float key) {
-  float cut = low + (0.36 + 0.28 / 289.0 * key) * (high - low);
+  float cut = low + (0.36 + 0.28 * key) * (high - low);
   bool far = x > cut;
   low = far ? cut : low;
   high = far ? high : cut;
-  key = permute(key + (far ? 101.0 : 13.0));
+  key = shuffle(key + (far ? 101.0 / 512.0 : 13.0 / 512.0));
 }
-// key 0..288 of the field, distance to its edge, whether its block is enclosed, distance across and along the field
+// key of the field, distance to its edge, whether its block is enclosed, distance across and along the field
 void fieldAt(vec2 q, out float key, out float edge, out bool enclosed, out vec2 within) {
   vec2 g = q * (1.0 / BLOCK);
   float row = floor(g.y);
-  float shift = permute(row + SALT);
-  float column = floor(g.x + shift * (1.0 / 289.0));
-  vec2 at = (g - vec2(column - shift * (1.0 / 289.0), row)) * BLOCK;
-  key = permute(column + shift);
-  enclosed = key < ENCLOSED * 289.0;
-  at = fract(key * 0.5) > 0.25 ? at.yx : at;
+  float shift = shuffle(row * (1.0 / 512.0) + SALT);
+  float column = floor(g.x + shift);
+  vec2 at = (g - vec2(column - shift, row)) * BLOCK;
+  key = shuffle(column * (1.0 / 512.0) + shift);
+  enclosed = key < ENCLOSED;
+  at = fract(key * 4.0) >= 0.5 ? at.yx : at;
   float l = 0.0, r = BLOCK, b = 0.0, t = BLOCK;
   cutInTwo(at.x, l, r, key);
   cutInTwo(at.y, b, t, key);
@@ -40,7 +39,7 @@ void fieldAt(vec2 q, out float key, out float edge, out bool enclosed, out vec2 
 }
 float roadAt(vec2 q) {          // distance to the middle of the nearest road
   float near = floor(q.y * (1.0 / BLOCK) + 0.5);
-  float road = permute(near + SALT + 31.0) < ROAD_ROWS * 289.0 ? abs(q.y - near * BLOCK) : 1e9;
+  float road = shuffle((near + 31.0) * (1.0 / 512.0) + SALT) < ROAD_ROWS ? abs(q.y - near * BLOCK) : 1e9;
 #if ROADS_ACROSS
   float turn = (q.x + 70.0 * wave(q.y * 0.00068)) * (1.0 / ROAD_EVERY) + 0.5;
   road = min(road, abs(fract(turn) - 0.5) * ROAD_EVERY);
