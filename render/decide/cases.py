@@ -14,14 +14,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 from render.decide.case_flights import GATES, Errors, Flown, blocks, compile_cases, fly_cases, gate_points, shape_key
-from render.decide.case_notices import Sink, look
+from render.decide.case_notices import SHARED, Sink, look
 from render.errors import LatepullError
 from render.flight import records as r
 from render.flight import script as s
 from render.flight.fly import ground_arrays
 from render.flight.plan import DT_S, Plan
 from render.frames import Array
-from render.margin.last_pull import clearances, last_pulls
+from render.margin.last_pull import Stages, clearances, last_pulls, stages
 from render.sight.observers import TABLE
 from render.types import OBSERVERS, freeze_arrays
 from scenes.airframe import Airframe
@@ -161,6 +161,30 @@ def _reactions() -> Array:
     return np.array([TABLE[o].reaction.value for o in OBSERVERS])
 
 
+def _shared(
+    flown: Flown, heights: Array, grid: Array
+) -> tuple[Stages | None, NDArray[np.int64] | None, NDArray[np.int64] | None]:
+    """Clearances before the fault, from the twins that several cases with one break-out share; whose; up to when."""
+    if np.all(np.isnan(flown.fault_s)) or flown.plans[0].scene.briefed is not None:
+        return None, None, None
+    twins, counts = np.unique(flown.twin_of, return_counts=True)
+    first = {int(w): flown.plans[int(np.argmax(flown.twin_of == w))] for w in twins}
+    use = [int(w) for w, n in zip(twins, counts, strict=True) if n >= SHARED]
+    if not use:
+        return None, None, None
+    y, a = (raw.transpose(2, 0, 1, 3)[1:] for raw in (flown.twins.raw.y, flown.twins.raw.a))
+    if len(use) < y.shape[1]:
+        y, a = np.ascontiguousarray(y[:, use]), np.ascontiguousarray(a[:, use])
+    until: NDArray[np.int64] = np.floor(np.nan_to_num(flown.fault_s, nan=-1.0) / DT_S).astype(np.int64)
+    last = np.array([int(until[flown.twin_of == w].max()) for w in use])
+    plans = [first[w] for w in use]
+    of = np.array([
+        use.index(int(w)) if int(w) in use and plan.scene.break_out == first[int(w)].scene.break_out else -1
+        for w, plan in zip(flown.twin_of, flown.plans, strict=True)
+    ])
+    return stages(plans, y, a, last, heights, grid), of, until
+
+
 def _fill(
     columns: dict[str, Any], flown: Flown, ground: Ground, heights: Array, grid: Array, threads: int,
     sink: Sink | None, first: int,
@@ -168,7 +192,8 @@ def _fill(
     """Write the rows of cases flown together: margins, notices and what a break-out buys."""
     rows = flown.case
     wing_y, wing_a, own = flown.y[1:], flown.a[1:], flown.contact_s[:, 1:]
-    floor_s, ground_s = last_pulls(flown.plans, wing_y, wing_a, flown.last, own, heights, grid)
+    floor_s, ground_s = last_pulls(flown.plans, wing_y, wing_a, flown.last, own, heights, grid,
+                                   *_shared(flown, heights, grid))
     seen = look(flown, ground.height_at, threads, None if sink is None else lambda i, k, t, e: sink(first + i, k, t, e))
     notice_s = np.where(np.isfinite(seen.when_s), seen.when_s, np.nan)
     act_s = notice_s[:, 1:] + _reactions()

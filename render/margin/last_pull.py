@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
@@ -22,6 +23,9 @@ from render.margin.escape import EVERY_S, away_of
 
 STAGE = 8  # instants stepped over at first
 DEEP_M = -150.0  # an escape that far under the ground has failed, however far it goes on
+# What waiting can add to a clearance, at most: it grows as the flight climbs, 0.7 of its speed in the shipped
+# scenes. So an instant with a large one needs no look at those shortly before it.
+RISE_MPS = 300.0
 DIP_M = 10.0  # a lowest clearance that close to zero is looked at instant by instant
 
 
@@ -65,7 +69,8 @@ def last_pull(
 
     NaN, -1: it does not run out. 0, 0: it is never there. low (M + 1,): what has been flown, filled in;
     hint: an instant it may lie after, -1 for none, trusted only where the flight ends in contact.
-    Searched from the end back in stages, then within one; a lowest clearance near zero is looked at closely.
+    Searched from the end back in stages, then within one; a lowest clearance near zero is looked at closely, and
+    what a large clearance rules out is stepped over.
     """
     end = low.shape[0] - 1
     lo, hi = -1, -1
@@ -103,7 +108,7 @@ def last_pull(
                 return (np.nan, -1) if f >= 0.0 else (0.0, 0)
             later, f_later = at, f_hi
             at, f_hi = j, f
-            j -= STAGE
+            j = max(j - STAGE * max(int(f / (RISE_MPS * STAGE * EVERY_S)), 1), 0)
     while hi - lo > 1:
         c_lo, c_hi = low[lo] - level_m, low[hi] - level_m
         m = (lo + hi) // 2
@@ -125,14 +130,24 @@ def last_pull(
 @njit(cache=True, parallel=True)
 def _last_pulls(
     y: Array, a: Array, last: Array, stop_s: Array, contact: Array, af: Any, case: Any, esc: Any, away: Array,
-    floor_m: Array, heights: Array, grid: Array, dt_s: float, floor_s: Array, ground_s: Array,
+    floor_m: Array, known: Array, known_of: Array, until: Array, heights: Array, grid: Array, dt_s: float,
+    floor_s: Array, ground_s: Array,
 ) -> None:
-    """Last pulls of wings, y (S, B, T, NY), a (S, B, T, NA), last, stop_s, contact, af, away (S, B), the rest (B,)."""
+    """Last pulls of wings, y (S, B, T, NY), a (S, B, T, NA), last, stop_s, contact, af, away (S, B), the rest (B,).
+
+    known (W, S, J): clearances of other flights at the stages, known_of (B,): whose they are, -1 nobody's, which
+    are those of this flight too up to step ``until`` (B,).
+    """
     for b in prange(y.shape[1]):
         hint_floor, hint_ground = -1, -1
+        w = int(known_of[b])
         for k in range(y.shape[0]):
             # as many tenths as there are before the end, and the end itself
             low = np.full(math.ceil(stop_s[k, b] / EVERY_S) + 1, np.nan)
+            if w >= 0:
+                for j in range(known.shape[2]):
+                    if j * STAGE < low.shape[0] - 1 and j * STAGE * EVERY_S / dt_s + 1.0 < until[b]:
+                        low[j * STAGE] = known[w, k, j]
             met = contact[k, b] > 0.5
             floor_s[b, k], hint_floor = last_pull(
                 floor_m[b], hint_floor, met, low, stop_s[k, b], int(last[k, b]), y[k, b], a[k, b], af[k, b], case[b],
@@ -144,13 +159,56 @@ def _last_pulls(
             )
 
 
+@njit(cache=True, parallel=True)
+def _stages(
+    y: Array, a: Array, last: Array, af: Any, case: Any, esc: Any, away: Array, heights: Array, grid: Array,
+    dt_s: float, low: Array,
+) -> None:
+    """Clearances at the stages of flights: y (S, W, T, NY), a, last (W,), low (W, S, J) filled in."""
+    for i in prange(low.shape[0] * low.shape[1] * low.shape[2]):
+        w, k, j = i // (low.shape[1] * low.shape[2]), i // low.shape[2] % low.shape[1], i % low.shape[2]
+        state = np.empty(NY)
+        step = j * STAGE * EVERY_S / dt_s
+        low[w, k, j] = np.nan
+        if step + 1.0 < last[w]:
+            throttle = state_at(y[k, w], a[k, w], step, int(last[w]), state)
+            low[w, k, j] = better_escape(state, af[k, w], case[w], esc[w], away[k, w], throttle, False, 0.0, heights,
+                                         grid, DEEP_M)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Stages:
+    """Clearances of the wings of W flights at the stages of the search: what flights that begin like them share."""
+
+    low_m: Array  # (W, S, J)
+
+
+def stages(plans: Sequence[Plan], y: Array, a: Array, last: NDArray[np.int64], heights: Array, grid: Array) -> Stages:
+    """Clearances at the stages; y (S, W, T, NY), a (S, W, T, NA) of the wings, last (W,)."""
+    low = np.empty((len(plans), len(y), math.ceil(int(last.max()) * DT_S / (STAGE * EVERY_S))))
+    _stages(y, a, last.astype(float), *_records(plans, None), heights, grid, DT_S, low)
+    return Stages(low)
+
+
+def _records(plans: Sequence[Plan], delay_s: float | None) -> tuple[Any, Any, Any, Array]:
+    """Airframes of the wings (S, B), cases (B,), escape pairs (B, 2) and which way is away (S, B)."""
+    wings = range(1, len(plans[0].airframes))
+    return (
+        np.stack([p.af[1:] for p in plans], axis=1), np.concatenate([p.case for p in plans]),
+        np.concatenate([escape_pair(p.scene.break_out, delay_s=delay_s) for p in plans]),
+        np.array([[away_of(p, k) for p in plans] for k in wings]),
+    )
+
+
 def last_pulls(
-    plans: Sequence[Plan], y: Array, a: Array, last: NDArray[np.int64], contact_s: Array, heights: Array, grid: Array
+    plans: Sequence[Plan], y: Array, a: Array, last: NDArray[np.int64], contact_s: Array, heights: Array, grid: Array,
+    shared: Stages | None = None, shared_of: NDArray[np.int64] | None = None, until: NDArray[np.int64] | None = None,
 ) -> tuple[Array, Array]:
     """Last pulls of all wings of many flights against floor and ground, s, both (B, S).
 
     y (S, B, T, NY), a (S, B, T, NA) of the wings; last (B,): the last step of each flight that counts; contact_s
-    (B, S): NaN without. NaN: it does not run out. 0: it is never there.
+    (B, S): NaN without. NaN: it does not run out. 0: it is never there. shared, shared_of (B,), until (B,): each
+    flight is the same as that one of the shared ones (-1: none) up to that step, with the same break-out.
     """
     wings, b = y.shape[:2]
     floor_s, ground_s = np.empty((b, wings)), np.empty((b, wings))
@@ -158,12 +216,13 @@ def last_pulls(
         return floor_s, ground_s
     contact = contact_s.T
     stop_s = np.where(np.isnan(contact), last * DT_S, contact)
+    known = np.empty((0, wings, 0)) if shared is None else shared.low_m
+    of = np.full(b, -1.0) if shared_of is None else shared_of.astype(float)
+    same = np.zeros(b) if until is None else until.astype(float)
     _last_pulls(
         y, a, np.broadcast_to(last, (wings, b)).astype(float), stop_s, np.isfinite(contact).astype(float),
-        np.stack([p.af[1:] for p in plans], axis=1), np.concatenate([p.case for p in plans]),
-        np.concatenate([escape_pair(p.scene.break_out) for p in plans]),
-        np.array([[away_of(p, k) for p in plans] for k in range(1, wings + 1)]),
-        np.array([p.scene.floor_m for p in plans]), heights, grid, DT_S, floor_s, ground_s,
+        *_records(plans, None), np.array([p.scene.floor_m for p in plans]), known, of, same, heights, grid, DT_S,
+        floor_s, ground_s,
     )
     return floor_s, ground_s
 
@@ -195,10 +254,5 @@ def clearances(
     low_m = np.full(at_s.shape, np.nan)
     if y.shape[0] == 0:
         return low_m
-    _clearances(
-        y, a, last.astype(float), at_s, np.stack([p.af[1:] for p in plans], axis=1),
-        np.concatenate([p.case for p in plans]),
-        np.concatenate([escape_pair(p.scene.break_out, delay_s=0.0) for p in plans]),
-        np.array([[away_of(p, k) for p in plans] for k in range(1, len(y) + 1)]), heights, grid, DT_S, low_m,
-    )
+    _clearances(y, a, last.astype(float), at_s, *_records(plans, 0.0), heights, grid, DT_S, low_m)
     return low_m
