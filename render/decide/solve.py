@@ -41,9 +41,9 @@ def least_values(
     i, o = np.nonzero((last >= 0) & (last < r - 1))
     at = last[i, o]
     a, b = ladder[i, at], ladder[i, at + 1]
-    f_a, f_b = seen[i, at, o], seen[i, at + 1, o]
+    w_a, f_b = seen[i, at, o], seen[i, at + 1, o]
     side = np.zeros(len(i))
-    w_a, w_b = f_a.copy(), f_b.copy()  # the weights of false position (Illinois)
+    w_b = f_b.copy()  # w_a and w_b: the weights of false position (Illinois)
     for n in range(rounds):
         go = (b - a > tolerance) & ~((f_b <= near) & (f_b >= 0.0))
         if not np.any(go):
@@ -54,14 +54,25 @@ def least_values(
             aim = near / 2.0
             mid = np.where(smooth, a + (b - a) * (aim - w_a) / (w_b - w_a), 0.5 * (a + b))
         mid = np.clip(mid, a + 0.02 * (b - a), b - 0.02 * (b - a))
-        todo = np.flatnonzero(go)
-        f = left(i[todo], mid[todo])[np.arange(todo.size), o[todo]]
-        for j, value in zip(todo, f, strict=True):
-            if value < 0.0:
-                w_b[j] = 0.5 * w_b[j] if side[j] == 1 else w_b[j]
-                a[j], f_a[j], w_a[j], side[j] = mid[j], value, value, 1
-            else:
-                w_a[j] = 0.5 * w_a[j] if side[j] == -1 else w_a[j]
-                b[j], f_b[j], w_b[j], side[j] = mid[j], value, value, -1
+        todo = _apart(np.flatnonzero(go), i, a, b)
+        seen = left(i[todo], mid[todo])
+        for j, x, values in zip(todo, mid[todo], seen, strict=True):
+            # what one observer's try shows, the others of the item learn from
+            for m in np.flatnonzero(i == i[j]):
+                value = values[o[m]]
+                if not a[m] < x < b[m]:
+                    continue
+                if value < 0.0:
+                    w_b[m] = 0.5 * w_b[m] if side[m] == 1 else w_b[m]
+                    a[m], w_a[m], side[m] = x, value, 1
+                else:
+                    w_a[m] = 0.5 * w_a[m] if side[m] == -1 else w_a[m]
+                    b[m], f_b[m], w_b[m], side[m] = x, value, value, -1
     found[i, o], there[i, o] = b, f_b
     return found, there
+
+
+def _apart(rows: NDArray[np.int_], item: NDArray[np.int_], a: Array, b: Array) -> NDArray[np.int_]:
+    """The rows less those that would try the same item in the same bracket again."""
+    _, first = np.unique(np.column_stack([item[rows], a[rows], b[rows]]), axis=0, return_index=True)
+    return rows[np.sort(first)]
