@@ -157,7 +157,8 @@ def _labels(axes: Axes, sheet: GateSheet, gate: Gate, x: Array, lines: tuple[Arr
     axes.annotate("this loop", (own_x, own), (7, -3), textcoords="offset points", fontsize=7.0, color=tone,
                   weight="bold", va="top", ha="left", zorder=6,
                   bbox={"facecolor": "white", "edgecolor": "none", "alpha": 0.8, "pad": 0.5})
-    if np.nanmax(late - early) > 0.06 * (high - low):
+    width = late - early
+    if np.any(width[np.isfinite(width)] > 0.06 * (high - low)):
         for line, text, side in ((early, "early", "top"), (late, "late", "bottom")):
             axes.text(x[-1], line[-1] + (-0.008 if side == "top" else 0.008) * (high - low), text, fontsize=5.6,
                       color=BLUE, va=side, ha="right")
