@@ -78,6 +78,11 @@ class Cases:
 _PER_CASE = tuple(f.name for f in fields(Cases) if f.name not in ("names", "error", "reaction_s"))
 
 
+def per_case() -> tuple[str, ...]:
+    """Names of the columns with a row for each case."""
+    return _PER_CASE
+
+
 def work_cases(
     scenes: Sequence[Scene],
     airframe_of: Callable[[str], Airframe],
