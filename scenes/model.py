@@ -293,6 +293,26 @@ class FilmPlan:
 
 
 @dataclass(frozen=True, slots=True)
+class Scatter:
+    """How a team's passes differ from one another: one standard deviation of each quantity."""
+
+    entry_speed_mps: float = quantity("speed", "of the entry speed", 0.0, 30.0, default=0.0, example="4 kt")
+    entry_height_m: float = quantity("length", "of the entry height", 0.0, 100.0, default=0.0, example="20 ft")
+    load_factor: float = quantity("fraction", "of the g pulled on the way up, and of how early it is pulled on the way "
+                                  "down", 0.0, 0.3, default=0.0, example="4 %")
+    base_m: float = quantity("length", "of the height the loop closes at", 0.0, 100.0, default=0.0, example="20 ft")
+    power: float = quantity("fraction", "of the power in the loop, never above full", 0.0, 0.3, default=0.0,
+                            example="2 %")
+    wind_mps: float = quantity("speed", "of each horizontal part of the wind", 0.0, 15.0, default=0.0, example="3 kt")
+    station_m: float = quantity("length", "of a wing pilot's place along each axis, kept through a pass", 0.0, 10.0,
+                                default=0.0, example="0.7 m")
+    attention: float = quantity("fraction", "of a wing pilot's attention to what he doesn't look at, a ratio", 0.0, 1.0,
+                                default=0.0, example="30 %")
+    reaction: float = quantity("fraction", "of a wing pilot's reaction, of its mean", 0.0, 1.0, default=0.0,
+                               example="45 %")
+
+
+@dataclass(frozen=True, slots=True)
 class Scene:
     """One scene, as read from YAML."""
 
@@ -314,6 +334,8 @@ class Scene:
                               part=FilmPlan)
     briefed: tuple[Step, ...] | None = quantity("script", "what was briefed, if the script flies something else: what "
                                                 "the wing pilots expect; the scene has no fault then", default=None)
+    scatter: Scatter | None = quantity("part", "how the team's passes differ from one another; for latepull scatter",
+                                       default=None, part=Scatter)
     seed: int = quantity("count", "seed of the terrain and of everything drawn by lot", 0, 2**31 - 1, default=1)
     source: str = ""  # path the scene was read from
     notes: str = quantity("text", "anything worth keeping with the scene", default="")

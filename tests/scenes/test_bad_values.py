@@ -34,7 +34,7 @@ CASES: list[tuple[str, str, list[str]]] = [
      ["1:8: title: read yes, wanted a text, such as Right wing, nothing fails (did you mean \"yes\"?)"]),
     ("title: A loop", "titel: A loop",
      ["1:1: titel: read the key titel, wanted one of title, airframe, day, ground, floor, script, fault, formation, "
-      "break_out, watch, film, briefed, seed or notes (did you mean title?)",
+      "break_out, watch, film, briefed, scatter, seed or notes (did you mean title?)",
       "1:1: title: read nothing, wanted what the scene shows, in a line: a text, such as Right wing, nothing fails"]),
     ("airframe: jet_trainer", "airframe: jet_trainr",
      ["2:11: airframe: read jet_trainr, wanted a shipped airframe (aerobatic_two_seater, jet_trainer or "
