@@ -233,7 +233,7 @@ def _look(
                         called, _ = first_notice(time_s, _lead(ah, af, time_s, counts))
                     continue
                 seen = wing_evidence(
-                    _one(seats(plans[0], yh, ah, k)), seats(plans[0], yf, af, k), time_s + offset_s, counts,
+                    one_seat(seats(plans[0], yh, ah, k)), seats(plans[0], yf, af, k), time_s + offset_s, counts,
                     plans[0].scene.watch, ground.height_at, line, called + offset_s,
                 )
                 when, lead_cue = first_notice(time_s, seen)
@@ -250,7 +250,7 @@ def _lead(ah: Array, af: Array, time_s: Array, counts: NDArray[np.bool_]) -> Evi
                          f[..., r.A_STICK_FORCE], time_s, counts)
 
 
-def _one(seat: c.Seat) -> c.Seat:
+def one_seat(seat: c.Seat) -> c.Seat:
     """A batch of one seat without its leading axis."""
     assert seat.lead_eye_e_m is not None
     return replace(seat, pos_e_m=seat.pos_e_m[0], vel_e_mps=seat.vel_e_mps[0], quat_eb=seat.quat_eb[0],

@@ -1,0 +1,111 @@
+"""What a team's own technique does to each cue: healthy passes against the pass as briefed, matched at one point."""
+
+from __future__ import annotations
+
+import dataclasses
+from collections.abc import Callable, Sequence
+
+import numpy as np
+
+from render.decide.brief import compile_brief
+from render.decide.left import one_seat
+from render.decide.seats import seats
+from render.errors import FlightError
+from render.flight import records as r
+from render.flight import script as s
+from render.flight.batch import Raw
+from render.flight.inside import crossing, fly_far
+from render.flight.plan import DT_S, Plan
+from render.frames import Array
+from render.sight.evidence import Evidence, wing_evidence
+from render.sight.notice import SAMPLE_S
+from scenes.airframe import Airframe
+from scenes.model import Level, Scene
+from terrain.ground import Ground
+
+EVERY = max(1, round(SAMPLE_S / DT_S))
+TOGETHER = 20
+
+
+def heading_of(scene: Scene) -> float:
+    """The heading a scene begins with, rad: what the ground patches are laid about."""
+    first = scene.script[0]
+    return first.heading_rad if isinstance(first, Level) and first.heading_rad is not None else 0.0
+
+
+def technique_scatter(
+    nominal: Scene, nominal_scale: float, passes: Sequence[Scene], scales: Array, at_s: float,
+    airframe_of: Callable[[str], Airframe], ground: Ground,
+) -> tuple[dict[str, float], ...]:
+    """For each slot, what each cue of healthy passes differs by from the pass as briefed: cue -> one sigma.
+
+    Root mean square over passes and over the time from the point to the end of the script (``at_s`` in the nominal
+    pass; the same loop angle in the others if it lies in the loop). scales: of the back halves, (N,).
+    """
+    whole = compile_brief(nominal, airframe_of)
+    plans = [compile_brief(p, airframe_of) for p in passes]
+    own = fly_far([whole], np.array([nominal_scale]), whole.longest_s)
+    angle = float(own.a[0, round(at_s / DT_S), 0, r.A_LOOP])
+    end = round(own.mem[0, s.M_SCRIPT_END_S] / DT_S)
+    begin = round(at_s / DT_S)
+    count = max((end - begin) // EVERY, 2)
+    time_s = np.arange(count) * (EVERY * DT_S)
+    sums: list[dict[str, list[float]]] = [{} for _ in nominal.formation]
+    for at in range(0, len(plans), TOGETHER):
+        part = plans[at : at + TOGETHER]
+        raw = fly_far(part, scales[at : at + TOGETHER], whole.longest_s)
+        starts = [_start(p, raw, b, angle, begin) for b, p in enumerate(part)]
+        for k in range(1, len(whole.airframes)):
+            seen = _against(whole, own, begin, part, raw, starts, k, time_s, ground, heading_of(nominal))
+            for c, name in enumerate(seen.names):
+                there = seen.there[:, c]
+                sums[k - 1].setdefault(name, [0.0, 0.0])
+                sums[k - 1][name][0] += float(np.sum(seen.difference[:, c][there] ** 2))
+                sums[k - 1][name][1] += float(np.sum(there))
+    return tuple({name: (total / n) ** 0.5 if n else 0.0 for name, (total, n) in slot.items()} for slot in sums)
+
+
+def _start(plan: Plan, raw: Raw, b: int, angle_rad: float, begin: int) -> int:
+    """The step at which a pass is at the point: by its loop angle inside the loop, else by the clock."""
+    if not 0.0 < angle_rad < 2.0 * np.pi - 0.01:
+        return begin
+    try:
+        return round(crossing(plan, raw, b, angle_rad).time_s / DT_S)
+    except FlightError:
+        return begin
+
+
+def _against(
+    whole: Plan, own: Raw, begin: int, plans: Sequence[Plan], raw: Raw, starts: Sequence[int], k: int, time_s: Array,
+    ground: Ground, line_rad: float,
+) -> Evidence:
+    """Evidence of passes against the nominal one from the point on, (B, C, T), everything counting."""
+    steps = np.arange(len(time_s)) * EVERY
+    last = own.y.shape[1] - 1
+    mine = np.minimum(np.asarray(starts)[:, None] + steps, last)
+    rows = np.arange(len(plans))[:, None]
+    healthy = np.minimum(begin + steps, last)
+    seat_h = one_seat(seats(whole, own.y[:, healthy], own.a[:, healthy], k))
+    seat_f = seats(plans[0], raw.y[rows, mine], raw.a[rows, mine], k)
+    watch = dataclasses.replace(whole.scene.watch, gauges_every_s=None, call_after_s=None)
+    everywhere = np.ones((len(plans), len(time_s)), dtype=bool)
+    return wing_evidence(seat_h, seat_f, time_s, everywhere, watch, ground.height_at, line_rad)
+
+
+def healthy_evidence(
+    nominal: Scene, scale: float, airframe_of: Callable[[str], Airframe], ground: Ground
+) -> tuple[tuple[Array, Evidence], ...]:
+    """For each slot, the healthy pass against itself from the loop's entry to the script's end: times and evidence."""
+    plan = compile_brief(nominal, airframe_of)
+    raw = fly_far([plan], np.array([scale]), plan.longest_s)
+    end = round(raw.mem[0, s.M_SCRIPT_END_S] / DT_S)
+    begin = int(np.argmax(raw.a[0, :, 0, r.A_LOOP] > 0.0))
+    steps = np.arange(begin, max(end, begin + 2 * EVERY), EVERY)
+    time_s: Array = steps * DT_S
+    everywhere = np.ones(len(steps), dtype=bool)
+    out = []
+    for k in range(1, len(plan.airframes)):
+        seat = one_seat(seats(plan, raw.y[:, steps], raw.a[:, steps], k))
+        seen = wing_evidence(seat, seat, time_s, everywhere, plan.scene.watch, ground.height_at, heading_of(nominal))
+        out.append((time_s, seen))
+    return tuple(out)
