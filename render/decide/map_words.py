@@ -3,11 +3,14 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from render.decide.cases import CUES
 from render.decide.map import Map, Outcome, same_slots
 from render.decide.values import Axis
-from render.frames import Array
+
+Outcomes = NDArray[np.int64]
+Mask = NDArray[np.bool_]
 
 # what a fault that comes at a place, or a flight with a value, does
 DOES = {
@@ -71,7 +74,7 @@ def place_words(axis: Axis, first: int, last: int) -> str:
     return f"a flight with {axis.path} {'from ' if first != last else 'at '}{at}"
 
 
-def runs(row: Array) -> list[tuple[Outcome, int, int]]:
+def runs(row: Outcomes) -> list[tuple[Outcome, int, int]]:
     """Outcomes along an axis, (X,), as runs: outcome, first and last index."""
     found: list[tuple[Outcome, int, int]] = []
     for i, value in enumerate(row):
@@ -122,7 +125,7 @@ def whole_sentence(found: Map, slot: int) -> str:
     return f"{_worst(found, slot, bad)}; {_enough(found, outcome, flown)}."
 
 
-def _worst(found: Map, slot: int, bad: Array) -> str:
+def _worst(found: Map, slot: int, bad: Mask) -> str:
     late = np.where(bad, found.grid("lateness_s")[:, :, slot, 1], np.nan)
     pull = found.grid("last_pull_floor_s")[:, :, slot]
     never = bad & np.isnan(late) & np.isfinite(pull)
@@ -140,12 +143,12 @@ def _worst(found: Map, slot: int, bad: Array) -> str:
     return f"At worst, at {place}, {who} has {-worst:.1f} s in hand"
 
 
-def _point(found: Map, mask: Array) -> str:
+def _point(found: Map, mask: Mask) -> str:
     i, j = (int(v[0]) for v in np.nonzero(mask))
     return f"{found.x.text(i)} and {found.y.text(j)}"
 
 
-def _enough(found: Map, outcome: Array, flown: Array) -> str:
+def _enough(found: Map, outcome: Outcomes, flown: Mask) -> str:
     """From which end of the y axis on every point clears by itself."""
     clear = np.all((outcome == Outcome.CLEARS) | ~flown, axis=0) & flown.any(axis=0)
     if not clear.any():
