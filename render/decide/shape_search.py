@@ -1,0 +1,258 @@
+"""The search: pulls tried side by side, by differential evolution and then a simplex, within limits of load factor.
+
+Every draw is seeded: the same seed and budget give the same answer.
+"""
+
+from __future__ import annotations
+
+import dataclasses
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.optimize import differential_evolution, minimize
+
+from render.decide.shape import (
+    CLEAR_M_PER_S,
+    CLEAR_S,
+    LEAST_LOAD,
+    LIKELY,
+    NEVER_S,
+    Frozen,
+    Job,
+    freeze_all,
+    unlike_slots,
+    with_demand,
+)
+from render.decide.shape_limits import Limits, Pull, least_load_factor, measure_pulls, own_limits
+from render.frames import Array
+from scenes.model import DEG, Loop, Scene
+
+PEOPLE = 20  # pulls in a generation
+DRAWS = 4  # times as many are drawn and measured for the first one
+POLISH = 0.35  # part of a search's budget that goes to its simplex
+TIGHTER = 0.995  # limits inside a search, so that rounding what it finds to 0.01 g keeps them
+FINER = 5  # freeze points of the final check, to each one of the search
+ROUNDS = 3  # searches of one load factor, each with the freeze points the last one had missed
+MISSED_S = 0.05  # of lateness, between freeze points
+BETTER_S = 0.02  # less is no difference
+LEAST_OVER = 1.03  # the least load factor of a trade, to the least that closes at all
+
+Tell = Callable[[str, int, int], None]
+"""Called with what is being worked on, cases done, cases granted."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Trade:
+    """The best pull found within one load factor; ``scene`` None: none was found that keeps all limits."""
+
+    limits: Limits
+    scene: Scene | None
+    pull: Pull | None
+    frozen: Frozen | None  # at the fine freeze points, every slot
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Shape:
+    """What a search found: the loop as it was, the trade over load factor, which of it is best (None: none)."""
+
+    job: Job
+    start_pull: Pull
+    start: Frozen  # at the fine freeze points, every slot
+    within: bool  # whether the loop as it was keeps the limits
+    trade: tuple[Trade, ...]
+    best: int | None
+    cases: int
+    seed: int
+
+
+def fine_points(freeze_rad: Array, finer: int = FINER) -> Array:
+    """Freeze points between those of a search, ``finer`` for each of its steps."""
+    last = len(freeze_rad) - 1
+    points: Array = np.interp(np.arange(last * finer + 1) / finer, np.arange(last + 1), freeze_rad)
+    return points
+
+
+def find_shape(
+    job: Job, *, load_factor: float | None = None, onset_gps: float | None = None, slope_gprad: float | None = None,
+    bend_gprad2: float | None = None, budget: int = 8000, seed: int = 1, steps: int = 4, tell: Tell | None = None,
+) -> Shape:
+    """Seek the pull whose worst freeze is least late, for ``steps`` load factors up to the greatest allowed.
+
+    Limits not given are the scene's own. budget: freezes flown in all searches together.
+    Raises LatepullError: the loop can't close within the load factor; FlightError: it can't be flown as it is.
+    """
+    from render.errors import FlightError
+
+    start_pull = measure_pulls(job, [job.scene])[0]
+    if start_pull.error is not None:
+        raise FlightError(start_pull.error)
+    limits = own_limits(start_pull, load_factor=load_factor, onset_gps=onset_gps, slope_gprad=slope_gprad,
+                        bend_gprad2=bend_gprad2)
+    least = least_load_factor(job, limits.load_factor)
+    fine = fine_points(job.freeze_rad)
+    start = freeze_all(job, [job.scene], fine)[0]
+    lowest = min(LEAST_OVER * least, limits.load_factor)
+    loads = np.geomspace(lowest, limits.load_factor, steps) if steps > 1 else np.array([limits.load_factor])
+    trade: list[Trade] = []
+    spent = 2 * len(fine)
+    seeds: list[Array] = [_sampled(job, start_pull)]
+    for n, most in enumerate(loads):
+        mine = dataclasses.replace(limits, load_factor=float(most))
+        share = max((budget - spent) // (len(loads) - n), 0)
+        search = Search(job, mine, start_pull, seed + n, share, f"within {most:.1f} g", tell)
+        before = trade[-1] if trade else None
+        if before is not None and before.frozen is not None and search.reached(before.frozen):
+            trade.append(dataclasses.replace(before, limits=mine))  # nothing is left to gain
+            continue
+        found = search.run(seeds)
+        spent += search.spent
+        if before is not None and before.frozen is not None and (
+            found.frozen is None or found.frozen.score_s > before.frozen.score_s
+        ):
+            found = dataclasses.replace(before, limits=mine)
+        trade.append(found)
+        if found.pull is not None:
+            seeds.append(_sampled(job, found.pull))
+    best = None
+    for n, item in enumerate(trade):
+        ahead = start.score_s if best is None else _score(trade[best])
+        if _score(item) < ahead - BETTER_S:
+            best = n
+    return Shape(job, start_pull, start, start_pull.excess(limits) == 0.0, tuple(trade), best, spent, seed)
+
+
+def _score(item: Trade) -> float:
+    return np.inf if item.frozen is None else item.frozen.score_s
+
+
+def _sampled(job: Job, pull: Pull) -> Array:
+    """A flown pull at the knots, (D,)."""
+    loads: Array = np.interp(job.knots_rad, pull.angle_rad, pull.flown_load)
+    return loads
+
+
+class Search:
+    """One search within one load factor."""
+
+    def __init__(self, job: Job, limits: Limits, start: Pull, seed: int, budget: int, what: str,
+                 tell: Tell | None) -> None:
+        self.job, self.limits, self.budget, self.what, self.tell = job, limits, budget, what, tell
+        self.tight = Limits(*(getattr(limits, f.name) * TIGHTER for f in dataclasses.fields(limits)))
+        loop = job.scene.script[job.loop]
+        assert isinstance(loop, Loop)
+        self.end_load = loop.load_factor[-1] * start.scale
+        # a freeze that clears as much as the loop itself at its base leaves nothing to gain
+        self.enough = CLEAR_S - max((loop.close_at_m or 0.0) - job.scene.floor_m, 0.0) / CLEAR_M_PER_S
+        self.rng = np.random.default_rng(seed)
+        self.spent = 0
+        self.best_score, self.best_load = np.inf, np.array([])
+
+    def reached(self, frozen: Frozen) -> bool:
+        """Whether nothing is left to gain."""
+        return frozen.score_s <= self.enough
+
+    def scenes(self, loads: Array) -> list[Scene]:
+        """Candidates as scenes; loads (N, D)."""
+        return [with_demand(self.job, x, float(min(self.end_load, x[-1]))) for x in loads]
+
+    def scores(self, loads: Array) -> Array:
+        """What each pull scores, (N,): beyond the limits, the worse the farther; within, its worst freeze."""
+        scenes = self.scenes(loads)
+        pulls = measure_pulls(self.job, scenes)
+        excess = np.array([p.excess(self.tight) for p in pulls])
+        score = NEVER_S + 10.0 + 100.0 * np.minimum(excess, 10.0)
+        good = np.flatnonzero(excess == 0.0)
+        frozen = freeze_all(self.job, [unlike_slots(scenes[i]) for i in good])
+        self.spent += len(good) * len(self.job.freeze_rad)
+        for i, f in zip(good, frozen, strict=True):
+            score[i] = max(f.score_s, self.enough)
+        i = int(np.argmin(score))
+        if score[i] < self.best_score:
+            self.best_score, self.best_load = float(score[i]), loads[i].copy()
+        if self.tell is not None:
+            self.tell(self.what, min(self.spent, self.budget), self.budget)
+        return score
+
+    def _first(self, seeds: Sequence[Array]) -> Array:
+        """The first generation: of many drawn, those that keep the limits best; (PEOPLE, D)."""
+        knots, most = self.job.knots_rad, self.limits.load_factor
+        n = DRAWS * PEOPLE
+        u = np.clip((knots - knots[0]) / (330.0 * DEG - knots[0]), 0.0, 1.1)
+        peak = self.rng.uniform(0.6, 1.0, (n, 1)) * most
+        begin = LEAST_LOAD + self.rng.uniform(0.0, 1.0, (n, 1)) * (peak - LEAST_LOAD)
+        power = np.exp(self.rng.uniform(-1.5, 1.0, (n, 1)))
+        drawn = begin + (peak - begin) * u**power
+        drawn *= 1.0 + 0.04 * self.rng.standard_normal(drawn.shape)
+        near = [np.minimum(x, most) * (1.0 + 0.03 * i * self.rng.standard_normal(x.size))
+                for x in seeds for i in range(4)]
+        drawn = np.clip(np.concatenate([np.array(near), drawn]), LEAST_LOAD, most)
+        excess = np.array([p.excess(self.tight) for p in measure_pulls(self.job, self.scenes(drawn))])
+        return drawn[np.argsort(excess, kind="stable")[:PEOPLE]]
+
+    def _done(self, budget: float) -> bool:
+        return self.best_score <= self.enough or self.spent >= budget
+
+    def run(self, seeds: Sequence[Array]) -> Trade:
+        """Search, check at finer freeze points, and search again with those that had been missed."""
+        job, found = self.job, Trade(self.limits, None, None, None)
+        part = self.budget / ROUNDS
+        for n in range(ROUNDS):
+            until = self.budget if n == ROUNDS - 1 else self.spent + max(part, 0.6 * (self.budget - self.spent))
+            self.best_score = np.inf
+            self._evolve(seeds if n == 0 else [*seeds, self.best_load], until)
+            now = self._finish(job)
+            if _score(now) < _score(found):
+                found = now
+            if now.frozen is None or now.frozen.score_s <= max(self.best_score, self.enough) + MISSED_S:
+                break
+            if self.spent >= self.budget:
+                break
+            more = _peaks(now.frozen)
+            self.job = dataclasses.replace(self.job, freeze_rad=np.unique(np.concatenate([self.job.freeze_rad, more])))
+        return found
+
+    def _evolve(self, seeds: Sequence[Array], until: float) -> None:
+        many = [(LEAST_LOAD, self.limits.load_factor)] * len(self.job.knots_rad)
+        split = self.spent + (1.0 - POLISH) * (until - self.spent)
+        differential_evolution(
+            lambda x: self.scores(x.T), many, init=self._first(seeds), maxiter=200, mutation=(0.4, 0.9),
+            recombination=0.8, rng=self.rng, polish=False, tol=0.0, vectorized=True, updating="deferred",
+            callback=lambda intermediate_result: self._done(split),
+        )
+        if self._done(until) or self.best_score > NEVER_S:
+            return
+        x0 = self.best_load.copy()
+        simplex = np.vstack([x0, x0 * (1.0 + 0.05 * np.eye(len(x0)))])
+        simplex = np.clip(simplex, LEAST_LOAD, self.limits.load_factor)
+
+        def stop(intermediate_result: object) -> None:
+            if self._done(until):
+                raise StopIteration
+
+        minimize(lambda x: float(self.scores(x[None])[0]), x0, method="Nelder-Mead", bounds=many, callback=stop,
+                 options={"initial_simplex": simplex, "maxfev": 150, "xatol": 1e-3, "fatol": 1e-3, "adaptive": True})
+
+    def _finish(self, job: Job) -> Trade:
+        """The best pull written as it is flown (scale near 1), rounded, measured, and frozen at the fine points."""
+        none = Trade(self.limits, None, None, None)
+        if self.best_score > NEVER_S:
+            return none
+        pull = measure_pulls(job, self.scenes(self.best_load[None]))[0]
+        flown = self.best_load * pull.scale
+        end = float(min(self.end_load, self.best_load[-1])) * pull.scale
+        for digits in (2, 4):
+            scene = with_demand(job, np.round(flown, digits), round(end, digits))
+            pull = measure_pulls(job, [scene])[0]
+            if pull.excess(self.limits) == 0.0:
+                points = fine_points(job.freeze_rad)
+                self.spent += len(points)
+                return Trade(self.limits, scene, pull, freeze_all(job, [scene], points)[0])
+        return none
+
+
+def _peaks(frozen: Frozen) -> Array:
+    """Freeze points where the lateness of the likely observer is greatest: the two worst of the fine ones."""
+    late = np.where(frozen.clears, -np.inf, frozen.lateness_s[:, LIKELY])
+    late = np.where(np.isnan(late), np.inf, late)
+    return frozen.freeze_rad[np.argsort(-late, kind="stable")[:2]]
