@@ -159,7 +159,8 @@ def _picture(args: argparse.Namespace, size_px: tuple[int, int]) -> tuple[Any, s
     from render.output.stage_source import StageOptions, picture_words, stage_spec
 
     options = StageOptions(view=args.view, look=args.look, twin=args.twin, peripheral=args.peripheral)
-    return stage_spec(options, size_px, overlay=not args.plain), picture_words(options)
+    return stage_spec(options, size_px, overlay=not args.plain,
+                      plain_too=getattr(args, "both", False)), picture_words(options)
 
 
 def _kind(args: argparse.Namespace) -> str:

@@ -49,6 +49,7 @@ class StageOptions:
     faulted ``side`` by side or in a ``stack`` (healthy left or above), or the healthy lead as a ``ghost``.
     peripheral: what acuity leaves away from the gaze. panini: None takes it for fields above 100 deg.
     field_rad: None takes the film's (a spectator: 40 deg). clear_px: rows kept free at the bottom of a twin.
+    unseen_px: rows at the bottom that an overlay covers: left black where that saves drawing.
     """
 
     view: str = "seat"
@@ -59,6 +60,7 @@ class StageOptions:
     panini: bool | None = None
     field_rad: float | None = None
     clear_px: int = 0
+    unseen_px: int = 0
 
 
 class StageSource:
@@ -77,10 +79,12 @@ class StageSource:
         wide = options.panini if options.panini is not None else field_rad > PANINI_FROM_RAD
         self._wide = Panini(field_rad, size_px) if wide else None
         self._peripheral = Peripheral(size_px) if options.peripheral else None
+        whole = self._wide is not None or self._peripheral is not None  # their pixels come from elsewhere in the picture
         self.stage = Stage(
             self._flight.airframes, ground, study.scene.day, size_px if self._wide is None else self._wide.source_px,
             seed=study.scene.seed, own=self._k if options.view == "seat" else None, ghost=options.twin == "ghost",
             smoke=self._flight if study.scene.film.smoke else None,
+            unseen_px=0 if whole else options.unseen_px,
         )  # fmt: skip
 
     def frame(self, time_s: float) -> Frame:
@@ -170,10 +174,18 @@ def twin_part(
     return part, float(min(2.0 * np.arctan(half), FIELD_MAX_RAD))
 
 
-def stage_spec(options: StageOptions, size_px: tuple[int, int], *, overlay: bool) -> SourceSpec:
-    """The stage by name for a film's workers; under an overlay the halves of a twin keep clear of its strip."""
-    clear = strip_px(size_px[1]) if overlay and options.twin in ("side", "stack") else 0
-    return SourceSpec(options=asdict(replace(options, clear_px=clear)))
+def stage_spec(
+    options: StageOptions, size_px: tuple[int, int], *, overlay: bool, plain_too: bool = False
+) -> SourceSpec:
+    """The stage by name for a film's workers.
+
+    Under an overlay the halves of a twin keep clear of its strip, and what it covers of one picture is not drawn,
+    unless the plain version is made from the same drawing.
+    """
+    strip = strip_px(size_px[1]) if overlay else 0
+    if options.twin in ("side", "stack"):
+        return SourceSpec(options=asdict(replace(options, clear_px=strip)))
+    return SourceSpec(options=asdict(replace(options, unseen_px=0 if plain_too else strip)))
 
 
 def picture_words(options: StageOptions) -> str:

@@ -62,14 +62,17 @@ class Stage:
         ghost: bool = False,
         smoke: Flight | None = None,
         smooth: bool = True,
+        unseen_px: int = 0,
     ) -> None:
         """airframes: (K,) of the formation; size_px: width and height; seed: the one the ground was read with;
         own: whose cockpit the camera sits in (None: outside all of them); ghost: whether a second lead may be
-        drawn faintly; smoke: the flight whose aircraft trail it; smooth: whether silhouettes are antialiased.
+        drawn faintly; smoke: the flight whose aircraft trail it; smooth: whether silhouettes are antialiased;
+        unseen_px: rows at the bottom that something else will cover: left black.
         """
         require_drawing()
         self._own, self._smooth = own, smooth
         width, height = self._size = size_px
+        drawn = height - unseen_px
         self._land = Land(ground, day, seed)
         light = self._land.light
         on_craft = craft_light(light)
@@ -89,12 +92,13 @@ class Stage:
         for craft in reversed(nearest_first):
             self._add(() if craft is None else craft.actors(clear=True))
         self._window = new_window()
-        self._window.SetSize(width, height)
+        self._window.SetSize(width, drawn)
         self._window.AddRenderer(self.renderer)
         self._pixels = vtkUnsignedCharArray()
         self._pixels.SetNumberOfComponents(3)
-        self._pixels.SetNumberOfTuples(width * height)
-        self._frame: Frame = np.empty((height, width, 3), np.uint8)
+        self._pixels.SetNumberOfTuples(width * drawn)
+        self._frame: Frame = np.zeros((height, width, 3), np.uint8)
+        self._drawn: Frame = self._frame[:drawn]
 
     def __enter__(self) -> Stage:
         return self
@@ -124,11 +128,11 @@ class Stage:
         self._place(instant, camera, ghost)
         self._aim(camera)
         self._window.Render()
-        width, height = self._size
+        height, width, _ = self._drawn.shape
         self._window.GetPixelData(0, 0, width - 1, height - 1, 0, self._pixels, 0)
-        np.copyto(self._frame, vtk_to_numpy(self._pixels).reshape(height, width, 3)[::-1])
+        np.copyto(self._drawn, vtk_to_numpy(self._pixels).reshape(height, width, 3)[::-1])
         if self._smooth:
-            smooth_edges(self._frame)
+            smooth_edges(self._drawn)
         return self._frame
 
     @property
@@ -172,7 +176,10 @@ class Stage:
         vtk_camera.SetPosition(*pos)
         vtk_camera.SetFocalPoint(*(pos + 100.0 * axis))
         vtk_camera.SetViewUp(*up)
-        vtk_camera.SetViewAngle(float(np.degrees(camera.field_vertical_rad)))
+        part = self._drawn.shape[0] / camera.height_px  # the camera's picture, less the rows at its bottom
+        half = np.arctan(part * np.tan(0.5 * camera.field_vertical_rad))
+        vtk_camera.SetViewAngle(float(np.degrees(2.0 * half)))
+        vtk_camera.SetWindowCenter(0.0, (1.0 - part) / part)
         vtk_camera.SetClippingRange(NEAR_M, FAR_M)
         corner = np.hypot(np.tan(0.5 * camera.field_rad), np.tan(0.5 * camera.field_vertical_rad))
         self._land.set_eye(camera.pos_e_m, axis @ DISPLAY_FROM_EARTH, float(np.arctan(corner)))

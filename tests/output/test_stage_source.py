@@ -108,6 +108,21 @@ def test_the_strip_is_kept_free_only_under_an_overlay() -> None:
     assert stage_spec(StageOptions(), (1280, 720), overlay=True).options["clear_px"] == 0
 
 
+@pytest.mark.draws
+def test_what_the_strip_covers_is_not_drawn_and_the_rest_is_the_same_picture(study: Study) -> None:
+    spec = stage_spec(StageOptions(), SIZE, overlay=True)
+    rows = SIZE[1] - spec.options["unseen_px"]
+    with open_stage(study, "right", SIZE) as whole, open_stage(study, "right", SIZE, **spec.options) as cut:
+        for time_s in (9.0, 22.0):
+            first, second = whole.frame(time_s).astype(int), cut.frame(time_s).astype(int)
+            apart = np.abs(first - second)[:rows].max(axis=2)
+            assert np.mean(apart > 2) < 0.005, "one camera: only roundings may differ"
+            assert second[rows:].max() == 0 and first[rows:].max() > 0
+    assert stage_spec(StageOptions(), SIZE, overlay=False).options["unseen_px"] == 0
+    assert stage_spec(StageOptions(), SIZE, overlay=True, plain_too=True).options["unseen_px"] == 0
+    assert stage_spec(StageOptions(twin="side"), SIZE, overlay=True).options["unseen_px"] == 0
+
+
 def test_wrong_options_are_refused_all_at_once(study: Study, healthy_study: Study) -> None:
     wrong = {"view": "cabin", "look": "up", "twin": "mirror"}
     with pytest.raises(LatepullError) as caught, open_stage(study, "right", SIZE, **wrong):
