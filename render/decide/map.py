@@ -74,7 +74,7 @@ _AMOUNTS = {
     "slow": "fault.rate=0.2,0.5,1,1.5,2,3,5,8 deg/s",
     "trail": "fault.over=0.25,0.5,1,2,4,8 s",
 }
-_ANGLES = "fault.at.loop_angle=180:330:7.5deg"
+_ANGLES = "fault.at.loop_angle=180:330:5deg"
 _SPEEDS_MPS = tuple(n * 1852.0 / 3600.0 for n in (-20.0, -15.0, -10.0, -5.0, 0.0, 5.0, 10.0, 15.0, 20.0))
 
 
