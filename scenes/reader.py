@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import hashlib
 from pathlib import Path
 
 from scenes import shelf
@@ -13,7 +14,7 @@ from scenes.merge import Layer, layers, merged
 from scenes.model import Scene
 from scenes.rules import BAD
 from scenes.yamlnode import Mapping, Node, Scalar, Sequence
-from terrain.ground import RECIPES
+from terrain.ground import RECIPES, ground_names
 
 __all__ = ["Complaint", "SceneError", "airframe_names", "read_airframe", "read_scene", "read_scene_text",
            "scene_names", "scene_text"]
@@ -63,8 +64,12 @@ def scene_text(name_or_path: str | Path) -> str:
     frames = dict.fromkeys([scene.airframe, *(slot.airframe for slot in scene.formation if slot.airframe)])
     for frame in frames:
         texts += [(layer.file.name, layer.text) for layer in layers("airframe", _file("airframe", frame))]
-    recipe = RECIPES / f"{scene.ground}.yaml"
-    texts.append((recipe.name, recipe.read_text(encoding="utf-8")))
+    if scene.ground in ground_names():
+        recipe = RECIPES / f"{scene.ground}.yaml"
+        texts.append((recipe.name, recipe.read_text(encoding="utf-8")))
+    else:
+        file = Path(scene.ground.rpartition("@")[0] or scene.ground)
+        texts.append((file.name, f"sha256 {hashlib.sha256(file.read_bytes()).hexdigest()}"))
     return "\n".join(f"# ---- {name}\n{text}" for name, text in texts)
 
 

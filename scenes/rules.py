@@ -13,7 +13,8 @@ from scenes.complaint import Log, any_of, nearest, shown
 from scenes.model import FULL, GOING, HELD, IDLE, POINTS, Point, Power, quantity
 from scenes.yamlnode import Mapping as MappingNode
 from scenes.yamlnode import Node, Scalar, what
-from terrain.ground import ground_names
+from terrain.ground import GroundError, ground_names, is_elevation
+from terrain.ground import read_ground as terrain_ground
 
 BAD: Any = object()  # stands for a value that could not be read
 Meta = Mapping[str, Any]
@@ -141,13 +142,21 @@ def read_engines(node: Node, path: str, meta: Meta, log: Log) -> Any:
 
 
 def read_ground(node: Node, path: str, meta: Meta, log: Log) -> Any:
-    """A shipped terrain's name."""
+    """A shipped terrain's name, or an elevation file's path (relative to the scene's file) with its display centre."""
     known = ground_names()
-    if not isinstance(node, Scalar) or node.text not in known:
-        guess = nearest(node.text, known) if isinstance(node, Scalar) else None
-        log.add(node.mark, path, what(node), f"a terrain: {any_of(known)}", guess)
-        return BAD
-    return node.text
+    if isinstance(node, Scalar) and node.text in known:
+        return node.text
+    if isinstance(node, Scalar) and is_elevation(node.text):
+        text = os.path.abspath(Path(node.mark.file).parent / node.text)
+        try:
+            terrain_ground(text)
+        except GroundError as exc:
+            log.add(node.mark, path, what(node), str(exc).removeprefix("ground: "))
+            return BAD
+        return text
+    guess = nearest(node.text, known) if isinstance(node, Scalar) else None
+    log.add(node.mark, path, what(node), f"a terrain: {any_of(known)}, or the path of an elevation file", guess)
+    return BAD
 
 
 def read_airframe_name(node: Node, path: str, meta: Meta, log: Log) -> Any:
@@ -256,7 +265,7 @@ WANTED: Mapping[str, Callable[[Meta], str]] = {
     "time_or_never": lambda m: f"never or {units.units_text('time')}",
     "time_or_none": lambda m: f"none or {units.units_text('time')}",
     "engines": lambda m: f"all, or a whole number from {m['lo']} to {m['hi']}",
-    "ground": lambda m: f"a terrain: {any_of(ground_names())}",
+    "ground": lambda m: f"a terrain: {any_of(ground_names())}, or the path of an elevation file",
     "airframe": lambda m: f"an airframe: {any_of(shelf.names('airframe'))}, or a path",
     "seat": lambda m: "a slot of the formation, or lead",
     "size": lambda m: "width x height in pixels, such as 1280x720",

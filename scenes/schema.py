@@ -97,6 +97,7 @@ def _value(meta: Mapping[str, Any], *, partly: bool) -> Json:
 def _special(meta: Mapping[str, Any]) -> Json:
     part = {"$ref": "#/$defs/fraction", "minimum": 0, "maximum": 1}
     time: Json = {"$ref": "#/$defs/time"}
+    elevation = {"type": "string", "pattern": r"\.([aA][sS][cC]|[hH][gG][tT]|[nN][pP][zZ]|[tT][iI][fF][fF]?)(@.*)?$"}
     path = {"type": "string", "pattern": r"/|\\|\.[yY][aA]?[mM][lL]$"}
     rules: dict[str, Json] = {
         "text": {"type": "string", "minLength": 1},
@@ -106,7 +107,7 @@ def _special(meta: Mapping[str, Any]) -> Json:
         "time_or_never": {"anyOf": [{"const": "never"}, time]},
         "time_or_none": {"anyOf": [NONE, time]},
         "engines": {"anyOf": [{"const": "all"}, {"type": "integer", "minimum": 1, "maximum": 4}]},
-        "ground": {"enum": list(ground_names())},
+        "ground": {"anyOf": [{"enum": list(ground_names())}, elevation]},
         "airframe": {"anyOf": [{"enum": list(shelf.names("airframe"))}, path]},
         "seat": {"type": "string"},
         "size": {"type": "string", "pattern": r"^[0-9]{2,5}[02468]x[0-9]{1,5}[02468]$"},

@@ -58,6 +58,13 @@ def ground_names() -> tuple[str, ...]:
     return tuple(sorted(path.stem for path in RECIPES.glob("*.yaml")))
 
 
+def is_elevation(name: str) -> bool:
+    """Whether a ground's name is meant as an elevation file's path, with or without its display centre."""
+    from terrain.elevation import ENDINGS
+
+    return Path(name.rpartition("@")[0] or name).suffix.lower() in ENDINGS
+
+
 def read_ground(name: str, seed: int = 1) -> Ground:
     """A ground from a shipped recipe and a seed, or from an elevation file (see terrain/elevation.py).
 
