@@ -39,18 +39,20 @@ def technique_scatter(
 ) -> tuple[dict[str, float], ...]:
     """For each slot, what each cue of healthy passes differs by from the pass as briefed: cue -> one sigma.
 
-    Root mean square over passes and over the time from the point to the end of the script (``at_s`` in the nominal
-    pass; the same loop angle in the others if it lies in the loop). scales: of the back halves, (N,).
+    Root mean square over the passes at each instant from the point to the bottom (``at_s`` in the nominal pass; the
+    same loop angle in the others if it lies in the loop), of that the median over the instants: where the g is let
+    go at the end, a second sooner or later is no technique. scales: of the back halves, (N,).
     """
     whole = compile_brief(nominal, airframe_of)
     plans = [compile_brief(p, airframe_of) for p in passes]
     own = fly_far([whole], np.array([nominal_scale]), whole.longest_s)
     angle = float(own.a[0, round(at_s / DT_S), 0, r.A_LOOP])
-    end = round(own.mem[0, s.M_SCRIPT_END_S] / DT_S)
+    end = min(round(own.mem[0, s.M_SCRIPT_END_S] / DT_S), own.y.shape[1] - 1)
     begin = round(at_s / DT_S)
+    end = begin + max(int(np.argmax(own.y[0, begin : end + 1, 0, r.D])), 2 * EVERY)
     count = max((end - begin) // EVERY, 2)
-    time_s = np.arange(count) * (EVERY * DT_S)
-    sums: list[dict[str, list[float]]] = [{} for _ in nominal.formation]
+    time_s: Array = np.arange(count, dtype=np.float64) * (EVERY * DT_S)
+    sums: list[dict[str, tuple[Array, Array]]] = [{} for _ in nominal.formation]
     for at in range(0, len(plans), TOGETHER):
         part = plans[at : at + TOGETHER]
         raw = fly_far(part, scales[at : at + TOGETHER], whole.longest_s)
@@ -59,10 +61,16 @@ def technique_scatter(
             seen = _against(whole, own, begin, part, raw, starts, k, time_s, ground, heading_of(nominal))
             for c, name in enumerate(seen.names):
                 there = seen.there[:, c]
-                sums[k - 1].setdefault(name, [0.0, 0.0])
-                sums[k - 1][name][0] += float(np.sum(seen.difference[:, c][there] ** 2))
-                sums[k - 1][name][1] += float(np.sum(there))
-    return tuple({name: (total / n) ** 0.5 if n else 0.0 for name, (total, n) in slot.items()} for slot in sums)
+                total, n = sums[k - 1].get(name, (np.zeros(count), np.zeros(count)))
+                sums[k - 1][name] = (total + np.sum(np.where(there, seen.difference[:, c], 0.0) ** 2, axis=0),
+                                     n + np.sum(there, axis=0))
+    return tuple({name: _typical(total, n) for name, (total, n) in slot.items()} for slot in sums)
+
+
+def _typical(total: Array, n: Array) -> float:
+    """The median over the instants at which at least half of the passes have the cue."""
+    usable = n >= max(float(np.max(n)) / 2.0, 1.0)
+    return float(np.median(np.sqrt(total[usable] / n[usable]))) if np.any(usable) else 0.0
 
 
 def _start(plan: Plan, raw: Raw, b: int, angle_rad: float, begin: int) -> int:
