@@ -43,7 +43,8 @@ CASES: list[tuple[str, str, list[str]]] = [
      ["2:11: airframe: read my/frame.yaml, and there is no such file, wanted a shipped airframe "
       "(aerobatic_two_seater, jet_trainer or turboprop_trainer) or the path of a YAML file"]),
     ("ground: heath", "ground: heeth",
-     ["4:9: ground: read heeth, wanted a terrain: coast, dry_plain, farmland, heath or hills, or the path of an elevation file (did you mean heath?)"]),
+     ["4:9: ground: read heeth, wanted a terrain: coast, dry_plain, farmland, heath or hills, or the path of an "
+      "elevation file (did you mean heath?)"]),
     ("24 degC", "24",
      ["3:45: day.temperature: read 24, wanted a temperature with its unit (K, degC or degF), such as 24 degC"]),
     ("24 degC", "24 C",
