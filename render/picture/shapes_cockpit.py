@@ -6,11 +6,11 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.interpolate import PchipInterpolator
 
 from render.frames import Array
 from render.picture.loft import Colour, Surf, grid_tris, merge, surface
 from render.picture.paint import Side, divided, station
+from render.picture.pchip import pchip
 from render.picture.shapes_parts import Fit
 from render.picture.shapes_sections import Body, ellipsoid
 
@@ -39,8 +39,7 @@ class Canopy:
     def crown_z(self, x_m: Array) -> Array:
         """Height (z) of the canopy's top at x."""
         table = self.crown[::-1]
-        result: Array = PchipInterpolator(table[:, 0], table[:, 1])(x_m)
-        return result
+        return pchip(table[:, 0], table[:, 1], x_m)
 
     def skin_z(self, x_m: Array, y_m: Array) -> Array:
         """Height (z) of the glass at x, y; the rail's height beyond it."""

@@ -9,10 +9,10 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.interpolate import PchipInterpolator
 
 from render.frames import Array
 from render.picture.loft import Colour, Surf, closed, rings
+from render.picture.pchip import pchip
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -27,7 +27,7 @@ class Body:
     def at(self, x_m: Array) -> Array:
         """Interpolated rows (..., 5): half width, top, bottom, waist, exponent; shape-preserving cubic in x."""
         table = self.stations[::-1]
-        result: Array = PchipInterpolator(table[:, 0], table[:, 1:], axis=0, extrapolate=True)(x_m)
+        result: Array = pchip(table[:, 0], table[:, 1:], x_m)
         return result
 
     def top_z(self, x_m: Array, y_m: Array) -> Array:
@@ -184,11 +184,10 @@ def box(low_m: Sequence[float], high_m: Sequence[float], colour: Colour, lean: f
 def outline(rows: Sequence[Sequence[float]]) -> Callable[[Array], Array]:
     """Half width over x of a plan form: rows (x, half width), x falling; negative beyond its ends."""
     table = np.array(rows, float)[::-1]
-    curve = PchipInterpolator(table[:, 0], table[:, 1])
 
     def width(x_m: Array) -> Array:
         beyond = np.maximum(table[0, 0] - x_m, x_m - table[-1, 0])
-        inside: Array = curve(np.clip(x_m, table[0, 0], table[-1, 0]))
+        inside = pchip(table[:, 0], table[:, 1], np.clip(x_m, table[0, 0], table[-1, 0]))
         return np.where(beyond > 0, -beyond, inside)
 
     return width
