@@ -158,7 +158,8 @@ def _picture(args: argparse.Namespace, size_px: tuple[int, int]) -> tuple[Any, s
     """The source of frames that the options ask for, and what the film has to say of it."""
     from render.output.stage_source import StageOptions, picture_words, stage_spec
 
-    options = StageOptions(view=args.view, look=args.look, twin=args.twin, peripheral=args.peripheral)
+    options = StageOptions(view=args.view, look=args.look, twin=args.twin, peripheral=args.peripheral,
+                           smooth=not args.draft)
     return stage_spec(options, size_px, overlay=not args.plain,
                       plain_too=getattr(args, "both", False)), picture_words(options)
 

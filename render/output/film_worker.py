@@ -7,6 +7,7 @@ is gone the report fails and the worker ends with it.
 
 from __future__ import annotations
 
+import gc
 import json
 import os
 import signal
@@ -125,6 +126,8 @@ def main(path: str) -> int:
     data = json.loads(Path(path).read_text(encoding="utf-8"))
     job = Job(**{**data, "size_px": tuple(data["size_px"])})
     said = 0.0
+    gc.collect()
+    gc.freeze()  # what the imports made stays anyway: not looked through again and again while frames are drawn
     try:
         for done in work(job):
             now = time.monotonic()

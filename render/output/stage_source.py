@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from contextlib import ExitStack, contextmanager
 from dataclasses import asdict, dataclass, replace
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,8 +17,6 @@ from render.output.overlay import strip_px
 from render.output.source import FrameSource, SourceSpec
 from render.picture.camera import FIELD_MAX_RAD, PANINI_FROM_RAD, Camera
 from render.picture.instant import Instant, instant_at
-from render.picture.panini import Panini
-from render.picture.peripheral import Peripheral, patch_px
 from render.picture.stage import Stage
 from render.picture.stand import spectator_stand
 from render.picture.views import (
@@ -32,6 +31,10 @@ from render.picture.views import (
 )
 from render.types import Study
 from terrain.ground import Ground, read_ground
+
+if TYPE_CHECKING:
+    from render.picture.panini import Panini
+    from render.picture.peripheral import Peripheral
 
 Frame = NDArray[np.uint8]
 
@@ -48,6 +51,7 @@ class StageOptions:
     where its ``watch`` rests the eyes, with its looks at the gauges. flight: faulted or healthy. twin: healthy and
     faulted ``side`` by side or in a ``stack`` (healthy left or above), or the healthy lead as a ``ghost``.
     peripheral: what acuity leaves away from the gaze. panini: None takes it for fields above 100 deg.
+    smooth: whether silhouettes are antialiased.
     field_rad: None takes the film's (a spectator: 40 deg). clear_px: rows kept free at the bottom of a twin.
     unseen_px: rows at the bottom that an overlay covers: left black where that saves drawing.
     """
@@ -58,6 +62,7 @@ class StageOptions:
     twin: str | None = None
     peripheral: bool = False
     panini: bool | None = None
+    smooth: bool = True
     field_rad: float | None = None
     clear_px: int = 0
     unseen_px: int = 0
@@ -77,14 +82,23 @@ class StageSource:
         spectator = options.view == "spectator"
         self._stand = spectator_stand(study.healthy, ground, study.scene.seed) if spectator else None
         wide = options.panini if options.panini is not None else field_rad > PANINI_FROM_RAD
-        self._wide = Panini(field_rad, size_px) if wide else None
-        self._peripheral = Peripheral(size_px) if options.peripheral else None
-        whole = self._wide is not None or self._peripheral is not None  # their pixels come from elsewhere in the picture
+        # imported when asked for: their compiled code takes a while to load
+        self._wide: Panini | None = None
+        self._peripheral: Peripheral | None = None
+        if wide:
+            from render.picture.panini import Panini
+
+            self._wide = Panini(field_rad, size_px)
+        if options.peripheral:
+            from render.picture.peripheral import Peripheral
+
+            self._peripheral = Peripheral(size_px)
+        whole = self._wide is not None or self._peripheral is not None  # pixels from elsewhere in it
         self.stage = Stage(
             self._flight.airframes, ground, study.scene.day, size_px if self._wide is None else self._wide.source_px,
             seed=study.scene.seed, own=self._k if options.view == "seat" else None, ghost=options.twin == "ghost",
             smoke=self._flight if study.scene.film.smoke else None,
-            unseen_px=0 if whole else options.unseen_px,
+            smooth=options.smooth, unseen_px=0 if whole else options.unseen_px,
         )  # fmt: skip
 
     def frame(self, time_s: float) -> Frame:
@@ -97,6 +111,8 @@ class StageSource:
         else:
             frame = self._wide.remap(self.stage.draw(instant, self._wide.source_camera(camera), ghost))
         if self._peripheral is not None:
+            from render.picture.peripheral import patch_px
+
             eyes_e = quat_rotate(instant.quat_eb[self._k], self.sightline(instant).eyes_b)
             frame = self._peripheral.blur(frame, patch_px(camera, eyes_e, self._wide))
         return frame

@@ -22,7 +22,6 @@ from render.picture.camera import Camera
 from render.picture.canopy import build_cockpit
 from render.picture.craft import Craft, craft_light
 from render.picture.craft_shadows import Shadows
-from render.picture.edges import smooth_edges
 from render.picture.instant import Instant
 from render.picture.land import Land
 from render.picture.light import Light
@@ -132,6 +131,8 @@ class Stage:
         self._window.GetPixelData(0, 0, width - 1, height - 1, 0, self._pixels, 0)
         np.copyto(self._drawn, vtk_to_numpy(self._pixels).reshape(height, width, 3)[::-1])
         if self._smooth:
+            from render.picture.edges import smooth_edges  # its compiler takes half a second to load: not for drafts
+
             smooth_edges(self._drawn)
         return self._frame
 

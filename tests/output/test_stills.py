@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import subprocess
+import sys
 from pathlib import Path
 
 import numpy as np
@@ -47,3 +49,11 @@ def test_key_stills_are_one_for_each_moment(study: Study, healthy_study: Study, 
     rows = np.asarray(Image.open(paths[0]))[180 - 45 - 16 : 180 - 45 - 4]
     assert (rows > 240).all(axis=-1).any()
     assert write_key_stills(healthy_study, "left", tmp_path, size_px=SIZE, source=GREY) == ()
+
+
+def test_a_draft_loads_no_compiler() -> None:
+    """numba and scipy.interpolate take half of a draft still's time to load; nothing in it needs them."""
+    code = ("import sys; import render.output.stills, render.output.stage_source, render.study_io; "
+            "print(*sorted({'numba', 'scipy.interpolate', 'matplotlib.pyplot'} & set(sys.modules)))")
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, cwd=Path(__file__).parents[2])
+    assert (done.stdout.strip(), done.stderr) == ("", "")
