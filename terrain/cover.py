@@ -30,6 +30,7 @@ class Trees:
     height_m: Array
     width_m: Array
     tone: Array  # 0..1, for its colour
+    deep: NDArray[np.bool_]  # inside a wood, where its shadow falls on other trees
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -110,7 +111,9 @@ def _trees(land: Land, rng: np.random.Generator, edges: Lines, boxes: Boxes) -> 
     widths = heights * np.concatenate([g[4] * rng.uniform(0.75, 1.2, len(g[0])) for g in groups])
     free = open_ground(land, north, east, 6.0) & (place_at(plan, north, east).road_m > 0.5 * plan.road_m + 0.4 * widths)
     free &= boxes.clear_of(north, east, 0.5 * widths)
-    return Trees(kinds[free], north[free], east[free], heights[free], widths[free], rng.random(int(free.sum())))
+    north, east = north[free], east[free]
+    deep = _depth_of_wood(plan, north, east) > 14.0
+    return Trees(kinds[free], north, east, heights[free], widths[free], rng.random(len(north)), deep)
 
 
 def _scatter(rng: np.random.Generator, reach_m: float, count: int) -> tuple[Array, Array]:

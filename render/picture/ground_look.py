@@ -6,6 +6,7 @@ import numpy as np
 from vtkmodules.vtkRenderingCore import vtkActor
 
 from render.picture.ground_mesh import ground_mesh
+from render.picture.light import Light
 from render.picture.shading import constants, glsl, mesh, shaded_actor
 from terrain.ground import Ground
 from terrain.land import Airfield, Land
@@ -26,7 +27,7 @@ _LIGHT = """
   colour *= GROUND_LIGHT;
   fragOutput0 = vec4(haze(colour, length(ray)), 1.0);
 """
-_RELIEF_LIGHT = "(sunLight * max(dot(normalize(upward), sunDir), 0.0) + skyLight)"
+_RELIEF_LIGHT = "(sunLight * slopeLight + skyLight)"
 _COUNTRY = (
     """
   vec2 q = grain(place.xy);
@@ -76,19 +77,19 @@ _PIECES = {
 }
 
 
-def ground_actors(ground: Ground, land: Land) -> list[vtkActor]:
-    """The surface of a ground with a land's look, to be lit and given an eye (see ``land.set_light``)."""
+def ground_actors(ground: Ground, land: Land, light: Light) -> list[vtkActor]:
+    """The surface of a ground with a land's look, to be given its light and an eye (see ``land.set_light``)."""
     shape = ground_mesh(ground, land)
     head = constants(_constants(land))
     head += f"#define GROUND_LIGHT {'flatLight' if shape.level else _RELIEF_LIGHT}\n"
     actors = []
     for kind, triangles in shape.triangles.items():
         used, renumbered = np.unique(triangles, return_inverse=True)
-        code = head + glsl("common") + ("" if shape.level else "in vec3 upward;\n") + _field_colour(land)
+        code = head + glsl("common") + ("" if shape.level else "in float slopeLight;\n") + _field_colour(land)
         code += "".join(glsl(piece) for piece in _PIECES[kind])
-        attributes = {} if shape.level else {"normalUp": shape.normals[used]}
-        vertex = glsl("rim") + ("" if shape.level else "in vec3 normalUp;\nout vec3 upward;\n")
-        position = "setRim(place);\n" + ("" if shape.level else "upward = normalUp;\n")
+        attributes = {} if shape.level else {"sunOnSlope": np.maximum(shape.normals[used] @ light.sun_d, 0.0)[:, None]}
+        vertex = glsl("rim") + ("" if shape.level else "in float sunOnSlope;\nout float slopeLight;\n")
+        position = "setRim(place);\n" + ("" if shape.level else "slopeLight = sunOnSlope;\n")
         actors.append(
             shaded_actor(
                 mesh(shape.points[used], renumbered.reshape(-1, 3)), code, _MAINS[kind], attributes, vertex, position

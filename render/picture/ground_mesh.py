@@ -19,8 +19,8 @@ from terrain.land import Airfield, Land
 
 REACH_M = 60_000.0
 #: Half side and spacing of the nested squares about the display centre, m.
-OUTER_SQUARES = ((9_000.0, 250.0), (18_000.0, 750.0), (REACH_M, 5_000.0))  # round the fine square of a relief
-FINE_HALF_M, FINE_STEP_M = 4_000.0, 60.0
+OUTER_SQUARES = ((8_000.0, 300.0), (18_000.0, 900.0), (REACH_M, 5_000.0))  # round the fine square of a relief
+FINE_HALF_M, FINE_STEP_M = 3_500.0, 60.0
 FLAT_SQUARES = ((2_400.0, 400.0), (9_000.0, 1_500.0), (REACH_M, 8_500.0))
 SHORE_SQUARES = ((6_000.0, 150.0), (12_000.0, 600.0), (REACH_M, 6_000.0))
 EDGE_M = 2.0  # how far past the tarmac the runway's strip goes

@@ -35,14 +35,14 @@ class Land:
         self.sky_actors = sky_actors(self.light)
         cover = cover_of(ground, seed)
         self._trees = TreeField(cover.trees, ground, plan)
-        self.tree_actor = self._trees.actor
+        self.tree_actors = self._trees.actors
         self.shadow_actors = shadow_actors(cover, ground, self.light)
-        self.ground_actors = ground_actors(ground, plan)
+        self.ground_actors = ground_actors(ground, plan, self.light)
         self.object_actors = object_actors(cover, ground, plan, self.light)
         solid = [*self.object_actors, *self.ground_actors]
-        self._eyed = [*solid, *self.shadow_actors, self.tree_actor]
+        self._eyed = [*solid, *self.shadow_actors, *self.tree_actors]
         #: In drawing order: what is opaque nearest first, then shadows and trees, which are see-through at their edges.
-        self.actors: list[vtkActor] = [*solid, *self.sky_actors, *self.shadow_actors, self.tree_actor]
+        self.actors: list[vtkActor] = [*solid, *self.sky_actors, *self.shadow_actors, *self.tree_actors]
         base_m = getattr(day, "cloud_base_m", None)
         self.cloud_actor = None if base_m is None else cloud_actor(base_m)
         if self.cloud_actor is not None:
@@ -50,6 +50,11 @@ class Land:
             self._eyed.append(self.cloud_actor)
         for actor in self.actors:
             set_light(actor, self.light)
+
+    @property
+    def trees_drawn(self) -> int:
+        """How many trees the last eye may see."""
+        return self._trees.drawn
 
     def set_eye(self, pos_e_m: Array, axis_e: Array | None = None, half_field_rad: float = np.pi) -> None:
         """Tell the land where the picture is seen from: (3,) m, earth axes. Call before each render.

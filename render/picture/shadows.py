@@ -64,11 +64,12 @@ Part = tuple[Array, Array, NDArray[np.int64]]  # places (P, 2) east, north; disc
 
 def _crowns(cover: Cover, away: Array) -> Part:
     """The shadow of an ellipsoid of half height b, half width a is an ellipse: hypot(b cot, a) by a."""
-    trees = cover.trees
+    trees, lit = cover.trees, ~cover.trees.deep
+    north, east, height = trees.north_m[lit], trees.east_m[lit], trees.height_m[lit]
     slope = float(np.linalg.norm(away))
     along = away / (slope + 1e-9)
-    half, wide = 0.46 * trees.height_m, 0.5 * trees.width_m
-    middle = np.column_stack([trees.east_m, trees.north_m]) + 0.52 * trees.height_m[:, None] * away
+    half, wide = 0.46 * height, 0.5 * trees.width_m[lit]
+    middle = np.column_stack([east, north]) + 0.52 * height[:, None] * away
     long = np.hypot(half * slope, wide)
     across = np.array([-along[1], along[0]])
     places = middle[:, None] + _CORNERS[None, :, :1] * (long[:, None] * along)[:, None]

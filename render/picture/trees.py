@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 from numpy.typing import NDArray
+from vtkmodules.vtkCommonDataModel import vtkPolyData
+from vtkmodules.vtkRenderingCore import vtkActor
 
 from render.frames import Array
 from render.picture.shading import cells, constants, glsl, mesh, shaded_actor
@@ -14,10 +16,11 @@ from terrain.land import Land
 _CORNERS = np.array([[-1.0, -1.0], [1.0, -1.0], [1.0, 1.0], [-1.0, 1.0]])
 _FACES = np.array([[0, 1, 2], [0, 2, 3]])
 SPARE_M = 30.0  # a tree this far outside the field may still show a part of its crown
+LEAVES_FROM_RAD = 0.017  # a crown that looks smaller (14 px of 1280 in a field of 75 deg) shows no leaves
 
 
 class TreeField:
-    """The trees of a land: an actor that has to be told where the eye is, so that near crowns cover far ones."""
+    """The trees of a land: two actors, far trees before near ones, that have to be told where the eye is."""
 
     def __init__(self, trees: Trees, ground: Ground, land: Land) -> None:
         foot = np.column_stack([trees.east_m, trees.north_m, ground.height_at(trees.north_m, trees.east_m)])
@@ -27,22 +30,15 @@ class TreeField:
         middle = trees.height_m * np.where(bush, 0.42, np.where(trees.kind == "conifer", 0.51, 0.54))
         crown = np.column_stack([half, 0.5 * trees.width_m, middle, trees.kind == "conifer"])
         tint = np.column_stack([trees.tone, np.modf(trees.tone * 97.31)[0]])
-        self._data = mesh(np.repeat(foot, 4, axis=0), quads(np.arange(len(foot))))
-        code = constants({"LEAF_A": land.leaf[0], "LEAF_B": land.leaf[1], "NEEDLE": land.needle})
-        code += glsl("common") + glsl("tree")
-        self.actor = shaded_actor(
-            self._data,
-            code,
-            "fragOutput0 = treeColour();\n",
-            {
-                "corner": np.tile(_CORNERS, (len(foot), 1)),
-                "crown": np.repeat(crown, 4, axis=0),
-                "tint": np.repeat(tint, 4, axis=0),
-            },
-            glsl("rim") + glsl("tree_place"),
-            "gl_Position = MCDCMatrix * setTree(place);\n",
-        )
-        self.actor.ForceTranslucentOn()
+        self._width = trees.width_m
+        shape = {
+            "corner": np.tile(_CORNERS, (len(foot), 1)),
+            "crown": np.repeat(crown, 4, axis=0),
+            "tint": np.repeat(tint, 4, axis=0),
+        }
+        self._far, far_actor = _trees(foot, shape, land, leaves=False)
+        self._near, near_actor = _trees(foot, shape, land, leaves=True)
+        self.actors = [far_actor, near_actor]
 
     def set_eye(self, eye_d: Array, axis_d: Array | None, half_field_rad: float) -> None:
         """Draw far trees before near ones, and none that lie outside a cone round the axis of view.
@@ -55,7 +51,28 @@ class TreeField:
         if axis_d is not None and half_field_rad < 0.5 * np.pi:
             seen = np.nonzero(ray @ axis_d + SPARE_M > away * np.cos(half_field_rad))[0]
         order = seen[np.argsort(-away[seen], kind="stable")]
-        self._data.SetPolys(cells(quads(order)))
+        small = self._width[order] < LEAVES_FROM_RAD * away[order]
+        # A tree drawn without leaves that stands before one drawn with them is drawn with them too: order counts more.
+        first = int(np.argmin(small)) if not small.all() else len(order)
+        self._far.SetPolys(cells(quads(order[:first])))
+        self._near.SetPolys(cells(quads(order[first:])))
+
+    @property
+    def drawn(self) -> int:
+        """How many trees the last eye may see."""
+        return int(self._far.GetNumberOfCells() + self._near.GetNumberOfCells()) // 2
+
+
+def _trees(foot: Array, shape: dict[str, Array], land: Land, *, leaves: bool) -> tuple[vtkPolyData, vtkActor]:
+    data = mesh(np.repeat(foot, 4, axis=0), quads(np.arange(len(foot))))
+    code = constants({"LEAVES": int(leaves), "LEAF_A": land.leaf[0], "LEAF_B": land.leaf[1], "NEEDLE": land.needle})
+    code += glsl("common") + glsl("tree")
+    position = "gl_Position = MCDCMatrix * setTree(place);\n"
+    actor = shaded_actor(
+        data, code, "fragOutput0 = treeColour();\n", shape, glsl("rim") + glsl("tree_place"), position
+    )
+    actor.ForceTranslucentOn()
+    return data, actor
 
 
 def quads(numbers: NDArray[np.int64]) -> NDArray[np.int64]:

@@ -28,7 +28,7 @@ def test_every_shader_draws(name: str) -> None:
     land = Land(read_ground(name), DAY, 1)
     with Lens(land) as lens:
         kinds = {"objects": land.object_actors, "sky": land.sky_actors, "shadows": land.shadow_actors}
-        kinds |= {"trees": [land.tree_actor]} | {f"ground {k}": [a] for k, a in enumerate(land.ground_actors)}
+        kinds |= {"trees": land.tree_actors} | {f"ground {k}": [a] for k, a in enumerate(land.ground_actors)}
         for kind, actors in kinds.items():
             lens.show(*actors)
             seen = max(
@@ -41,7 +41,7 @@ def test_every_shader_draws(name: str) -> None:
 
 
 def test_hills_in_the_picture_are_the_hills_of_the_margin() -> None:
-    """Depth read back against ``height_at``: within 2 km of the display centre to 1 m, within 4 km to 2 m.
+    """Depth read back against ``height_at``: within 2 km of the display centre to 1 m, within 3.5 km to 2 m.
 
     The mesh has the ground's own corners there; what is left is the bend of a 100 m cell cut in two.
     """
@@ -56,7 +56,7 @@ def test_hills_in_the_picture_are_the_hills_of_the_margin() -> None:
             off = np.abs(at[..., 2] - ground.height_at(at[..., 1], at[..., 0]))
             out = np.hypot(at[..., 0], at[..., 1])
             assert np.nanmax(off[out < 2000.0]) < 1.0
-            assert np.nanmax(off[out < 4000.0]) < 2.0
+            assert np.nanmax(off[out < 3500.0]) < 2.0
             far += int((at[..., 2][out < 4000.0] > 40.0).sum())
         assert far > 500  # it was hills that were compared
 
@@ -298,8 +298,8 @@ def test_trees_outside_the_field_are_left_out_without_a_change_of_the_picture() 
     eye, bearing = np.array([100.0, -200.0, -90.0]), np.radians(350.0)
     with Lens(land) as lens:
         whole = lens.look((100.0, -200.0, -90.0), 350.0, 0.0)
-        count = land.tree_actor.GetMapper().GetInput().GetNumberOfCells()
+        count = land.trees_drawn
         corner = np.arctan(np.hypot(200.0, 150.0) / lens.focal_px)
         land.set_eye(eye, np.array([np.cos(bearing), np.sin(bearing), 0.0]), float(corner))
-        assert land.tree_actor.GetMapper().GetInput().GetNumberOfCells() < 0.6 * count
+        assert land.trees_drawn < 0.6 * count
         assert np.array_equal(lens.again(), whole)

@@ -6,8 +6,12 @@ vec4 treeColour() {
   float wide = fwidth(disc.x) + fwidth(disc.y);
   float fine = clamp(1.5 - 3.0 * wide, 0.0, 1.0);
   float lump = (noise(disc * 2.3 + leaf.y * 61.0) - 0.5) * fine;
+#if LEAVES
   float leaves = (noise(disc * 6.1 + leaf.y * 37.0) - 0.5) * clamp(1.5 - 6.0 * wide, 0.0, 1.0);
   leaves += (0.7 * noise(disc * 15.0 + leaf.y * 19.0) - 0.35) * clamp(1.5 - 15.0 * wide, 0.0, 1.0);
+#else
+  const float leaves = 0.0;
+#endif
   vec2 at = vec2(disc.x / mix(1.0, 0.56 * (1.02 - disc.y), leaf.z), disc.y);
   float r = mix(length(at), max(abs(at.x), abs(at.y)), leaf.z * 0.8) + 0.42 * lump + 0.22 * leaves;
   float cover = clamp((1.0 - r) / max(wide, 0.05) + 0.4, 0.0, 1.0);
