@@ -33,6 +33,8 @@ DRAWS = 4  # times as many are drawn and measured for the first one
 POLISH = 0.35  # part of a search's budget that goes to its simplex
 TIGHTER = 0.995  # limits inside a search, so that rounding what it finds to 0.01 g keeps them
 FINER = 5  # freeze points of the final check, to each one of the search
+PULL_COSTS = 2  # cases: what closing and measuring a pull takes
+BARREN = 15  # generations without a pull that keeps the limits, after which a search gives up
 ROUNDS = 3  # searches of one load factor, each with the freeze points the last one had missed
 MISSED_S = 0.05  # of lateness, between freeze points
 BETTER_S = 0.02  # less is no difference
@@ -146,6 +148,7 @@ class Search:
         self.enough = CLEAR_S - max((loop.close_at_m or 0.0) - job.scene.floor_m, 0.0) / CLEAR_M_PER_S
         self.rng = np.random.default_rng(seed)
         self.spent = 0
+        self.barren = 0
         self.best_score, self.best_load = np.inf, np.array([])
 
     def reached(self, frozen: Frozen) -> bool:
@@ -164,7 +167,8 @@ class Search:
         score = NEVER_S + 10.0 + 100.0 * np.minimum(excess, 10.0)
         good = np.flatnonzero(excess == 0.0)
         frozen = freeze_all(self.job, [unlike_slots(scenes[i]) for i in good])
-        self.spent += len(good) * len(self.job.freeze_rad)
+        self.spent += len(good) * len(self.job.freeze_rad) + PULL_COSTS * len(scenes)
+        self.barren = 0 if len(good) else self.barren + 1
         for i, f in zip(good, frozen, strict=True):
             score[i] = max(f.score_s, self.enough)
         i = int(np.argmin(score))
@@ -188,10 +192,11 @@ class Search:
                 for x in seeds for i in range(4)]
         drawn = np.clip(np.concatenate([np.array(near), drawn]), LEAST_LOAD, most)
         excess = np.array([p.excess(self.tight) for p in measure_pulls(self.job, self.scenes(drawn))])
+        self.spent += PULL_COSTS * len(drawn)
         return drawn[np.argsort(excess, kind="stable")[:PEOPLE]]
 
     def _done(self, budget: float) -> bool:
-        return self.best_score <= self.enough or self.spent >= budget
+        return self.best_score <= self.enough or self.spent >= budget or self.barren >= BARREN
 
     def run(self, seeds: Sequence[Array]) -> Trade:
         """Search, check at finer freeze points, and search again with those that had been missed."""
