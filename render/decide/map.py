@@ -52,7 +52,7 @@ class Map:
     y: Axis
     cases: Cases
     outcome: NDArray[np.int64]  # (X, Y, S)
-    here: tuple[float, float] | None  # where the scene itself stands, in the axes' units, if it is on the map
+    here: tuple[float | None, float | None]  # where the scene itself stands, in the axes' units, if within them
 
     def __post_init__(self) -> None:
         freeze_arrays(self)
@@ -71,10 +71,10 @@ class Map:
 # What amounts of a fault are worth a look, by its kind: the path's end, and the axis.
 _AMOUNTS = {
     "authority": "fault.fraction=0:90:10%",
-    "slow": "fault.rate=0.2,0.5,1,1.5,2,3,5,8 deg/s",
+    "slow": "fault.rate=0.05,0.1,0.2,0.5,1,2,5 deg/s",
     "trail": "fault.over=0.25,0.5,1,2,4,8 s",
 }
-_ANGLES = "fault.at.loop_angle=180:330:5deg"
+_BACK_HALF, _WHOLE_LOOP = "fault.at.loop_angle=180:330:5deg", "fault.at.loop_angle=0:330:10deg"
 _SPEEDS_MPS = tuple(n * 1852.0 / 3600.0 for n in (-20.0, -15.0, -10.0, -5.0, 0.0, 5.0, 10.0, 15.0, 20.0))
 
 
@@ -89,7 +89,7 @@ def mapped_scene(scene: Scene, x: str | None, y: str | None) -> Scene:
     if fault is None:
         return scene
     if x is None and _has_loop(scene) and fault.at.kind != "loop_angle":
-        fault = replace(fault, at=Point("loop_angle", 180.0 * DEG))
+        fault = replace(fault, at=Point("loop_angle", 180.0 * DEG if fault.at.kind == "after_top" else 0.0))
     wants_fraction = y is None or "fraction" in f"{x} {y}"
     if fault.kind == "freeze" and wants_fraction:
         # a surface that answers nothing of what is asked is a frozen one, to the last bit
@@ -112,7 +112,7 @@ def map_axes(scene: Scene, x: str | None, y: str | None) -> tuple[Scene, Axis, A
     if y is not None:
         y_axis = read_axis(mapped, y, "--y")
     elif fault is not None and fault.kind in _AMOUNTS:
-        y_axis = read_axis(mapped, _AMOUNTS[fault.kind], "--y")
+        y_axis = _with_own(mapped, read_axis(mapped, _AMOUNTS[fault.kind], "--y"))
     else:
         y_axis = _around(mapped, "script.0.level.speed")
     if x_axis.path == y_axis.path:
@@ -121,14 +121,22 @@ def map_axes(scene: Scene, x: str | None, y: str | None) -> tuple[Scene, Axis, A
 
 
 def _default_x(scene: Scene) -> Axis:
-    if scene.fault is not None and scene.fault.at.kind == "loop_angle":
-        return read_axis(scene, _ANGLES, "--x")
     assert scene.fault is not None
+    if scene.fault.at.kind == "loop_angle":
+        return read_axis(scene, _BACK_HALF if scene.fault.at.value >= 180.0 * DEG else _WHOLE_LOOP, "--x")
     # no loop: half to twice the point the scene has
     place = find_path(scene, f"fault.at.{scene.fault.at.kind}", "--x")
     value = scene.fault.at.value or 10.0
     values = [v for v in np.linspace(0.5 * value, 2.0 * value, 13) if place.lo <= v <= place.hi]
     return Axis(place.path, place.dim, place.unit, tuple(float(v) for v in values))
+
+
+def _with_own(scene: Scene, axis: Axis) -> Axis:
+    """The axis with the scene's own value among the others, in order."""
+    own = find_path(scene, axis.path, "--y").value
+    if own is None or any(abs(own - v) < 1e-9 for v in axis.values):
+        return axis
+    return replace(axis, values=tuple(sorted((*axis.values, own))))
 
 
 def _around(scene: Scene, path: str) -> Axis:
@@ -158,17 +166,16 @@ def make_map(scene: Scene, mapped: Scene, x: Axis, y: Axis, cases: Cases) -> Map
     return Map(mapped, x, y, cases, grid, _here(scene, x, y))
 
 
-def _here(scene: Scene, x: Axis, y: Axis) -> tuple[float, float] | None:
-    """Where the scene itself stands on the map, in the axes' units."""
+def _here(scene: Scene, x: Axis, y: Axis) -> tuple[float | None, float | None]:
+    """Where the scene itself stands on each axis, in its unit."""
     known = {place.path: place.value for place in value_paths(scene)}
     if scene.fault is not None and scene.fault.kind == "freeze":
         known["fault.fraction"] = 0.0
-    at = []
+    at: list[float | None] = []
     for axis in (x, y):
         value = known.get(axis.path)
-        if value is None or not min(axis.values) <= value <= max(axis.values):
-            return None
-        at.append(round(in_unit(axis.dim, value, axis.unit), 9))
+        on = value is not None and min(axis.values) - 1e-9 <= value <= max(axis.values) + 1e-9
+        at.append(round(in_unit(axis.dim, value, axis.unit), 9) if on and value is not None else None)
     return at[0], at[1]
 
 

@@ -87,9 +87,8 @@ def runs(row: Outcomes) -> list[tuple[Outcome, int, int]]:
 
 def own_row(found: Map) -> int:
     """The row of the map nearest to the scene's own amount; the first if it is not on the map."""
-    if found.here is None:
-        return 0
-    return int(np.argmin(np.abs(np.array(found.y.shown()) - found.here[1])))
+    own = found.here[1]
+    return 0 if own is None else int(np.argmin(np.abs(np.array(found.y.shown()) - own)))
 
 
 def own_sentence(found: Map, slot: int) -> str:

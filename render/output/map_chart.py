@@ -59,9 +59,9 @@ REGION = {
 }
 SHORT_REGION = {Outcome.TOO_LATE: "TOO LATE", Outcome.EARLY_IN_TIME: "EARLY ALONE", Outcome.CLEARS: "CLEARS"}
 HEAD = {
-    Outcome.CLEARS: "it clears by itself", Outcome.ALL_IN_TIME: "in time for all",
-    Outcome.LIKELY_IN_TIME: "in time for the early and the likely observer",
-    Outcome.EARLY_IN_TIME: "in time for the early observer alone", Outcome.TOO_LATE: "too late for everyone",
+    Outcome.CLEARS: "it clears by itself", Outcome.ALL_IN_TIME: "all in time",
+    Outcome.LIKELY_IN_TIME: "likely observer in time", Outcome.EARLY_IN_TIME: "early observer alone in time",
+    Outcome.TOO_LATE: "too late for everyone",
     Outcome.UNKNOWN: "can't be flown",
 }
 
@@ -74,8 +74,8 @@ def map_figure(found: Map) -> Figure:
     height = TITLE + SWATCHES + len(groups) * panel + FOOT
     figure = Figure(figsize=(WIDTH, height), dpi=DPI, facecolor="white")
     page = _Page(figure, height)
-    page.say(MARGIN, 0.30, headline(found, groups[0]), 15.0, weight="bold")
-    page.say(MARGIN, 0.92, found.scene.title, 9.0, colour=QUIET)
+    below = page.say(MARGIN, 0.30, headline(found, groups[0]), 15.0, weight="bold", lines=2)
+    page.say(MARGIN, below + 0.06, found.scene.title, 9.0, colour=QUIET)
     _legend(page, found, TITLE - 0.06)
     for n, group in enumerate(groups):
         top = TITLE + SWATCHES + n * panel
@@ -95,11 +95,19 @@ class _Page:
     def __init__(self, figure: Figure, height: float) -> None:
         self.figure, self.height = figure, height
 
-    def say(self, x: float, y: float, text: str, size: float, *, weight: str = "normal", colour: str = INK) -> None:
-        """Write text from its top at y, broken at the right margin."""
-        lines = wrap_text(text, font(size * MEASURE, bold=weight == "bold"), (WIDTH - MARGIN - x) * 72.0 * MEASURE)
-        self.figure.text(x / WIDTH, 1.0 - y / self.height, "\n".join(lines), fontsize=size, weight=weight, color=colour,
-                         va="top", linespacing=1.25)
+    def say(self, x: float, y: float, text: str, size: float, *, weight: str = "normal", colour: str = INK,
+            lines: int = 99) -> float:
+        """Write text from its top at y, broken at the right margin, smaller if it would take more lines; y below it."""
+        most = lines
+        while True:
+            face = font(size * MEASURE, bold=weight == "bold")
+            broken = wrap_text(text, face, (WIDTH - MARGIN - x) * 72.0 * MEASURE)
+            if len(broken) <= most or size < 8.0:
+                break
+            size -= 0.5
+        self.figure.text(x / WIDTH, 1.0 - y / self.height, "\n".join(broken), fontsize=size, weight=weight,
+                         color=colour, va="top", linespacing=1.25)
+        return y + len(broken) * size * 1.32 / 72.0
 
     def axes(self, x: float, y: float, width: float, height: float) -> Axes:
         """Axes with their top left corner at x, y."""
@@ -126,7 +134,7 @@ def headline(found: Map, group: tuple[int, ...]) -> str:
         else:
             where = f"from {_bare(low, found.x)} to {high}"
         told.append(f"{where}: {HEAD[outcome]}")
-    return f"{start} {'; '.join(told)}"
+    return f"{start} {'; '.join(told)}" if start == "Frozen" else f"{start}, {'; '.join(told)}"
 
 
 def _bare(text: str, axis: Axis) -> str:
@@ -273,10 +281,10 @@ def _widest(mask: NDArray[np.bool_], taken: int | None) -> tuple[int, int, int] 
 
 def _mark_scene(axes: Axes, found: Map) -> int | None:
     """A frame round the cell nearest to the scene itself, and its name; returns the line the name stands on."""
-    if found.here is None:
+    at_x, at_y = found.here
+    if at_x is None or at_y is None:
         return None
-    i, j = (int(np.argmin(np.abs(np.array(axis.shown()) - at)))
-            for axis, at in zip((found.x, found.y), found.here, strict=True))
+    i, j = (int(np.argmin(np.abs(np.array(axis.shown()) - at))) for axis, at in ((found.x, at_x), (found.y, at_y)))
     axes.add_patch(Rectangle((i, j), 1, 1, facecolor="none", edgecolor=MARK, linewidth=2.6, zorder=6))
     axes.add_patch(Rectangle((i, j), 1, 1, facecolor="none", edgecolor=INK, linewidth=0.6, zorder=7))
     line = j + 1 if j + 1 < len(found.y.values) else j
