@@ -18,6 +18,7 @@ from render.decide.shape import (
     LEAST_LOAD,
     LIKELY,
     NEVER_S,
+    TOP_RAD,
     Frozen,
     Job,
     freeze_all,
@@ -34,11 +35,11 @@ POLISH = 0.35  # part of a search's budget that goes to its simplex
 TIGHTER = 0.995  # limits inside a search, so that rounding what it finds to 0.01 g keeps them
 FINER = 5  # freeze points of the final check, to each one of the search
 PULL_COSTS = 2  # cases: what closing and measuring a pull takes
-BARREN = 15  # generations without a pull that keeps the limits, after which a search gives up
+BARREN = 8  # generations without a pull that keeps the limits, after which a search gives up
 ROUNDS = 3  # searches of one load factor, each with the freeze points the last one had missed
 MISSED_S = 0.05  # of lateness, between freeze points
 BETTER_S = 0.02  # less is no difference
-LEAST_OVER = 1.03  # the least load factor of a trade, to the least that closes at all
+LEAST_OVER = 1.02  # the least load factor of a trade, to the least that a plain pull closes with
 
 Tell = Callable[[str, int, int], None]
 """Called with what is being worked on, cases done, cases granted."""
@@ -94,11 +95,15 @@ def find_shape(
     least = least_load_factor(job, limits.load_factor)
     fine = fine_points(job.freeze_rad)
     start = freeze_all(job, [job.scene], fine)[0]
+    seeds: list[Array] = [_sampled(job, start_pull)]
+    plain, flown = plain_pulls(job, limits, start_pull)
+    if plain:
+        seeds += plain
+        least = max(least, flown)
     lowest = min(LEAST_OVER * least, limits.load_factor)
     loads = np.geomspace(lowest, limits.load_factor, steps) if steps > 1 else np.array([limits.load_factor])
     trade: list[Trade] = []
     spent = 2 * len(fine)
-    seeds: list[Array] = [_sampled(job, start_pull)]
     for n, most in enumerate(loads):
         mine = dataclasses.replace(limits, load_factor=float(most))
         share = max((budget - spent) // (len(loads) - n), 0)
@@ -122,6 +127,22 @@ def find_shape(
         if _score(item) < ahead - BETTER_S:
             best = n
     return Shape(job, start_pull, start, start_pull.excess(limits) == 0.0, tuple(trade), best, spent, seed)
+
+
+def plain_pulls(job: Job, limits: Limits, start: Pull) -> tuple[list[Array], float]:
+    """Pulls that rise evenly from the top on to a load factor that is then held, and keep the limits: the gentlest
+    four, (D,) each, and the least load factor flown in them. ([], infinity) if none keeps them.
+    """
+    search = Search(job, limits, start, 0, 0, "", None)
+    first = float(np.interp(TOP_RAD, start.angle_rad, start.flown_load))
+    held = np.geomspace(max(2.0, 0.45 * limits.load_factor), limits.load_factor, 8)
+    rise = np.array([0.4, 0.6, 0.8, 0.95]) * limits.slope_gprad
+    loads = np.array([np.clip(first + slope * (job.knots_rad - TOP_RAD), LEAST_LOAD, most)
+                      for most in held for slope in rise])
+    pulls = measure_pulls(job, search.scenes(loads))
+    good = [i for i, p in enumerate(pulls) if p.excess(search.tight) == 0.0]
+    good.sort(key=lambda i: pulls[i].load_factor)
+    return [_sampled(job, pulls[i]) for i in good[:4]], min((pulls[i].load_factor for i in good), default=np.inf)
 
 
 def _score(item: Trade) -> float:
@@ -188,7 +209,7 @@ class Search:
         power = np.exp(self.rng.uniform(-1.5, 1.0, (n, 1)))
         drawn = begin + (peak - begin) * u**power
         drawn *= 1.0 + 0.04 * self.rng.standard_normal(drawn.shape)
-        near = [np.minimum(x, most) * (1.0 + 0.03 * i * self.rng.standard_normal(x.size))
+        near = [np.minimum(x, most) * (1.0 + 0.02 * i * self.rng.standard_normal(x.size))
                 for x in seeds for i in range(4)]
         drawn = np.clip(np.concatenate([np.array(near), drawn]), LEAST_LOAD, most)
         excess = np.array([p.excess(self.tight) for p in measure_pulls(self.job, self.scenes(drawn))])
