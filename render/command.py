@@ -51,7 +51,7 @@ def build_parser() -> argparse.ArgumentParser:
         sub.add_argument("--force", action="store_true", help="replace an output that is there")
         if name in ("film", "still"):
             sub.add_argument("--slot", help="whose eye (default: the scene's)")
-            sub.add_argument("--draft", action="store_true", help="half size, half rate")
+            sub.add_argument("--draft", action="store_true", help="half size, half rate, edges not smoothed")
             sub.add_argument("--plain", action="store_true", help="no overlay")
             sub.add_argument("--view", default="seat", choices=("seat", "chase", "spectator"),
                              help="from where (default: the slot's seat)")

@@ -13,8 +13,7 @@ import numpy as np
 
 from render.types import Study
 
-FACES = np.array([[0, 1, 2], [0, 2, 3]])
-SPARE_M = 30.0
+FACES = np.array([[0, 1, 2], [0, 2, 3]], np.int32)
 
 
 class Raw:
@@ -41,19 +40,19 @@ class Raw:
     def frame(self, time_s: float) -> np.ndarray[Any, Any]:
         """The picture of one of the written instants."""
         gl = self._gl
-        view, eye, axis, corner, poses = self._poses[time_s]
+        view, poses = self._poses[time_s]
         self._target.depth_mask = True
         gl.disable(moderngl.BLEND)
         self._target.clear(*self._background, 1.0)
         blending = False
-        for thing, (visible, matrix, moving) in zip(self._things, poses, strict=True):
+        for thing, (visible, matrix, moving, order) in zip(self._things, poses, strict=True):
             if not visible:
                 continue
             if thing.clear and not blending:
                 blending = True
                 gl.enable(moderngl.BLEND)
                 self._target.depth_mask = False
-            thing.draw(gl, view @ matrix, moving, eye, axis, corner)
+            thing.draw(gl, view @ matrix, moving, order)
         self._target.read_into(self._bytes, components=3)
         np.copyto(self._frame, self._flipped)
         return self._frame
@@ -63,7 +62,7 @@ class _Thing:
     """One mesh with its program."""
 
     def __init__(self, gl: Any, thing: dict[str, Any]) -> None:
-        self.clear, self._cull, self._foot = thing["clear"], thing["cull"], thing["foot"]
+        self.clear, self._cull = thing["clear"], thing["cull"]
         vertex, fragment = thing["code"]
         self._program = gl.program(vertex_shader=vertex, fragment_shader=fragment)
         buffers = []
@@ -71,7 +70,7 @@ class _Thing:
             if name in self._program:
                 kind = f"{values.shape[1]}{'f1' if name == 'scalarColor' else 'f'}"
                 buffers.append((gl.buffer(np.ascontiguousarray(values).tobytes()), kind, name))
-        corners = thing["corners"] if self._foot is None else np.zeros(6 * len(self._foot), np.int32)
+        corners = np.zeros(6 * len(thing["inputs"]["vertexMC"]) // 4, np.int32) if thing["tree"] else thing["corners"]
         self._corners = gl.buffer(corners.tobytes())
         self._array = gl.vertex_array(self._program, buffers, self._corners, index_element_size=4)
         for name, value in thing["uniforms"].items():
@@ -81,7 +80,7 @@ class _Thing:
         places = np.stack(np.meshgrid(*np.stack([low, high], axis=1), indexing="ij"), axis=-1).reshape(-1, 3)
         self._box = np.column_stack([places, np.ones(8)])
 
-    def draw(self, gl: Any, matrix: Any, moving: dict[str, Any], eye: Any, axis: Any, corner: float) -> None:
+    def draw(self, gl: Any, matrix: Any, moving: dict[str, Any], order: Any) -> None:
         clip = self._box @ matrix.T
         for k in range(2):
             if (clip[:, k] > clip[:, 3]).all() or (clip[:, k] < -clip[:, 3]).all():
@@ -91,16 +90,10 @@ class _Thing:
         for name, value in moving.items():
             if name in self._program:
                 self._program[name].value = value
-        if self._foot is None:
+        if order is None:
             self._array.render()
-            return
-        ray = self._foot - eye
-        away = np.sqrt(np.einsum("nk,nk->n", ray, ray))
-        seen = np.nonzero(ray @ axis + SPARE_M > away * np.cos(corner))[0]
-        order = seen[np.argsort(-away[seen], kind="stable")]
-        corners = (4 * order[:, None, None] + FACES).astype(np.int32)
-        if len(order):
-            self._corners.write(corners.tobytes())
+        elif len(order):
+            self._corners.write((4 * order[:, None, None] + FACES).tobytes())
             self._array.render(vertices=6 * len(order))
 
 

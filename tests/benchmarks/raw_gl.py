@@ -1,8 +1,9 @@
 """Raw OpenGL as the limit: the stage's own meshes and final shader sources, drawn by moderngl without VTK.
 
 ``take_scene`` writes down meshes, attributes, uniforms, poses and the GLSL that VTK ended up with; ``raw_draw`` draws
-them as a frame source, so that the same workers and the same encoder film it. No antialiasing, no overlay; poses are
-read ready-made; what changes its mesh from frame to frame (shadows of aircraft, smoke) is left out.
+them as a frame source, so that the same workers and the same encoder film it. No antialiasing, no overlay; poses and
+the order of trees are read ready-made; what changes its mesh from frame to frame (shadows of aircraft, smoke) is left
+out.
 """
 
 from __future__ import annotations
@@ -52,10 +53,7 @@ def take_scene(source: StageSource, study: Study, times_s: list[float], path: Pa
         view = stage.renderer.GetActiveCamera().GetCompositeProjectionTransformMatrix(
             camera.width_px / camera.height_px, -1.0, 1.0
         )
-        eye = np.array(stage.renderer.GetActiveCamera().GetPosition())
-        axis = np.array(stage.renderer.GetActiveCamera().GetDirectionOfProjection())
-        corner = float(np.arctan(np.hypot(np.tan(camera.field_rad / 2), np.tan(camera.field_vertical_rad / 2))))
-        poses[time_s] = (_matrix(view), eye, axis, corner, [_pose(actors[i]) for i in kept])
+        poses[time_s] = (_matrix(view), [_pose(actors[i], actors[i] in stage._land.tree_actors) for i in kept])
     things = [_thing(stage, actors[i], codes[i]) for i in kept]
     path.write_bytes(pickle.dumps({"things": things, "poses": poses, "background": stage.renderer.GetBackground()}))
 
@@ -64,9 +62,14 @@ def _matrix(matrix: Any) -> np.ndarray[Any, Any]:
     return np.array([[matrix.GetElement(i, j) for j in range(4)] for i in range(4)])
 
 
-def _pose(actor: Any) -> tuple[bool, Any, dict[str, Any]]:
-    values = _uniforms(actor)
-    return bool(actor.GetVisibility()), _matrix(actor.GetMatrix()), {k: v for k, v in values.items() if k in MOVING}
+def _pose(actor: Any, tree: bool) -> tuple[bool, Any, dict[str, Any], Any]:
+    """Whether it is shown, its matrix, the uniforms that change, and of trees the numbers of those drawn, in order."""
+    values = {k: v for k, v in _uniforms(actor).items() if k in MOVING}
+    order = None
+    if tree:
+        corners = vtk_to_numpy(actor.GetMapper().GetInput().GetPolys().GetConnectivityArray())
+        order = np.array(corners[::6] // 4, np.int32)
+    return bool(actor.GetVisibility()), _matrix(actor.GetMatrix()), values, order
 
 
 def _uniforms(actor: Any) -> dict[str, Any]:
@@ -103,5 +106,5 @@ def _thing(stage: Any, actor: Any, code: tuple[str, str]) -> dict[str, Any]:
         "corners": np.array(vtk_to_numpy(polys.GetConnectivityArray()), np.int32),
         "cull": bool(look.GetBackfaceCulling()), "clear": bool(actor.GetForceTranslucent()),
         "box": np.array(data.GetBounds()).reshape(3, 2).T,
-        "foot": stage._land._trees._foot if actor is stage._land.tree_actor else None,
+        "tree": actor in stage._land.tree_actors,
     }  # fmt: skip
