@@ -18,6 +18,7 @@ from typing import Any
 
 from render.command_gates import add_gates, gates_command
 from render.command_page import add_page, page_command
+from render.command_shape import add_shape, shape_command
 
 PURPOSE = ("How late a lead's lost pitch control becomes visible in a low formation loop, and how little is left then: "
            "fly a scene, film what a wing pilot sees, print the figures.")
@@ -79,6 +80,7 @@ def build_parser() -> argparse.ArgumentParser:
     add("doctor", "can this machine draw and encode")
     add_page(add)
     add_gates(add)
+    add_shape(add)
     return parser
 
 
@@ -313,7 +315,7 @@ def _doctor(args: argparse.Namespace) -> int:
 
 COMMANDS: dict[str, Callable[[argparse.Namespace], int]] = {
     "check": _check, "fly": _fly, "film": _film, "still": _still, "list": _list, "schema": _schema, "doctor": _doctor,
-    "page": page_command, "gates": gates_command,
+    "page": page_command, "gates": gates_command, "shape": shape_command,
 }
 
 
