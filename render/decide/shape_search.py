@@ -31,7 +31,7 @@ from scenes.model import DEG, Loop, Scene
 
 PEOPLE = 20  # pulls in a generation
 DRAWS = 4  # times as many are drawn and measured for the first one
-POLISH = 0.35  # part of a search's budget that goes to its simplex
+POLISH = 0.25  # part of a search's budget that goes to its simplex
 TIGHTER = 0.995  # limits inside a search, so that rounding what it finds to 0.01 g keeps them
 FINER = 5  # freeze points of the final check, to each one of the search
 PULL_COSTS = 2  # cases: what closing and measuring a pull takes
@@ -208,6 +208,11 @@ class Search:
         begin = LEAST_LOAD + self.rng.uniform(0.0, 1.0, (n, 1)) * (peak - LEAST_LOAD)
         power = np.exp(self.rng.uniform(-1.5, 1.0, (n, 1)))
         drawn = begin + (peak - begin) * u**power
+        # half of them rise evenly from the top and are then held, or eased a little
+        rise = self.rng.uniform(0.3, 1.0, (n, 1)) * self.limits.slope_gprad
+        held = np.clip(self.rng.uniform(0.5, 1.0, (n, 1)) * most + rise * (knots - TOP_RAD) - 0.5 * most, 0.0, peak)
+        held *= 1.0 - self.rng.uniform(0.0, 0.25, (n, 1)) * u
+        drawn[::2] = held[::2]
         drawn *= 1.0 + 0.04 * self.rng.standard_normal(drawn.shape)
         near = [np.minimum(x, most) * (1.0 + 0.02 * i * self.rng.standard_normal(x.size))
                 for x in seeds for i in range(4)]
@@ -257,7 +262,7 @@ class Search:
                 raise StopIteration
 
         minimize(lambda x: float(self.scores(x[None])[0]), x0, method="Nelder-Mead", bounds=many, callback=stop,
-                 options={"initial_simplex": simplex, "maxfev": 150, "xatol": 1e-3, "fatol": 1e-3, "adaptive": True})
+                 options={"initial_simplex": simplex, "maxfev": 60, "xatol": 1e-3, "fatol": 1e-3, "adaptive": True})
 
     def _finish(self, job: Job) -> Trade:
         """The best pull written as it is flown (scale near 1), rounded, measured, and frozen at the fine points."""
