@@ -31,7 +31,9 @@ TITLE, SWATCHES, PANEL_FOOT, FOOT = 1.26, 0.50, 0.66, 0.84
 ROW, ROW_MOST, GRID_LEAST = 0.40, 4.6, 2.4
 DPI = 160
 INK, QUIET, RULE = "#11151a", "#5a6570", "#c9d0d6"
-GROUND_LINE: dict[str, Any] = {"color": "#d55e00", "linewidth": 2.0, "linestyle": (0, (3, 1.6))}
+GROUND_LINE: dict[str, Any] = {"color": "#d55e00", "linewidth": 1.8, "solid_capstyle": "butt"}
+CASING: dict[str, Any] = {"color": "white", "linewidth": 3.4, "solid_capstyle": "butt"}
+TICK_PT = 3.2  # marks on the side of the ground's line where the flight meets the ground
 MARK = "#f0e442"
 MEASURE = 10.0  # texts are measured this much larger than they are set, since fonts are measured in whole pixels
 
@@ -171,9 +173,11 @@ def _legend(page: _Page, found: Map, y: float) -> None:
             edgecolor=QUIET, linewidth=0.8, alpha=1.0 if there else 0.35, transform=page.figure.transFigure,
         ))
     met = bool(np.any(np.isfinite(found.cases.contact_s)))
-    x = entry(len(shown), "inside: meets the ground\nif nobody acts", met)
-    page.figure.add_artist(Line2D([x / WIDTH, (x + 0.33) / WIDTH], [1.0 - (y + 0.16) / page.height] * 2,
-                                  alpha=1.0 if met else 0.35, **GROUND_LINE))
+    x = entry(len(shown), "on the toothed side it meets\nthe ground if nobody acts", met)
+    line, tooth = 1.0 - (y + 0.12) / page.height, TICK_PT / 72.0 / page.height
+    marks = [((x, x + 0.33), (line, line))] + [((x + s, x + s), (line, line - tooth)) for s in (0.055, 0.165, 0.275)]
+    for (x0, x1), (y0, y1) in marks:
+        page.figure.add_artist(Line2D([x0 / WIDTH, x1 / WIDTH], [y0, y1], alpha=1.0 if met else 0.35, **GROUND_LINE))
 
 
 def _panel(axes: Axes, found: Map, slot: int, width: float, height: float) -> None:
@@ -188,8 +192,9 @@ def _panel(axes: Axes, found: Map, slot: int, width: float, height: float) -> No
                                      hatch="////" if kind == Outcome.UNKNOWN else None))
     _numbers(axes, found, slot, min(7.6, 0.27 * cell_w, 0.42 * cell_h))
     contact = np.isfinite(found.grid("contact_s")[:, :, slot + 1]) | np.isfinite(found.grid("contact_s")[:, :, 0])
-    _outline(axes, contact, **GROUND_LINE)
-    _name_regions(axes, outcome, cell_w, cell_h, _mark_scene(axes, found))
+    edges = _edges(contact)
+    _ground_line(axes, edges, TICK_PT / cell_w, TICK_PT / cell_h)
+    _name_regions(axes, outcome, cell_w, cell_h, _mark_scene(axes, found), edges)
     axes.set_xlim(0, nx)
     axes.set_ylim(0, ny)
     _ticks(axes, found.x, "x", cell_w)
@@ -226,25 +231,32 @@ def _signed(value: float) -> str:
     return f"{round(value, 1) + 0.0:+.1f}".replace("-", "\N{MINUS SIGN}")
 
 
-def _outline(axes: Axes, mask: NDArray[np.bool_], **style: Any) -> None:
-    """A line around the cells of a mask, (X, Y), not along the border of the map."""
-    nx, ny = mask.shape
-    for i in range(nx):
-        for j in range(ny):
-            if not mask[i, j]:
-                continue
-            if i + 1 < nx and not mask[i + 1, j]:
-                axes.add_line(Line2D([i + 1, i + 1], [j, j + 1], **style))
-            if i > 0 and not mask[i - 1, j]:
-                axes.add_line(Line2D([i, i], [j, j + 1], **style))
-            if j + 1 < ny and not mask[i, j + 1]:
-                axes.add_line(Line2D([i, i + 1], [j + 1, j + 1], **style))
-            if j > 0 and not mask[i, j - 1]:
-                axes.add_line(Line2D([i, i + 1], [j, j], **style))
+def _edges(mask: NDArray[np.bool_]) -> list[tuple[int, int, int, int]]:
+    """Sides between cells of a mask, (X, Y), and others: x, y of one end, and the way to the mask along x and y.
+
+    One of the two ways is 0, the other -1 or 1; a side with a way along x is upright, of length one.
+    """
+    found = []
+    across, along = np.diff(mask.astype(int), axis=0), np.diff(mask.astype(int), axis=1)
+    for i, j in zip(*np.nonzero(across), strict=True):
+        found.append((int(i) + 1, int(j), int(across[i, j]), 0))
+    for i, j in zip(*np.nonzero(along), strict=True):
+        found.append((int(i), int(j) + 1, 0, int(along[i, j])))
+    return found
+
+
+def _ground_line(axes: Axes, edges: list[tuple[int, int, int, int]], tick_x: float, tick_y: float) -> None:
+    """The line between flights that meet the ground and those that don't, with teeth on the side of the first."""
+    for style, teeth in ((CASING, False), (GROUND_LINE, True)):
+        for x, y, to_x, to_y in edges:
+            axes.add_line(Line2D([x, x + (to_x == 0)], [y, y + (to_y == 0)], zorder=3, **style))
+            for part in (1 / 6, 1 / 2, 5 / 6) if teeth else ():
+                at_x, at_y = x + part * (to_x == 0), y + part * (to_y == 0)
+                axes.add_line(Line2D([at_x, at_x + to_x * tick_x], [at_y, at_y + to_y * tick_y], zorder=3, **style))
 
 
 def _name_regions(axes: Axes, outcome: NDArray[np.int64], cell_w: float, cell_h: float,
-                  taken: int | None) -> None:
+                  taken: int | None, edges: list[tuple[int, int, int, int]]) -> None:
     """Each outcome's words where they have most room: on a line between two rows, clear of the numbers.
 
     taken: a line where something stands already.
@@ -252,7 +264,7 @@ def _name_regions(axes: Axes, outcome: NDArray[np.int64], cell_w: float, cell_h:
     if cell_h < 20.0:
         return
     for kind, text in REGION.items():
-        place = _widest(outcome == kind, taken)
+        place = _widest(outcome == kind, taken, edges)
         if place is None:
             continue
         i, j, length = place
@@ -265,7 +277,9 @@ def _name_regions(axes: Axes, outcome: NDArray[np.int64], cell_w: float, cell_h:
                 break
 
 
-def _widest(mask: NDArray[np.bool_], taken: int | None) -> tuple[int, int, int] | None:
+def _widest(
+    mask: NDArray[np.bool_], taken: int | None, edges_of: list[tuple[int, int, int, int]]
+) -> tuple[int, int, int] | None:
     """The longest stretch of x that two neighbouring rows of a mask share: first x, the line between, length."""
     best: tuple[float, int, int, int] | None = None
     for j in range(1, mask.shape[1]):
@@ -273,7 +287,9 @@ def _widest(mask: NDArray[np.bool_], taken: int | None) -> tuple[int, int, int] 
         edges = np.flatnonzero(np.diff(np.concatenate([[False], both, [False]]).astype(int)))
         for first, end in zip(edges[::2], edges[1::2], strict=True):
             # of equal stretches the one in the middle of the rows
-            score = float(end - first) - 0.02 * abs(j - mask.shape[1] / 2) - (100.0 if j == taken else 0.0)
+            crossed = sum(y == j and to_y != 0 and first <= x < end for x, y, _, to_y in edges_of)
+            score = float(end - first) - 0.02 * abs(j - mask.shape[1] / 2) - 0.6 * crossed
+            score -= 100.0 if j == taken else 0.0
             if best is None or score > best[0]:
                 best = score, int(first), j, int(end - first)
     return None if best is None else best[1:]
