@@ -17,7 +17,9 @@ from pathlib import Path
 from typing import Any
 
 from render.command_gates import add_gates, gates_command
+from render.command_map import add_map, map_command
 from render.command_page import add_page, page_command
+from render.command_scatter import add_scatter, scatter_command
 from render.command_shape import add_shape, shape_command
 
 PURPOSE = ("How late a lead's lost pitch control becomes visible in a low formation loop, and how little is left then: "
@@ -80,6 +82,8 @@ def build_parser() -> argparse.ArgumentParser:
     add("doctor", "can this machine draw and encode")
     add_page(add)
     add_gates(add)
+    add_scatter(add)
+    add_map(add)
     add_shape(add)
     return parser
 
@@ -315,7 +319,7 @@ def _doctor(args: argparse.Namespace) -> int:
 
 COMMANDS: dict[str, Callable[[argparse.Namespace], int]] = {
     "check": _check, "fly": _fly, "film": _film, "still": _still, "list": _list, "schema": _schema, "doctor": _doctor,
-    "page": page_command, "gates": gates_command, "shape": shape_command,
+    "page": page_command, "gates": gates_command, "scatter": scatter_command, "map": map_command, "shape": shape_command,
 }
 
 

@@ -38,14 +38,14 @@ def scatter_figure(study: ScatterStudy) -> Figure:
         y -= 0.038
     top = y - 0.055
     _shares(figure.add_axes((LEFT + 0.07, top - 0.13, 0.42, 0.13)), study)
-    _left(figure.add_axes((LEFT + 0.02, 0.135, 0.47, top - 0.13 - 0.09 - 0.135)), study)
+    _left(figure.add_axes((LEFT + 0.02, 0.135, 0.47, top - 0.13 - 0.115 - 0.135)), study)
     for i, gate in enumerate(SHOWN_GATES):
         _cloud(figure.add_axes((0.605 + i * 0.132, top - 0.225, 0.108, 0.225)), study, gate, first=i == 0)
     _influences(figure.add_axes((0.70, 0.135, 0.265, top - 0.225 - 0.155 - 0.135)), study)
     alarms = max(slot.false_alarms for slot in study.slots)
     figure.text(LEFT, 0.062, f"{words.scatter_line(study)}", fontsize=6.6, color=QUIET, va="top")
-    figure.text(LEFT, 0.044, f"False alarms: {100 * alarms:.1f} of 100 passes in which nothing fails. Black lines: 95 % "
-                "interval of the draw; the doubt in the model is not in it.", fontsize=6.6, color=QUIET, va="top")
+    figure.text(LEFT, 0.044, f"False alarms: {100 * alarms:.1f} of 100 passes in which nothing fails. Black lines: 95 "
+                "% interval of the draw; the doubt in the model is not in it.", fontsize=6.6, color=QUIET, va="top")
     figure.text(LEFT, 0.023, CAUTION, fontsize=7.5, weight="bold", color=INK, va="top")
     return figure
 
@@ -95,7 +95,8 @@ def _left(axes: Axes, study: ScatterStudy) -> None:
         low, high = np.floor(min(known.min(), -1.0)), np.ceil(max(known.max(), 1.0))
         edges = np.arange(low, high + 0.5, 0.5 if high - low <= 24 else 1.0)
         for part, colour in ((known[known < 0.0], VERMILION), (known[known >= 0.0], BLUE)):
-            axes.hist(part, bins=edges, color=colour, rwidth=0.9)
+            axes.hist(part, bins=[float(e) for e in edges], color=colour, rwidth=0.9)
+        axes.margins(y=0.18)
         axes.axvline(0.0, color=INK, linewidth=1.5)
         axes.text(0.0, 1.0, " last pull", transform=axes.get_xaxis_transform(), fontsize=7.5, color=INK, va="top")
     else:

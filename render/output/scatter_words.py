@@ -191,3 +191,16 @@ def plain_study(study: ScatterStudy) -> Mapping[str, Any]:
         "flown": len(study.gates), "measured": study.measured, "gates": gates,
         "contact_healthy": plain(study.contact_healthy), "slots": slots,
     }
+
+
+def passes_csv(study: ScatterStudy) -> str:
+    """One row a pass that was flown: the gates, and what each slot had in hand; SI, the unit in each header.
+
+    ``inf``: nothing was needed; ``-inf``: he never knew.
+    """
+    head = [f"{gate}_{column}" for gate in GATES for column in GATE_COLUMNS]
+    head += [f"{slot.slot}_in_hand_s" for slot in study.slots]
+    rows = np.column_stack([study.gates.reshape(len(study.gates), -1), *(s.in_hand_s for s in study.slots)])
+    lines = [",".join(head)]
+    lines += [",".join("" if v != v else f"{v:.9g}" for v in row) for row in rows.tolist()]
+    return "\n".join(lines) + "\n"
