@@ -10,6 +10,7 @@ from __future__ import annotations
 import warnings
 from collections.abc import Callable
 from dataclasses import replace
+from functools import cache
 from pathlib import Path
 
 import numpy as np
@@ -22,7 +23,7 @@ from render.picture.camera import Camera
 from render.picture.instant import Instant
 from render.picture.probe import probe_drawing
 from render.picture.stage import Stage
-from render.types import Study
+from render.types import Flight, Study
 from scenes.model import Day
 from terrain.ground import ground_names, read_ground
 from tests.output.made_up import made_up_study
@@ -59,15 +60,29 @@ def aircraft(shape: str) -> Frame:
         return stage.draw(one, Camera(eye, attitude, np.radians(38.0), *SIZE)).copy()
 
 
+@cache
+def looping() -> Study:
+    """The invented study, its aircraft standing along their path, with a pull on the stabilator and a little roll."""
+    study = made_up_study()
+
+    def standing(flight: Flight) -> Flight:
+        pitch = np.nan_to_num(flight.loop_angle_rad[:, 0])
+        quat = np.array([quat_from_euler(np.radians(80.0), one, 0.0) for one in pitch])
+        pull = np.full_like(flight.stabilator_rad, -0.12)
+        return replace(flight, quat_eb=np.repeat(quat[:, None], len(flight.names), axis=1), stabilator_rad=pull)
+
+    return replace(study, healthy=standing(study.healthy), faulted=standing(study.faulted))
+
+
 def seat(slot: str, time_s: float, study: Study | None = None, **options: object) -> Frame:
-    """From a slot of the invented study."""
-    with open_stage(study or made_up_study(), slot, SIZE, **options) as source:
+    """From a slot of the looping formation."""
+    with open_stage(study or looping(), slot, SIZE, **options) as source:
         return np.array(source.frame(time_s))
 
 
 def wide() -> Frame:
     """A field of 130 deg."""
-    study = made_up_study()
+    study = looping()
     scene = replace(study.scene, film=replace(study.scene.film, field_rad=np.radians(130.0)))
     return seat("right", 22.0, replace(study, scene=scene))
 
