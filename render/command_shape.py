@@ -27,7 +27,7 @@ def add_shape(add: Callable[[str, str], argparse.ArgumentParser]) -> None:
     sub.add_argument("--bend", metavar="G", type=float,
                      help="greatest change of that slope, g per degree per degree (default: as in the scene)")
     sub.add_argument("--freeze-step", default="15 deg", metavar="ANGLE",
-                     help="between freeze points in the search (default 15 deg); the result is checked at a fifth of it")
+                     help="between freeze points in the search (default 15 deg); checked at a fifth of it at the end")
     sub.add_argument("--trade", type=int, default=4, metavar="N", help="load factors to solve for (default 4)")
     sub.add_argument("--budget", type=int, default=6000, metavar="CASES",
                      help="freezes flown in the search (default 6000, about 30 a second and core pair)")
@@ -79,8 +79,8 @@ def shape_command(args: argparse.Namespace) -> int:
     points = np.linspace(FIRST_RAD, LAST_RAD, max(round((LAST_RAD - FIRST_RAD) / step_rad), 1) + 1)
     if args.budget < args.trade * PEOPLE * len(points):
         raise LatepullError(f"--budget: read {args.budget}, wanted at least {args.trade * PEOPLE * len(points):,}: one "
-                            f"generation of {PEOPLE} pulls at {len(points)} freeze points for each of {args.trade} load "
-                            "factors")
+                            f"generation of {PEOPLE} pulls at {len(points)} freeze points for each of {args.trade} "
+                            "load factors")
     if args.seed < 0:
         raise LatepullError(f"--seed: read {args.seed}, wanted 0 or more")
     scene = read_scene(args.scene)

@@ -20,7 +20,7 @@ from render.errors import LatepullError
 from render.frames import Array
 from render.types import freeze_arrays
 from scenes.airframe import Airframe
-from scenes.model import DEG, Fault, Loop, Point, Scene
+from scenes.model import DEG, Fault, Loop, Point, Scene, Slot
 from terrain.ground import Ground
 
 KNOTS_RAD = np.array([195.0, 225.0, 250.0, 270.0, 300.0, 330.0, 350.0]) * DEG
@@ -65,11 +65,11 @@ def make_job(
                             "pull over the back half of a loop")
     closing = [i for i in loops if _loop(briefed, i).close_at_m is not None]
     if not closing:
-        raise LatepullError(f"{scene.source or scene.name}: script.{loops[0]}.loop: read no close_at, wanted the height "
-                            "at which every pull that is tried has to close, such as close_at: 300 ft")
+        raise LatepullError(f"{scene.source or scene.name}: script.{loops[0]}.loop: read no close_at, wanted the "
+                            "height at which every pull that is tried has to close, such as close_at: 300 ft")
     if closing[0] != loops[0]:
-        raise LatepullError(f"{scene.source or scene.name}: script.{closing[0]}.loop: shape seeks the pull of the first "
-                            "loop, and that has no close_at")
+        raise LatepullError(f"{scene.source or scene.name}: script.{closing[0]}.loop: shape seeks the pull of the "
+                            "first loop, and that has no close_at")
     return Job(briefed, loops[0], airframe_of, ground, freeze_rad.copy())
 
 
@@ -125,14 +125,15 @@ class Frozen:
 
 def unlike_slots(scene: Scene) -> Scene:
     """The scene less the slots that are a mirror image of one before, for searches."""
-    seen = {}
+    seen: dict[tuple[float, float, float, str | None], Slot] = {}
     for slot in scene.formation:
         seen.setdefault((slot.aft_m, abs(slot.right_m), slot.down_m, slot.airframe), slot)
     return dataclasses.replace(scene, formation=tuple(seen.values()))
 
 
 def freeze_all(
-    job: Job, scenes: Sequence[Scene], freeze_rad: Array | None = None, progress: Callable[[int, int], None] | None = None
+    job: Job, scenes: Sequence[Scene], freeze_rad: Array | None = None,
+    progress: Callable[[int, int], None] | None = None,
 ) -> list[Frozen]:
     """Freeze each loop at each point; one chunk of flights, all slots of the scenes given."""
     points = job.freeze_rad if freeze_rad is None else freeze_rad
@@ -156,5 +157,4 @@ def _frozen(cases: Cases, points: Array, rows: slice, floor_m: float) -> Frozen:
     worst = np.max(each, axis=1)
     worst[bad] = np.nan
     low = np.min(cases.lowest_m[rows][:, 1:], axis=1) - floor_m
-    # a fault that comes so late that it is over before it begins changes nothing
     return Frozen(points.copy(), worst, np.where(bad, np.nan, low), error)

@@ -192,9 +192,9 @@ class Search:
         self.barren = 0 if len(good) else self.barren + 1
         for i, f in zip(good, frozen, strict=True):
             score[i] = max(f.score_s, self.enough)
-        i = int(np.argmin(score))
-        if score[i] < self.best_score:
-            self.best_score, self.best_load = float(score[i]), loads[i].copy()
+        least = int(np.argmin(score))
+        if score[least] < self.best_score:
+            self.best_score, self.best_load = float(score[least]), loads[least].copy()
         if self.tell is not None:
             self.tell(self.what, min(self.spent, self.budget), self.budget)
         return score

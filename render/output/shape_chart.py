@@ -33,14 +33,14 @@ def shape_figure(shape: Shape) -> Figure:
     figure = Figure(figsize=INCH, dpi=DPI, facecolor="white")
     best = chosen(shape)
     y = _say(figure, 0.03, 0.965, headline(shape), 16.0, weight="bold") - 0.004
-    _say(figure, 0.03, y, f"{shape.job.scene.title.rstrip('.')}. Freeze of the lead's stabilator anywhere on the way down; "
-         "entry, top and base of the loop are the same.", 9.5, colour=QUIET)
+    _say(figure, 0.03, y, f"{shape.job.scene.title.rstrip('.')}. Freeze of the lead's stabilator anywhere on the way "
+         "down; entry, top and base of the loop are the same.", 9.5, colour=QUIET)
     _demand(figure.add_axes((0.055, 0.17, 0.27, 0.585)), shape, best)
     _lateness(figure.add_axes((0.385, 0.17, 0.365, 0.585)), shape, best)
     _trade(figure.add_axes((0.81, 0.17, 0.17, 0.585)), shape)
     _say(figure, 0.03, 0.062, CAUTION, 9.0, weight="bold")
-    _say(figure, 0.03, 0.034, "Bands: from the early to the late observer; lines: the likely one. The worse slot of the formation. "
-         "Other faults and other entries are not looked at.", 8.0, colour=QUIET)
+    _say(figure, 0.03, 0.034, "Bands: from the early to the late observer; lines: the likely one. The worse slot of "
+         "the formation. Other faults and other entries are not looked at.", 8.0, colour=QUIET)
     return figure
 
 
@@ -82,8 +82,8 @@ def _demand(axes: Axes, shape: Shape, best: Trade | None) -> None:
         axes.plot(x, n, color=colour, linewidth=width)
         i = int(np.argmax(n))
         tops.append(n[i])
-        axes.annotate(f"{name}\n{pull.load_factor:.1f} g", (x[i], n[i]), (0, 6), textcoords="offset points", fontsize=9.5,
-                      weight="bold", color=colour, ha="center", va="bottom")
+        axes.annotate(f"{name}\n{pull.load_factor:.1f} g", (x[i], n[i]), (0, 6), textcoords="offset points",
+                      fontsize=9.5, weight="bold", color=colour, ha="center", va="bottom")
     _loop_axis(axes)
     axes.set_ylim(0.0, 1.22 * max(tops))
 
@@ -95,7 +95,8 @@ def _ends(frozen: Frozen) -> Array:
 
 
 def _lateness(axes: Axes, shape: Shape, best: Trade | None) -> None:
-    _plain(axes, "How late, by where it freezes", "loop angle of the freeze, degrees", "s before or after the last pull")
+    _plain(axes, "How late, by where it freezes", "loop angle of the freeze, degrees",
+           "s before or after the last pull")
     found = [(shape.start, BEFORE, "as it was")]
     if best is not None and best.frozen is not None:
         found.append((best.frozen, AFTER, "found"))
@@ -106,8 +107,7 @@ def _lateness(axes: Axes, shape: Shape, best: Trade | None) -> None:
     axes.axhspan(0.0, high, color=TOO_LATE, zorder=0)
     axes.axhline(0.0, color=INK, linewidth=1.2)
     axes.text(361.0, high * 0.985, "TOO LATE", fontsize=9.5, weight="bold", color=BEFORE, ha="right", va="top")
-    axes.text(361.0, low + 0.06 * (high - low) if low < -1.0 else -0.03 * (high - low), "in time", fontsize=9.0, color=QUIET,
-              ha="right", va="top")
+    axes.text(361.0, -0.015 * (high - low), "in time", fontsize=9.5, color=QUIET, ha="right", va="top")
     for n, (frozen, colour, name) in enumerate(found):
         x = np.degrees(frozen.freeze_rad)
         early, likely, late = np.minimum(_ends(frozen), high + 1.0).T
@@ -168,8 +168,8 @@ def _trade(axes: Axes, shape: Shape) -> None:
     pad = 0.2 * (max(loads) - min(loads)) + 0.15
     axes.set_xlim(min(loads) - pad, max(loads) + pad)
     axes.set_ylim(foot - 0.14 * (high - low), high)
-    axes.text(min(loads) - 0.9 * pad, foot - 0.07 * (high - low), "every freeze clears by itself", fontsize=8.0, color=AFTER,
-              va="top", ha="left")
+    axes.text(min(loads) - 0.9 * pad, foot - 0.07 * (high - low), "every freeze clears by itself", fontsize=8.0,
+              color=AFTER, va="top", ha="left")
     axes.locator_params(axis="x", nbins=4)
     ticks = [t for t in axes.get_yticks() if low - 1e-9 <= t <= high]
     axes.set_yticks(ticks, [f"{t:+.0f}" if t else "0" for t in ticks])

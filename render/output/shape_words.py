@@ -9,7 +9,7 @@ import numpy as np
 
 from render.decide.shape import LIKELY, Frozen
 from render.decide.shape_limits import Limits, Pull
-from render.decide.shape_search import Shape, Trade
+from render.decide.shape_search import FINER, Shape, Trade
 from render.output.words import CAUTION, Units, seconds
 from render.types import OBSERVERS
 from scenes.model import Loop
@@ -57,15 +57,16 @@ def headline(shape: Shape) -> str:
 
 def limits_words(limits: Limits) -> str:
     """The limits in words."""
-    return (f"at most {limits.load_factor:.2f} g, {limits.onset_gps:.2f} g/s, {limits.slope_gprad * math.pi / 180.0:.3f} "
-            f"g per degree, changing by {limits.bend_gprad2 * (math.pi / 180.0) ** 2 * 1000.0:.2f} thousandths of it per "
-            f"degree, lift {100.0 * limits.buffet:.0f} % of that at which buffet begins")
+    degree = math.pi / 180.0
+    return (f"at most {limits.load_factor:.2f} g, {limits.onset_gps:.2f} g/s, {limits.slope_gprad * degree:.3f} g per "
+            f"degree of loop, that changing by {limits.bend_gprad2 * degree**2:.4f} per degree, lift "
+            f"{100.0 * limits.buffet:.0f} % of that at which buffet begins")
 
 
 def pull_words(pull: Pull, units: Units) -> str:
     """What a pull asks, in words."""
-    return (f"{pull.load_factor:.2f} g, {pull.onset_gps:.2f} g/s, lift {100.0 * pull.buffet:.0f} % of buffet, top speed "
-            f"{units.speed(pull.speed_max_mps)}, vertical down at {units.length(pull.down_height_m)}")
+    return (f"{pull.load_factor:.2f} g, {pull.onset_gps:.2f} g/s, lift {100.0 * pull.buffet:.0f} % of buffet, top "
+            f"speed {units.speed(pull.speed_max_mps)}, vertical down at {units.length(pull.down_height_m)}")
 
 
 def shape_text(shape: Shape) -> str:
@@ -82,13 +83,13 @@ def shape_text(shape: Shape) -> str:
         out += [f"found:     {pull_words(best.pull, units)}",
                 "demand:    " + ", ".join(f"{a:.0f} deg {n:.2f} g" for a, n in back)]
     after = shape.start if best is None or best.frozen is None else best.frozen
-    out += ["", "lateness of early / likely / late by freeze point (the worse slot; + is too late; clears: the floor is",
-            "never reached if nobody acts), and the lowest height above the floor then",
+    out += ["", "lateness of early / likely / late by freeze point (the worse slot; + is too late; clears: the floor",
+            "is never reached if nobody acts), and the lowest height above the floor then",
             f"{'freeze at':>10}  {'as it was':<28}{'':>9}  {'found' if best else 'the same':<28}"]
     before_at = {round(float(a), 6): i for i, a in enumerate(shape.start.freeze_rad)}
     for i, angle in enumerate(after.freeze_rad):
         j = before_at.get(round(float(angle), 6))
-        if j is None or j % 5 and not (best and j == int(np.nanargmax(shape.start.lateness_s[:, LIKELY]))):
+        if j is None or j % FINER:
             continue
         rows = []
         for frozen, k in ((shape.start, j), (after, i)):
@@ -103,8 +104,8 @@ def shape_text(shape: Shape) -> str:
         late = " / ".join(short_late(v) for v in item.frozen.worst_s)
         out.append(f"  {item.limits.load_factor:.2f} g | {item.pull.load_factor:.2f} g | "
                    f"{units.speed(item.pull.speed_max_mps)} | {units.length(item.pull.down_height_m)} | {late}")
-    out += ["", f"{shape.cases:,} freezes and pulls flown, seed {shape.seed}. A freeze at the entry, air and station keeping of "
-            "the scene alone; other faults are not looked at.", CAUTION]
+    out += ["", f"{shape.cases:,} freezes and pulls flown, seed {shape.seed}. A freeze, at the entry, in the air and "
+            "with the station keeping of the scene alone; other faults are not looked at.", CAUTION]
     return "\n".join(out) + "\n"
 
 

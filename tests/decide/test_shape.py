@@ -19,7 +19,6 @@ from render.decide.shape_limits import least_load_factor, measure_pulls, own_lim
 from render.decide.shape_scene import found_scene
 from render.decide.shape_search import Shape, find_shape, fine_points
 from render.errors import LatepullError
-from render.flight import records as r
 from render.flight.fly import fly_scene
 from render.output.shape_chart import write_shape_chart
 from render.output.shape_words import plain_shape, shape_text
@@ -108,8 +107,8 @@ def test_found_is_never_worse_closes_and_keeps_every_limit(tmp_path: Path) -> No
     over = round(0.2 / (time_s[1] - time_s[0]))
     assert np.abs(load[over:] - load[:-over]).max() / (time_s[over] - time_s[0]) <= limits.onset_gps + 1e-3
     jet = read_airframe("jet_trainer")
-    lift = jet.lift_slope * (healthy.alpha_rad[down, 0] - jet.alpha_zero_rad) if hasattr(healthy, "alpha_rad") else None
-    assert lift is None or lift.max() <= limits.buffet * jet.cl_buffet + 1e-6
+    lift = jet.lift_slope * (healthy.alpha_rad[down, 0] - jet.alpha_zero_rad)
+    assert lift.max() <= limits.buffet * jet.cl_buffet + 1e-6
     # the scene of the file itself, measured again
     again = measure_pulls(hero(), [dataclasses.replace(scene, fault=None)])[0]
     assert again.excess(limits) == 0.0 and again.scale == pytest.approx(1.0, abs=0.03)
@@ -148,7 +147,7 @@ def test_the_least_load_factor_closes_and_less_does_not() -> None:
     job = jet_job()
     least = least_load_factor(job, 6.0)
     assert least_load_factor(job, least + 0.02) == pytest.approx(least, abs=0.03)
-    with pytest.raises(LatepullError, match="--max-g: read .* can't close at 300 ft"):
+    with pytest.raises(LatepullError, match=r"--max-g: read .* can't close at 300 ft"):
         least_load_factor(job, least - 0.05)
 
 
@@ -213,4 +212,4 @@ def test_bad_options_are_refused(tmp_path: Path, capsys: pytest.CaptureFixture[s
     out.mkdir(exist_ok=True)
     (out / "shape.json").write_text("{}", encoding="utf-8")
     assert main(["shape", "late_freeze", "--out", str(out)]) == 2
-    assert "shape.json" in capsys.readouterr().err and r.OK == 0
+    assert "shape.json" in capsys.readouterr().err
