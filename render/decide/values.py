@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import difflib
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
@@ -166,6 +166,12 @@ class Common:
     airframes: Mapping[str, Airframe]
     ground: Ground
     threads: int = 2
+
+
+def common_of(scene: Scene, airframe_of: Callable[[str], Airframe], ground: Ground, threads: int = 2) -> Common:
+    """What cases of a scene share: its airframes read, its ground."""
+    names = {scene.airframe, *(slot.airframe for slot in scene.formation if slot.airframe)}
+    return Common(scene, {name: airframe_of(name) for name in sorted(names)}, ground, threads)
 
 
 def work_values(common: Common, values: Sequence[Mapping[str, float]]) -> Cases:
