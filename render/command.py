@@ -162,7 +162,7 @@ def _slot(study: Any, wanted: str | None) -> str:
 
 def _picture(args: argparse.Namespace, size_px: tuple[int, int]) -> tuple[Any, str]:
     """The source of frames that the options ask for, and what the film has to say of it."""
-    from render.output.stage_source import StageOptions, picture_words, stage_spec
+    from render.output.stage_options import StageOptions, picture_words, stage_spec
 
     options = StageOptions(view=args.view, look=args.look, twin=args.twin, peripheral=args.peripheral,
                            smooth=not args.draft)

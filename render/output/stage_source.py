@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from contextlib import ExitStack, contextmanager
-from dataclasses import asdict, dataclass, replace
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -13,8 +13,8 @@ from numpy.typing import NDArray
 from render.errors import LatepullError
 from render.frames import quat_rotate
 from render.output.events import slot_index
-from render.output.overlay import strip_px
-from render.output.source import FrameSource, SourceSpec
+from render.output.source import FrameSource
+from render.output.stage_options import StageOptions
 from render.picture.camera import FIELD_MAX_RAD, PANINI_FROM_RAD, Camera
 from render.picture.instant import Instant, instant_at
 from render.picture.stage import Stage
@@ -41,31 +41,6 @@ Frame = NDArray[np.uint8]
 FLIGHTS = ("faulted", "healthy")
 TWINS = ("side", "stack", "ghost")
 SPECTATOR_FIELD_RAD = float(np.radians(40.0))  # he turns with the aircraft and attends to little beside it
-
-
-@dataclass(frozen=True, slots=True)
-class StageOptions:
-    """How a study is pictured; checked by ``open_stage``.
-
-    view: seat, chase or spectator. look (from the seat): lead, ahead, ground, or gaze, which is the scene's own:
-    where its ``watch`` rests the eyes, with its looks at the gauges. flight: faulted or healthy. twin: healthy and
-    faulted ``side`` by side or in a ``stack`` (healthy left or above), or the healthy lead as a ``ghost``.
-    peripheral: what acuity leaves away from the gaze. panini: None takes it for fields above 100 deg.
-    smooth: whether silhouettes are antialiased.
-    field_rad: None takes the film's (a spectator: 40 deg). clear_px: rows kept free at the bottom of a twin.
-    unseen_px: rows at the bottom that an overlay covers: left black where that saves drawing.
-    """
-
-    view: str = "seat"
-    look: str = "gaze"
-    flight: str = "faulted"
-    twin: str | None = None
-    peripheral: bool = False
-    panini: bool | None = None
-    smooth: bool = True
-    field_rad: float | None = None
-    clear_px: int = 0
-    unseen_px: int = 0
 
 
 class StageSource:
@@ -188,41 +163,6 @@ def twin_part(
     scale = np.sqrt(part[0] * part[1] / (size_px[0] * size_px[1]))
     half = 0.5 * part[0] / (0.5 * size_px[0] / np.tan(0.5 * field_rad) * scale)
     return part, float(min(2.0 * np.arctan(half), FIELD_MAX_RAD))
-
-
-def stage_spec(
-    options: StageOptions, size_px: tuple[int, int], *, overlay: bool, plain_too: bool = False
-) -> SourceSpec:
-    """The stage by name for a film's workers.
-
-    Under an overlay the halves of a twin keep clear of its strip, and what it covers of one picture is not drawn,
-    unless the plain version is made from the same drawing.
-    """
-    strip = strip_px(size_px[1]) if overlay else 0
-    if options.twin in ("side", "stack"):
-        return SourceSpec(options=asdict(replace(options, clear_px=strip)))
-    return SourceSpec(options=asdict(replace(options, unseen_px=0 if plain_too else strip)))
-
-
-def picture_words(options: StageOptions) -> str:
-    """What the film has to say of a picture that isn't plainly what a wing pilot's eye has, "" if there is nothing."""
-    words = []
-    if options.twin in ("side", "stack"):
-        first, second = ("above", "below") if options.twin == "stack" else ("left", "right")
-        words.append(f"{first}: without the fault, {second}: with it; not at true size")
-    if options.twin == "ghost":
-        words.append("faint: the lead without the fault")
-    if options.flight == "healthy" and options.twin is None:
-        words.append("the flight without the fault")
-    if options.view == "chase":
-        words.append("seen from a chase aircraft")
-    if options.view == "spectator":
-        words.append("seen from the ground")
-    if options.view == "seat" and options.look in ("ahead", "ground"):
-        words.append("eyes ahead" if options.look == "ahead" else "eyes on the ground")
-    if options.peripheral:
-        words.append("blurred as acuity falls away from the gaze (motion is seen better than this)")
-    return "; ".join(words)
 
 
 def _checked(options: StageOptions, study: Study) -> StageOptions:

@@ -38,7 +38,7 @@ def main(kind: str, study: str, out: str, size_px: list[int], start_s: float, en
                     "all_frames": len(shot)}
     from render.output.film import write_film
     from render.output.source import SourceSpec
-    from render.output.stage_source import StageOptions, stage_spec
+    from render.output.stage_options import StageOptions, stage_spec
 
     if kind == "raw":
         spec, overlay = SourceSpec("tests.benchmarks.raw_draw:open_raw", {"scene": scene}), False

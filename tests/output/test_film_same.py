@@ -11,7 +11,7 @@ import pytest
 
 from render.output.film import write_film
 from render.output.shot import plan_shot
-from render.output.stage_source import StageOptions, stage_spec
+from render.output.stage_options import StageOptions, stage_spec
 from render.types import Study
 
 SIZE = (256, 144)

@@ -8,15 +8,8 @@ import numpy as np
 import pytest
 
 from render.errors import LatepullError
-from render.output.stage_source import (
-    GAP_PX,
-    StageOptions,
-    StageSource,
-    open_stage,
-    picture_words,
-    stage_spec,
-    twin_part,
-)
+from render.output.stage_options import StageOptions, picture_words, stage_spec
+from render.output.stage_source import GAP_PX, StageSource, open_stage, twin_part
 from render.picture.instant import instant_at
 from render.picture.views import eye_of
 from render.types import Study

@@ -57,3 +57,10 @@ def test_a_draft_loads_no_compiler() -> None:
             "print(*sorted({'numba', 'scipy.interpolate', 'matplotlib.pyplot'} & set(sys.modules)))")
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, cwd=Path(__file__).parents[2])
     assert (done.stdout.strip(), done.stderr) == ("", "")
+
+
+def test_a_film_starts_its_workers_before_it_loads_any_drawing() -> None:
+    code = ("import sys; import render.output.film, render.output.stage_options, render.study_io; "
+            "print(*sorted({'numba', 'scipy', 'pyvista', 'vtkmodules', 'matplotlib'} & set(sys.modules)))")
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, cwd=Path(__file__).parents[2])
+    assert (done.stdout.strip(), done.stderr) == ("", "")
