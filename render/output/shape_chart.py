@@ -35,9 +35,9 @@ def shape_figure(shape: Shape) -> Figure:
     y = _say(figure, 0.03, 0.965, headline(shape), 16.0, weight="bold") - 0.004
     _say(figure, 0.03, y, f"{shape.job.scene.title.rstrip('.')}. Freeze of the lead's stabilator anywhere on the way "
          "down; entry, top and base of the loop are the same.", 9.5, colour=QUIET)
-    _demand(figure.add_axes((0.055, 0.17, 0.27, 0.585)), shape, best)
-    _lateness(figure.add_axes((0.385, 0.17, 0.365, 0.585)), shape, best)
-    _trade(figure.add_axes((0.81, 0.17, 0.17, 0.585)), shape)
+    _demand(figure.add_axes((0.055, 0.175, 0.27, 0.605)), shape, best)
+    _lateness(figure.add_axes((0.385, 0.175, 0.365, 0.605)), shape, best)
+    _trade(figure.add_axes((0.81, 0.175, 0.17, 0.605)), shape)
     _say(figure, 0.03, 0.062, CAUTION, 9.0, weight="bold")
     _say(figure, 0.03, 0.034, "Bands: from the early to the late observer; lines: the likely one. The worse slot of "
          "the formation. Other faults and other entries are not looked at.", 8.0, colour=QUIET)
@@ -133,8 +133,10 @@ def _clearing(axes: Axes, x: Array, frozen: Frozen, y: float, height: float, col
     for i in np.flatnonzero(frozen.clears):
         axes.barh(y, half[i] + half[i + 1], height, left=x[i] - half[i], color=colour, linewidth=0)
     clear = np.flatnonzero(frozen.clears)
-    text = f"{name}: clears by itself" if clear.size else f"{name}: no freeze clears by itself"
     inside = clear.size > 0.5 * len(x)
+    text = f"{name}: no freeze clears by itself"
+    if clear.size:
+        text = f"{name}: clears by itself" + ("" if inside else " only here \u2192")
     at = float(x[clear].mean()) if inside else 180.0
     axes.text(at, y, text, fontsize=8.5, weight="bold", color="white" if inside else colour,
               ha="center" if inside else "left", va="center")
@@ -151,7 +153,7 @@ def _trade(axes: Axes, shape: Shape) -> None:
     finite = values[np.isfinite(values)]
     high = max(float(finite.max(initial=1.0)) * 1.15, 1.0)
     low = min(float(finite.min(initial=0.0)), 0.0)
-    foot = low - 0.10 * (high - low)
+    foot = low - 0.28 * (high - low)
     axes.axhspan(0.0, high, color=TOO_LATE, zorder=0)
     axes.axhline(0.0, color=INK, linewidth=1.2)
     best, marks = chosen(shape), [*((g, w, AFTER) for g, w in sorted(worst.items())), (*start, BEFORE)]
@@ -161,8 +163,9 @@ def _trade(axes: Axes, shape: Shape) -> None:
         big = best is not None and pull is best.pull and colour == AFTER
         axes.plot([load], [likely], marker="D" if colour == BEFORE else "o", color=colour, markersize=9 if big else 7,
                   zorder=4)
-        axes.annotate(f"{load:.1f} g\n{units.speed(pull.speed_max_mps)}", (load, likely), (0, 9 + 24 * (n % 2)),
-                      textcoords="offset points", fontsize=8.0, color=colour, ha="center", va="bottom", zorder=5)
+        axes.annotate(f"{load:.1f} g, {units.speed(pull.speed_max_mps)}", (load, likely), (0, 9 + 13 * (n % 3)),
+                      textcoords="offset points", fontsize=8.0, color=colour, ha="center", va="bottom", zorder=5,
+                      bbox={"facecolor": "white", "edgecolor": "none", "alpha": 0.8, "pad": 0.8})
     axes.axhspan(foot - 0.06 * (high - low), foot + 0.045 * (high - low), color="#e3eef6", zorder=0)
     loads = [m[0] for m in marks]
     pad = 0.2 * (max(loads) - min(loads)) + 0.15

@@ -24,6 +24,17 @@ def late_words(value_s: float) -> str:
     return f"too late by {seconds(value_s)}" if value_s > 0.0 else f"{seconds(-value_s)} in hand"
 
 
+def worst_words(value_s: float) -> str:
+    """The likely observer's worst freeze as a clause."""
+    if np.isneginf(value_s):
+        return "every freeze clears the floor by itself"
+    if np.isposinf(value_s):
+        return "the likely observer never notices the worst freeze in time"
+    if value_s > 0.0:
+        return f"the worst freeze shows {seconds(value_s)} too late for the likely observer"
+    return f"the worst freeze leaves the likely observer {seconds(-value_s)}"
+
+
 def short_late(value_s: float) -> str:
     """The same for a table."""
     if np.isneginf(value_s):
@@ -46,13 +57,11 @@ def worst_at(frozen: Frozen) -> float:
 
 def headline(shape: Shape) -> str:
     """One sentence: what was found."""
-    best, before = chosen(shape), shape.start.worst_s[LIKELY]
-    was = f"the likely observer is {late_words(before)}" if before > 0.0 else f"worst freeze: {late_words(before)}"
+    best, before = chosen(shape), worst_words(float(shape.start.worst_s[LIKELY]))
     if best is None or best.frozen is None or best.pull is None:
-        return f"Nothing better found within the limits; the loop stays as it is (now {was})."
-    after = best.frozen.worst_s[LIKELY]
-    gain = late_words(after)
-    return f"A pull of at most {best.pull.load_factor:.1f} g: {gain}, in the worst freeze. As it was: {was}."
+        return f"Nothing better found within the limits; the loop stays as it is: {before}."
+    after = worst_words(float(best.frozen.worst_s[LIKELY]))
+    return f"Pulled otherwise, at {best.pull.load_factor:.1f} g at most: {after}. As it was: {before}."
 
 
 def limits_words(limits: Limits) -> str:
