@@ -8,11 +8,13 @@ import math
 import sys
 import time
 from collections.abc import Callable
+from functools import partial
 from pathlib import Path
 
 from render.command_gates import option
 
 CHART, TABLE, FIGURES = "shape", "shape.txt", "shape.json"
+MAPS = tuple(f"map_{when}{suffix}" for when in ("before", "after") for suffix in (".png", ".pdf", ".svg"))
 FIRST_RAD, LAST_RAD = math.pi, math.radians(345.0)
 
 
@@ -31,6 +33,7 @@ def add_shape(add: Callable[[str, str], argparse.ArgumentParser]) -> None:
     sub.add_argument("--trade", type=int, default=4, metavar="N", help="load factors to solve for (default 4)")
     sub.add_argument("--budget", type=int, default=6000, metavar="CASES",
                      help="freezes flown in the search (default 6000, about 30 a second and core pair)")
+    sub.add_argument("--no-maps", action="store_true", help="leave out the maps before and after")
     sub.add_argument("--seed", type=int, default=1, help="of the search's draws (default 1)")
     sub.add_argument("--out", type=Path, help="folder (default out/<scene>)")
     sub.add_argument("--force", action="store_true", help="replace what is there")
@@ -60,10 +63,11 @@ def shape_command(args: argparse.Namespace) -> int:
     import numpy as np
 
     from render.decide.shape import make_job
-    from render.decide.shape_scene import found_scene
+    from render.decide.shape_scene import found_scene, map_of
     from render.decide.shape_search import PEOPLE, find_shape
     from render.errors import LatepullError
     from render.files import claim_output, write_text
+    from render.output.map_chart import write_map_chart
     from render.output.shape_chart import write_shape_chart
     from render.output.shape_words import plain_shape, shape_text
     from scenes.reader import read_airframe, read_scene
@@ -88,7 +92,7 @@ def shape_command(args: argparse.Namespace) -> int:
     folder = args.out or Path("out") / scene.name
     force = args.force or args.out is None  # the default folder is the tool's own
     new = f"{scene.name}_shaped.yaml"
-    for name in (f"{CHART}.png", f"{CHART}.svg", TABLE, FIGURES, new):
+    for name in (f"{CHART}.png", f"{CHART}.svg", TABLE, FIGURES, new, *([] if args.no_maps else MAPS)):
         claim_output(folder / name, force=force)
     degree = math.pi / 180.0
     shape = find_shape(
@@ -96,14 +100,18 @@ def shape_command(args: argparse.Namespace) -> int:
         bend_gprad2=None if args.bend is None else args.bend / degree**2, budget=args.budget, seed=args.seed,
         steps=args.trade, tell=(tell := _tell()),
     )
-    if tell is not None:
-        sys.stderr.write("\r\033[K")
     made = [*write_shape_chart(shape, folder / CHART, force=force)]
     text, figures = shape_text(shape), plain_shape(shape)
     made.append(write_text(folder / TABLE, text, force=force))
     made.append(write_text(folder / FIGURES, json.dumps(figures, indent=2, allow_nan=False) + "\n", force=force))
     if shape.best is not None:
         made.append(write_text(folder / new, found_scene(args.scene, shape, folder), force=force))
+    if shape.best is not None and not args.no_maps:
+        for name, one in (("map_before", scene), ("map_after", read_scene(folder / new))):
+            found = map_of(one, read_airframe, job.ground, None if tell is None else partial(tell, name))
+            made += write_map_chart(found, folder / name, force=force)
+    if tell is not None:
+        sys.stderr.write("\r\033[K")
     if args.json:
         print(json.dumps({**figures, "written": [str(p) for p in made]}, allow_nan=False))
     else:

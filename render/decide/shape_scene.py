@@ -1,13 +1,21 @@
-"""The pull that a search found, as a scene file that builds on the one it began from."""
+"""The pull that a search found, as a scene file that builds on the one it began from; maps of both."""
 
 from __future__ import annotations
 
+import dataclasses
+from collections.abc import Callable
 from pathlib import Path
 
+from render.decide.brief import without_fault
+from render.decide.cases import CHUNK, join
+from render.decide.map import Map, grid_values, make_map, map_axes
 from render.decide.shape_search import Shape
-from scenes.model import Loop, Scene
+from render.decide.values import common_of, work_values
+from scenes.airframe import Airframe
+from scenes.model import DEG, Fault, Loop, Point, Scene
 from scenes.reader import read_scene
 from scenes.writer import plain_table, write_scene_like
+from terrain.ground import Ground
 
 
 def found_scene(base: str, shape: Shape, folder: Path) -> str:
@@ -26,3 +34,18 @@ def found_scene(base: str, shape: Shape, folder: Path) -> str:
         f"{script}.{shape.job.loop}.loop.load_factor": plain_table(step),
         "title": f"{scene.title.rstrip('.')[:150]}, with the pull that shape found",
     }, folder.resolve())
+
+
+def map_of(scene: Scene, airframe_of: Callable[[str], Airframe], ground: Ground,
+           progress: Callable[[int, int], None] | None = None) -> Map:
+    """The map of a scene over its default axes, of a freeze if the scene has no fault on the way down."""
+    if scene.fault is None or scene.briefed is not None:
+        scene = dataclasses.replace(without_fault(scene), fault=Fault("freeze", Point("loop_angle", 245.0 * DEG)))
+    mapped, x, y = map_axes(scene, None, None)
+    values, common = grid_values(x, y), common_of(mapped, airframe_of, ground)
+    parts = []
+    for at in range(0, len(values), CHUNK):
+        parts.append(work_values(common, values[at : at + CHUNK]))
+        if progress is not None:
+            progress(min(at + CHUNK, len(values)), len(values))
+    return make_map(scene, mapped, x, y, join(parts))
