@@ -16,6 +16,7 @@ from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Any
 
+from render.command_batch import add_batch, batch_command
 from render.command_gates import add_gates, gates_command
 from render.command_map import add_map, map_command
 from render.command_page import add_page, page_command
@@ -84,6 +85,7 @@ def build_parser() -> argparse.ArgumentParser:
     add_gates(add)
     add_scatter(add)
     add_map(add)
+    add_batch(add)
     add_shape(add)
     return parser
 
@@ -319,7 +321,8 @@ def _doctor(args: argparse.Namespace) -> int:
 
 COMMANDS: dict[str, Callable[[argparse.Namespace], int]] = {
     "check": _check, "fly": _fly, "film": _film, "still": _still, "list": _list, "schema": _schema, "doctor": _doctor,
-    "page": page_command, "gates": gates_command, "scatter": scatter_command, "map": map_command, "shape": shape_command,
+    "page": page_command, "gates": gates_command, "scatter": scatter_command, "map": map_command,
+    "batch": batch_command, "shape": shape_command,
 }
 
 

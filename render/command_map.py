@@ -30,10 +30,10 @@ def add_map(add: Callable[[str, str], argparse.ArgumentParser]) -> None:
 
 
 class CaseBar:
-    """A bar with cases done and time left on stderr, where somebody watches."""
+    """A bar with cases (or other things) done and time left on stderr, where somebody watches."""
 
-    def __init__(self) -> None:
-        self._watched, self._begun, self._had = sys.stderr.isatty(), time.monotonic(), 0
+    def __init__(self, what: str = "cases") -> None:
+        self._what, self._watched, self._begun, self._had = what, sys.stderr.isatty(), time.monotonic(), 0
 
     def show(self, done: int, total: int) -> None:
         """So many of all cases are done; the first call says how many were done before."""
@@ -45,7 +45,7 @@ class CaseBar:
         new = done - self._had
         left = f"{spent / new * (total - done):5.0f} s left" if new > 0 else "   … s left"
         bar = "#" * int(30 * done / max(total, 1))
-        sys.stderr.write(f"\r[{bar:<30}] {done:,}/{total:,} cases, {left} " + ("\n" if done >= total else ""))
+        sys.stderr.write(f"\r[{bar:<30}] {done:,}/{total:,} {self._what}, {left} " + ("\n" if done >= total else ""))
         sys.stderr.flush()
 
     def note(self, text: str) -> None:

@@ -7,6 +7,7 @@ others; versions and source are compared between this machine and every worker, 
 from __future__ import annotations
 
 import hashlib
+import threading
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 from pathlib import Path
@@ -20,6 +21,7 @@ Work = Callable[[Any, Any], Result]
 """A pure function at the top of a module: what all chunks share, then the chunk."""
 
 CONNECT_S = 10.0
+_ALONE = threading.Lock()
 RETRIES = 3  # how often a chunk is begun again after losing its worker or machine trouble there
 
 
@@ -41,12 +43,16 @@ class Runner(Protocol):
         ...
 
 
-def source_hash() -> str:
-    """SHA-256 over the source of everything that decides a figure, so that equal versions mean equal code."""
+def source_hash(*, whole: bool = False) -> str:
+    """SHA-256 over the source of everything that decides a figure, so that equal versions mean equal code.
+
+    whole: over all of the program, pictures and outputs too.
+    """
     root = Path(__file__).resolve().parents[2]
     digest = hashlib.sha256()
-    rooms = ("terrain", "scenes", "render/flight", "render/margin", "render/sight", "render/decide")
-    files = [f for room in rooms for f in sorted((root / room).rglob("*.py"))]
+    rooms = ("terrain", "scenes", "render") if whole else (
+        "terrain", "scenes", "render/flight", "render/margin", "render/sight", "render/decide")
+    files = [f for room in rooms for f in sorted((root / room).rglob("*")) if f.suffix in (".py", ".glsl")]
     for file in [*files, root / "render" / "frames.py", root / "render" / "study.py"]:
         digest.update(file.relative_to(root).as_posix().encode() + b"\0" + file.read_bytes())
     return digest.hexdigest()[:16]
@@ -90,7 +96,9 @@ def _checked(work: Work[Any], common: Any, chunk: Any, mine: dict[str, str]) -> 
     found = differences(mine, marks())
     if found:
         return VersionsDiffer("a worker joined with other versions: " + "; ".join(found))
-    return work(common, chunk)
+    # the simplest of numba's ways to use all cores can't be entered by two threads of a worker at once
+    with _ALONE:
+        return work(common, chunk)
 
 
 class Cluster:
