@@ -60,6 +60,7 @@ class Shape:
     """What a search found: the loop as it was, the trade over load factor, which of it is best (None: none)."""
 
     job: Job
+    limits: Limits
     start_pull: Pull
     start: Frozen  # at the fine freeze points, every slot
     within: bool  # whether the loop as it was keeps the limits
@@ -82,6 +83,8 @@ def find_shape(
 ) -> Shape:
     """Seek the pull whose worst freeze is least late, for ``steps`` load factors up to the greatest allowed.
 
+    Where every freeze clears by itself within one, the least that does so is sought instead of higher ones.
+
     Limits not given are the scene's own. budget: freezes flown in all searches together.
     Raises LatepullError: the loop can't close within the load factor; FlightError: it can't be flown as it is.
     """
@@ -97,36 +100,34 @@ def find_shape(
     start = freeze_all(job, [job.scene], fine)[0]
     seeds: list[Array] = [_sampled(job, start_pull)]
     plain, flown = plain_pulls(job, limits, start_pull)
-    if plain:
-        seeds += plain
-        least = max(least, flown)
-    lowest = min(LEAST_OVER * least, limits.load_factor)
-    loads = np.geomspace(lowest, limits.load_factor, steps) if steps > 1 else np.array([limits.load_factor])
+    seeds += plain
+    lowest = 0.5 * (least + flown) if plain else LEAST_OVER * least
+    ladder = np.geomspace(min(lowest, limits.load_factor), limits.load_factor, steps)
+    if steps == 1:
+        ladder = np.array([limits.load_factor])
     trade: list[Trade] = []
     spent = 2 * len(fine)
-    for n, most in enumerate(loads):
-        mine = dataclasses.replace(limits, load_factor=float(most))
-        share = max((budget - spent) // (len(loads) - n), 0)
-        search = Search(job, mine, start_pull, seed + n, share, f"within {most:.1f} g", tell)
-        before = trade[-1] if trade else None
-        if before is not None and before.frozen is not None and search.reached(before.frozen):
-            trade.append(dataclasses.replace(before, limits=mine))  # nothing is left to gain
-            continue
+    for n in range(steps):
+        most = _next(trade, ladder, least)
+        mine = dataclasses.replace(limits, load_factor=most)
+        search = Search(job, mine, start_pull, seed + n, max((budget - spent) // (steps - n), 0), f"within {most:.2f} g",
+                        tell)
         found = search.run(seeds)
         spent += search.spent
-        if before is not None and before.frozen is not None and (
-            found.frozen is None or found.frozen.score_s > before.frozen.score_s
-        ):
-            found = dataclasses.replace(before, limits=mine)
+        below = [item for item in trade if item.limits.load_factor < most and _score(item) < _score(found)]
+        if below:
+            # what keeps a lower limit keeps this one
+            found = dataclasses.replace(min(below, key=_score), limits=mine)
         trade.append(found)
         if found.pull is not None:
             seeds.append(_sampled(job, found.pull))
+    trade.sort(key=lambda item: item.limits.load_factor)
     best = None
     for n, item in enumerate(trade):
         ahead = start.score_s if best is None else _score(trade[best])
         if _score(item) < ahead - BETTER_S:
             best = n
-    return Shape(job, start_pull, start, start_pull.excess(limits) == 0.0, tuple(trade), best, spent, seed)
+    return Shape(job, limits, start_pull, start, start_pull.excess(limits) == 0.0, tuple(trade), best, spent, seed)
 
 
 def plain_pulls(job: Job, limits: Limits, start: Pull) -> tuple[list[Array], float]:
@@ -143,6 +144,16 @@ def plain_pulls(job: Job, limits: Limits, start: Pull) -> tuple[list[Array], flo
     good = [i for i, p in enumerate(pulls) if p.excess(search.tight) == 0.0]
     good.sort(key=lambda i: pulls[i].load_factor)
     return [_sampled(job, pulls[i]) for i in good[:4]], min((pulls[i].load_factor for i in good), default=np.inf)
+
+
+def _next(trade: Sequence[Trade], ladder: Array, least: float) -> float:
+    """The next load factor of a trade: up the ladder until every freeze clears, then between that and what fails."""
+    clear = [item for item in trade if item.frozen is not None and bool(np.all(item.frozen.clears))]
+    if not clear:
+        return float(ladder[len(trade)])
+    high = min(item.pull.load_factor for item in clear if item.pull is not None)
+    low = max([least, *(item.limits.load_factor for item in trade if item not in clear)])
+    return float(np.sqrt(min(low, high) * high))
 
 
 def _score(item: Trade) -> float:
@@ -171,10 +182,6 @@ class Search:
         self.spent = 0
         self.barren = 0
         self.best_score, self.best_load = np.inf, np.array([])
-
-    def reached(self, frozen: Frozen) -> bool:
-        """Whether nothing is left to gain."""
-        return frozen.score_s <= self.enough
 
     def scenes(self, loads: Array) -> list[Scene]:
         """Candidates as scenes; loads (N, D)."""

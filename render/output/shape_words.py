@@ -81,7 +81,7 @@ def pull_words(pull: Pull, units: Units) -> str:
 def shape_text(shape: Shape) -> str:
     """Everything as text: the sentence, limits, demand, freeze points before and after, the trade."""
     units, best = Units(shape.job.scene.film.units), chosen(shape)
-    out = [shape.job.scene.title, "", headline(shape), "", f"limits: {limits_words(shape.trade[-1].limits)}"]
+    out = [shape.job.scene.title, "", headline(shape), "", f"limits: {limits_words(shape.limits)}"]
     if not shape.within:
         out.append("the loop as it was does not keep these limits itself")
     out.append(f"as it was: {pull_words(shape.start_pull, units)}")
@@ -147,7 +147,7 @@ def _frozen(frozen: Frozen | None) -> dict[str, Any] | None:
 
 def plain_shape(shape: Shape) -> dict[str, Any]:
     """Everything as plain data for shape.json: SI, units in key names; "clears" and "never" stand for no number."""
-    limits = shape.trade[-1].limits
+    limits = shape.limits
 
     def demand(item: Trade) -> dict[str, float] | None:
         if item.scene is None:
