@@ -80,12 +80,14 @@ def fine_points(freeze_rad: Array, finer: int = FINER) -> Array:
 def find_shape(
     job: Job, *, load_factor: float | None = None, onset_gps: float | None = None, slope_gprad: float | None = None,
     bend_gprad2: float | None = None, budget: int = 8000, seed: int = 1, steps: int = 4, tell: Tell | None = None,
+    people: int = PEOPLE,
 ) -> Shape:
     """Seek the pull whose worst freeze is least late, for ``steps`` load factors up to the greatest allowed.
 
     Where every freeze clears by itself within one, the least that does so is sought instead of higher ones.
 
-    Limits not given are the scene's own. budget: freezes flown in all searches together.
+    Limits not given are the scene's own. budget: freezes flown in all searches together; people: pulls in a
+    generation.
     Raises LatepullError: the loop can't close within the load factor; FlightError: it can't be flown as it is.
     """
     from render.errors import FlightError
@@ -110,8 +112,8 @@ def find_shape(
     for n in range(steps):
         most = _next(trade, ladder, least)
         mine = dataclasses.replace(limits, load_factor=most)
-        search = Search(job, mine, start_pull, seed + n, max((budget - spent) // (steps - n), 0), f"within {most:.2f} g",
-                        tell)
+        share = max((budget - spent) // (steps - n), 0)
+        search = Search(job, mine, start_pull, seed + n, share, f"within {most:.2f} g", tell, people)
         found = search.run(seeds)
         spent += search.spent
         below = [item for item in trade if item.limits.load_factor < most and _score(item) < _score(found)]
@@ -136,8 +138,8 @@ def plain_pulls(job: Job, limits: Limits, start: Pull) -> tuple[list[Array], flo
     """
     search = Search(job, limits, start, 0, 0, "", None)
     first = float(np.interp(TOP_RAD, start.angle_rad, start.flown_load))
-    held = np.geomspace(max(2.0, 0.45 * limits.load_factor), limits.load_factor, 8)
-    rise = np.array([0.4, 0.6, 0.8, 0.95]) * limits.slope_gprad
+    held = np.geomspace(max(2.0, 0.45 * limits.load_factor), limits.load_factor, 7)
+    rise = np.array([0.5, 0.7, 0.95]) * limits.slope_gprad
     loads = np.array([np.clip(first + slope * (job.knots_rad - TOP_RAD), LEAST_LOAD, most)
                       for most in held for slope in rise])
     pulls = measure_pulls(job, search.scenes(loads))
@@ -170,7 +172,7 @@ class Search:
     """One search within one load factor."""
 
     def __init__(self, job: Job, limits: Limits, start: Pull, seed: int, budget: int, what: str,
-                 tell: Tell | None) -> None:
+                 tell: Tell | None, people: int = PEOPLE) -> None:
         self.job, self.limits, self.budget, self.what, self.tell = job, limits, budget, what, tell
         self.tight = Limits(*(getattr(limits, f.name) * TIGHTER for f in dataclasses.fields(limits)))
         loop = job.scene.script[job.loop]
@@ -178,6 +180,7 @@ class Search:
         self.end_load = loop.load_factor[-1] * start.scale
         # a freeze that clears as much as the loop itself at its base leaves nothing to gain
         self.enough = CLEAR_S - max((loop.close_at_m or 0.0) - job.scene.floor_m, 0.0) / CLEAR_M_PER_S
+        self.people = people
         self.rng = np.random.default_rng(seed)
         self.spent = 0
         self.barren = 0
@@ -207,9 +210,9 @@ class Search:
         return score
 
     def _first(self, seeds: Sequence[Array]) -> Array:
-        """The first generation: of many drawn, those that keep the limits best; (PEOPLE, D)."""
+        """The first generation: of many drawn, those that keep the limits best; (people, D)."""
         knots, most = self.job.knots_rad, self.limits.load_factor
-        n = DRAWS * PEOPLE
+        n = DRAWS * self.people
         u = np.clip((knots - knots[0]) / (330.0 * DEG - knots[0]), 0.0, 1.1)
         peak = self.rng.uniform(0.6, 1.0, (n, 1)) * most
         begin = LEAST_LOAD + self.rng.uniform(0.0, 1.0, (n, 1)) * (peak - LEAST_LOAD)
@@ -226,7 +229,7 @@ class Search:
         drawn = np.clip(np.concatenate([np.array(near), drawn]), LEAST_LOAD, most)
         excess = np.array([p.excess(self.tight) for p in measure_pulls(self.job, self.scenes(drawn))])
         self.spent += PULL_COSTS * len(drawn)
-        return drawn[np.argsort(excess, kind="stable")[:PEOPLE]]
+        return drawn[np.argsort(excess, kind="stable")[: self.people]]
 
     def _done(self, budget: float) -> bool:
         return self.best_score <= self.enough or self.spent >= budget or self.barren >= BARREN

@@ -44,7 +44,7 @@ def hero() -> Job:
 
 @lru_cache
 def hero_shape() -> Shape:
-    return find_shape(hero(), load_factor=4.8, budget=400, seed=3, steps=1)
+    return find_shape(hero(), load_factor=4.8, budget=150, seed=3, steps=1, people=6)
 
 
 def test_a_demand_is_put_into_the_back_half_alone() -> None:
@@ -118,7 +118,7 @@ def test_with_nothing_to_gain_it_says_so_and_keeps_the_loop() -> None:
     job = jet_job()
     own = measure_pulls(job, [job.scene])[0]
     # no slope left to anything: only gentler pulls than are needed to close would keep it
-    shape = find_shape(job, slope_gprad=0.2 * own.slope_gprad, budget=200, steps=1)
+    shape = find_shape(job, slope_gprad=0.2 * own.slope_gprad, budget=60, steps=1, people=6)
     assert shape.best is None and shape.trade[0].scene is None and not shape.within
     assert "Nothing better" in shape_text(shape)
     plain = plain_shape(shape)
@@ -126,7 +126,7 @@ def test_with_nothing_to_gain_it_says_so_and_keeps_the_loop() -> None:
 
 
 def test_the_same_seed_gives_the_same(tmp_path: Path) -> None:
-    again = find_shape(hero(), load_factor=4.8, budget=400, seed=3, steps=1)
+    again = find_shape(hero(), load_factor=4.8, budget=150, seed=3, steps=1, people=6)
     assert json.dumps(plain_shape(again)) == json.dumps(plain_shape(hero_shape()))
     png, svg = write_shape_chart(hero_shape(), tmp_path / "shape")
     assert png.stat().st_size > 20_000 and "<svg" in svg.read_text(encoding="utf-8")[:2000]
