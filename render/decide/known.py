@@ -12,7 +12,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from render.frames import Array
-from render.sight.accumulate import LAPSE_ENDS_S, Passes, accumulate, bound_for, drive, first_reach
+from render.sight.accumulate import LAPSE_ENDS_S, accumulate, bound_for, drive, first_reach
 from render.sight.evidence import Evidence
 from render.sight.observers import TABLE, VISUAL, Observer
 from render.types import OBSERVERS
@@ -86,18 +86,20 @@ def _step(time_s: Array) -> float:
 
 
 def known_in_passes(
-    passes: Sequence[PassEvidence | None], bound: float, attention: Array, seed: int, slot: int, who: Observer = LIKELY
-) -> Passes:
+    passes: Sequence[PassEvidence | None], numbers: Sequence[int], bound: float, attention: Array, seed: int, slot: int,
+    who: Observer = LIKELY,
+) -> Array:
     """When he knew, in each pass, s from its start, (N,): infinity where never or where there is no evidence.
 
-    attention (N,): by what part more or less each pass's noise off the gaze is (1: as the observer's).
+    numbers (N,): which passes of the study they are, each with its own stream of random numbers. attention (N,): by
+    what part more or less each pass's noise off the gaze is (1: as the observer's).
     """
     when = np.full(len(passes), np.inf)
-    for i, one in enumerate(passes):
+    for i, (one, number) in enumerate(zip(passes, numbers, strict=True)):
         if one is None or one.time_s.size < 2:
             continue
         e = one.evidence
-        rng = np.random.default_rng(np.random.SeedSequence([seed, 2, slot, i]))
+        rng = np.random.default_rng(np.random.SeedSequence([seed, 2, slot, number]))
         offset = rng.normal(size=(1, len(e.names)))
         shut = _shut(e, np.array([rng.random() < who.lapse.value]))
         sensory = sensory_of(e, who)
@@ -106,4 +108,4 @@ def known_in_passes(
         flow_in = drive(e.difference, sensory, e.technique, offset, e.there & ~shut)
         gathered = accumulate(flow_in, _step(one.time_s), rng.normal(size=(1, one.time_s.size)))
         when[i] = first_reach(one.time_s, gathered, bound)[0]
-    return Passes(when, bound, np.nan)
+    return when

@@ -38,11 +38,11 @@ class Draws:
         freeze_arrays(self)
 
 
-def draw(passes: int, slots: int, seed: int) -> Draws:
-    """The draws of so many passes; those of a longer study begin with those of a shorter one."""
+def draw(passes: int, slots: int, seed: int, first: int = 0) -> Draws:
+    """The draws of so many passes from the ``first`` on; a longer study begins with the passes of a shorter one."""
     common, own = np.empty((passes, len(COMMON))), np.empty((passes, slots, len(OWN)))
     for i in range(passes):
-        rng = np.random.default_rng(np.random.SeedSequence([seed, 0, i]))
+        rng = np.random.default_rng(np.random.SeedSequence([seed, 0, first + i]))
         common[i] = rng.standard_normal(len(COMMON))
         own[i] = rng.standard_normal((slots, len(OWN)))
     return Draws(seed, common, own)

@@ -9,19 +9,17 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy import stats
 
-from render.decide.cases import GATE_COLUMNS, GATES, Cases, work_cases
-from render.decide.known import LIKELY, PassEvidence, calibrate, known_in_passes, with_technique
-from render.decide.passes import COMMON, OWN, draw, pass_scenes, reaction_s
-from render.decide.technique import healthy_evidence, technique_scatter
+from render.decide.cases import GATE_COLUMNS, GATES, Cases
+from render.decide.known import LIKELY
+from render.decide.passes import COMMON, OWN, Draws, draw, reaction_s
+from render.decide.scatter_work import CHUNK, PassWork, fly_passes, prepare
 from render.errors import LatepullError
 from render.frames import Array
-from render.sight.evidence import Evidence
 from render.types import OBSERVERS, freeze_arrays
 from scenes.airframe import Airframe
 from scenes.model import Scatter, Scene
 from terrain.ground import Ground
 
-TECHNIQUE_PASSES = 60  # healthy passes that a team's technique scatter is taken from
 CONFIDENCE = 0.95
 
 
@@ -99,108 +97,59 @@ class ScatterStudy:
 
 def study_scatter(
     scene: Scene, scatter: Scatter, airframe_of: Callable[[str], Airframe], ground: Ground, *, passes: int, seed: int,
-    measured: bool = False, chunk: int = 64, count: Callable[[int], None] | None = None, technique: bool = True,
+    measured: bool = False, technique: bool = True, chunk: int = CHUNK,
 ) -> ScatterStudy:
-    """Fly so many passes of a scene with a team's scatter. The same for a seed, whatever the chunk.
+    """Fly so many passes of a scene with a team's scatter, here. The same for a seed, whatever the chunk.
 
     measured: the scatter comes from recordings, so that the technique it shows takes the place of the guesses;
     technique: whether it is worked out at all (otherwise the table's guesses stand). Raises LatepullError for a
     scene without a fault or without wings, or if no pass can be flown.
     """
-    if scene.briefed is not None or scene.fault is None:
-        raise LatepullError(f"'{scene.name}' has no fault: a scatter study asks in how many passes one is known "
-                            "in time")
-    if not scene.formation:
-        raise LatepullError(f"'{scene.name}' has no wing pilots")
-    draws = draw(passes, len(scene.formation), seed)
-    kept: dict[tuple[int, int], PassEvidence] = {}
+    work = prepare(scene, scatter, airframe_of, ground, seed, measured=measured, technique=technique)
+    return sum_up(work, *fly_passes(work, passes, chunk=chunk))
 
-    def sink(case: int, aircraft: int, time_s: Array, evidence: Evidence) -> None:
-        if aircraft > 0:
-            kept[case, aircraft - 1] = _trimmed(time_s, evidence)
 
-    nominal = work_cases([scene], airframe_of, ground)
-    if nominal.error[0] is not None:
-        raise LatepullError(nominal.error[0])
-    scenes = pass_scenes(scene, scatter, draws)
-    cases = _work(scenes, airframe_of, ground, chunk, sink, count)
+def sum_up(work: PassWork, cases: Cases, known_s: Array) -> ScatterStudy:
+    """The study of passes that were flown: cases (N), when each wing pilot knew (N, S).
+
+    Raises LatepullError if none could be flown.
+    """
+    scene = work.common.scene
     flown = np.flatnonzero(cases.flown)
     if flown.size == 0:
         raise LatepullError(f"no pass of '{scene.name}' could be flown with this scatter: {cases.error[0]}")
-    own: tuple[dict[str, float], ...] = tuple({} for _ in scene.formation)
-    if technique and scatter != Scatter():
-        some = flown[:TECHNIQUE_PASSES]
-        own = technique_scatter(scene, float(nominal.loop_scale[0]), [scenes[int(i)] for i in some],
-                                cases.loop_scale[some], float(nominal.fault_s[0]), airframe_of, ground)
-    healthy = healthy_evidence(scene, float(nominal.loop_scale[0]), airframe_of, ground)
-    slots = tuple(
-        _slot(k, scene, scatter, cases, flown, draws.common, draws.own[:, k], kept, own[k], healthy[k], seed, measured)
-        for k in range(len(scene.formation))
-    )
+    draws = draw(len(cases), len(scene.formation), work.seed)
+    slots = tuple(_slot(k, work, cases, known_s[:, k], flown, draws) for k in range(len(scene.formation)))
     bottom = cases.gates[flown][:, GATES.index("bottom"), GATE_COLUMNS.index("height_m")]
     return ScatterStudy(
-        scene, scatter, measured, seed, passes, tuple(e for e in cases.error if e is not None),
+        scene, work.scatter, work.measured, work.seed, len(cases), tuple(e for e in cases.error if e is not None),
         cases.gates[flown], share(int(np.sum(bottom <= 0.0)), flown.size), slots,
     )
 
 
-def _work(
-    scenes: list[Scene], airframe_of: Callable[[str], Airframe], ground: Ground, chunk: int,
-    sink: Callable[[int, int, Array, Evidence], None], count: Callable[[int], None] | None,
-) -> Cases:
-    last = 0
-
-    def progress(done: int, _: int) -> None:
-        nonlocal last
-        if count is not None:
-            count(done - last)
-        last = done
-
-    return work_cases(scenes, airframe_of, ground, chunk=chunk, progress=progress, sink=sink)
-
-
-def _trimmed(time_s: Array, e: Evidence) -> PassEvidence:
-    """Evidence up to the last instant at which any cue can be had, so that it doesn't depend on its chunk."""
-    any_there = np.flatnonzero(np.any(e.there, axis=0))
-    n = int(any_there[-1]) + 1 if any_there.size else 0
-    return PassEvidence(time_s[:n].copy(), Evidence(
-        e.names, e.difference[:, :n].copy(), e.sigma[..., :n].copy(), e.technique[:, :n].copy(),
-        e.there[:, :n].copy(), e.time_to_ground_s[:n].copy()))
-
-
 def _slot(
-    k: int, scene: Scene, scatter: Scatter, cases: Cases, flown: NDArray[np.int_], common: Array, own: Array,
-    kept: Mapping[tuple[int, int], PassEvidence], technique: Mapping[str, float], healthy: tuple[Array, Evidence],
-    seed: int, measured: bool,
+    k: int, work: PassWork, cases: Cases, known_s: Array, flown: NDArray[np.int_], draws: Draws
 ) -> SlotScatter:
     """One slot's figures, over the passes that were flown."""
-    def mine(e: Evidence) -> Evidence:
-        return with_technique(e, technique, measured=measured)
-
-    bound, false_alarms = calibrate(PassEvidence(healthy[0], mine(healthy[1])), seed, k)
-    found = [kept.get((int(i), k)) for i in range(len(cases))]
-    evidence = [None if p is None else PassEvidence(p.time_s, mine(p.evidence)) for p in found]
-    # less attention is more noise
-    noise = np.exp(scatter.attention * own[:, OWN.index("attention")])
-    known = known_in_passes(evidence, bound, noise, seed, k).time_s
-    reaction = reaction_s(LIKELY.reaction.value, scatter.reaction, own[:, OWN.index("reaction")])
+    own = draws.own[:, k]
+    reaction = reaction_s(LIKELY.reaction.value, work.scatter.reaction, own[:, OWN.index("reaction")])
     floor, ground = (np.where(np.isnan(v[:, k]), np.inf, v[:, k]) for v in
                      (cases.last_pull_floor_s, cases.last_pull_ground_s))
+    acts = known_s + reaction
     with np.errstate(invalid="ignore"):
-        in_hand = np.where(np.isinf(floor), np.inf, floor - known - reaction)[flown]
+        in_hand = np.where(np.isinf(floor), np.inf, floor - acts)[flown]
     by_itself = np.isinf(floor[flown])
     n = flown.size
-    acts = (known + reaction)[flown]
     hits = np.isfinite(cases.contact_s[flown, k + 1])
     with np.errstate(invalid="ignore"):
         late = cases.lateness_s[flown, k]
-    observers = tuple(share(int(np.sum(by_itself | (late[:, o] <= 0.0))), n) for o in range(len(OBSERVERS)))
+    early, likely, last = (share(int(np.sum(by_itself | (late[:, o] <= 0.0))), n) for o in range(len(OBSERVERS)))
     return SlotScatter(
-        scene.formation[k].name, share(int(np.sum(by_itself)), n),
+        work.common.scene.formation[k].name, share(int(np.sum(by_itself)), n),
         share(int(np.sum(~by_itself & (in_hand >= 0.0))), n), share(int(np.sum(in_hand < 0.0)), n),
-        share(int(np.sum(hits & (acts > ground[flown]))), n), share(int(np.sum(hits)), n),
-        (observers[0], observers[1], observers[2]), in_hand, false_alarms, bound, dict(technique),
-        _influences(in_hand, common[flown], own[flown], scatter),
+        share(int(np.sum(hits & (acts > ground)[flown])), n), share(int(np.sum(hits)), n), (early, likely, last),
+        in_hand, work.false_alarms[k], work.bound[k], dict(work.technique[k]),
+        _influences(in_hand, draws.common[flown], own[flown], work.scatter),
     )
 
 

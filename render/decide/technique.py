@@ -14,6 +14,7 @@ from render.errors import FlightError
 from render.flight import records as r
 from render.flight import script as s
 from render.flight.batch import Raw
+from render.flight.closing import close_each
 from render.flight.inside import crossing, fly_far
 from render.flight.plan import DT_S, Plan
 from render.frames import Array
@@ -34,17 +35,17 @@ def heading_of(scene: Scene) -> float:
 
 
 def technique_scatter(
-    nominal: Scene, nominal_scale: float, passes: Sequence[Scene], scales: Array, at_s: float,
+    nominal: Scene, nominal_scale: float, passes: Sequence[Scene], at_s: float,
     airframe_of: Callable[[str], Airframe], ground: Ground,
 ) -> tuple[dict[str, float], ...]:
     """For each slot, what each cue of healthy passes differs by from the pass as briefed: cue -> one sigma.
 
     Root mean square over the passes at each instant from the point to the bottom (``at_s`` in the nominal pass; the
     same loop angle in the others if it lies in the loop), of that the median over the instants: where the g is let
-    go at the end, a second sooner or later is no technique. scales: of the back halves, (N,).
+    go at the end, a second sooner or later is no technique. Passes that can't be flown are left out.
     """
     whole = compile_brief(nominal, airframe_of)
-    plans = [compile_brief(p, airframe_of) for p in passes]
+    plans, scales = _closed([compile_brief(p, airframe_of) for p in passes])
     own = fly_far([whole], np.array([nominal_scale]), whole.longest_s)
     angle = float(own.a[0, round(at_s / DT_S), 0, r.A_LOOP])
     end = min(round(own.mem[0, s.M_SCRIPT_END_S] / DT_S), own.y.shape[1] - 1)
@@ -65,6 +66,13 @@ def technique_scatter(
                 sums[k - 1][name] = (total + np.sum(np.where(there, seen.difference[:, c], 0.0) ** 2, axis=0),
                                      n + np.sum(there, axis=0))
     return tuple({name: _typical(total, n) for name, (total, n) in slot.items()} for slot in sums)
+
+
+def _closed(plans: Sequence[Plan]) -> tuple[list[Plan], Array]:
+    """The plans whose loops close, and the scales of their back halves."""
+    scale, why = close_each(plans, plans[0].longest_s)
+    good = [i for i, reason in enumerate(why) if reason is None]
+    return [plans[i] for i in good], scale[good]
 
 
 def _typical(total: Array, n: Array) -> float:

@@ -3,16 +3,20 @@
 from __future__ import annotations
 
 import dataclasses
+import pickle
 from functools import lru_cache
+from pathlib import Path
 
 import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from render.decide import known
+from render.decide import known, scatter_work
+from render.decide.chunks import Folder, chunk_count
 from render.decide.passes import COMMON, OWN, draw, pass_scenes, reaction_s
 from render.decide.scatter import ScatterStudy, share, study_scatter
+from render.decide.scatter_work import fly_passes, prepare, work_passes
 from render.errors import LatepullError
 from render.study import work_through
 from scenes.model import Loop, Scatter, Scene, Slot
@@ -26,6 +30,7 @@ ONE = (Slot("right", 0.0, 14.0, 0.0),)
 @pytest.fixture(autouse=True)
 def few_calibration_passes(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr(known, "CALIBRATION_PASSES", 1000)
+    monkeypatch.setattr(scatter_work, "TECHNIQUE_PASSES", 8)
 
 
 def scene() -> Scene:
@@ -65,13 +70,35 @@ def study_of_24() -> ScatterStudy:
 
 
 def test_a_seed_gives_the_same_passes_whatever_the_chunk() -> None:
-    # technique is taken from the passes there are, so that it is left out where their number differs
-    one, other = flown(10, chunk=3, technique=False), flown(10, chunk=64, technique=False)
+    one, other = flown(10, chunk=3), flown(10, chunk=64)
     assert np.array_equal(one.gates, other.gates)
     assert one.slots[0].in_hand_s == pytest.approx(other.slots[0].in_hand_s, abs=1e-9)
-    fewer = flown(6, technique=False)
+    fewer = flown(6)
     assert fewer.slots[0].in_hand_s == pytest.approx(one.slots[0].in_hand_s[:6], abs=1e-9)
+    assert dict(fewer.slots[0].technique) == dict(one.slots[0].technique)
     assert not np.array_equal(one.gates, flown(10, seed=2, technique=False).gates)
+
+
+def test_interrupted_work_goes_on_from_its_finished_chunks(tmp_path: Path) -> None:
+    work = prepare(scene(), SPREAD, lambda _: invented_jet(), flat_ground(), 1, technique=False)
+    folder = Folder(tmp_path / "scatter.unfinished", "key", chunk_count(6, 2))
+
+    def interrupt(done: int, total: int) -> None:
+        if done == 4:
+            raise KeyboardInterrupt
+
+    with pytest.raises(KeyboardInterrupt):
+        fly_passes(work, 6, folder=folder, chunk=2, progress=interrupt)
+    assert len(list(folder.path.glob("*.npz"))) == 2
+    told: list[int] = []
+    cases, known_s = fly_passes(work, 6, folder=folder, chunk=2, resume=True, progress=lambda d, t: told.append(d))
+    assert told == [4, 6] and not folder.path.exists()
+    straight, known_straight = fly_passes(work, 6)
+    # a chunk is a pure function of what can be sent to another machine
+    _, there = work_passes(pickle.loads(pickle.dumps(work)), (2, 2))
+    assert there == pytest.approx(known_straight[2:4])
+    assert known_s == pytest.approx(known_straight)
+    assert cases.gates == pytest.approx(straight.gates)
 
 
 def test_counts_add_up_and_spread_shows_at_the_gates() -> None:
