@@ -113,7 +113,11 @@ def read_jobs(path: Path, parser: argparse.ArgumentParser) -> list[Job]:
         try:
             text = scene_text(argv[1])
         except SceneError as exc:
-            log.complaints.extend(exc.complaints)
+            for c in exc.complaints:
+                if c.file:
+                    log.complaints.append(c)
+                else:
+                    log.add(node.mark, f"{where}.{kind}", c.read, c.wanted, c.nearest)
             continue
         base = name or f"{kind}_{Path(argv[1]).stem}"
         names[base] = names.get(base, 0) + 1
