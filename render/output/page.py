@@ -50,12 +50,15 @@ class PageScene:
 
 
 def find_extras(folder: str | Path) -> tuple[Path, ...]:
-    """Pictures of maps and gates that lie in a scene's folder: readable ones, a drawing (svg) before a png of it."""
+    """Pictures of maps and gates that lie in a scene's folder, or in one of theirs in it, such as map/map.svg.
+
+    Readable ones; a drawing (svg) before a png of it.
+    """
     folder = Path(folder)
     found: dict[str, Path] = {}
     for pattern, _ in EXTRAS:
         for suffix in (".svg", ".png"):
-            for path in sorted(folder.glob(pattern + suffix)):
+            for path in sorted([*folder.glob(pattern + suffix), *folder.glob(f"{pattern}/{pattern}{suffix}")]):
                 if path.stem not in found and _readable(path):
                     found[path.stem] = path
     return tuple(found.values())

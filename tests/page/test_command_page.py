@@ -264,3 +264,9 @@ def test_maps_and_cards_are_taken_if_they_can_be_read(tmp_path: Path) -> None:
 def test_a_page_that_is_there_may_not_be_overwritten(scenes: Any, page_folder: Path) -> None:
     with pytest.raises(OutputExists):
         write_page(scenes, page_folder, made="now")
+
+
+def test_a_map_is_found_in_its_own_folder(tmp_path: Path) -> None:
+    (tmp_path / "map").mkdir()
+    (tmp_path / "map" / "map.svg").write_text('<svg xmlns="http://www.w3.org/2000/svg"/>', encoding="utf-8")
+    assert find_extras(tmp_path) == (tmp_path / "map" / "map.svg",)
