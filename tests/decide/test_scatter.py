@@ -20,6 +20,7 @@ from render.decide.scatter_work import fly_passes, prepare, work_passes
 from render.errors import LatepullError
 from render.study import work_through
 from scenes.model import Loop, Scatter, Scene, Slot
+from terrain.ground import Ground
 from tests.flight.made import flat_ground, freeze, invented_jet, loop_scene
 
 SPREAD = Scatter(entry_speed_mps=2.0, entry_height_m=6.0, load_factor=0.04, base_m=6.0, power=0.02, wind_mps=1.5,
@@ -80,7 +81,8 @@ def test_a_seed_gives_the_same_passes_whatever_the_chunk() -> None:
 
 
 def test_interrupted_work_goes_on_from_its_finished_chunks(tmp_path: Path) -> None:
-    work = prepare(scene(), SPREAD, lambda _: invented_jet(), flat_ground(), 1, technique=False)
+    level = Ground("level", np.zeros((1, 1)), 0.0, 0.0, 1.0)
+    work = prepare(scene(), SPREAD, lambda _: invented_jet(), level, 1, technique=False)
     folder = Folder(tmp_path / "scatter.unfinished", "key", chunk_count(6, 2))
 
     def interrupt(done: int, total: int) -> None:
