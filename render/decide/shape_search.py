@@ -209,7 +209,7 @@ class Search:
             self.tell(self.what, min(self.spent, self.budget), self.budget)
         return score
 
-    def _first(self, seeds: Sequence[Array]) -> Array:
+    def first(self, seeds: Sequence[Array]) -> Array:
         """The first generation: of many drawn, those that keep the limits best; (people, D)."""
         knots, most = self.job.knots_rad, self.limits.load_factor
         n = DRAWS * self.people
@@ -257,7 +257,7 @@ class Search:
         many = [(LEAST_LOAD, self.limits.load_factor)] * len(self.job.knots_rad)
         split = self.spent + (1.0 - POLISH) * (until - self.spent)
         differential_evolution(
-            lambda x: self.scores(x.T), many, init=self._first(seeds), maxiter=200, mutation=(0.4, 0.9),
+            lambda x: self.scores(x.T), many, init=self.first(seeds), maxiter=200, mutation=(0.4, 0.9),
             recombination=0.8, rng=self.rng, polish=False, tol=0.0, vectorized=True, updating="deferred",
             callback=lambda intermediate_result: self._done(split),
         )
