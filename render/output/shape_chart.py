@@ -11,6 +11,7 @@ from matplotlib.axes import Axes
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.backends.backend_svg import FigureCanvasSVG
 from matplotlib.figure import Figure
+from matplotlib.ticker import MaxNLocator
 
 from render.decide.shape import LIKELY, Frozen
 from render.decide.shape_search import Shape, Trade
@@ -174,6 +175,7 @@ def _trade(axes: Axes, shape: Shape) -> None:
     axes.text(min(loads) - 0.9 * pad, foot - 0.07 * (high - low), "every freeze clears by itself", fontsize=8.0,
               color=AFTER, va="top", ha="left")
     axes.locator_params(axis="x", nbins=4)
+    axes.yaxis.set_major_locator(MaxNLocator(6, integer=True))
     ticks = [t for t in axes.get_yticks() if low - 1e-9 <= t <= high]
     axes.set_yticks(ticks, [f"{t:+.0f}" if t else "0" for t in ticks])
 
