@@ -1,4 +1,4 @@
-"""Speed of films and stills, as ratios within one run; by hand: ``pytest -m benchmark -s tests/benchmarks``.
+"""Speed of films and stills, as ratios within one run; by hand: ``pytest -n 0 -m benchmark -s tests/benchmarks``.
 
 Every film is made by processes of its own, start-up and encoding included: late_freeze, 12 s at 30 frames a second
 (LATEPULL_BENCH_S for another length). ``ours``: overlay and smoothed silhouettes. ``plain``: no overlay. ``raw``: raw
