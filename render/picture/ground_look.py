@@ -3,14 +3,19 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
+from vtkmodules.vtkCommonDataModel import vtkPolyData
 from vtkmodules.vtkRenderingCore import vtkActor
 
+from render.frames import Array
 from render.picture.ground_mesh import ground_mesh
 from render.picture.light import Light
-from render.picture.shading import constants, glsl, mesh, shaded_actor
+from render.picture.shading import cells, constants, glsl, mesh, shaded_actor
 from terrain.ground import Ground
 from terrain.land import Airfield, Land
 
+HILLY_M = 30.0  # ground with less relief hides nothing of itself that would cost
+SORT_AGAIN_M = 250.0
 _START = """
   vec3 ray = place - eye;
   float longest, px = footprint(place.xy, longest);
@@ -77,25 +82,43 @@ _PIECES = {
 }
 
 
-def ground_actors(ground: Ground, land: Land, light: Light) -> list[vtkActor]:
-    """The surface of a ground with a land's look, to be given its light and an eye (see ``land.set_light``)."""
-    shape = ground_mesh(ground, land)
-    head = constants(_constants(land))
-    head += f"#define GROUND_LIGHT {'flatLight' if shape.level else _RELIEF_LIGHT}\n"
-    actors = []
-    for kind, triangles in shape.triangles.items():
-        used, renumbered = np.unique(triangles, return_inverse=True)
-        code = head + glsl("common") + ("" if shape.level else "in float slopeLight;\n") + _field_colour(land)
-        code += "".join(glsl(piece) for piece in _PIECES[kind])
-        attributes = {} if shape.level else {"sunOnSlope": np.maximum(shape.normals[used] @ light.sun_d, 0.0)[:, None]}
+class GroundLook:
+    """The surface of a ground with a land's look, to be given its light (see ``land.set_light``) and an eye.
+
+    Hills hide one another: their triangles are drawn nearest first, so that hidden pixels are not shaded. The
+    picture does not depend on that order.
+    """
+
+    def __init__(self, ground: Ground, land: Land, light: Light) -> None:
+        shape = ground_mesh(ground, land)
+        self._hilly = float(np.ptp(ground.heights_m)) > HILLY_M
+        self._sorted_at: Array | None = None
+        self._parts: list[tuple[vtkPolyData, NDArray[np.int64], Array]] = []
+        self.actors: list[vtkActor] = []
+        head = constants(_constants(land))
+        head += f"#define GROUND_LIGHT {'flatLight' if shape.level else _RELIEF_LIGHT}\n"
+        head += glsl("common") + ("" if shape.level else "in float slopeLight;\n") + _field_colour(land)
         vertex = glsl("rim") + ("" if shape.level else "in float sunOnSlope;\nout float slopeLight;\n")
         position = "setRim(place);\n" + ("" if shape.level else "slopeLight = sunOnSlope;\n")
-        actors.append(
-            shaded_actor(
-                mesh(shape.points[used], renumbered.reshape(-1, 3)), code, _MAINS[kind], attributes, vertex, position
-            )
-        )
-    return actors
+        slope = np.maximum(shape.normals @ light.sun_d, 0.0)[:, None]
+        for kind, every in shape.triangles.items():
+            used, renumbered = np.unique(every, return_inverse=True)
+            points, triangles = shape.points[used], renumbered.reshape(-1, 3)
+            data = mesh(points, triangles)
+            code = head + "".join(glsl(piece) for piece in _PIECES[kind])
+            attributes = {} if shape.level else {"sunOnSlope": slope[used]}
+            self.actors.append(shaded_actor(data, code, _MAINS[kind], attributes, vertex, position))
+            self._parts.append((data, triangles, points[triangles].mean(axis=1)))
+
+    def set_eye(self, eye_d: Array) -> None:
+        """Put the triangles of hilly ground in order anew once the eye has moved on."""
+        if not self._hilly:
+            return
+        if self._sorted_at is not None and np.linalg.norm(eye_d - self._sorted_at) < SORT_AGAIN_M:
+            return
+        self._sorted_at = np.array(eye_d)
+        for data, triangles, middles in self._parts:
+            data.SetPolys(cells(triangles[np.argsort(np.sum((middles - eye_d) ** 2, axis=1), kind="stable")]))
 
 
 def _field_colour(land: Land) -> str:

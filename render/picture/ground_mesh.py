@@ -16,13 +16,15 @@ from scipy.spatial import Delaunay
 from render.frames import Array
 from terrain.ground import Ground
 from terrain.land import Airfield, Land
+from terrain.pattern import Shore
 
 REACH_M = 60_000.0
-#: Half side and spacing of the nested squares about the display centre, m.
-OUTER_SQUARES = ((8_000.0, 300.0), (18_000.0, 900.0), (REACH_M, 5_000.0))  # round the fine square of a relief
-FINE_HALF_M, FINE_STEP_M = 3_500.0, 60.0
-FLAT_SQUARES = ((2_400.0, 400.0), (9_000.0, 1_500.0), (REACH_M, 8_500.0))
-SHORE_SQUARES = ((6_000.0, 150.0), (12_000.0, 600.0), (REACH_M, 6_000.0))
+#: Half side and spacing of the nested squares about the display centre, m; first those round a relief's fine square.
+OUTER_SQUARES = ((5_000.0, 200.0), (10_000.0, 500.0), (20_000.0, 1_500.0), (REACH_M, 5_000.0))
+FINE_HALF_M, FINE_STEP_M = 2_500.0, 60.0
+FLAT_SQUARES = ((2_400.0, 800.0), (9_000.0, 3_000.0), (REACH_M, 10_000.0))
+#: Along a shore: how far from its line, half side of the square about the display centre, spacing.
+SHORE_BANDS = ((200.0, 4_000.0, 60.0), (500.0, 10_000.0, 250.0))
 EDGE_M = 2.0  # how far past the tarmac the runway's strip goes
 
 
@@ -39,11 +41,14 @@ class GroundMesh:
 def ground_mesh(ground: Ground, land: Land) -> GroundMesh:
     """The mesh of a ground with the land on it."""
     level = float(np.ptp(ground.heights_m)) == 0.0
-    squares = FLAT_SQUARES if level else SHORE_SQUARES if land.plan.shore is not None else _relief_squares(ground)
+    flat = level or land.plan.shore is not None
+    squares = FLAT_SQUARES if flat else _relief_squares(ground)
     places = _nested(squares)
+    if land.plan.shore is not None:
+        places = _with_shore(land.plan.shore, places)
     if land.airfield is not None:
         outside = ~_within(land.airfield, places, squares[0][1] * 0.45)
-        places = np.concatenate([places[outside], *_airfield_places(land.airfield, 200.0 if level else 100.0)])
+        places = np.concatenate([places[outside], *_airfield_places(land.airfield, 200.0 if flat else 100.0)])
     triangles = Delaunay(places).simplices.astype(np.int64)
     a, b, c = (places[triangles[:, k]] for k in range(3))
     turn = (b[:, 0] - a[:, 0]) * (c[:, 1] - a[:, 1]) - (b[:, 1] - a[:, 1]) * (c[:, 0] - a[:, 0])
@@ -56,6 +61,19 @@ def _relief_squares(ground: Ground) -> tuple[tuple[float, float], ...]:
     """Nested squares whose innermost has its corners on the ground's own grid, or on each second, third ... of it."""
     step = ground.spacing_m * float(np.ceil(FINE_STEP_M / ground.spacing_m))
     return ((round(FINE_HALF_M / step) * step, step), *OUTER_SQUARES)
+
+
+def _with_shore(shore: Shore, places: Array) -> Array:
+    """Places with fine bands along a shore's line in place of what was there."""
+    for reach, half, spacing in reversed(SHORE_BANDS):
+        axis = np.arange(-half, half + 0.5 * spacing, spacing)
+        x, y = (grid.ravel() for grid in np.meshgrid(axis, axis))
+        band = np.column_stack([x, y])[np.abs(shore.seaward_m(y, x)) < reach]
+        apart = (np.abs(shore.seaward_m(places[:, 1], places[:, 0])) > reach + 0.5 * spacing) | (
+            np.abs(places).max(axis=1) > half + 0.5 * spacing
+        )
+        places = np.concatenate([places[apart], band])
+    return places
 
 
 def _normals(ground: Ground, places: Array, step_m: float = 60.0) -> Array:

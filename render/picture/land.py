@@ -11,7 +11,7 @@ from vtkmodules.vtkRenderingCore import vtkActor
 from render.frames import Array
 from render.picture.axes import to_display
 from render.picture.clouds import cloud_actor
-from render.picture.ground_look import ground_actors
+from render.picture.ground_look import GroundLook
 from render.picture.light import Light, light_of
 from render.picture.objects import object_actors
 from render.picture.shadows import shadow_actors
@@ -37,7 +37,8 @@ class Land:
         self._trees = TreeField(cover.trees, ground, plan)
         self.tree_actors = self._trees.actors
         self.shadow_actors = shadow_actors(cover, ground, self.light)
-        self.ground_actors = ground_actors(ground, plan, self.light)
+        self._ground = GroundLook(ground, plan, self.light)
+        self.ground_actors = self._ground.actors
         self.object_actors = object_actors(cover, ground, plan, self.light)
         solid = [*self.object_actors, *self.ground_actors]
         self._eyed = [*solid, *self.shadow_actors, *self.tree_actors]
@@ -64,6 +65,7 @@ class Land:
         """
         eye = tuple(to_display(np.asarray(pos_e_m, float)))
         axis_d = None if axis_e is None else to_display(np.asarray(axis_e, float))
+        self._ground.set_eye(np.array(eye))
         self._trees.set_eye(np.array(eye), axis_d, half_field_rad)
         for actor in self._eyed:
             shader = actor.GetShaderProperty()

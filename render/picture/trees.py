@@ -68,9 +68,7 @@ def _trees(foot: Array, shape: dict[str, Array], land: Land, *, leaves: bool) ->
     code = constants({"LEAVES": int(leaves), "LEAF_A": land.leaf[0], "LEAF_B": land.leaf[1], "NEEDLE": land.needle})
     code += glsl("common") + glsl("tree")
     position = "gl_Position = MCDCMatrix * setTree(place);\n"
-    actor = shaded_actor(
-        data, code, "fragOutput0 = treeColour();\n", shape, glsl("rim") + glsl("tree_place"), position
-    )
+    actor = shaded_actor(data, code, "fragOutput0 = treeColour();\n", shape, glsl("rim") + glsl("tree_place"), position)
     actor.ForceTranslucentOn()
     return data, actor
 
