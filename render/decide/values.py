@@ -94,7 +94,8 @@ def read_axis(scene: Scene, text: str, option: str) -> Axis:
         )
     if place.dim == "count" and any(v != round(v) for v in numbers):
         raise LatepullError(f"{option}: {place.path} is counted; wanted whole numbers")
-    return Axis(place.path, place.dim, unit, tuple(numbers))
+    # a bare load factor is one in g
+    return Axis(place.path, place.dim, unit or DIMENSIONS[place.dim].si, tuple(numbers))
 
 
 def _in(dim: str, value: float, unit: str) -> str:
