@@ -146,8 +146,9 @@ def _rungs(gaps: Array) -> Array:
 
 
 def _around(angle_rad: float, angles: Array) -> Array:
-    """Freeze points a quarter of a step apart about one of them, as far as its neighbours."""
-    out: Array = angle_rad + np.arange(-3, 4) * FINE_RAD
+    """Freeze points close together about one of them, as far as its neighbours."""
+    k = int(np.ceil(STEP_RAD / FINE_RAD)) - 1
+    out: Array = angle_rad + np.arange(-k, k + 1) * FINE_RAD
     return out[(out >= angles[0] - 1e-9) & (out <= angles[-1] + 1e-9)]
 
 

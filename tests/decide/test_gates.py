@@ -46,6 +46,11 @@ def constant_g(load: float) -> Brief:
     return flown
 
 
+@pytest.fixture(autouse=True)
+def fewer_freeze_points(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(gates, "STEP_RAD", 17.0 * DEG)
+
+
 @pytest.mark.parametrize("gate", ["top", "vertical_down"])
 @pytest.mark.parametrize("load", [3.5, 4.0])
 def test_limit_pull_is_that_of_the_closed_form(gate: str, load: float) -> None:
@@ -68,6 +73,7 @@ def jet_brief() -> Brief:
 
 @lru_cache
 def solved(gate: str, want_s: float) -> Gate:
+    # fewer freeze points at first than the command takes: those near the worst are the same
     flown = jet_brief()
     solver = Solver(flown, flat_ground(), want_s, True, who=(1,))
     return solve_gate(solver, gate, np.array([flown.gates[gate].cas_mps]))
@@ -103,10 +109,10 @@ def test_the_wanted_seconds_are_there_at_the_gate_and_not_below(gate: str) -> No
     assert flown_alone(gate, height, worst) >= want - 0.05
     if np.isfinite(found.there_s[0, 0]):
         assert flown_alone(gate, height, worst) == pytest.approx(want, abs=0.05)
-    # in every freeze, 2.5 deg apart
+    # in every freeze, 4 deg apart
     solver = Solver(jet_brief(), flat_ground(), want, True)
     cas = np.array([jet_brief().gates[gate].cas_mps])
-    angles = freeze_angles(GATE_ANGLES[gate], 2.5 * DEG)
+    angles = freeze_angles(GATE_ANGLES[gate], 4.0 * DEG)
     assert solver.worst(gate, cas, np.array([height]), angles).least_s[0, 1] >= want - 0.05
     # and 1 % lower they are not
     assert solver.worst(gate, cas, np.array([0.99 * height]), angles).least_s[0, 1] < want - 0.05

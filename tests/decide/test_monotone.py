@@ -24,6 +24,11 @@ def study(angle_deg: float) -> Study:
     return work_through(loop_scene(freeze(angle_deg)), lambda _: invented_jet(), flat_ground(), "")
 
 
+@lru_cache
+def flown() -> Brief:
+    return brief(loop_scene(), lambda _: invented_jet())
+
+
 @settings(max_examples=25, deadline=None)
 @given(st.sampled_from([205.0, 235.0, 260.0]), st.floats(0.0, 1.0), st.floats(0.0, 1.0), st.sampled_from([1, 2]))
 def test_acting_later_never_ends_higher(angle_deg: float, a: float, b: float, k: int) -> None:
@@ -35,8 +40,7 @@ def test_acting_later_never_ends_higher(angle_deg: float, a: float, b: float, k:
     first, later = sorted(max(down, flight.fault_s or 0.0) + x * (end - down) * 0.98 for x in (a, b))
     later = min(later, end)
     heights, grid = ground_arrays(flat_ground())
-    plan = brief(loop_scene(), lambda _: invented_jet()).plan
-    low = escape_heights(plan, flight, k, np.array([min(first, end), later]), heights, grid)
+    low = escape_heights(flown().plan, flight, k, np.array([min(first, end), later]), heights, grid)
     # a twentieth of a metre: states between steps are interpolated
     assert low[1] <= low[0] + 0.05
 
@@ -49,11 +53,6 @@ def test_noticing_later_is_never_less_late() -> None:
             assert when == sorted(when) and late == sorted(late)
             clear = [n.clearance_m for n in notes if n.clearance_m is not None]
             assert all(x >= y - 0.05 for x, y in itertools.pairwise(clear) if y > -30.0)
-
-
-@lru_cache
-def flown() -> Brief:
-    return brief(loop_scene(), lambda _: invented_jet())
 
 
 def left_at(height_m: float, angle_deg: float) -> Left:

@@ -61,7 +61,7 @@ def test_without_spread_it_is_the_single_case() -> None:
     assert slot.contact_idle.count == (3 if alone.faulted.contact_s[1] is not None else 0)
     # the table's technique stands, and what is left differs by the noise of his senses alone
     assert dict(slot.technique) == {} and slot.influences == ()
-    with_more = flown(40, spread=Scatter())
+    with_more = flown(8, spread=Scatter())
     assert with_more.slots[0].in_hand_s[:3] == pytest.approx(slot.in_hand_s)
 
 
@@ -71,13 +71,13 @@ def study_of_24() -> ScatterStudy:
 
 
 def test_a_seed_gives_the_same_passes_whatever_the_chunk() -> None:
-    one, other = flown(10, chunk=3), flown(10, chunk=64)
+    one, other = flown(6, chunk=2), flown(6, chunk=64)
     assert np.array_equal(one.gates, other.gates)
     assert one.slots[0].in_hand_s == pytest.approx(other.slots[0].in_hand_s, abs=1e-9)
-    fewer = flown(6)
-    assert fewer.slots[0].in_hand_s == pytest.approx(one.slots[0].in_hand_s[:6], abs=1e-9)
+    fewer = flown(4)
+    assert fewer.slots[0].in_hand_s == pytest.approx(one.slots[0].in_hand_s[:4], abs=1e-9)
     assert dict(fewer.slots[0].technique) == dict(one.slots[0].technique)
-    assert not np.array_equal(one.gates, flown(10, seed=2, technique=False).gates)
+    assert not np.array_equal(one.gates, flown(6, seed=2, technique=False).gates)
 
 
 def test_interrupted_work_goes_on_from_its_finished_chunks(tmp_path: Path) -> None:
