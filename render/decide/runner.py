@@ -119,7 +119,7 @@ class Cluster:
             future = self._client.submit(_checked, work, shared, chunk, self._mine, retries=RETRIES, pure=False)
             numbers[future] = number
         try:
-            for future in as_completed(list(numbers)):
+            for future in as_completed(list(numbers), loop=self._client.loop):
                 try:
                     result = future.result()
                 except KilledWorker as exc:
