@@ -16,7 +16,21 @@ def add_work_options(sub: argparse.ArgumentParser) -> None:
     sub.add_argument("--resume", action="store_true", help="go on from the chunks an interrupted run has left")
     sub.add_argument("--force", action="store_true", help="replace outputs and unfinished work that are there")
     sub.add_argument("--force-size", action="store_true", help="start work above the limits of time, memory and cases")
+    sub.add_argument("--chunk", type=int, metavar="N", help="cases worked on and kept together (default 128, fewer on "
+                     "a cluster)")
     sub.add_argument("--out", type=Path, help="output folder (default under out/<scene>)")
+
+
+def chunk_size(args: argparse.Namespace, cases: int) -> int:
+    """Cases in a chunk: as asked, or large here, where each begins with the flights they share, and small far away."""
+    from render.decide.cases import CHUNK
+    from render.errors import LatepullError
+
+    if args.chunk is not None:
+        if not 1 <= args.chunk <= 1000:
+            raise LatepullError(f"--chunk: read {args.chunk}, wanted 1 to 1000")
+        return int(args.chunk)
+    return CHUNK if args.cluster is None else min(max(-(-cases // 12), 16), CHUNK)
 
 
 def add_map(add: Callable[[str, str], argparse.ArgumentParser]) -> None:
@@ -56,7 +70,6 @@ class CaseBar:
 
 def map_command(args: argparse.Namespace) -> int:
     """Fly and draw a map; returns the exit code."""
-    from render.decide.cases import CHUNK
     from render.decide.chunks import Folder, chunk_count, estimate, refuse_too_much, work_hash, work_in_chunks
     from render.decide.map import grid_values, make_map, map_axes, own_twins
     from render.decide.runner import runner
@@ -80,12 +93,14 @@ def map_command(args: argparse.Namespace) -> int:
         bar.note(f"{len(x.values)} x {len(y.values)}: {expected.words()}" if args.cluster is None else
                  f"{len(x.values)} x {len(y.values)} = {expected.cases:,} cases on the cluster at {args.cluster}")
     values = grid_values(x, y)
-    key = work_hash(scene_text(args.scene), ["map", x.path, x.values, y.path, y.values, CHUNK])
-    work = Folder(folder / "map.unfinished", key, chunk_count(len(values)))
+    chunk = chunk_size(args, len(values))
+    key = work_hash(scene_text(args.scene), ["map", x.path, x.values, y.path, y.values, chunk])
+    work = Folder(folder / "map.unfinished", key, chunk_count(len(values), chunk))
     common = common_of(mapped, read_airframe, read_ground(mapped.ground, mapped.seed))
     with runner(args.cluster) as run:
         try:
-            cases = work_in_chunks(common, values, run, work, resume=args.resume, force=args.force, progress=bar.show)
+            cases = work_in_chunks(common, values, run, work, resume=args.resume, force=args.force, chunk=chunk,
+                                   progress=bar.show)
         except KeyboardInterrupt:
             bar.note(f"\ninterrupted; finished chunks are kept in {work.path}: give --resume to go on")
             return 130
