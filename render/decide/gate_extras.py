@@ -70,8 +70,23 @@ def base_needed(solver: Solver, airframe_of: Callable[[str], Airframe]) -> tuple
         return worst.least_s[:, who] - solver.want_s
 
     low = np.array([b.scene.floor_m - b.base_m])
-    found, _ = least_values(left, low, RUNGS_M, TOLERANCE_M, 0.02)
+    rungs = _flyable(b.plan.scene, float(low[0]), airframe_of)
+    if rungs.size < 2:
+        return np.full(len(who), np.nan), "the loop does not come round from any other base"
+    found, _ = least_values(left, low, rungs, TOLERANCE_M, 0.02)
     return b.base_m + found[0], "" if np.isfinite(found[0, who.index(1)]) else why
+
+
+def _flyable(scene: Scene, low_m: float, airframe_of: Callable[[str], Airframe]) -> Array:
+    """The rungs up to the last from which the lifted loop can still be entered, comes round and closes."""
+    good = 0
+    for rung in RUNGS_M:
+        try:
+            brief(lifted(scene, low_m + float(rung)), airframe_of)
+        except FlightError:
+            break
+        good += 1
+    return RUNGS_M[:good]
 
 
 def floated(scene: Scene, less_g: float) -> Scene:
@@ -81,10 +96,9 @@ def floated(scene: Scene, less_g: float) -> Scene:
         if isinstance(step, Loop):
             x, n = np.array(step.angle_rad), np.array(step.load_factor)
             more = TOP + np.radians(np.arange(-45.0, 46.0, 15.0))
-            at = np.unique(np.round(np.concatenate([x, more]), 9))
-            at = at[(at >= x[0]) & (at <= x[-1])]
             # a table knot and one of ours must not lie within a hair of each other
-            at = at[np.concatenate([[True], np.diff(at) > np.radians(1.0)])]
+            apart = np.min(np.abs(more[:, None] - x), axis=1) > np.radians(1.0)
+            at = np.sort(np.concatenate([x, more[apart & (more > x[0]) & (more < x[-1])]]))
             load = PchipInterpolator(x, n)(at) if len(x) > 2 else np.interp(at, x, n)
             fade = np.clip(np.abs(at - TOP) / FLOAT_RAD, 0.0, 1.0)
             load = load - less_g * np.cos(0.5 * np.pi * fade) ** 2
