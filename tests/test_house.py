@@ -180,7 +180,8 @@ def reaches(name: str, goal: str, seen: set[str]) -> bool:
 # Loads each module alone: the process knows numpy, scipy, numba and the like, forks, and each child imports one.
 ALONE_SCRIPT = """
 import json, os, sys
-import numpy, scipy.interpolate, scipy.optimize, scipy.special, numba, yaml
+import numpy, scipy.interpolate, scipy.optimize, scipy.special, scipy.stats, numba, yaml
+import imageio_ffmpeg, jinja2, matplotlib.figure, matplotlib.backends.backend_agg, PIL.Image, PIL.ImageDraw
 
 def load(name, write):
     try:
