@@ -305,7 +305,8 @@ def _mark_scene(axes: Axes, found: Map) -> int | None:
     axes.add_patch(Rectangle((i, j), 1, 1, facecolor="none", edgecolor=INK, linewidth=0.6, zorder=7))
     line = j + 1 if j + 1 < len(found.y.values) else j
     exact = abs(found.x.shown()[i] - at_x) < 1e-6 and abs(found.y.shown()[j] - at_y) < 1e-6
-    axes.text(i + 0.5, line, "this scene" if exact else "near this scene", fontsize=7.6, weight="bold", color=INK, ha="center", va="center", zorder=8,
+    name = "this scene" if exact else "near this scene"
+    axes.text(i + 0.5, line, name, fontsize=7.6, weight="bold", color=INK, ha="center", va="center", zorder=8,
               bbox={"facecolor": MARK, "edgecolor": "none", "pad": 1.4})
     return line
 
