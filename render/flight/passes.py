@@ -150,13 +150,14 @@ def fault_step(case: Any, y: Array, kept: Array, last: int, script: Array, dt_s:
 @njit(cache=True)
 def _lead_step(
     t: float, dt_s: float, y: Array, af: Any, case: Any, mem: Array, script: Array, knots: Array, coeffs: Array,
-    k: Array,
+    k: Array, known: bool,
 ) -> Array:
-    """One Runge-Kutta step of the lead; k (5, NY) is scratch, k[0] the rate at the start."""
+    """One Runge-Kutta step of the lead; k (5, NY) is scratch, k[0] the rate at the start, there already if known."""
     on = mem[M_FAULT_ON] > 0.5
     stab = mem[M_STAB]
-    n, onset, roll, throttle, _ = lead_commands(t, y, af, case, mem, script, knots, coeffs)
-    derivative(y, af, case, n, onset, roll, throttle, on, stab, True, 0.0, k[0])
+    if not known:
+        n, onset, roll, throttle, _ = lead_commands(t, y, af, case, mem, script, knots, coeffs)
+        derivative(y, af, case, n, onset, roll, throttle, on, stab, True, 0.0, k[0])
     for s in range(1, 4):
         h = dt_s if s == 3 else 0.5 * dt_s
         for m in range(NY):
@@ -214,7 +215,7 @@ def fly_lead(
                 out_y[j] = y
                 out_a[j] = out_a[i]
             return status, i
-        new = _lead_step(t, dt_s, y, af, case, mem, script, knots, coeffs, k)
+        new = _lead_step(t, dt_s, y, af, case, mem, script, knots, coeffs, k, True)
         in_loop = int(script[int(mem[M_STEP]), S_KIND]) == LOOP
         if mem[M_FAULT_ON] < 0.5 and case.fault_kind > 0.5:
             before = _fault_reached(t, y, case, mem, mem[M_LOOP])
@@ -222,9 +223,13 @@ def fly_lead(
             after = _fault_reached(t + dt_s, new, case, mem, angle)
             if after >= 0.0:
                 part = min(max(-before / max(after - before, 1e-12), 0.0), 1.0) if before < 0.0 else 0.0
-                mid = _lead_step(t, part * dt_s, y, af, case, mem, script, knots, coeffs, k) if part > 1e-9 else y
+                mid = y
+                if part > 1e-9:
+                    mid = _lead_step(t, part * dt_s, y, af, case, mem, script, knots, coeffs, k, True)
                 mem[M_FAULT_ON], mem[M_FAULT_S], mem[M_STAB] = 1.0, t + part * dt_s, mid[STAB]
-                new = _lead_step(t + part * dt_s, (1.0 - part) * dt_s, mid, af, case, mem, script, knots, coeffs, k)
+                new = _lead_step(
+                    t + part * dt_s, (1.0 - part) * dt_s, mid, af, case, mem, script, knots, coeffs, k, False
+                )
         y = new
         t += dt_s
         if in_loop:
