@@ -97,12 +97,12 @@ def fly_escapes(
 @njit(cache=True)
 def better_escape(
     y0: Array, af: Any, case: Any, esc: Any, away: float, throttle: float, fault_on: bool, stab_at_fault: float,
-    heights: Array, grid: Array, beat_m: float = -1e9,
+    heights: Array, grid: Array, beat_m: float = -1e9, enough_m: float = 1e9,
 ) -> float:
     """Lowest height above the ground, m, of the better of two escapes: esc (2,), pulling as he is and rolling first.
 
-    At or below ``beat_m`` it is not exact. The one more likely to be better is flown first, and the other
-    only as long as it may still be.
+    At or below ``beat_m`` it is not exact, and from ``enough_m`` on it is that of one of them, the better may be
+    higher. The one more likely to be better is flown first, and the other only as long as it may still be.
     """
     steps = round(LONGEST_S / ESCAPE_DT_S)
     nothing = np.empty((0, 4))
@@ -110,6 +110,8 @@ def better_escape(
     first = 0 if cz > 0.0 else 1
     one, _ = fly_escape(y0, af, case, esc[first], away, throttle, fault_on, stab_at_fault, heights, grid, ESCAPE_DT_S,
                         steps, nothing, beat_m)
+    if one >= enough_m:
+        return one
     other, _ = fly_escape(y0, af, case, esc[1 - first], away, throttle, fault_on, stab_at_fault, heights, grid,
                           ESCAPE_DT_S, steps, nothing, max(one, beat_m))
     return max(one, other)
@@ -125,5 +127,5 @@ def better_escapes(
         r = int(row[b])
         lowest_m[b] = better_escape(
             y0[b], af[r], case[r], esc[r], away[b], throttle[b], fault_on[b] > 0.5, stab_at_fault[b], heights, grid,
-            -1e9
+            -1e9, 1e9
         )

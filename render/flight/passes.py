@@ -315,7 +315,10 @@ def fly_leads(
     status (B, 2): why and when each stopped; kept (B, T, NM), or (B, 0, 0) if nothing is to be kept. One that is
     to begin at a negative step is left as it is.
     """
-    for b in prange(y0.shape[0]):
+    half = (y0.shape[0] + 1) // 2
+    for i in prange(y0.shape[0]):
+        # neighbours take much the same time: dealt out in turn to the cores
+        b = 2 * i if i < half else 2 * (i - half) + 1
         at, r = int(begin[b]), int(row[b])
         if at >= 0:
             status[b, 0], status[b, 1] = fly_lead(
@@ -334,7 +337,9 @@ def fly_wings(
 
     row (W,): his own of airframes, slots and of what was learnt, (R, T, 6) or (R, 0, 0); kept as in ``fly_leads``.
     """
-    for w in prange(y0.shape[0]):
+    half = (y0.shape[0] + 1) // 2
+    for i in prange(y0.shape[0]):
+        w = 2 * i if i < half else 2 * (i - half) + 1
         b, r = int(lead_of[w]), int(row[w])
         if begin[b] >= 0:
             status[w, 0], status[w, 1] = fly_wing(
@@ -351,3 +356,14 @@ def fault_steps(
     for b in prange(step.shape[0]):
         w = int(row[b])
         step[b] = fault_step(case[b], twin_y[w], kept[w], int(last[w]), script[w], dt_s)
+
+
+@njit(cache=True, parallel=True)
+def copy_beginnings(twin_y: Array, twin_a: Array, row: Array, begin: Array, y: Array, a: Array) -> None:
+    """The steps before each one's beginning from its twin: twin_y (K, W, T, NY), y (K, B, T, NY), a alike."""
+    for b in prange(y.shape[1]):
+        at, w = int(begin[b]), int(row[b])
+        if at > 0:
+            for k in range(y.shape[0]):
+                y[k, b, :at] = twin_y[k, w, :at]
+                a[k, b, :at] = twin_a[k, w, :at]

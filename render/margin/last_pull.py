@@ -26,6 +26,7 @@ DEEP_M = -150.0  # an escape that far under the ground has failed, however far i
 # What waiting can add to a clearance, at most: it grows as the flight climbs, 0.7 of its speed in the shipped
 # scenes. So an instant with a large one needs no look at those shortly before it.
 RISE_MPS = 300.0
+HIGH_M = 100.0  # an escape that clears by so much clears; the other of the two needs no look
 DIP_M = 10.0  # a lowest clearance that close to zero is looked at instant by instant
 
 
@@ -48,22 +49,23 @@ def state_at(y: Array, a: Array, step: float, last: int, out: Array) -> float:
 
 @njit(cache=True)
 def _clearance(
-    j: int, low: Array, stop_s: float, last: int, beat_m: float, y: Array, a: Array, af: Any, case: Any, esc: Any,
-    away: float, heights: Array, grid: Array, dt_s: float,
+    j: int, low: Array, beat_m: float, enough_m: float, stop_s: float, last: int, y: Array, a: Array, af: Any,
+    case: Any, esc: Any, away: float, heights: Array, grid: Array, dt_s: float,
 ) -> float:
     """Lowest height of the escape begun at instant j, m; looked up if it has been flown (NaN: it has not)."""
     if math.isnan(low[j]):
         at_s = stop_s if j == low.shape[0] - 1 else j * EVERY_S
         state = np.empty(NY)
         throttle = state_at(y, a, at_s / dt_s, last, state)
-        low[j] = better_escape(state, af, case, esc, away, throttle, False, 0.0, heights, grid, beat_m)
+        low[j] = better_escape(state, af, case, esc, away, throttle, False, 0.0, heights, grid, beat_m,
+                               enough_m)
     return low[j]
 
 
 @njit(cache=True)
 def last_pull(
-    level_m: float, hint: int, contact: bool, low: Array, stop_s: float, last: int, y: Array, a: Array, af: Any,
-    case: Any, esc: Any, away: float, heights: Array, grid: Array, dt_s: float,
+    level_m: float, enough_m: float, hint: int, contact: bool, low: Array, stop_s: float, last: int, y: Array,
+    a: Array, af: Any, case: Any, esc: Any, away: float, heights: Array, grid: Array, dt_s: float,
 ) -> tuple[float, int]:
     """When the clearance above ``level_m`` is there for the last time, s, and the instant before it.
 
@@ -72,19 +74,20 @@ def last_pull(
     Searched from the end back in stages, then within one; a lowest clearance near zero is looked at closely, and
     what a large clearance rules out is stepped over.
     """
+    rest = (stop_s, last, y, a, af, case, esc, away, heights, grid, dt_s)
     end = low.shape[0] - 1
     lo, hi = -1, -1
-    f_hi = _clearance(end, low, stop_s, last, DEEP_M, y, a, af, case, esc, away, heights, grid, dt_s) - level_m
+    f_hi = _clearance(end, low, DEEP_M, enough_m, *rest) - level_m
     if contact and 0 <= hint < end and f_hi < 0.0:
-        f = _clearance(hint, low, stop_s, last, DEEP_M, y, a, af, case, esc, away, heights, grid, dt_s) - level_m
-        g = _clearance(hint + 1, low, stop_s, last, DEEP_M, y, a, af, case, esc, away, heights, grid, dt_s) - level_m
+        f = _clearance(hint, low, DEEP_M, enough_m, *rest) - level_m
+        g = _clearance(hint + 1, low, DEEP_M, enough_m, *rest) - level_m
         if f >= 0.0 and g < 0.0:
             lo, hi = hint, hint + 1
     if lo < 0:
         at, later, f_later = end, -1, 0.0
         j = ((end - 1) // STAGE) * STAGE
         while True:
-            f = _clearance(j, low, stop_s, last, DEEP_M, y, a, af, case, esc, away, heights, grid, dt_s) - level_m
+            f = _clearance(j, low, DEEP_M, enough_m, *rest) - level_m
             if f >= 0.0 and f_hi < 0.0:
                 lo, hi = j, at
                 break
@@ -96,8 +99,7 @@ def last_pull(
                         here = best
                         for m in (here - step, here + step):
                             if j < m < later:
-                                g = _clearance(m, low, stop_s, last, DEEP_M, y, a, af, case, esc, away, heights, grid,
-                                               dt_s) - level_m
+                                g = _clearance(m, low, DEEP_M, enough_m, *rest) - level_m
                                 if g < f_best:
                                     best, f_best = m, g
                         step //= 2
@@ -114,14 +116,17 @@ def last_pull(
         m = (lo + hi) // 2
         if low[hi] > DEEP_M:
             m = min(max(lo + round((hi - lo) * c_lo / (c_lo - c_hi)), lo + 1), hi - 1)
-        f = _clearance(m, low, stop_s, last, DEEP_M, y, a, af, case, esc, away, heights, grid, dt_s) - level_m
+        f = _clearance(m, low, DEEP_M, enough_m, *rest) - level_m
         if f >= 0.0:
             lo = m
         else:
             hi = m
+    if low[lo] >= enough_m:
+        low[lo] = np.nan
+        _clearance(lo, low, -1e9, 1e9, *rest)
     if low[hi] <= DEEP_M:
         low[hi] = np.nan
-        _clearance(hi, low, stop_s, last, -1e9, y, a, af, case, esc, away, heights, grid, dt_s)
+        _clearance(hi, low, -1e9, 1e9, *rest)
     c_lo, c_hi = low[lo] - level_m, low[hi] - level_m
     t_hi = stop_s if hi == end else hi * EVERY_S
     return lo * EVERY_S + (t_hi - lo * EVERY_S) * c_lo / (c_lo - c_hi), lo
@@ -138,8 +143,11 @@ def _last_pulls(
     known (W, S, J): clearances of other flights at the stages, known_of (B,): whose they are, -1 nobody's, which
     are those of this flight too up to step ``until`` (B,).
     """
-    for b in prange(y.shape[1]):
-        hint_floor, hint_ground = -1, -1
+    for i in prange(y.shape[1]):
+        # neighbours cost much the same: dealt out in turn to the cores
+        half = (y.shape[1] + 1) // 2
+        b = 2 * i if i < half else 2 * (i - half) + 1
+        hint_floor, hint_ground, enough_m = -1, -1, floor_m[b] + HIGH_M
         w = int(known_of[b])
         for k in range(y.shape[0]):
             # as many tenths as there are before the end, and the end itself
@@ -150,19 +158,19 @@ def _last_pulls(
                         low[j * STAGE] = known[w, k, j]
             met = contact[k, b] > 0.5
             floor_s[b, k], hint_floor = last_pull(
-                floor_m[b], hint_floor, met, low, stop_s[k, b], int(last[k, b]), y[k, b], a[k, b], af[k, b], case[b],
-                esc[b], away[k, b], heights, grid, dt_s
+                floor_m[b], enough_m, hint_floor, met, low, stop_s[k, b], int(last[k, b]), y[k, b], a[k, b], af[k, b],
+                case[b], esc[b], away[k, b], heights, grid, dt_s
             )
             ground_s[b, k], hint_ground = last_pull(
-                0.0, hint_ground, met, low, stop_s[k, b], int(last[k, b]), y[k, b], a[k, b], af[k, b], case[b],
-                esc[b], away[k, b], heights, grid, dt_s
+                0.0, enough_m, hint_ground, met, low, stop_s[k, b], int(last[k, b]), y[k, b], a[k, b], af[k, b],
+                case[b], esc[b], away[k, b], heights, grid, dt_s
             )
 
 
 @njit(cache=True, parallel=True)
 def _stages(
-    y: Array, a: Array, last: Array, af: Any, case: Any, esc: Any, away: Array, heights: Array, grid: Array,
-    dt_s: float, low: Array,
+    y: Array, a: Array, last: Array, af: Any, case: Any, esc: Any, away: Array, enough_m: float, heights: Array,
+    grid: Array, dt_s: float, low: Array,
 ) -> None:
     """Clearances at the stages of flights: y (S, W, T, NY), a, last (W,), low (W, S, J) filled in."""
     for i in prange(low.shape[0] * low.shape[1] * low.shape[2]):
@@ -173,7 +181,7 @@ def _stages(
         if step + 1.0 < last[w]:
             throttle = state_at(y[k, w], a[k, w], step, int(last[w]), state)
             low[w, k, j] = better_escape(state, af[k, w], case[w], esc[w], away[k, w], throttle, False, 0.0, heights,
-                                         grid, DEEP_M)
+                                         grid, DEEP_M, enough_m)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -186,7 +194,8 @@ class Stages:
 def stages(plans: Sequence[Plan], y: Array, a: Array, last: NDArray[np.int64], heights: Array, grid: Array) -> Stages:
     """Clearances at the stages; y (S, W, T, NY), a (S, W, T, NA) of the wings, last (W,)."""
     low = np.empty((len(plans), len(y), math.ceil(int(last.max()) * DT_S / (STAGE * EVERY_S))))
-    _stages(y, a, last.astype(float), *_records(plans, None), heights, grid, DT_S, low)
+    enough_m = max(p.scene.floor_m for p in plans) + HIGH_M
+    _stages(y, a, last.astype(float), *_records(plans, None), enough_m, heights, grid, DT_S, low)
     return Stages(low)
 
 
@@ -241,7 +250,7 @@ def _clearances(
                 if not math.isnan(at_s[b, k, o]):
                     throttle = state_at(y[k, b], a[k, b], at_s[b, k, o] / dt_s, int(last[b]), state)
                     low_m[b, k, o] = better_escape(state, af[k, b], case[b], esc[b], away[k, b], throttle, False, 0.0,
-                                                   heights, grid, -1e9)
+                                                   heights, grid, -1e9, 1e9)
 
 
 def clearances(
