@@ -26,7 +26,7 @@ DEEP_M = -150.0  # an escape that far under the ground has failed, however far i
 # What waiting can add to a clearance, at most: it grows as the flight climbs, 0.7 of its speed in the shipped
 # scenes. So an instant with a large one needs no look at those shortly before it.
 RISE_MPS = 300.0
-HIGH_M = 100.0  # an escape that clears by so much clears; the other of the two needs no look
+HIGH_M = 15.0  # an escape that clears by so much clears; the other of the two needs no look
 DIP_M = 10.0  # a lowest clearance that close to zero is looked at instant by instant
 
 
