@@ -25,7 +25,7 @@ from render.errors import LatepullError
 from render.files import output_error, whole_file
 
 # Measured on two cores of a shared server (tests/benchmarks): time of a case with two wings, memory.
-CASE_S, OWN_TWIN_S = 0.026, 0.075  # core seconds; the second where each case closes and flies its own twin
+CASE_S, OWN_TWIN_S = 0.026, 0.11  # core seconds; the second where each case closes and flies its own twin
 CHUNK_BYTES, CASE_BYTES = 700e6, 1200.0  # while a chunk is worked on, and kept of each case
 MOST_S, MOST_BYTES, MOST_CASES = 3600.0, 4e9, 200_000
 
