@@ -47,7 +47,7 @@ TEXT = {
     Outcome.TOO_LATE: "white", Outcome.UNKNOWN: QUIET,
 }
 LEGEND = {
-    Outcome.TOO_LATE: "too late for all,\neven the early observer",
+    Outcome.TOO_LATE: "too late for all,\neven the early one",
     Outcome.EARLY_IN_TIME: "in time for the early\nobserver alone",
     Outcome.LIKELY_IN_TIME: "in time for the early\nand the likely one",
     Outcome.ALL_IN_TIME: "in time for all,\neven the late one",
@@ -302,7 +302,7 @@ def _mark_scene(axes: Axes, found: Map) -> int | None:
         return None
     i, j = (int(np.argmin(np.abs(np.array(axis.shown()) - at))) for axis, at in ((found.x, at_x), (found.y, at_y)))
     axes.add_patch(Rectangle((i, j), 1, 1, facecolor="none", edgecolor=MARK, linewidth=2.6, zorder=6))
-    axes.add_patch(Rectangle((i, j), 1, 1, facecolor="none", edgecolor=INK, linewidth=0.6, zorder=7))
+    axes.add_patch(Rectangle((i, j), 1, 1, facecolor="none", edgecolor=INK, linewidth=1.0, zorder=7))
     line = j + 1 if j + 1 < len(found.y.values) else j
     exact = abs(found.x.shown()[i] - at_x) < 1e-6 and abs(found.y.shown()[j] - at_y) < 1e-6
     name = "this scene" if exact else "near this scene"
