@@ -197,29 +197,33 @@ def _slow(texts: Sequence[str]) -> tuple[Any, ...]:
 
 
 def _film(args: argparse.Namespace) -> int:
+    from render.output.drawers import Drawers
     from render.output.film import write_film
     from render.output.parts import kept_frames
     from render.output.shot import key_holds, plan_shot
+    from render.output.source import SourceSpec
     from scenes.reader import read_scene
 
     folder = Path("out") / read_scene(args.scene).name
     slow = _slow(args.slow)
-    study = _study(args.scene, folder)
-    slot = _slot(study, args.slot)
-    target = _target(args.out, folder, f"{slot}{_kind(args)}.mp4")
-    shot = plan_shot(study, slot, start_s=args.start_s, end_s=args.end_s, draft=args.draft, slow=slow,
-                     holds=key_holds(study, slot) if args.holds and not args.plain else ())
-    source, note = _picture(args, shot.size_px)
-    plain = target.with_name(f"{target.stem}_plain.mp4") if args.both and not args.plain else None
-    try:
-        write_film(study, slot, target, shot=shot, overlay=not args.plain, plain_path=plain, force=args.force,
-                   source=source, note=note, progress=progress_bar(), keep=True, resume=args.resume)
-    except BaseException:
-        done, total = kept_frames(target)
-        if done:
-            print(f"\n{done} of {total} frames are kept; the same command with --resume goes on from them",
-                  file=sys.stderr)
-        raise
+    with Drawers(args.scene, SourceSpec(smooth=not args.draft).modules) as drawers:  # load while the scene is flown
+        study = _study(args.scene, folder)
+        slot = _slot(study, args.slot)
+        target = _target(args.out, folder, f"{slot}{_kind(args)}.mp4")
+        shot = plan_shot(study, slot, start_s=args.start_s, end_s=args.end_s, draft=args.draft, slow=slow,
+                         holds=key_holds(study, slot) if args.holds and not args.plain else ())
+        source, note = _picture(args, shot.size_px)
+        plain = target.with_name(f"{target.stem}_plain.mp4") if args.both and not args.plain else None
+        try:
+            write_film(study, slot, target, shot=shot, overlay=not args.plain, plain_path=plain, force=args.force,
+                       source=source, note=note, progress=progress_bar(), keep=True, resume=args.resume,
+                       drawers=drawers)  # fmt: skip
+        except BaseException:
+            done, total = kept_frames(target)
+            if done:
+                print(f"\n{done} of {total} frames are kept; the same command with --resume goes on from them",
+                      file=sys.stderr)
+            raise
     films = [str(target), *([str(plain)] if plain else [])]
     _say(args, {"films": films, "frames": len(shot)}, f"{', '.join(films)}: {len(shot)} frames")
     return 0

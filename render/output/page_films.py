@@ -102,7 +102,7 @@ def make_pictures(
     shot: default ``page_shot``; draft: half size and rate. again: draw anew in any case. Raises as write_film does.
     """
     shot = page_shot(study, slot, draft=draft) if shot is None else shot
-    source = source or SourceSpec()
+    source = source or SourceSpec(smooth=True)
     folder = Path(folder)
     stem = f"{slot}_draft" if draft else slot
     moments = page_moments(study, slot)

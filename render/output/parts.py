@@ -5,23 +5,24 @@ from __future__ import annotations
 import hashlib
 import json
 import shutil
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import asdict
 from pathlib import Path
 
 from render.errors import LatepullError
 from render.files import output_error, scratch_folder
-from render.output.film_worker import Job, segment_paths
+from render.output.drawers import JOB
+from render.output.film_worker import Job, is_drawn, read_job, segment_paths
 from render.types import Study
 
 KEY = "key.json"
 
 
-def film_key(study: Study, jobs: Sequence[Job]) -> str:
+def film_key(study: Study, job: Job) -> str:
     """What the pieces are of: the scene's text, the versions and figures behind it, and each frame's plan."""
-    plans = [{k: v for k, v in asdict(job).items() if not k.endswith("_path") and k != "study"} for job in jobs]
-    data = {"scene": study.scene_text, "versions": dict(study.versions), "verdict": dict(study.verdict), "jobs": plans}
+    plan = {k: v for k, v in asdict(job).items() if k != "folder"}
+    data = {"scene": study.scene_text, "versions": dict(study.versions), "verdict": dict(study.verdict), "plan": plan}
     return hashlib.sha256(json.dumps(data, sort_keys=True, default=str).encode()).hexdigest()
 
 
@@ -40,13 +41,8 @@ def kept_frames(target: Path) -> tuple[int, int]:
 
 
 def done_frames(job: Job) -> int:
-    """Frames of a job whose pieces are finished, from its beginning on."""
-    done = 0
-    for piece, size in enumerate(job.pieces):
-        if not all(path.exists() for path in segment_paths(job, piece)):
-            break
-        done += size
-    return done
+    """Frames of a job's finished pieces."""
+    return sum(size for piece, size in enumerate(job.pieces) if is_drawn(job, piece))
 
 
 @contextmanager
@@ -95,11 +91,11 @@ def _take_over(folder: Path, target: Path, key: str, *, resume: bool) -> None:
 def _keep(folder: Path, key: str) -> bool:
     """Note what is finished and clear what is not; False if there is nothing worth keeping."""
     try:
-        jobs = [Job(**json.loads(path.read_text(encoding="utf-8"))) for path in sorted(folder.glob("job*.json"))]
-        done, total = sum(map(done_frames, jobs)), sum(len(job.time_s) for job in jobs)
+        job = read_job(str(folder / JOB))
+        done, total = done_frames(job), len(job.time_s)
         if not done:
             return False
-        wanted = {path for job in jobs for piece in range(len(job.pieces)) for path in segment_paths(job, piece)}
+        wanted = {path for piece in range(len(job.pieces)) for path in segment_paths(job, piece)}
         for path in folder.iterdir():
             if path.is_file() and path not in wanted:
                 path.unlink(missing_ok=True)

@@ -27,10 +27,20 @@ Opener = Callable[..., AbstractContextManager[FrameSource]]
 
 @dataclass(frozen=True, slots=True)
 class SourceSpec:
-    """A factory by name, ``module:function``, and its options (plain JSON values)."""
+    """A factory by name, ``module:function``, and its options (plain JSON values).
+
+    A source must not touch the graphics driver before its first frame: it is opened before its process forks.
+    smooth: whether it needs the compiled edge smoothing, which takes a while to load.
+    """
 
     factory: str = "render.output.stage_source:open_stage"
     options: Mapping[str, Any] = field(default_factory=dict)
+    smooth: bool = False
+
+    @property
+    def modules(self) -> tuple[str, ...]:
+        """What a drawing process had better load while it still waits for its job."""
+        return (self.factory.partition(":")[0], *(("render.picture.edges",) if self.smooth else ()))
 
     def open(self, study: Study, slot: str, size_px: tuple[int, int]) -> AbstractContextManager[FrameSource]:
         """Open the source for one slot and frame size; it is closed on leaving the context."""

@@ -43,8 +43,8 @@ def stage_spec(
     """
     strip = strip_px(size_px[1]) if overlay else 0
     if options.twin in ("side", "stack"):
-        return SourceSpec(options=asdict(replace(options, clear_px=strip)))
-    return SourceSpec(options=asdict(replace(options, unseen_px=0 if plain_too else strip)))
+        return SourceSpec(options=asdict(replace(options, clear_px=strip)), smooth=options.smooth)
+    return SourceSpec(options=asdict(replace(options, unseen_px=0 if plain_too else strip)), smooth=options.smooth)
 
 
 def picture_words(options: StageOptions) -> str:

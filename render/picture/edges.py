@@ -24,6 +24,11 @@ def smooth_edges(frame: Frame) -> int:
     return int(_smooth(frame, CONTRAST, SEARCH_PX))
 
 
+def warm_up() -> None:
+    """Have the compiled code read now and not at the first frame."""
+    smooth_edges(np.zeros((4, 4, 3), np.uint8))
+
+
 @njit(cache=True, nogil=True)
 def _smooth(frame, contrast, search):  # type: ignore[no-untyped-def]
     """Brightness, edges found on the untouched picture, then mixed from its copy."""

@@ -11,6 +11,7 @@ from types import TracebackType
 from typing import Any
 
 import numpy as np
+import vtkmodules.vtkRenderingOpenGL2  # noqa: F401 - without it actors have no shaders
 from numpy.typing import NDArray
 from vtkmodules.util.numpy_support import vtk_to_numpy
 from vtkmodules.vtkCommonCore import vtkUnsignedCharArray
@@ -46,7 +47,7 @@ GHOST_APART_M = 1.0  # nearer than this the two leads would only flicker in each
 class Stage:
     """Draws instants of one formation over one land; a context manager, closed on leaving.
 
-    Raises MachineError where this machine can't draw.
+    The graphics driver is not touched before the first picture, so a stage may be built before a process forks.
     """
 
     def __init__(
@@ -68,7 +69,6 @@ class Stage:
         drawn faintly; smoke: the flight whose aircraft trail it; smooth: whether silhouettes are antialiased;
         unseen_px: rows at the bottom that something else will cover: left black.
         """
-        require_drawing()
         self._own, self._smooth = own, smooth
         width, height = self._size = size_px
         drawn = height - unseen_px
@@ -90,9 +90,8 @@ class Stage:
         self._add(() if self._trails is None else self._trails.actors)
         for craft in reversed(nearest_first):
             self._add(() if craft is None else craft.actors(clear=True))
-        self._window = new_window()
-        self._window.SetSize(width, drawn)
-        self._window.AddRenderer(self.renderer)
+        self._window: Any = None  # opened by the first picture: a driver doesn't outlive a fork
+        self._closed = False
         self._pixels = vtkUnsignedCharArray()
         self._pixels.SetNumberOfComponents(3)
         self._pixels.SetNumberOfTuples(width * drawn)
@@ -109,6 +108,7 @@ class Stage:
 
     def close(self) -> None:
         """Give the window back; drawing is over."""
+        self._closed = True
         if self._window is not None:
             self.renderer.RemoveAllViewProps()
             self._window.RemoveRenderer(self.renderer)
@@ -119,15 +119,21 @@ class Stage:
         """The picture, (h, w, 3); the array is used again by the next call. The camera has the stage's size.
 
         ghost: where the faint second lead is, if the stage has one; he is left out while he is on the lead.
+        Raises MachineError where this machine can't draw, ValueError once closed or for another size.
         """
-        if self._window is None:
+        if self._closed:
             raise ValueError("the stage is closed")
         if (camera.width_px, camera.height_px) != self._size:
             raise ValueError(f"camera of {camera.width_px}x{camera.height_px}, stage of {self._size}")
+        height, width, _ = self._drawn.shape
+        if self._window is None:
+            require_drawing()
+            self._window = new_window()
+            self._window.SetSize(width, height)
+            self._window.AddRenderer(self.renderer)
         self._place(instant, camera, ghost)
         self._aim(camera)
         self._window.Render()
-        height, width, _ = self._drawn.shape
         self._window.GetPixelData(0, 0, width - 1, height - 1, 0, self._pixels, 0)
         np.copyto(self._drawn, vtk_to_numpy(self._pixels).reshape(height, width, 3)[::-1])
         if self._smooth:

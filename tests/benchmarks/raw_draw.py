@@ -22,23 +22,29 @@ class Raw:
     def __init__(self, path: Path, size_px: tuple[int, int]) -> None:
         scene = pickle.loads(path.read_bytes())
         self._poses, self._background = scene["poses"], scene["background"]
+        self._scene, self._size = scene["things"], size_px
+        self._gl: Any = None  # opened by the first frame, after the fork
+
+    def _open(self) -> None:
+        size_px = self._size
         self._gl = gl = moderngl.create_standalone_context(backend="egl")
-        width, height = self._size = size_px
+        width, height = size_px
         self._target = gl.framebuffer(
             [gl.renderbuffer(size_px, components=4)], gl.depth_renderbuffer(size_px)
         )
         self._target.use()
-        self._things = [_Thing(gl, thing) for thing in scene["things"]]
+        self._things = [_Thing(gl, thing) for thing in self._scene]
         self._bytes = bytearray(width * height * 3)
         self._flipped = np.frombuffer(self._bytes, np.uint8).reshape(height, width, 3)[::-1]
         self._frame = np.empty((height, width, 3), np.uint8)
         gl.enable(moderngl.DEPTH_TEST)
         gl.depth_func = "<="
         gl.blend_func = moderngl.SRC_ALPHA, moderngl.ONE_MINUS_SRC_ALPHA, moderngl.ONE, moderngl.ONE_MINUS_SRC_ALPHA
-        self.renderer = gl.info["GL_RENDERER"]
 
     def frame(self, time_s: float) -> np.ndarray[Any, Any]:
         """The picture of one of the written instants."""
+        if self._gl is None:
+            self._open()
         gl = self._gl
         view, poses = self._poses[time_s]
         self._target.depth_mask = True

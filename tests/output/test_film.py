@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import itertools
+import json
 import os
 import re
 import signal
@@ -10,6 +11,7 @@ import struct
 import subprocess
 import sys
 import time
+from dataclasses import asdict
 from pathlib import Path
 
 import imageio_ffmpeg
@@ -19,7 +21,8 @@ import pytest
 from render.errors import LatepullError, MachineError, OutputExists
 from render.output import encode
 from render.output.card import card_frame
-from render.output.film import write_film
+from render.output.film import _job, write_film
+from render.output.film_worker import segment_paths
 from render.output.shot import Hold, Shot, plan_shot
 from render.output.source import SourceSpec
 from render.study_io import save_study
@@ -154,6 +157,30 @@ def test_a_failing_worker_is_told_and_leaves_nothing(study: Study, tmp_path: Pat
         write_film(study, "right", tmp_path / "film.mp4", shot=short_shot(study),
                    source=grey(fail=fail, fail_s=START_S + 0.5))  # fmt: skip
     assert list(tmp_path.iterdir()) == [] and alive(tmp_path.name) == []
+
+
+@pytest.mark.parametrize("fail", ["", "bug"])
+def test_where_forking_is_not_to_be_had(study: Study, tmp_path: Path, fail: str) -> None:
+    """Workers as processes of their own draw the same pieces, and how each ended is reported."""
+    shot = short_shot(study, rate_fps=30, card_s=0.2)
+    folder = tmp_path / "made"
+    folder.mkdir()
+    save_study(study, folder / "study")
+    job = _job(shot, folder, ["plain"], grey(fail=fail, fail_s=START_S + 0.5), 2, "", "superfast")
+    assert job.workers == 2 and len(job.pieces) > 2
+    (folder / "job.json").write_text(json.dumps(asdict(job)))
+    code = "from render.output.film_worker import main; raise SystemExit(main(['film'], forks=False))"
+    done = subprocess.run([sys.executable, "-c", code], input=f"{folder / 'job.json'}\n", capture_output=True,
+                          text=True, cwd=Path(__file__).parents[2])  # fmt: skip
+    reports = [json.loads(line) for line in done.stdout.splitlines()]
+    ends = sorted((r["run"], r["exit"]) for r in reports if "exit" in r)
+    if fail:
+        assert done.returncode == 1 and (0, 1) in ends and "RuntimeError: a bug" in done.stderr
+        return
+    assert (done.returncode, ends) == (0, [(0, 0), (1, 0)]), done.stderr
+    film = np.concatenate([decoded(segment_paths(job, piece)[0]) for piece in range(len(job.pieces))])
+    want = [grey_of(float(t) - START_S) for t in shot.time_s[:43]]
+    assert np.abs(film[:43, 60, 80, 0].astype(int) - want).max() <= 3
 
 
 @pytest.mark.skipif(os.name != "posix", reason="signals of POSIX")

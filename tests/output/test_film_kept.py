@@ -32,7 +32,7 @@ def cut_off(study: Study, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Pa
 def test_finished_pieces_are_kept_and_nothing_else(cut_off: Path) -> None:
     assert kept_frames(cut_off) == (8, 20)
     there = sorted(p.name for p in kept_folder(cut_off).iterdir())
-    assert there == ["key.json", "overlay0_000.mp4", "overlay0_001.mp4"]
+    assert there == ["key.json", "overlay_000.mp4", "overlay_001.mp4"]
     assert not cut_off.exists()
 
 
