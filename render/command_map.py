@@ -10,14 +10,15 @@ from collections.abc import Callable
 from pathlib import Path
 
 
-def add_work_options(sub: argparse.ArgumentParser) -> None:
-    """Options of every command that works through many cases."""
+def add_work_options(sub: argparse.ArgumentParser, *, chunk: bool = False) -> None:
+    """Options of every command that works through many cases; chunk: whether their number in a chunk can be given."""
     sub.add_argument("--cluster", metavar="ADDRESS", help="a Dask scheduler, such as tcp://host:8786 (default: here)")
     sub.add_argument("--resume", action="store_true", help="go on from the chunks an interrupted run has left")
     sub.add_argument("--force", action="store_true", help="replace outputs and unfinished work that are there")
     sub.add_argument("--force-size", action="store_true", help="start work above the limits of time, memory and cases")
-    sub.add_argument("--chunk", type=int, metavar="N", help="cases worked on and kept together (default 128, fewer on "
-                     "a cluster)")
+    if chunk:
+        sub.add_argument("--chunk", type=int, metavar="N", help="cases worked on and kept together (default 128, fewer "
+                         "on a cluster)")
     sub.add_argument("--out", type=Path, help="output folder (default under out/<scene>)")
 
 
@@ -40,27 +41,41 @@ def add_map(add: Callable[[str, str], argparse.ArgumentParser]) -> None:
     forms = "PATH=FROM:TO:STEP with a unit, PATH=FROM:TO/COUNT or PATH=A,B,C; the path may be its last part alone"
     sub.add_argument("--x", metavar="AXIS", help=f"{forms} (default: where in the loop the fault comes on)")
     sub.add_argument("--y", metavar="AXIS", help="as --x (default: the amount of the fault)")
-    add_work_options(sub)
+    add_work_options(sub, chunk=True)
 
 
 class CaseBar:
     """A bar with cases (or other things) done and time left on stderr, where somebody watches."""
 
-    def __init__(self, what: str = "cases") -> None:
-        self._what, self._watched, self._begun, self._had = what, sys.stderr.isatty(), time.monotonic(), 0
+    def __init__(self, what: str = "cases", *, at_most: bool = False) -> None:
+        """at_most: the work may end before all that is granted is done."""
+        self._what, self._most = what, " at most" if at_most else ""
+        self._watched, self._begun = sys.stderr.isatty(), time.monotonic()
+        self._had: int | None = None
 
-    def show(self, done: int, total: int) -> None:
+    def before(self, done: int) -> None:
+        """So many were done before this run: they say nothing about its speed."""
+        self._begun, self._had = time.monotonic(), done
+
+    def show(self, done: int, total: int, stage: str = "") -> None:
         """So many of all cases are done; the first call says how many were done before."""
+        if self._had is None:
+            self.before(done)
         if not self._watched:
             return
-        spent = time.monotonic() - self._begun
-        if self._had == 0 and spent < 0.5:
-            self._had = done
-        new = done - self._had
-        left = f"{spent / new * (total - done):5.0f} s left" if new > 0 else "   … s left"
-        bar = "#" * int(30 * done / max(total, 1))
-        sys.stderr.write(f"\r[{bar:<30}] {done:,}/{total:,} {self._what}, {left} " + ("\n" if done >= total else ""))
+        new, spent = done - (self._had or 0), time.monotonic() - self._begun
+        left = f"{spent / new * max(total - done, 0):5.0f} s left" if new > 0 else "   … s left"
+        bar = "#" * int(30 * min(done / max(total, 1), 1.0))
+        ends = "\n" if done >= total and not stage else ""
+        sys.stderr.write(f"\r\033[K{stage + ' ' if stage else ''}[{bar:<30}] {done:,}/{total:,} {self._what}, "
+                         f"{left}{self._most} {ends}")
         sys.stderr.flush()
+
+    def clear(self) -> None:
+        """Leave the line clean."""
+        if self._watched:
+            sys.stderr.write("\r\033[K")
+            sys.stderr.flush()
 
     def note(self, text: str) -> None:
         """A line on stderr, watched or not."""

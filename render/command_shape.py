@@ -5,13 +5,12 @@ from __future__ import annotations
 import argparse
 import json
 import math
-import sys
-import time
 from collections.abc import Callable
 from functools import partial
 from pathlib import Path
 
 from render.command_gates import option
+from render.command_map import CaseBar, add_work_options
 
 CHART, TABLE, FIGURES = "shape", "shape.txt", "shape.json"
 MAPS = tuple(f"map_{when}{suffix}" for when in ("before", "after") for suffix in (".png", ".pdf", ".svg"))
@@ -35,8 +34,7 @@ def add_shape(add: Callable[[str, str], argparse.ArgumentParser]) -> None:
                      help="freezes flown in the search (default 6000, about 30 a second and core pair)")
     sub.add_argument("--no-maps", action="store_true", help="leave out the maps before and after")
     sub.add_argument("--seed", type=int, default=1, help="of the search's draws (default 1)")
-    sub.add_argument("--out", type=Path, help="folder (default out/<scene>)")
-    sub.add_argument("--force", action="store_true", help="replace what is there")
+    add_work_options(sub)
 
 
 def _positive(name: str, value: float | None) -> None:
@@ -46,31 +44,24 @@ def _positive(name: str, value: float | None) -> None:
         raise LatepullError(f"{name}: read {value:g}, wanted a number above zero")
 
 
-def _tell() -> Callable[[str, int, int], None] | None:
-    if not sys.stderr.isatty():
-        return None
-    begun = time.monotonic()
-
-    def show(what: str, done: int, total: int) -> None:
-        sys.stderr.write(f"\r\033[K{what}: {done:,} of at most {total:,} cases, {time.monotonic() - begun:.0f} s ")
-        sys.stderr.flush()
-
-    return show
-
-
 def shape_command(args: argparse.Namespace) -> int:
     """Search, write the found scene, the chart and the figures; returns the exit code."""
     import numpy as np
 
-    from render.decide.shape import make_job
+    from render.decide.chunks import Folder, estimate, refuse_too_much, work_hash
+    from render.decide.ledger import Ledger
+    from render.decide.runner import runner
+    from render.decide.shape import make_job, unlike_slots
+    from render.decide.shape_flights import Flights
     from render.decide.shape_scene import found_scene, map_of
     from render.decide.shape_search import PEOPLE, find_shape
+    from render.decide.values import common_of
     from render.errors import LatepullError
     from render.files import claim_output, write_text
     from render.output.map_chart import write_map_chart
     from render.output.shape_chart import write_shape_chart
     from render.output.shape_words import plain_shape, shape_text
-    from scenes.reader import read_airframe, read_scene
+    from scenes.reader import read_airframe, read_scene, read_scene_text, scene_text
     from terrain.ground import read_ground
 
     max_g = None if args.max_g is None else option("--max-g", "load_factor", args.max_g, 1.2, 12.0)
@@ -88,33 +79,60 @@ def shape_command(args: argparse.Namespace) -> int:
     if args.seed < 0:
         raise LatepullError(f"--seed: read {args.seed}, wanted 0 or more")
     scene = read_scene(args.scene)
-    job = make_job(scene, read_airframe, read_ground(scene.ground, scene.seed), points)
+    ground = read_ground(scene.ground, scene.seed)
+    # by name from a table, so that a worker elsewhere needs none of our files
+    job = make_job(scene, common_of(scene, read_airframe, ground).airframes.__getitem__, ground, points)
     folder = args.out or Path("out") / scene.name
     force = args.force or args.out is None  # the default folder is the tool's own
     new = f"{scene.name}_shaped.yaml"
     for name in (f"{CHART}.png", f"{CHART}.svg", TABLE, FIGURES, new, *([] if args.no_maps else MAPS)):
         claim_output(folder / name, force=force)
+    bar = CaseBar(at_most=True)
+    expected = estimate(args.budget, False, len(unlike_slots(scene).formation))
+    refuse_too_much(expected, force=args.force_size)
+    if not args.json:
+        bar.note(f"at most {expected.words()}" if args.cluster is None else
+                 f"at most {args.budget:,} cases on the cluster at {args.cluster}")
     degree = math.pi / 180.0
-    shape = find_shape(
-        job, load_factor=max_g, onset_gps=onset, slope_gprad=None if args.slope is None else args.slope / degree,
-        bend_gprad2=None if args.bend is None else args.bend / degree**2, budget=args.budget, seed=args.seed,
-        steps=args.trade, tell=(tell := _tell()),
-    )
+    slope = None if args.slope is None else args.slope / degree
+    bend = None if args.bend is None else args.bend / degree**2
+    asked = ["shape", max_g, onset, slope, bend, points.tolist(), args.trade, args.budget, args.seed]
+    work = Folder(folder / "shape.unfinished", work_hash(scene_text(args.scene), asked), None)
+    with runner(args.cluster) as run:
+        try:
+            ledger = Ledger(run, work, resume=args.resume, force=args.force)
+
+            def tell(what: str, done: int, total: int) -> None:
+                if ledger.fresh == 0:
+                    bar.before(done)
+                bar.show(done, total, what)
+
+            shape = find_shape(job, load_factor=max_g, onset_gps=onset, slope_gprad=slope, bend_gprad2=bend,
+                               budget=args.budget, seed=args.seed, steps=args.trade, tell=tell,
+                               flights=Flights(job, ledger))
+            text = None if shape.best is None else found_scene(args.scene, shape, folder)
+            maps = {}
+            if text is not None and not args.no_maps:
+                for name, one in (("map_before", scene), ("map_after", read_scene_text(text, folder / new))):
+                    drawn = CaseBar()
+                    maps[name] = map_of(one, job.airframe_of, ground, ledger, partial(drawn.show, stage=name))
+        except KeyboardInterrupt:
+            bar.note(f"\ninterrupted; finished chunks are kept in {work.path}: give --resume to go on")
+            return 130
+        finally:
+            bar.clear()
     made = [*write_shape_chart(shape, folder / CHART, force=force)]
-    text, figures = shape_text(shape), plain_shape(shape)
-    made.append(write_text(folder / TABLE, text, force=force))
+    words, figures = shape_text(shape), plain_shape(shape)
+    made.append(write_text(folder / TABLE, words, force=force))
     made.append(write_text(folder / FIGURES, json.dumps(figures, indent=2, allow_nan=False) + "\n", force=force))
-    if shape.best is not None:
-        made.append(write_text(folder / new, found_scene(args.scene, shape, folder), force=force))
-    if shape.best is not None and not args.no_maps:
-        for name, one in (("map_before", scene), ("map_after", read_scene(folder / new))):
-            found = map_of(one, read_airframe, job.ground, None if tell is None else partial(tell, name))
-            made += write_map_chart(found, folder / name, force=force)
-    if tell is not None:
-        sys.stderr.write("\r\033[K")
+    if text is not None:
+        made.append(write_text(folder / new, text, force=force))
+    for name, found in maps.items():
+        made += write_map_chart(found, folder / name, force=force)
+    ledger.close()
     if args.json:
         print(json.dumps({**figures, "written": [str(p) for p in made]}, allow_nan=False))
     else:
-        print(text)
+        print(words)
         print(f"written: {', '.join(str(p) for p in made)}")
     return 0

@@ -100,7 +100,7 @@ class Folder:
 
     path: Path
     key: str
-    chunks: int
+    chunks: int | None  # None: nobody knows yet, as in a search
 
     def begin(self, *, resume: bool, force: bool) -> set[int]:
         """Make the folder or take over what is in it; returns the numbers of the chunks that are finished.
@@ -114,12 +114,12 @@ class Folder:
             if found.get("key") != self.key or found.get("chunks") != self.chunks:
                 if resume or done:
                     raise WorkChanged(
-                        f"{self.path} holds unfinished work ({len(done)} of {found.get('chunks')} chunks) of another "
+                        f"{self.path} holds unfinished work ({_some(len(done), found.get('chunks'))}) of another "
                         "scene text, grid or version; --force starts again and drops it"
                     )
             elif not resume and done:
-                raise WorkUnfinished(f"{self.path} holds {len(done)} of {self.chunks} chunks of this work; --resume "
-                                     "goes on from them, --force starts again")
+                raise WorkUnfinished(f"{self.path} holds {_some(len(done), self.chunks)} of this work; --resume goes "
+                                     "on from them, --force starts again")
             elif resume:
                 return done
         self.drop()
@@ -148,6 +148,10 @@ class Folder:
     def drop(self) -> None:
         """Remove the folder."""
         shutil.rmtree(self.path, ignore_errors=True)
+
+
+def _some(done: int, chunks: Any) -> str:
+    return f"{done} finished chunks" if chunks is None else f"{done} of {chunks} chunks"
 
 
 def _read(note: Path) -> dict[str, Any] | None:

@@ -106,6 +106,7 @@ class Cluster:
 
     def __init__(self, client: Any, address: str, mine: dict[str, str]) -> None:
         self._client, self._mine = client, mine
+        self._shared: tuple[Any, Any] | None = None  # what the last chunks shared, and where it is
         self.where = f"on the cluster at {address}"
 
     def run(self, work: Work[Any], common: Any, chunks: Sequence[tuple[int, Any]]) -> Iterator[tuple[int, Any]]:
@@ -113,7 +114,9 @@ class Cluster:
         from distributed import KilledWorker, as_completed
 
         # what is shared goes out once, not with every chunk; as a task, so that it is made again if it is lost
-        shared = self._client.submit(_same, common, pure=False)
+        if self._shared is None or self._shared[0] is not common:
+            self._shared = common, self._client.submit(_same, common, pure=False)
+        shared = self._shared[1]
         numbers = {}
         for number, chunk in chunks:
             future = self._client.submit(_checked, work, shared, chunk, self._mine, retries=RETRIES, pure=False)

@@ -21,11 +21,11 @@ from render.decide.shape import (
     TOP_RAD,
     Frozen,
     Job,
-    freeze_all,
     unlike_slots,
     with_demand,
 )
-from render.decide.shape_limits import Limits, Pull, least_load_factor, measure_pulls, own_limits
+from render.decide.shape_flights import Flights
+from render.decide.shape_limits import Limits, Pull, least_load_factor, own_limits
 from render.frames import Array
 from scenes.model import DEG, Loop, Scene
 
@@ -80,28 +80,29 @@ def fine_points(freeze_rad: Array, finer: int = FINER) -> Array:
 def find_shape(
     job: Job, *, load_factor: float | None = None, onset_gps: float | None = None, slope_gprad: float | None = None,
     bend_gprad2: float | None = None, budget: int = 8000, seed: int = 1, steps: int = 4, tell: Tell | None = None,
-    people: int = PEOPLE,
+    people: int = PEOPLE, flights: Flights | None = None,
 ) -> Shape:
     """Seek the pull whose worst freeze is least late, for ``steps`` load factors up to the greatest allowed.
 
     Where every freeze clears by itself within one, the least that does so is sought instead of higher ones.
 
     Limits not given are the scene's own. budget: freezes flown in all searches together; people: pulls in a
-    generation.
+    generation; flights: who flies them, and keeps what is done (here and not, if not given).
     Raises LatepullError: the loop can't close within the load factor; FlightError: it can't be flown as it is.
     """
     from render.errors import FlightError
 
-    start_pull = measure_pulls(job, [job.scene])[0]
+    flights = flights or Flights(job)
+    start_pull = flights.measure([job.scene])[0]
     if start_pull.error is not None:
         raise FlightError(start_pull.error)
     limits = own_limits(start_pull, load_factor=load_factor, onset_gps=onset_gps, slope_gprad=slope_gprad,
                         bend_gprad2=bend_gprad2)
     least = least_load_factor(job, limits.load_factor)
     fine = fine_points(job.freeze_rad)
-    start = freeze_all(job, [job.scene], fine)[0]
+    start = flights.freeze([job.scene], fine)[0]
     seeds: list[Array] = [_sampled(job, start_pull)]
-    plain, flown = plain_pulls(job, limits, start_pull)
+    plain, flown = plain_pulls(job, limits, start_pull, flights)
     seeds += plain
     lowest = 0.5 * (least + flown) if plain else LEAST_OVER * least
     ladder = np.geomspace(min(lowest, limits.load_factor), limits.load_factor, steps)
@@ -113,7 +114,8 @@ def find_shape(
         most = _next(trade, ladder, least)
         mine = dataclasses.replace(limits, load_factor=most)
         share = max((budget - spent) // (steps - n), 0)
-        search = Search(job, mine, start_pull, seed + n, share, f"within {most:.2f} g", tell, people)
+        search = Search(job, mine, start_pull, seed + n, share, f"within {most:.2f} g", tell, people, flights,
+                        (spent, budget))
         found = search.run(seeds)
         spent += search.spent
         below = [item for item in trade if item.limits.load_factor < most and _score(item) < _score(found)]
@@ -132,7 +134,7 @@ def find_shape(
     return Shape(job, limits, start_pull, start, start_pull.excess(limits) == 0.0, tuple(trade), best, spent, seed)
 
 
-def plain_pulls(job: Job, limits: Limits, start: Pull) -> tuple[list[Array], float]:
+def plain_pulls(job: Job, limits: Limits, start: Pull, flights: Flights) -> tuple[list[Array], float]:
     """Pulls that rise evenly from the top on to a load factor that is then held, and keep the limits: the gentlest
     four, (D,) each, and the least load factor flown in them. ([], infinity) if none keeps them.
     """
@@ -142,7 +144,7 @@ def plain_pulls(job: Job, limits: Limits, start: Pull) -> tuple[list[Array], flo
     rise = np.array([0.5, 0.7, 0.95]) * limits.slope_gprad
     loads = np.array([np.clip(first + slope * (job.knots_rad - TOP_RAD), LEAST_LOAD, most)
                       for most in held for slope in rise])
-    pulls = measure_pulls(job, search.scenes(loads))
+    pulls = flights.measure(search.scenes(loads))
     good = [i for i, p in enumerate(pulls) if p.excess(search.tight) == 0.0]
     good.sort(key=lambda i: pulls[i].load_factor)
     return [_sampled(job, pulls[i]) for i in good[:4]], min((pulls[i].load_factor for i in good), default=np.inf)
@@ -172,8 +174,11 @@ class Search:
     """One search within one load factor."""
 
     def __init__(self, job: Job, limits: Limits, start: Pull, seed: int, budget: int, what: str,
-                 tell: Tell | None, people: int = PEOPLE) -> None:
+                 tell: Tell | None, people: int = PEOPLE, flights: Flights | None = None,
+                 of: tuple[int, int] = (0, 0)) -> None:
+        """of: cases spent before this search, and granted to all."""
         self.job, self.limits, self.budget, self.what, self.tell = job, limits, budget, what, tell
+        self.flights, self.before, self.granted = flights or Flights(job), of[0], of[1] or budget
         self.tight = Limits(*(getattr(limits, f.name) * TIGHTER for f in dataclasses.fields(limits)))
         loop = job.scene.script[job.loop]
         assert isinstance(loop, Loop)
@@ -193,11 +198,11 @@ class Search:
     def scores(self, loads: Array) -> Array:
         """What each pull scores, (N,): beyond the limits, the worse the farther; within, its worst freeze."""
         scenes = self.scenes(loads)
-        pulls = measure_pulls(self.job, scenes)
+        pulls = self.flights.measure(scenes)
         excess = np.array([p.excess(self.tight) for p in pulls])
         score = NEVER_S + 10.0 + 100.0 * np.minimum(excess, 10.0)
         good = np.flatnonzero(excess == 0.0)
-        frozen = freeze_all(self.job, [unlike_slots(scenes[i]) for i in good])
+        frozen = self.flights.freeze([unlike_slots(scenes[i]) for i in good], self.job.freeze_rad)
         self.spent += len(good) * len(self.job.freeze_rad) + PULL_COSTS * len(scenes)
         self.barren = 0 if len(good) else self.barren + 1
         for i, f in zip(good, frozen, strict=True):
@@ -206,7 +211,7 @@ class Search:
         if score[least] < self.best_score:
             self.best_score, self.best_load = float(score[least]), loads[least].copy()
         if self.tell is not None:
-            self.tell(self.what, min(self.spent, self.budget), self.budget)
+            self.tell(self.what, self.before + self.spent, self.granted)
         return score
 
     def first(self, seeds: Sequence[Array]) -> Array:
@@ -227,7 +232,7 @@ class Search:
         near = [np.minimum(x, most) * (1.0 + 0.02 * i * self.rng.standard_normal(x.size))
                 for x in seeds for i in range(4)]
         drawn = np.clip(np.concatenate([np.array(near), drawn]), LEAST_LOAD, most)
-        excess = np.array([p.excess(self.tight) for p in measure_pulls(self.job, self.scenes(drawn))])
+        excess = np.array([p.excess(self.tight) for p in self.flights.measure(self.scenes(drawn))])
         self.spent += PULL_COSTS * len(drawn)
         return drawn[np.argsort(excess, kind="stable")[: self.people]]
 
@@ -279,16 +284,16 @@ class Search:
         none = Trade(self.limits, None, None, None)
         if self.best_score > NEVER_S:
             return none
-        pull = measure_pulls(job, self.scenes(self.best_load[None]))[0]
+        pull = self.flights.measure(self.scenes(self.best_load[None]))[0]
         flown = self.best_load * pull.scale
         end = float(min(self.end_load, self.best_load[-1])) * pull.scale
         for digits in (2, 4):
             scene = with_demand(job, np.round(flown, digits), round(end, digits))
-            pull = measure_pulls(job, [scene])[0]
+            pull = self.flights.measure([scene])[0]
             if pull.excess(self.limits) == 0.0:
                 points = fine_points(job.freeze_rad)
                 self.spent += len(points)
-                return Trade(self.limits, scene, pull, freeze_all(job, [scene], points)[0])
+                return Trade(self.limits, scene, pull, self.flights.freeze([scene], points)[0])
         return none
 
 
