@@ -14,6 +14,7 @@ from matplotlib.axes import Axes
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.backends.backend_pdf import FigureCanvasPdf
 from matplotlib.backends.backend_svg import FigureCanvasSVG
+from matplotlib.collections import LineCollection, PolyCollection
 from matplotlib.figure import Figure
 from matplotlib.lines import Line2D
 from matplotlib.patches import Rectangle
@@ -31,8 +32,8 @@ TITLE, SWATCHES, PANEL_FOOT, FOOT = 1.26, 0.50, 0.66, 0.84
 ROW, ROW_MOST, GRID_LEAST = 0.40, 4.6, 2.4
 DPI = 160
 INK, QUIET, RULE = "#11151a", "#5a6570", "#c9d0d6"
-GROUND_LINE: dict[str, Any] = {"color": "#d55e00", "linewidth": 1.8, "solid_capstyle": "butt"}
-CASING: dict[str, Any] = {"color": "white", "linewidth": 3.4, "solid_capstyle": "butt"}
+GROUND_LINE: dict[str, Any] = {"color": "#d55e00", "linewidth": 1.8}
+CASING: dict[str, Any] = {"color": "white", "linewidth": 3.4}
 TICK_PT = 3.2  # marks on the side of the ground's line where the flight meets the ground
 MARK = "#f0e442"
 MEASURE = 10.0  # texts are measured this much larger than they are set, since fonts are measured in whole pixels
@@ -177,7 +178,8 @@ def _legend(page: _Page, found: Map, y: float) -> None:
     line, tooth = 1.0 - (y + 0.12) / page.height, TICK_PT / 72.0 / page.height
     marks = [((x, x + 0.33), (line, line))] + [((x + s, x + s), (line, line - tooth)) for s in (0.055, 0.165, 0.275)]
     for (x0, x1), (y0, y1) in marks:
-        page.figure.add_artist(Line2D([x0 / WIDTH, x1 / WIDTH], [y0, y1], alpha=1.0 if met else 0.35, **GROUND_LINE))
+        page.figure.add_artist(Line2D([x0 / WIDTH, x1 / WIDTH], [y0, y1], alpha=1.0 if met else 0.35,
+                                      solid_capstyle="butt", **GROUND_LINE))
 
 
 def _panel(axes: Axes, found: Map, slot: int, width: float, height: float) -> None:
@@ -185,11 +187,7 @@ def _panel(axes: Axes, found: Map, slot: int, width: float, height: float) -> No
     nx, ny = found.shape
     outcome = found.outcome[:, :, slot]
     cell_w, cell_h = 72.0 * width / nx, 72.0 * height / ny
-    for i in range(nx):
-        for j in range(ny):
-            kind = Outcome(int(outcome[i, j]))
-            axes.add_patch(Rectangle((i, j), 1, 1, facecolor=FILL[kind], edgecolor=_edge(kind), linewidth=0.5,
-                                     hatch="////" if kind == Outcome.UNKNOWN else None))
+    _cells(axes, outcome)
     _numbers(axes, found, slot, min(7.6, 0.27 * cell_w, 0.42 * cell_h))
     contact = np.isfinite(found.grid("contact_s")[:, :, slot + 1]) | np.isfinite(found.grid("contact_s")[:, :, 0])
     edges = _edges(contact)
@@ -205,8 +203,16 @@ def _panel(axes: Axes, found: Map, slot: int, width: float, height: float) -> No
         side.set_color(QUIET)
 
 
-def _edge(kind: Outcome) -> str:
-    return "#3a4048" if kind == Outcome.TOO_LATE else RULE
+def _cells(axes: Axes, outcome: NDArray[np.int64]) -> None:
+    """The cells' fields, what can't be flown hatched; as collections, since thousands of single ones take seconds."""
+    kinds = [Outcome(int(kind)) for kind in outcome.ravel()]
+    corner = np.stack(np.meshgrid(*map(np.arange, outcome.shape), indexing="ij"), axis=-1).reshape(-1, 1, 2)
+    square = corner + np.array([[0, 0], [1, 0], [1, 1], [0, 1]])
+    edge = np.array(["#3a4048" if kind == Outcome.TOO_LATE else RULE for kind in kinds])
+    axes.add_collection(PolyCollection(square, facecolors=[FILL[k] for k in kinds], edgecolors=edge, linewidths=0.5))
+    unknown = np.array([kind == Outcome.UNKNOWN for kind in kinds])
+    axes.add_collection(PolyCollection(square[unknown], facecolors="none", edgecolors=RULE, linewidths=0.5,
+                                       hatch="////"))
 
 
 def _numbers(axes: Axes, found: Map, slot: int, size: float) -> None:
@@ -247,12 +253,15 @@ def _edges(mask: NDArray[np.bool_]) -> list[tuple[int, int, int, int]]:
 
 def _ground_line(axes: Axes, edges: list[tuple[int, int, int, int]], tick_x: float, tick_y: float) -> None:
     """The line between flights that meet the ground and those that don't, with teeth on the side of the first."""
-    for style, teeth in ((CASING, False), (GROUND_LINE, True)):
-        for x, y, to_x, to_y in edges:
-            axes.add_line(Line2D([x, x + (to_x == 0)], [y, y + (to_y == 0)], zorder=3, **style))
-            for part in (1 / 6, 1 / 2, 5 / 6) if teeth else ():
-                at_x, at_y = x + part * (to_x == 0), y + part * (to_y == 0)
-                axes.add_line(Line2D([at_x, at_x + to_x * tick_x], [at_y, at_y + to_y * tick_y], zorder=3, **style))
+    sides: list[list[tuple[float, float]]] = []
+    teeth: list[list[tuple[float, float]]] = []
+    for x, y, to_x, to_y in edges:
+        sides.append([(x, y), (x + (to_x == 0), y + (to_y == 0))])
+        for part in (1 / 6, 1 / 2, 5 / 6):
+            at_x, at_y = x + part * (to_x == 0), y + part * (to_y == 0)
+            teeth.append([(at_x, at_y), (at_x + to_x * tick_x, at_y + to_y * tick_y)])
+    axes.add_collection(LineCollection(sides, capstyle="butt", zorder=3, **CASING))
+    axes.add_collection(LineCollection(sides + teeth, capstyle="butt", zorder=3, **GROUND_LINE))
 
 
 def _name_regions(axes: Axes, outcome: NDArray[np.int64], cell_w: float, cell_h: float,

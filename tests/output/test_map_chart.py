@@ -69,7 +69,7 @@ def texts(figure: Figure) -> list[str]:
 
 
 @pytest.mark.parametrize(("nx", "ny", "slots", "alike"), [(31, 10, 2, True), (5, 3, 3, False), (2, 2, 1, True),
-                                                          (60, 40, 2, False)])
+                                                          (60, 40, 2, True)])
 def test_everything_is_on_the_page(nx: int, ny: int, slots: int, alike: bool) -> None:
     found = made_up(nx, ny, slots, alike=alike)
     figure = map_figure(found)
