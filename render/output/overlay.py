@@ -6,6 +6,8 @@ Only these rectangles are touched (a composite over the whole frame would cost 1
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 from numpy.typing import NDArray
 from PIL import Image, ImageDraw
@@ -65,6 +67,8 @@ class Overlay:
         side = (round(250 * u), round(216 * u))
         self._side = SideView(study, slot, start_s, end_s, side, u)
         self._side_at = (width - side[0] - round(14 * u), round(14 * u))
+        # the last pictures: figures change ten times a second, frames come more often
+        self._figure_of, self._caption_of = _Last(self._figure), _Last(self._caption)
 
     def draw(self, frame: Frame, time_s: float, caption: str = "") -> None:
         """Draw the overlay of a study instant into a frame (h, w, 3), in place; caption: words of a held picture."""
@@ -72,32 +76,38 @@ class Overlay:
         u = self._u
         y = self._strip_y
         width = self._size[0]
-        frame[y : y + self._bar_height, : self._text_width] = np.asarray(self._figure(texts))
+        frame[y : y + self._bar_height, : self._text_width] = self._figure_of(
+            texts.margin_label, texts.margin_value, texts.margin_note, self._ink(texts), texts.state in ENDED
+        )
         bar = np.asarray(self._bar.draw(texts, time_s))
         frame[y : y + self._bar_height, self._text_width : self._text_width + bar.shape[1]] = bar
         frame[y : y + self._bar_height, self._text_width + bar.shape[1] :] = BACK
         frame[y + self._bar_height :, :width] = np.asarray(self._line.draw(time_s))
-        _put(frame, self._caption(texts), round(14 * u), round(14 * u))
-        _put(frame, self._side.draw(time_s), *self._side_at)
+        caption_words = f"{texts.height}{GAP}{texts.speed}"
+        _put(frame, self._caption_of(texts.since_fault, caption_words), round(14 * u), round(14 * u))
+        _put(frame, np.asarray(self._side.draw(time_s)), *self._side_at)
         if caption:
             banner = self._banner(caption)
-            _put(frame, banner, (width - banner.width) // 2, y - banner.height - round(14 * u))
+            _put(frame, np.asarray(banner), (width - banner.width) // 2, y - banner.height - round(14 * u))
 
-    def _figure(self, texts: OverlayTexts) -> Image.Image:
+    def _ink(self, texts: OverlayTexts) -> Colour:
+        """The colour of the big number."""
+        if texts.state == "left" and texts.margin_s < self._reaction_s:
+            return ORANGE  # what is left is less than the likely reaction takes
+        return STATE_COLOURS.get(texts.state, WHITE)
+
+    def _figure(self, label: str, value: str, note: str, colour: Colour, ended: bool) -> Image.Image:
         """The big number with its words."""
         u = self._u
         image = Image.new("RGB", (self._text_width, self._bar_height), BACK)
-        colour = STATE_COLOURS.get(texts.state, WHITE)
-        if texts.state == "left" and texts.margin_s < self._reaction_s:
-            colour = ORANGE  # what is left is less than the likely reaction takes
-        if texts.state in ENDED:
+        if ended:
             # a block of colour under white figures: told apart by shape too, and bright in every kind of eye
-            width = text_width(texts.margin_value, self._fitted(texts.margin_value, 58 * u, True)) + 20 * u
+            width = text_width(value, self._fitted(value, 58 * u, True)) + 20 * u
             ImageDraw.Draw(image).rectangle((8 * u, 32 * u, 8 * u + width, 85 * u), fill=VERMILION)
         rows = (
-            (16, 18, texts.margin_label, 19.0, False, WHITE),
-            (14, 57, texts.margin_value, 58.0, True, colour),
-            (16, 99, texts.margin_note, 17.0, False, WHITE),
+            (16, 18, label, 19.0, False, WHITE),
+            (14, 57, value, 58.0, True, colour),
+            (16, 99, note, 17.0, False, WHITE),
         )
         for x, y, text, size, bold, ink in rows:
             if text.startswith("a pull now ") and text_width(text, self._fitted(text, size * u, bold)) > self._room:
@@ -131,12 +141,11 @@ class Overlay:
             put_words(image, 14 * u, 80 * u, self._note, small, YELLOW)
         return image
 
-    def _caption(self, texts: OverlayTexts) -> Image.Image:
+    def _caption(self, since_fault: str, figures: str) -> Image.Image:
         """Time since the fault, height and speed, on the caption's panel."""
         u = self._u
         image = self._panel.copy()
-        put_words(image, 14 * u, 51 * u, texts.since_fault, font(26 * u, True), WHITE)
-        figures = f"{texts.height}{GAP}{texts.speed}"
+        put_words(image, 14 * u, 51 * u, since_fault, font(26 * u, True), WHITE)
         put_words(image, image.width - 14 * u, 52 * u, figures, font(22 * u), WHITE, right=True)
         return image
 
@@ -149,8 +158,22 @@ class Overlay:
         return image
 
 
-def _put(frame: Frame, image: Image.Image, x: int, y: int) -> None:
-    """Copy an image into a frame with its corner at (x, y), cut at the frame's edges."""
+class _Last:
+    """A drawing that is made anew only when its words change; gives its pixels (h, w, 3)."""
+
+    def __init__(self, make: Callable[..., Image.Image]) -> None:
+        self._make = make
+        self._words: tuple[object, ...] | None = None
+        self._pixels: Frame | None = None
+
+    def __call__(self, *words: object) -> Frame:
+        if self._pixels is None or words != self._words:
+            self._words, self._pixels = words, np.asarray(self._make(*words))
+        return self._pixels
+
+
+def _put(frame: Frame, picture: Frame, x: int, y: int) -> None:
+    """Copy a picture into a frame with its corner at (x, y), cut at the frame's edges."""
     height, width = frame.shape[:2]
-    picture = np.asarray(image)[: height - y, : width - x]
+    picture = picture[: height - y, : width - x]
     frame[y : y + picture.shape[0], x : x + picture.shape[1]] = picture

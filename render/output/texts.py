@@ -5,8 +5,6 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 
-import numpy as np
-
 from render.frames import Array
 from render.output.events import slot_index, slot_title
 from render.output.words import Units, seconds
@@ -38,7 +36,7 @@ def sample(time_s: Array, values: Array, at_s: float) -> float:
 
     Beside a NaN the nearer sample counts, so that a margin's first or last value isn't lost.
     """
-    i = int(np.clip(np.searchsorted(time_s, at_s), 1, len(time_s) - 1))
+    i = min(max(int(time_s.searchsorted(at_s)), 1), len(time_s) - 1)
     t0, t1, v0, v1 = (float(x) for x in (time_s[i - 1], time_s[i], values[i - 1], values[i]))
     part = min(max((at_s - t0) / (t1 - t0), 0.0), 1.0)
     if math.isnan(v0) or math.isnan(v1):

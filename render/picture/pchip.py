@@ -13,23 +13,28 @@ import numpy as np
 from render.frames import Array
 
 
-def pchip(x: Array, y: Array, at: Array) -> Array:
-    """Values (*at.shape, ...) at places of the curve through rising x (N,) and y (N, ...), N at least 3.
+class Curve:
+    """The curve through rising x (N,) and y (N, ...), N at least 3; beyond the ends the outer cubics go on."""
 
-    Beyond the ends the outer cubics go on.
-    """
-    rows = y.reshape(len(y), -1)
-    step = np.diff(x)[:, None]
-    slope = np.diff(rows, axis=0) / step
-    inner = _inner(step, slope)
-    tangent = np.concatenate([_end(step[:2], slope[:2]), inner, _end(step[:-3:-1], slope[:-3:-1])])
-    places = np.asarray(at, float).reshape(-1)
-    i = np.clip(np.searchsorted(x, places, side="right") - 1, 0, len(x) - 2)
-    h, t = step[i], places[:, None] - x[i, None]
-    bend = (tangent[i] + tangent[i + 1] - 2.0 * slope[i]) / h
-    values = rows[i] + t * (tangent[i] + t * ((slope[i] - tangent[i]) / h - bend + t * bend / h))
-    result: Array = values.reshape((*np.shape(at), *y.shape[1:]))
-    return result
+    def __init__(self, x: Array, y: Array) -> None:
+        rows = y.reshape(len(y), -1)
+        step = np.diff(x)[:, None]
+        slope = np.diff(rows, axis=0) / step
+        inner = _inner(step, slope)
+        tangent = np.concatenate([_end(step[:2], slope[:2]), inner, _end(step[:-3:-1], slope[:-3:-1])])
+        bend = (tangent[:-1] + tangent[1:] - 2.0 * slope) / step
+        self._x, self._shape = np.asarray(x, float), y.shape[1:]
+        self._powers = rows[:-1], tangent[:-1], (slope - tangent[:-1]) / step - bend, bend / step
+
+    def __call__(self, at: Array) -> Array:
+        """Values (*at.shape, ...) at places."""
+        places = np.asarray(at, float).reshape(-1)
+        i = np.searchsorted(self._x[1:-1], places, side="right")
+        t = places[:, None] - self._x[i, None]
+        one, two, three, four = (power[i] for power in self._powers)
+        values = one + t * (two + t * (three + t * four))
+        result: Array = values.reshape((*np.shape(at), *self._shape))
+        return result
 
 
 def _inner(step: Array, slope: Array) -> Array:

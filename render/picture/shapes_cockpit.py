@@ -3,14 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
 from render.frames import Array
 from render.picture.loft import Colour, Surf, grid_tris, merge, surface
 from render.picture.paint import Side, divided, station
-from render.picture.pchip import pchip
+from render.picture.pchip import Curve
 from render.picture.shapes_parts import Fit
 from render.picture.shapes_sections import Body, ellipsoid
 
@@ -31,6 +31,11 @@ class Canopy:
     frames: tuple[tuple[float, float, float], ...]
     rail_m: float = 0.055
     fullness: float = 2.3
+    _top: Curve = field(init=False, repr=False)
+
+    def __post_init__(self) -> None:
+        rising = self.crown[::-1]
+        object.__setattr__(self, "_top", Curve(rising[:, 0], rising[:, 1]))
 
     def sill_z(self, x_m: Array) -> Array:
         """Height (z) of the rail at x."""
@@ -38,8 +43,7 @@ class Canopy:
 
     def crown_z(self, x_m: Array) -> Array:
         """Height (z) of the canopy's top at x."""
-        table = self.crown[::-1]
-        return pchip(table[:, 0], table[:, 1], x_m)
+        return self._top(x_m)
 
     def skin_z(self, x_m: Array, y_m: Array) -> Array:
         """Height (z) of the glass at x, y; the rail's height beyond it."""

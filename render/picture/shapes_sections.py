@@ -6,13 +6,13 @@ Body axes, metres. Airfoil: the four-digit thickness form, NACA Report 460 (1933
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
 from render.frames import Array
 from render.picture.loft import Colour, Surf, closed, rings
-from render.picture.pchip import pchip
+from render.picture.pchip import Curve
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -23,12 +23,15 @@ class Body:
     """
 
     stations: Array
+    _curve: Curve = field(init=False, repr=False)
+
+    def __post_init__(self) -> None:
+        rising = self.stations[::-1]
+        object.__setattr__(self, "_curve", Curve(rising[:, 0], rising[:, 1:]))
 
     def at(self, x_m: Array) -> Array:
         """Interpolated rows (..., 5): half width, top, bottom, waist, exponent; shape-preserving cubic in x."""
-        table = self.stations[::-1]
-        result: Array = pchip(table[:, 0], table[:, 1:], x_m)
-        return result
+        return self._curve(x_m)
 
     def top_z(self, x_m: Array, y_m: Array) -> Array:
         """Height (z, down) of the upper skin at x, y."""
@@ -184,10 +187,11 @@ def box(low_m: Sequence[float], high_m: Sequence[float], colour: Colour, lean: f
 def outline(rows: Sequence[Sequence[float]]) -> Callable[[Array], Array]:
     """Half width over x of a plan form: rows (x, half width), x falling; negative beyond its ends."""
     table = np.array(rows, float)[::-1]
+    curve = Curve(table[:, 0], table[:, 1])
 
     def width(x_m: Array) -> Array:
         beyond = np.maximum(table[0, 0] - x_m, x_m - table[-1, 0])
-        inside = pchip(table[:, 0], table[:, 1], np.clip(x_m, table[0, 0], table[-1, 0]))
+        inside = curve(np.clip(x_m, table[0, 0], table[-1, 0]))
         return np.where(beyond > 0, -beyond, inside)
 
     return width

@@ -130,6 +130,8 @@ class Stage:
             require_drawing()
             self._window = new_window()
             self._window.SetSize(width, height)
+            self._window.SetSwapBuffers(False)  # nobody looks at the window itself: 2 ms of copies less
+            self._window.SetFrameBlitModeToNoBlit()
             self._window.AddRenderer(self.renderer)
         self._place(instant, camera, ghost)
         self._aim(camera)
