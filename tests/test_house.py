@@ -7,6 +7,7 @@ import json
 import subprocess
 import sys
 from collections.abc import Iterator
+from functools import cache
 from pathlib import Path
 
 import pytest
@@ -165,21 +166,29 @@ def test_the_top_level_holds_what_is_fixed() -> None:
     assert {line for line in found.stdout.splitlines() if line.startswith("out/")} == {"out/.gitkeep"}
 
 
-def reaches(name: str, goal: str, seen: set[str]) -> bool:
-    """Whether importing a module brings a room with it, by the imports at its top."""
-    if name in seen:
-        return False
-    seen.add(name)
-    top = ast.Module([n for n in TREES[name].body if isinstance(n, ast.Import | ast.ImportFrom)], [])
-    targets = [target for _, target in imports(name, top)]
-    if any(room_of(t) == goal for t in targets if t in TREES):
-        return True
-    return any(reaches(t, goal, seen) for t in targets if t in TREES)
+@cache
+def brings(name: str) -> frozenset[str]:
+    """Our modules that importing one loads, itself among them: by the imports at their tops, and the rooms around."""
+    found, to_do = {name}, [name]
+    while to_do:
+        here = to_do.pop()
+        top = ast.Module([n for n in TREES[here].body if isinstance(n, ast.Import | ast.ImportFrom)], [])
+        for target in [*(target for _, target in imports(here, top)), here.rpartition(".")[0]]:
+            if target in TREES and target not in found:
+                found.add(target)
+                to_do.append(target)
+    return frozenset(found)
 
 
-# Loads each module alone: the process knows numpy, scipy, numba and the like, forks, and each child imports one. What
-# numba itself loads at its first compiled function, half a second of it, is loaded before too, and our source is
-# compiled to bytecode but once.
+def after(name: str, names: list[str]) -> str:
+    """Of the modules that one brings the one that brings most, but not it: it may be there before. "" if none."""
+    own = [n for n in brings(name) - {name} if n in names and name not in brings(n)]
+    return max(own, key=lambda n: (len(brings(n)), n), default="")
+
+
+# Loads each module in a process that holds nothing of ours but what that module brings itself: one that needs more, or
+# that works only after another, fails. The process knows numpy, scipy, numba and the like (also what numba loads at its
+# first compiled function) and forks; each child loads one module and forks for those that bring it.
 ALONE_SCRIPT = """
 import gc, json, os, sys
 import numpy, scipy.interpolate, scipy.optimize, scipy.signal, scipy.special, scipy.stats, numba, yaml
@@ -189,47 +198,44 @@ import concurrent.futures, email.parser, http.client, queue, ssl, urllib.request
 from numba.core.registry import cpu_target
 cpu_target.typing_context.refresh(), cpu_target.target_context.refresh()
 gc.freeze(), gc.disable()
-sys.dont_write_bytecode, sys.pycache_prefix = False, sys.argv[1]
 
-def load(name, write):
+def load(name):
     try:
-        assert not [m for m in sys.modules if m.split(".")[0] in ("render", "scenes", "terrain")]
+        more = {m for m in sys.modules if m.split(".")[0] in ("render", "scenes", "terrain")} - set(brings[name])
+        assert not more, f"{sorted(more)} were there before"
         __import__(name)
         heavy = {m.split(".")[0] for m in sys.modules} & {"vtk", "vtkmodules", "pyvista"}
-        said = f"brings {sorted(heavy)}" if heavy else ""
+        return f"brings {sorted(heavy)}" if heavy and not draws else ""
     except BaseException as exc:
-        said = f"{type(exc).__name__}: {exc}"
-    os.write(write, said.encode()[:4000])
-    os._exit(0)
+        return f"{type(exc).__name__}: {exc}"
 
-failed, names, running = {}, json.load(sys.stdin), []
-while names or running:
-    while names and len(running) < 3:
-        read, write = os.pipe()
-        name = names.pop()
+def below(parent):
+    for name in [n for n in brings if after[n] == parent]:
         child = os.fork()
         if child == 0:
-            load(name, write)
-        os.close(write)
-        running.append((name, child, read))
-    name, child, read = running.pop(0)
-    said = b""
-    while part := os.read(read, 4096):
-        said += part
-    os.close(read)
-    os.waitpid(child, 0)
-    if said:
-        failed[name] = said.decode()
-print(json.dumps(failed))
+            print(json.dumps([name, load(name)]), flush=True)
+            below(name)
+            os._exit(0)
+        os.waitpid(child, 0)
+
+brings, after, draws = json.load(sys.stdin)
+if draws:
+    import pyvista
+below("")
 """
 
 
 @pytest.mark.skipif(sys.platform == "win32", reason="needs fork")
-def test_each_module_loads_alone_and_without_vtk(tmp_path: Path) -> None:
-    names = [n for n in TREES if room_of(n) != "render.picture" and not reaches(n, "render.picture", set())]
-    for room in ("terrain", "scenes", "render.flight", "render.margin", "render.sight", "render.study",
-                 "render.decide", "render.command"):
+@pytest.mark.parametrize("draws", [False, True])
+def test_each_module_loads_alone_and_without_vtk(draws: bool) -> None:
+    """Those that bring the room that draws may load VTK; no other may."""
+    names = [n for n in TREES if any(room_of(m) == "render.picture" for m in brings(n)) is draws]
+    for room in ("render.picture",) if draws else ("terrain", "scenes", "render.flight", "render.margin",
+                                                   "render.sight", "render.study", "render.decide", "render.command"):
         assert room in {room_of(n) for n in names}
-    done = subprocess.run([sys.executable, "-c", ALONE_SCRIPT, str(tmp_path)], input=json.dumps(names), cwd=ROOT,
-                          capture_output=True, text=True, timeout=300, check=True)
-    assert json.loads(done.stdout.splitlines()[-1]) == {}
+    given = [{n: sorted(brings(n)) for n in names}, {n: after(n, names) for n in names}, draws]
+    done = subprocess.run([sys.executable, "-c", ALONE_SCRIPT], input=json.dumps(given), cwd=ROOT, capture_output=True,
+                          text=True, timeout=300, check=True)
+    said = dict(json.loads(line) for line in done.stdout.splitlines())
+    assert set(said) == set(names)
+    assert {name: words for name, words in said.items() if words} == {}
