@@ -14,10 +14,12 @@ from numpy.typing import NDArray
 from terrain.ground import Ground
 from terrain.hedges import Lines, field_edges, keep
 from terrain.land import Land, land_of
-from terrain.pattern import Array, Plan, place_at, value_noise
+from terrain.pattern import Array, place_at
+from terrain.woods import Canopy, canopy_of, depth_of_wood
 from terrain.yards import Boxes, yards
 
 REACH_M = 2_600.0
+WOODS_REACH_M = 2_300.0  # woods farther off are painted on the ground
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -41,6 +43,7 @@ class Cover:
     hedges: Lines
     hedge_height_m: float
     boxes: Boxes
+    canopy: Canopy
 
 
 def cover_of(ground: Ground, seed: int) -> Cover:
@@ -57,7 +60,12 @@ def cover_of(ground: Ground, seed: int) -> Cover:
     trees = _trees(land, rng, edges, boxes)
     gaps = rng.random(len(edges.north_m)) < land.standing.hedge_gaps
     near = np.hypot(edges.north_m, edges.east_m) < land.standing.hedge_reach_m
-    return Cover(trees, keep(edges, ~gaps & near), land.standing.hedge_height_m, boxes)
+
+    def may_stand(north_m: Array, east_m: Array) -> NDArray[np.bool_]:
+        return open_ground(land, north_m, east_m, 8.0) & boxes.clear_of(north_m, east_m, np.full(len(north_m), 4.0))
+
+    canopy = canopy_of(land.plan, land.standing.wood_height_m, WOODS_REACH_M, may_stand, rng)
+    return Cover(trees, keep(edges, ~gaps & near), land.standing.hedge_height_m, boxes, canopy)
 
 
 def open_ground(land: Land, north_m: Array, east_m: Array, margin_m: float) -> NDArray[np.bool_]:
@@ -89,7 +97,7 @@ def _trees(land: Land, rng: np.random.Generator, edges: Lines, boxes: Boxes) -> 
     # in woods: thick along the edge of the wood and near, thin inside and far
     near, wide = _scatter(rng, 1_000.0, stand.wood_tries), _scatter(rng, REACH_M, stand.wood_tries // 2)
     n, e = np.concatenate([near[0], wide[0]]), np.concatenate([near[1], wide[1]])
-    depth = _depth_of_wood(plan, n, e)
+    depth = depth_of_wood(plan, n, e)
     far = np.hypot(n, e)
     inner = np.clip(1.1 - far / 1_300.0, 0.12, 1.0)
     thin = np.where(depth < 22.0, 1.0, inner) * np.clip(1.35 - far / REACH_M, 0.2, 1.0)
@@ -112,7 +120,7 @@ def _trees(land: Land, rng: np.random.Generator, edges: Lines, boxes: Boxes) -> 
     free = open_ground(land, north, east, 6.0) & (place_at(plan, north, east).road_m > 0.5 * plan.road_m + 0.4 * widths)
     free &= boxes.clear_of(north, east, 0.5 * widths)
     north, east = north[free], east[free]
-    deep = _depth_of_wood(plan, north, east) > 14.0
+    deep = depth_of_wood(plan, north, east) > 14.0
     return Trees(kinds[free], north, east, heights[free], widths[free], rng.random(len(north)), deep)
 
 
@@ -120,11 +128,3 @@ def _scatter(rng: np.random.Generator, reach_m: float, count: int) -> tuple[Arra
     """Places in a disc, denser toward the middle."""
     radius, turn = reach_m * rng.random(count) ** 0.62, rng.uniform(0.0, 2.0 * np.pi, count)
     return radius * np.cos(turn), radius * np.sin(turn)
-
-
-def _depth_of_wood(plan: Plan, north_m: Array, east_m: Array) -> Array:
-    """About how far inside a wood a place is, m; negative outside."""
-    place = place_at(plan, north_m, east_m)
-    level = value_noise(place.u_m / 600.0, place.v_m / 600.0, plan.salt) - plan.wild_wood
-    result: Array = np.where(place.wood, np.where(place.enclosed, place.edge_m - 3.0, 500.0 * level), -1.0)
-    return result

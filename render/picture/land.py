@@ -17,6 +17,7 @@ from render.picture.objects import object_actors
 from render.picture.shadows import shadow_actors
 from render.picture.sky import sky_actors
 from render.picture.trees import TreeField
+from render.picture.woods import Woods
 from scenes.model import Day
 from terrain.cover import cover_of
 from terrain.ground import Ground
@@ -39,7 +40,8 @@ class Land:
         self.shadow_actors = shadow_actors(cover, ground, self.light)
         self._ground = GroundLook(ground, plan, self.light)
         self.ground_actors = self._ground.actors
-        self.object_actors = object_actors(cover, ground, plan, self.light)
+        self._woods = Woods(cover.canopy, ground, plan)
+        self.object_actors = [*object_actors(cover, ground, plan, self.light), *self._woods.actors]
         solid = [*self.object_actors, *self.ground_actors]
         self._eyed = [*solid, *self.shadow_actors, *self.tree_actors]
         #: In drawing order: what is opaque nearest first, then shadows and trees, which are see-through at their edges.
@@ -66,6 +68,7 @@ class Land:
         eye = tuple(to_display(np.asarray(pos_e_m, float)))
         axis_d = None if axis_e is None else to_display(np.asarray(axis_e, float))
         self._ground.set_eye(np.array(eye))
+        self._woods.set_eye(np.array(eye))
         self._trees.set_eye(np.array(eye), axis_d, half_field_rad)
         for actor in self._eyed:
             shader = actor.GetShaderProperty()

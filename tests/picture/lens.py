@@ -30,6 +30,7 @@ class Lens:
         self.camera = self.renderer.GetActiveCamera()
         self.camera.SetViewAngle(field_deg)
         self.window.AddRenderer(self.renderer)
+        self._hidden: list[vtk.vtkActor] = []
         for actor in land.actors:
             self.renderer.AddActor(actor)
 
@@ -44,8 +45,9 @@ class Lens:
 
     def show(self, *actors: vtk.vtkActor) -> None:
         """Only these; all without any."""
+        self._hidden = [actor for actor in self.land.actors if actors and actor not in actors]
         for actor in self.land.actors:
-            actor.SetVisibility(not actors or actor in actors)
+            actor.SetVisibility(actor not in self._hidden)
 
     def look(self, pos_e_m: tuple[float, float, float], bearing_deg: float, up_deg: float) -> NDArray[np.uint8]:
         """The picture (h, w, 3) from north, east, down; straight down has its top toward the bearing."""
@@ -61,6 +63,8 @@ class Lens:
         self._axes = np.stack([np.cross(axis, top), top, axis])
         self._eye = eye
         self.land.set_eye(np.array(pos_e_m))
+        for actor in self._hidden:
+            actor.SetVisibility(False)
         return self.again()
 
     def again(self) -> NDArray[np.uint8]:

@@ -25,6 +25,7 @@ from render.picture.probe import probe_drawing
 from render.picture.stage import Stage
 from render.types import Flight, Study
 from scenes.model import Day
+from terrain.cover import cover_of
 from terrain.ground import ground_names, read_ground
 from tests.output.made_up import made_up_study
 from tests.picture.airframes_made import airframe
@@ -48,6 +49,18 @@ def land(name: str) -> Frame:
     attitude = quat_multiply(quat_from_euler(0.35, np.radians(-15.0), 0.0), LEVEL)
     with Stage((), read_ground(name, 1), Day(), SIZE) as stage:
         return stage.draw(NOBODY, Camera(np.array([-900.0, -200.0, -300.0]), attitude, np.radians(75.0), *SIZE)).copy()
+
+
+def wood() -> Frame:
+    """From 70 m beside a wood of the hills."""
+    ground = read_ground("hills", 1)
+    canopy = cover_of(ground, 1).canopy
+    middle = np.argmax(canopy.height_m * (np.hypot(canopy.north_m, canopy.east_m) < 1200.0))
+    north, east = canopy.north_m[middle] - 260.0, canopy.east_m[middle] - 60.0
+    at = np.array([north, east, -float(ground.height_at(north, east)) - 70.0])
+    attitude = quat_multiply(quat_from_euler(0.25, np.radians(-14.0), 0.0), LEVEL)
+    with Stage((), ground, Day(), SIZE) as stage:
+        return stage.draw(NOBODY, Camera(at, attitude, np.radians(75.0), *SIZE)).copy()
 
 
 def aircraft(shape: str) -> Frame:
@@ -89,6 +102,7 @@ def wide() -> Frame:
 
 PICTURES: dict[str, Callable[[], Frame]] = {
     **{f"land_{name}": lambda name=name: land(name) for name in ground_names()},
+    "wood": wood,
     **{f"aircraft_{shape}": lambda shape=shape: aircraft(shape) for shape in ("jet", "turboprop", "piston")},
     "seat_lead": lambda: seat("right", 8.0, look="lead"),
     "seat_left": lambda: seat("left", 25.0),
