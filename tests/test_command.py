@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
+import contextlib
+import io
 import json
+import shutil
 from collections.abc import Callable
 from pathlib import Path
 
@@ -29,10 +32,19 @@ def run(tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureF
     return command
 
 
-def test_fly_prints_the_table_and_writes_the_verdict_it_is_made_from(run: Run, tmp_path: Path) -> None:
-    code, out, _ = run("fly", "late_freeze")
-    assert code == 0 and "Slot right: last pull" in out and CAUTION.split(".")[0] in out
-    folder = tmp_path / "out" / "late_freeze"
+@pytest.fixture(scope="module")
+def flown(tmp_path_factory: pytest.TempPathFactory) -> tuple[Path, str]:
+    """Where ``fly late_freeze`` was given, with what it made in ``out``, and what it printed."""
+    where, said = tmp_path_factory.mktemp("flown"), io.StringIO()
+    with contextlib.chdir(where), contextlib.redirect_stdout(said):
+        assert main(["fly", "late_freeze"]) == 0
+    return where, said.getvalue()
+
+
+def test_fly_prints_the_table_and_writes_the_verdict_it_is_made_from(flown: tuple[Path, str]) -> None:
+    where, out = flown
+    assert "Slot right: last pull" in out and CAUTION.split(".")[0] in out
+    folder = where / "out" / "late_freeze"
     assert {p.name for p in folder.iterdir()} == {
         "verdict.json", "table.txt", "tracks.csv", "margin.csv", "study.json", "study.npz"
     }
@@ -45,7 +57,7 @@ def test_fly_prints_the_table_and_writes_the_verdict_it_is_made_from(run: Run, t
 
 
 def test_fly_json_is_the_verdict(run: Run, tmp_path: Path) -> None:
-    code, out, _ = run("fly", "early_pull_freeze", "--json", "--out", "mine")
+    code, out, _ = run("fly", "trailing_surface", "--json", "--out", "mine")
     assert code == 0
     assert json.loads(out) == json.loads((tmp_path / "mine" / "verdict.json").read_text(encoding="utf-8"))
 
@@ -53,10 +65,10 @@ def test_fly_json_is_the_verdict(run: Run, tmp_path: Path) -> None:
 def test_a_named_output_is_kept_unless_forced(run: Run, tmp_path: Path) -> None:
     assert run("fly", "healthy_loop", "--out", "mine")[0] == 0
     before = (tmp_path / "mine" / "verdict.json").read_bytes()
-    code, _, err = run("fly", "late_freeze", "--out", "mine")
+    code, _, err = run("fly", "trailing_surface", "--out", "mine")
     assert code == 2 and "is already there and is kept; give --force" in err
     assert (tmp_path / "mine" / "verdict.json").read_bytes() == before
-    assert run("fly", "late_freeze", "--out", "mine", "--force")[0] == 0
+    assert run("fly", "trailing_surface", "--out", "mine", "--force")[0] == 0
     assert (tmp_path / "mine" / "verdict.json").read_bytes() != before
 
 
@@ -68,12 +80,16 @@ def test_a_named_output_is_kept_unless_forced(run: Run, tmp_path: Path) -> None:
     (("film", "late_freeze", "--from", "40", "--to", "30"), 2, "film from 40 s to 30 s: the flight runs from 0 s to"),
     (("film", "late_freeze", "--slot", "middle"), 2, "--slot: read middle, wanted one of lead, right, left"),
 ])  # fmt: skip
-def test_wrong_input_is_named(run: Run, words: tuple[str, ...], code: int, complaint: str) -> None:
+def test_wrong_input_is_named(
+    run: Run, tmp_path: Path, flown: tuple[Path, str], words: tuple[str, ...], code: int, complaint: str
+) -> None:
+    shutil.copytree(flown[0] / "out", tmp_path / "out")  # as for a user who has flown the scene
     got, out, err = run(*words)
     assert got == code and complaint in err and out == ""
 
 
-def test_json_carries_an_error_too(run: Run) -> None:
+def test_json_carries_an_error_too(run: Run, tmp_path: Path, flown: tuple[Path, str]) -> None:
+    shutil.copytree(flown[0] / "out", tmp_path / "out")
     code, out, err = run("film", "late_freeze", "--json", "--slot", "middle")
     assert code == 2 and "--slot" in err
     assert json.loads(out) == {"error": err.strip(), "exit_code": 2}

@@ -121,12 +121,17 @@ def test_batch_makes_what_is_missing_and_nothing_twice(
     listed = tmp_path / "monday.yaml"
     listed.write_text("jobs:\n  - fly: late_freeze\n  - fly: early_freeze\n    name: early\n", encoding="utf-8")
     ran: list[str] = []
-    real = command_batch.run_job
-    monkeypatch.setattr(command_batch, "run_job", lambda common, job: ran.append(job.name) or real(common, job))
+
+    def made(common: None, job: command_batch.Job) -> command_batch.Made:
+        """What a process of its own makes (below) at once."""
+        ran.append(job.name)
+        return command_batch.Made(0, "", {"verdict.json": json.dumps(job.argv).encode(), "table.txt": b"table"})
+
+    monkeypatch.setattr(command_batch, "run_job", made)
     assert run("batch", "monday.yaml")[0] == 0
     early = tmp_path / "out" / "monday" / "early"
     assert ran == ["fly_late_freeze", "early"]
-    assert json.loads((early / "verdict.json").read_text(encoding="utf-8"))["scene"] == "early_freeze"
+    assert json.loads((early / "verdict.json").read_text(encoding="utf-8")) == ["fly", "early_freeze"]
     (early / "table.txt").unlink()
     code, out, _ = run("batch", "monday.yaml", "--json")
     assert code == 0 and ran[2:] == ["early"] and json.loads(out)["jobs"]["early"]["made"]
@@ -151,7 +156,12 @@ def test_batch_says_all_faults_of_a_list_with_their_lines(run: Run, tmp_path: Pa
 def test_a_job_that_fails_does_not_stop_the_others(run: Run, tmp_path: Path) -> None:
     scene = tmp_path / "high.yaml"
     scene.write_text("like: late_freeze\nfault: {kind: freeze, at: {loop_angle: 359.9 deg}}\n", encoding="utf-8")
-    (tmp_path / "two.yaml").write_text("jobs:\n  - fly: ./high.yaml\n  - fly: late_freeze\n", encoding="utf-8")
+    (tmp_path / "two.yaml").write_text("jobs:\n  - fly: ./high.yaml\n  - fly: healthy_loop\n", encoding="utf-8")
     code, out, err = run("batch", "two.yaml")
     assert code == 2 and "1 made, 0 finished before, 1 failed" in out
     assert "fly_high: the fault's point is never reached" in err
+    made = tmp_path / "out" / "two" / "fly_healthy_loop"
+    assert json.loads((made / "verdict.json").read_text(encoding="utf-8"))["scene"] == "healthy_loop"
+    noted = json.loads((made / "job.json").read_text(encoding="utf-8"))["files"]
+    assert noted and sorted(p.name for p in made.iterdir()) == sorted([*noted, "job.json"])
+    assert not (made.parent / "fly_high").exists()
