@@ -33,7 +33,7 @@ from render.errors import LatepullError
 from render.output.card import card_frame
 from render.output.encode import SegmentWriter
 from render.output.overlay import Frame, Overlay
-from render.output.source import FrameSource, SourceSpec
+from render.output.source import FrameSource, SourceSpec, caption_bottom_px
 from render.study_io import load_study
 
 REPORT_EVERY_S = 0.2
@@ -85,7 +85,8 @@ class Drawing:
         self._source: FrameSource = self._stack.enter_context(source)
         self._overlay = None
         if "overlay" in job.kinds:
-            self._overlay = Overlay(study, job.slot, job.size_px, job.start_s, job.end_s, job.note)
+            self._overlay = Overlay(study, job.slot, job.size_px, job.start_s, job.end_s, job.note,
+                                    caption_bottom_px(self._source))
         self._cards = {kind: card_frame(study, job.slot, job.size_px, plain=kind == "plain", note=job.note)
                        for kind in job.kinds}
 

@@ -50,14 +50,19 @@ class Overlay:
     """The overlay of one slot's film; holds its resting pictures, ``draw`` writes into a frame."""
 
     def __init__(
-        self, study: Study, slot: str, size_px: tuple[int, int], start_s: float, end_s: float, note: str = ""
+        self, study: Study, slot: str, size_px: tuple[int, int], start_s: float, end_s: float, note: str = "",
+        caption_bottom_px: int | None = None,
     ) -> None:
-        """size_px: width and height of the frames; start_s, end_s: the timeline's ends; note: a line to stay shown."""
+        """size_px: width and height of the frames; start_s, end_s: the timeline's ends; note: a line to stay shown;
+        caption_bottom_px: the row above which the caption lies (None: at the top).
+        """
         self._study, self._slot, self._size, self._note = study, slot, size_px, note
         width, height = size_px
         self._u = u = height / 720.0
         self._text_width = round(TEXT_WIDTH * u)
         self._panel = self._caption_panel(study, slot)
+        edge = round(14 * u)
+        self._caption_at = edge, (edge if caption_bottom_px is None else caption_bottom_px - self._panel.height - edge)
         strip, bar = strip_px(height), round(BAR_HEIGHT * u)
         self._strip_y, self._bar_height, self._line_height = height - strip, bar, strip - bar
         self._bar = MarginBar(study, slot, (width - self._text_width - round(14 * u), bar), u)
@@ -84,7 +89,7 @@ class Overlay:
         frame[y : y + self._bar_height, self._text_width + bar.shape[1] :] = BACK
         frame[y + self._bar_height :, :width] = np.asarray(self._line.draw(time_s))
         caption_words = f"{texts.height}{GAP}{texts.speed}"
-        _put(frame, self._caption_of(texts.since_fault, caption_words), round(14 * u), round(14 * u))
+        _put(frame, self._caption_of(texts.since_fault, caption_words), *self._caption_at)
         _put(frame, np.asarray(self._side.draw(time_s)), *self._side_at)
         if caption:
             banner = self._banner(caption)

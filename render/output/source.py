@@ -22,6 +22,12 @@ class FrameSource(Protocol):
         ...
 
 
+def caption_bottom_px(source: FrameSource) -> int | None:
+    """The row above which a source wants the overlay's caption, where it doesn't lie well at the top; else None."""
+    row: int | None = getattr(source, "caption_bottom_px", None)
+    return row
+
+
 Opener = Callable[..., AbstractContextManager[FrameSource]]
 
 

@@ -111,9 +111,12 @@ class StageSource:
 class TwinSource:
     """Healthy and faulted in one picture, in step: side by side (healthy left) or stacked (healthy above)."""
 
-    def __init__(self, sources: list[StageSource], size_px: tuple[int, int], stacked: bool) -> None:
-        self._sources, self._stacked = sources, stacked
+    def __init__(self, sources: list[StageSource], size_px: tuple[int, int], above_px: int | None) -> None:
+        """above_px: the upper picture's height where one stands above the other."""
+        self._sources, self._stacked = sources, above_px is not None
         self._frame: Frame = np.zeros((size_px[1], size_px[0], 3), np.uint8)
+        #: At the top of a low picture the caption would hide the lead; at its foot lies the own wing.
+        self.caption_bottom_px = above_px
 
     def frame(self, time_s: float) -> Frame:
         """The picture at an instant, (h, w, 3); used again by the next call."""
@@ -151,7 +154,7 @@ def open_stage(study: Study, slot: str, size_px: tuple[int, int], **options: obj
         stacked = chosen.twin == "stack"
         part, part_field = twin_part(size_px, chosen.clear_px, stacked, field)
         halves = [opened(replace(chosen, flight=flight), part, part_field) for flight in ("healthy", "faulted")]
-        yield TwinSource(halves, size_px, stacked)
+        yield TwinSource(halves, size_px, part[1] if stacked else None)
 
 
 def twin_part(

@@ -12,7 +12,7 @@ from render.errors import LatepullError
 from render.files import claim_output, whole_file
 from render.output.overlay import Frame, Overlay
 from render.output.shot import default_range, even_size, event_caption, key_events
-from render.output.source import FrameSource, SourceSpec
+from render.output.source import FrameSource, SourceSpec, caption_bottom_px
 from render.types import Study
 
 
@@ -37,7 +37,8 @@ def still_frame(
     frame = np.array(source.frame(time_s))
     if overlay:
         start_s, end_s = default_range(study, slot)
-        drawn = Overlay(study, slot, size_px, min(start_s, time_s), max(end_s, time_s), note)
+        drawn = Overlay(study, slot, size_px, min(start_s, time_s), max(end_s, time_s), note,
+                        caption_bottom_px(source))
         drawn.draw(frame, time_s, caption)
     return frame
 

@@ -91,6 +91,14 @@ def test_only_its_rectangles_are_touched(study: Study) -> None:
     assert not touched[240 : 720 - STRIP].any() and not touched[110:240, :1000].any()
 
 
+def test_the_caption_keeps_clear_of_a_low_upper_picture(study: Study) -> None:
+    frame = np.full((720, 1280, 3), 77, np.uint8)
+    Overlay(study, "right", SIZE, 14.0, 28.0, caption_bottom_px=270).draw(frame, fault_s(study))
+    touched = (frame != 77).any(axis=-1)[:, :1000]
+    rows = np.flatnonzero(touched[: 720 - STRIP].any(axis=1))
+    assert rows[-1] == 270 - 14 - 1 and rows[0] > 130
+
+
 @pytest.mark.parametrize("size", [(640, 360), (1920, 1080), (1024, 768), (160, 120)])
 def test_overlay_draws_at_every_size(size: tuple[int, int]) -> None:
     for study in (made_up_study(), made_up_study(fault=False, units="metres")):
