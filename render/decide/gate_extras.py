@@ -11,6 +11,7 @@ from scipy.interpolate import PchipInterpolator
 
 from render.decide.brief import (
     AHEAD_S,
+    GATE_ANGLES,
     TOP,
     VERTICAL_DOWN,
     Brief,
@@ -20,9 +21,21 @@ from render.decide.brief import (
     closing_heights,
     compile_brief,
 )
-from render.decide.gates import RUNGS_M, STEP_RAD, TOLERANCE_M, Gate, Solver, solve_gate
+from render.decide.gates import (
+    KEEP_S,
+    NEAR_S,
+    RISE_MPS,
+    ROUNDS,
+    RUNGS_M,
+    STEP_RAD,
+    TOLERANCE_M,
+    Gate,
+    Guess,
+    Solver,
+    solve_gate,
+)
 from render.decide.solve import least_values
-from render.decide.worst import freeze_angles, worst_freezes
+from render.decide.worst import Worst, freeze_angles, worst_freezes
 from render.errors import FlightError
 from render.flight.air import air_at
 from render.flight.inside import Crossing, begin_at, crossing, fly_far, loop_step
@@ -56,16 +69,24 @@ def base_needed(solver: Solver, airframe_of: Callable[[str], Airframe]) -> tuple
     The loop is closed at each base anew.
     """
     b, who = solver.briefed, list(solver.who)
-    angles = freeze_angles(TOP, STEP_RAD / 2.0)
-    why = ""
+    every = freeze_angles(TOP, STEP_RAD / 2.0)
+    angles, why = every[::2], ""
 
-    def left(item: NDArray[np.int_], by_m: Array) -> Array:
-        nonlocal why
+    def worst_of(by_m: Array, angles: Array) -> Worst:
         flown = briefs([compile_brief(lifted(b.plan.scene, float(d)), airframe_of) for d in by_m])
         twins = [begin_at(f.plan, f.gates["top"]) for f in flown]
-        worst = worst_freezes(twins, np.array([f.scale for f in flown]), angles, solver.ground, AHEAD_S["top"] + 4.0,
-                              offset_s=b.gates["top"].time_s, from_hand=solver.from_hand, count=solver.count)
+        return worst_freezes(twins, np.array([f.scale for f in flown]), angles, solver.ground, AHEAD_S["top"] + 4.0,
+                             offset_s=b.gates["top"].time_s, from_hand=solver.from_hand, count=solver.count)
+
+    def left(item: NDArray[np.int_], by_m: Array) -> Array:
+        nonlocal why, angles
+        worst = worst_of(by_m, angles)
         last = int(np.argmax(by_m))
+        if angles.size == every[::2].size:
+            # up the whole ladder once; from there on those that come near the worst, and all of them at the end
+            near = worst.each_s[:, :, who] <= worst.least_s[:, None, who] + KEEP_S
+            keep = np.any(near & np.isfinite(worst.each_s[:, :, who]), axis=(0, 2))
+            angles = angles[keep] if np.any(keep) else angles
         why = f"a freeze at {np.degrees(worst.at_rad[last, 1]):.0f} deg leaves too little from any base tried"
         return worst.least_s[:, who] - solver.want_s
 
@@ -73,8 +94,28 @@ def base_needed(solver: Solver, airframe_of: Callable[[str], Airframe]) -> tuple
     rungs = _flyable(b.plan.scene, float(low[0]), airframe_of)
     if rungs.size < 2:
         return np.full(len(who), np.nan), "the loop does not come round from any other base"
-    found, _ = least_values(left, low, rungs, TOLERANCE_M, 0.02)
+    found, _ = least_values(left, low, rungs, TOLERANCE_M, NEAR_S)
+    for _ in range(ROUNDS):
+        # the points between, and where one of them is worse, again from there on
+        o = np.flatnonzero(np.isfinite(found[0]))
+        if o.size == 0:
+            break
+        worst = worst_of(found[0, o], every)
+        mine = np.array(who)[o]
+        short = solver.want_s - worst.least_s[np.arange(o.size), mine]
+        if not np.any(short > NEAR_S):
+            break
+        angles = np.union1d(angles, worst.at_rad[np.arange(o.size), mine][short > NEAR_S])
+        again = _rungs_from(rungs + low[0], found[0, o], np.clip(short, 0.0, 3.0) * RISE_MPS)
+        found, _ = least_values(left, low, again - low[0], TOLERANCE_M, NEAR_S)
     return b.base_m + found[0], "" if np.isfinite(found[0, who.index(1)]) else why
+
+
+def _rungs_from(ladder: Array, found: Array, more: Array) -> Array:
+    """A ladder with rungs close above what was found: it begins and ends as it did."""
+    close = np.concatenate([found, found + more + 2.0])
+    rungs: Array = np.unique(np.concatenate([ladder[:1], close[close < ladder[-1]], ladder[-1:]]))
+    return rungs
 
 
 def _flyable(scene: Scene, low_m: float, airframe_of: Callable[[str], Airframe]) -> Array:
@@ -201,7 +242,10 @@ def day_changes(solver: Solver, gates: dict[str, Gate], airframe_of: Callable[[s
             continue
         for gate, at_home in gates.items():
             i = at_home.flown
-            found = solve_gate(dataclasses.replace(solver, briefed=there, who=(1,)), gate, at_home.speed_mps[[i]])
+            cas, known = at_home.speed_mps[[i]], at_home.worst_rad[i][np.isfinite(at_home.worst_rad[i])]
+            gap = at_home.noticed_m[i, 1] - solver.floor_heights(gate, cas)
+            guess = Guess(gap[:, None], np.union1d(freeze_angles(GATE_ANGLES[gate], 3.0 * STEP_RAD), known))
+            found = solve_gate(dataclasses.replace(solver, briefed=there, who=(1,)), gate, cas, guess)
             out[name][gate] = (float(found.briefed_m[0] - at_home.briefed_m[i]),
                                float(found.limit_m[0] - at_home.limit_m[i]),
                                float(found.noticed_m[0, 0] - at_home.noticed_m[i, 1]))

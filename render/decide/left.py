@@ -88,12 +88,13 @@ def only(plan: Plan, aircraft: Sequence[int]) -> Plan:
 
 def work_left(
     twins: Sequence[Plan], scale: Array, faulted: Sequence[Plan], twin_of: Sequence[int], ground: Ground,
-    seconds: float, *, offset_s: float = 0.0, sink: EvidenceSink | None = None,
+    seconds: float, *, offset_s: float = 0.0, sink: EvidenceSink | None = None, every_notice: bool = True,
 ) -> Left:
     """Fly healthy twins (W) and flights with a fault (F), and find last pulls and notices of every slot.
 
     scale (W,): of the back half's demand; twin_of (F,): each flight's twin; seconds: how long is flown at first;
     offset_s: what the clock of the script says at the start (looks at the gauges). Plans of one shape.
+    every_notice: also of flights whose last pull never runs out, where nothing hangs on it.
     """
     heights, grid = ground_arrays(ground)
     of = np.asarray(twin_of, dtype=int)
@@ -103,7 +104,7 @@ def work_left(
         todo, span = order[at : at + CHUNK], seconds
         for last in range(EXTENSIONS + 1):
             found = _chunk(twins, scale, [faulted[int(i)] for i in todo], of[todo], todo, ground, heights, grid,
-                           span, offset_s, sink)
+                           span, offset_s, sink, every_notice)
             done = found.whole | (found.why != r.OK) | np.isnan(found.fault_s) | (last == EXTENSIONS)
             parts.append((todo[done], _rows(found, done)))
             todo, span = todo[~done], span * LONGER
@@ -146,6 +147,7 @@ def stopped_s(raw: Raw) -> Array:
 def _chunk(
     twins: Sequence[Plan], scale: Array, plans: Sequence[Plan], of: NDArray[np.int_], cases: NDArray[np.int_],
     ground: Ground, heights: Array, grid: Array, seconds: float, offset_s: float, sink: EvidenceSink | None,
+    every_notice: bool,
 ) -> Left:
     steps = round(seconds / DT_S)
     used = np.unique(of)
@@ -160,6 +162,7 @@ def _chunk(
     over, ended = _over(healthy, raw, twin)
     ends = np.minimum(np.minimum(raw.status[:, :, 1], raw.status[:, :1, 1]), over[:, None]).astype(np.int64)
     contact = (raw.status[:, 0, 0] == r.CONTACT) & (raw.status[:, 0, 1] <= over)
+    cut = (raw.status[:, 0, 0] != r.OK) & (raw.status[:, 0, 0] != r.CONTACT) & (raw.status[:, 0, 1] <= over)
     low, last = np.full((f, slots), np.inf), np.full((f, slots), np.inf)
     notice = np.full((f, slots, len(OBSERVERS)), np.inf)
     cue = np.full((f, slots, len(OBSERVERS)), NO_CUE, dtype=object)
@@ -174,9 +177,9 @@ def _chunk(
         for i in hit:
             since = raw.a[i, int(np.ceil(fault_s[i] / DT_S)) : ends[i, 0] + 1, 1:, r.A_AGL]
             low[i] = np.maximum(np.min(since, axis=0, initial=np.inf), 0.0)
-        _look(plans, healthy, raw, twin, hit, fault_s, over, ground, offset_s, notice, cue, cases, sink)
+        asked = hit if every_notice else hit[np.any(np.isfinite(last[hit]), axis=1) | cut[hit]]
+        _look(plans, healthy, raw, twin, asked, fault_s, over, ground, offset_s, notice, cue, cases, sink)
     # outside the model's range nothing is known: what was there at its edge is all that counts
-    cut = (raw.status[:, 0, 0] != r.OK) & (raw.status[:, 0, 0] != r.CONTACT) & (raw.status[:, 0, 1] <= over)
     edge = ends[:, 0] * DT_S
     last = np.where(cut[:, None] & np.isinf(last), edge[:, None], last)
     return Left(tuple(slot.name for slot in plans[0].scene.formation), fault_s, low, last, notice,
@@ -217,9 +220,10 @@ def _look(
         own = own[np.argsort(fault_s[own], kind="stable")]
         for at in range(0, own.size, VIEWS):
             rows = own[at : at + VIEWS]
-            begin = max(int(np.floor(fault_s[rows[0]] / DT_S + 1e-9)), 0)
+            # on one beat for all, so that a flight is seen at the same instants in whatever company
+            begin = max(int(np.floor(fault_s[rows[0]] / DT_S + 1e-9)), 0) // every * every
             end = min(int(np.max(np.minimum(raw.status[rows, 0, 1], over[rows]))) + every, raw.y.shape[1] - 1)
-            pick = np.arange(min(begin, max(end - every, 0)), end + 1, every)
+            pick = np.arange(min(begin, max(end - every, 0) // every * every), end + 1, every)
             time_s = pick * DT_S
             called = np.full((rows.size, len(OBSERVERS)), np.inf)
             yh, ah = healthy.y[w : w + 1, pick], healthy.a[w : w + 1, pick]
