@@ -54,6 +54,9 @@ class Craft:
             actor.SetForceTranslucent(is_clear)
             actor.SetForceOpaque(not is_clear)
         self._matrices = [np.eye(4) for _ in self._parts]
+        # asked for once: a formation has dozens of parts in each frame
+        self._place = [actor.GetUserMatrix().DeepCopy for actor in self._actors]
+        self._tell = [actor.GetShaderProperty().GetVertexCustomUniforms().SetUniform3f for actor in self._actors]
 
     def actors(self, *, clear: bool) -> list[vtkActor]:
         """The see-through actors, or the others: they are drawn in that order."""
@@ -73,13 +76,12 @@ class Craft:
             if part.moved_by is not None:
                 matrix = matrix @ part_matrix(part, moved_rad.get(part.moved_by, 0.0))
             self._matrices[i] = matrix
-            actor.GetUserMatrix().DeepCopy(matrix.ravel())
+            self._place[i](matrix.ravel())
             if lit:
-                turn = matrix[:3, :3]
-                uniforms = actor.GetShaderProperty().GetVertexCustomUniforms()
-                uniforms.SetUniform3f("sunPart", tuple(self._light.toward_d @ turn))
-                uniforms.SetUniform3f("upPart", tuple(turn[2]))
-                uniforms.SetUniform3f("eyePart", tuple((eye_d_m - matrix[:3, 3]) @ turn))
+                turn, tell = matrix[:3, :3], self._tell[i]
+                tell("sunPart", (self._light.toward_d @ turn).tolist())
+                tell("upPart", turn[2].tolist())
+                tell("eyePart", ((eye_d_m - matrix[:3, 3]) @ turn).tolist())
 
     def hide(self) -> None:
         """Draw nothing of it."""

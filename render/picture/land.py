@@ -53,6 +53,9 @@ class Land:
             self._eyed.append(self.cloud_actor)
         for actor in self.actors:
             set_light(actor, self.light)
+        shaders = [actor.GetShaderProperty() for actor in self._eyed]
+        self._tell = [uniforms.SetUniform3f for shader in shaders
+                      for uniforms in (shader.GetVertexCustomUniforms(), shader.GetFragmentCustomUniforms())]
 
     @property
     def trees_drawn(self) -> int:
@@ -70,10 +73,8 @@ class Land:
         self._ground.set_eye(np.array(eye))
         self._woods.set_eye(np.array(eye))
         self._trees.set_eye(np.array(eye), axis_d, half_field_rad)
-        for actor in self._eyed:
-            shader = actor.GetShaderProperty()
-            shader.GetVertexCustomUniforms().SetUniform3f("eye", eye)
-            shader.GetFragmentCustomUniforms().SetUniform3f("eye", eye)
+        for tell in self._tell:
+            tell("eye", eye)
         for actor in self.sky_actors:
             actor.SetPosition(*eye)
         if self.cloud_actor is not None:

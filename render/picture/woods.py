@@ -22,6 +22,7 @@ class Woods:
 
     def __init__(self, canopy: Canopy, ground: Ground, land: Land) -> None:
         self.actors: list[vtkActor] = []
+        self._boxes = np.empty((0, 3, 2))
         if len(canopy.triangles) == 0:
             return
         foot = ground.height_at(canopy.north_m, canopy.east_m)
@@ -44,13 +45,14 @@ class Woods:
             )
             actor.GetProperty().BackfaceCullingOn()
             self.actors.append(actor)
+        self._boxes = np.array([actor.GetBounds() for actor in self.actors]).reshape(-1, 3, 2)
 
     def set_eye(self, eye_d: Array) -> None:
         """Leave out the squares that are too far to stand up."""
-        for actor in self.actors:
-            box = np.reshape(actor.GetBounds(), (3, 2))
-            away = np.linalg.norm(eye_d - np.clip(eye_d, box[:, 0], box[:, 1]))
-            actor.SetVisibility(bool(away < RISES_M[0]))
+        off = np.maximum(np.maximum(self._boxes[:, :, 0] - eye_d, eye_d - self._boxes[:, :, 1]), 0.0)
+        near = np.einsum("nk,nk->n", off, off) < RISES_M[0] ** 2
+        for actor, shown in zip(self.actors, near.tolist(), strict=True):
+            actor.SetVisibility(shown)
 
 
 def _normals(points: Array, canopy: Canopy) -> Array:

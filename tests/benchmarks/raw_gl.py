@@ -95,7 +95,8 @@ def _thing(stage: Any, actor: Any, code: tuple[str, str]) -> dict[str, Any]:
     held = data.GetPointData()
     for i in range(held.GetNumberOfArrays()):
         name = {"colour": "scalarColor", "Normals": "normalPart"}.get(held.GetArrayName(i), held.GetArrayName(i))
-        inputs[name] = np.array(vtk_to_numpy(held.GetArray(i)), np.uint8 if name == "scalarColor" else np.float32)
+        values = np.array(vtk_to_numpy(held.GetArray(i)), np.uint8 if name == "scalarColor" else np.float32)
+        inputs[name] = values.reshape(len(values), -1)
     look = actor.GetProperty()
     material = {"ambientIntensity": look.GetAmbient(), "diffuseIntensity": look.GetDiffuse(),
                 "opacityUniform": look.GetOpacity()}  # fmt: skip
