@@ -116,11 +116,29 @@ class Frozen:
         return worst
 
     @property
+    def scores_s(self) -> Array:
+        """The likely observer's lateness, (F,); below any where the freeze clears by itself, the more, the lower."""
+        late = self.lateness_s[:, LIKELY]
+        known = np.minimum(np.where(np.isnan(late), NEVER_S, late), NEVER_S)
+        scores: Array = np.where(self.clears, CLEAR_S - self.clear_m / CLEAR_M_PER_S, known)
+        return scores
+
+    @property
     def score_s(self) -> float:
         """What a search makes small: the likely observer's worst lateness; where all clear, the less the more."""
-        if np.all(self.clears):
-            return CLEAR_S - float(np.min(self.clear_m)) / CLEAR_M_PER_S
-        return float(min(self.worst_s[LIKELY], NEVER_S))
+        return float(np.max(self.scores_s))
+
+
+def short_of_clearing(frozen: Frozen, floor_m: float) -> Array:
+    """How far each freeze is from clearing by itself, on the scale of scores, s, (F,).
+
+    Lateness jumps where a freeze begins to clear; this goes there evenly, but for a jump at contact with the ground.
+    """
+    late = np.nan_to_num(frozen.lateness_s[:, LIKELY], nan=NEVER_S, posinf=NEVER_S, neginf=CLEAR_S)
+    clear = np.nan_to_num(frozen.clear_m, nan=-floor_m)
+    met = np.where(clear <= 1e-9 - floor_m, np.clip(late, CLEAR_S, NEVER_S) - CLEAR_S, 0.0)
+    short: Array = CLEAR_S - clear / CLEAR_M_PER_S + met
+    return short
 
 
 def unlike_slots(scene: Scene) -> Scene:

@@ -17,19 +17,21 @@ from scenes.model import Scene
 
 MEASURED = 20  # pulls in a piece that measures them
 FROZEN = 48  # cases in a piece that freezes them, about; it takes whole pulls
-NUMBERS = tuple(f.name for f in dataclasses.fields(Pull) if f.name not in ("angle_rad", "flown_load", "error"))
+SAMPLES = ("angle_rad", "flown_load", "lift", "demand")
+NUMBERS = tuple(f.name for f in dataclasses.fields(Pull) if f.name not in (*SAMPLES, "error"))
 
 
 def measure_work(job: Job, scenes: Sequence[Scene]) -> Columns:
     """Pulls of some loops as columns; a piece of work for a runner."""
     pulls = measure_pulls(job, scenes)
-    shown = max(len(p.angle_rad) for p in pulls)
-    angle, load = np.full((2, len(pulls), shown), np.nan)
-    for i, pull in enumerate(pulls):
-        if pull.error is None:
-            angle[i], load[i] = pull.angle_rad, pull.flown_load
-    return {"numbers": np.array([[getattr(p, name) for name in NUMBERS] for p in pulls]), "angle_rad": angle,
-            "flown_load": load, "error": np.array([p.error or "" for p in pulls])}
+    columns: dict[str, Array] = {}
+    for name in SAMPLES:
+        columns[name] = np.full((len(pulls), max(len(getattr(p, name)) for p in pulls)), np.nan)
+        for i, pull in enumerate(pulls):
+            if pull.error is None:
+                columns[name][i] = getattr(pull, name)
+    return {"numbers": np.array([[getattr(p, name) for name in NUMBERS] for p in pulls]), **columns,
+            "error": np.array([p.error or "" for p in pulls])}
 
 
 def pulls_of(columns: Columns) -> list[Pull]:
@@ -37,7 +39,7 @@ def pulls_of(columns: Columns) -> list[Pull]:
     out = []
     for i, why in enumerate(columns["error"]):
         numbers = dict(zip(NUMBERS, map(float, columns["numbers"][i]), strict=True))
-        shown = {} if why else {name: tuple(map(float, columns[name][i])) for name in ("angle_rad", "flown_load")}
+        shown = {} if why else {name: tuple(map(float, columns[name][i])) for name in SAMPLES}
         out.append(Pull(**numbers, **shown, error=str(why) or None))  # type: ignore[arg-type]
     return out
 

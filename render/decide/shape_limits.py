@@ -49,8 +49,10 @@ class Pull:
     speed_max_mps: float  # calibrated, on the way down
     down_height_m: float  # at vertical down, above the field
     down_cas_mps: float
-    angle_rad: tuple[float, ...] = ()  # samples of the flown load factor, for a chart
+    angle_rad: tuple[float, ...] = ()  # of the samples
     flown_load: tuple[float, ...] = ()
+    lift: tuple[float, ...] = ()  # as a part of that where buffet begins
+    demand: tuple[float, ...] = ()  # at SAMPLES_RAD
     error: str | None = None
 
     def excess(self, limits: Limits) -> float:
@@ -60,6 +62,22 @@ class Pull:
         return float(sum(
             max(getattr(self, f.name) / getattr(limits, f.name) - 1.0 - SLACK, 0.0) for f in dataclasses.fields(limits)
         ))
+
+
+    def parts(self, limits: Limits) -> Array:
+        """What the limits are set to as parts of them, sample by sample, (L,); empty if not flown.
+
+        Nothing beyond 1 is within the limits but for what lies between samples.
+        """
+        if self.error is not None:
+            return np.array([])
+        slope = np.diff(self.demand) / np.diff(SAMPLES_RAD) / limits.slope_gprad
+        bend = np.diff(slope) / (SAMPLES_RAD[1] - SAMPLES_RAD[0]) * limits.slope_gprad / limits.bend_gprad2
+        return np.concatenate([
+            np.array(self.flown_load) / limits.load_factor, np.array(self.lift) / limits.buffet, slope, -slope,
+            bend, -bend, [self.load_factor / limits.load_factor, self.buffet / limits.buffet,
+                          self.onset_gps / limits.onset_gps],
+        ])
 
 
 NOT_FLOWN = (np.nan,) * 8
@@ -113,7 +131,8 @@ def _measure(job: Job, plan: Plan, raw: object, b: int, scale: float) -> Pull:
         scale, float(load.max()), float(onset.max()), float(np.abs(slope).max()),
         float(np.abs(np.diff(slope)).max() / (SAMPLES_RAD[1] - SAMPLES_RAD[0])), float(lift.max()),
         float(a[rows, r.A_CAS].max()), down.height_m, down.cas_mps, tuple(float(x) for x in shown),
-        tuple(float(x) for x in np.interp(shown, angle, load)),
+        tuple(float(x) for x in np.interp(shown, angle, load)), tuple(float(x) for x in np.interp(shown, angle, lift)),
+        tuple(float(x) for x in demand),
     )
 
 

@@ -1,4 +1,4 @@
-"""The search: pulls tried side by side, by differential evolution and then a simplex, within limits of load factor.
+"""The search: pulls tried side by side, by differential evolution and then step by step, within limits of load factor.
 
 Every draw is seeded: the same seed and budget give the same answer.
 """
@@ -8,9 +8,10 @@ from __future__ import annotations
 import dataclasses
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
-from scipy.optimize import differential_evolution, minimize
+from scipy.optimize import differential_evolution
 
 from render.decide.shape import (
     CLEAR_M_PER_S,
@@ -21,21 +22,25 @@ from render.decide.shape import (
     TOP_RAD,
     Frozen,
     Job,
+    short_of_clearing,
     unlike_slots,
     with_demand,
 )
 from render.decide.shape_flights import Flights
 from render.decide.shape_limits import Limits, Pull, least_load_factor, own_limits
+from render.decide.shape_polish import Judged, polish
 from render.frames import Array
 from scenes.model import DEG, Loop, Scene
 
 PEOPLE = 20  # pulls in a generation
 DRAWS = 4  # times as many are drawn and measured for the first one
-POLISH = 0.25  # part of a search's budget that goes to its simplex
+POLISH = 0.6  # part of a search's budget that is left to the steps from the best that evolution has found
 TIGHTER = 0.995  # limits inside a search, so that rounding what it finds to 0.01 g keeps them
 FINER = 5  # freeze points of the final check, to each one of the search
+SETTLED = 2e-3  # of a scale: nearer to 1 it changes nothing that matters
 PULL_COSTS = 2  # cases: what closing and measuring a pull takes
 BARREN = 8  # generations without a pull that keeps the limits, after which a search gives up
+LED = 2  # pulls led into the limits where none keeps them
 ROUNDS = 3  # searches of one load factor, each with the freeze points the last one had missed
 MISSED_S = 0.05  # of lateness, between freeze points
 BETTER_S = 0.02  # less is no difference
@@ -195,24 +200,55 @@ class Search:
         """Candidates as scenes; loads (N, D)."""
         return [with_demand(self.job, x, float(min(self.end_load, x[-1]))) for x in loads]
 
-    def scores(self, loads: Array) -> Array:
-        """What each pull scores, (N,): beyond the limits, the worse the farther; within, its worst freeze."""
-        scenes = self.scenes(loads)
-        pulls = self.flights.measure(scenes)
+    def judge(self, loads: Array, always: bool = False, *, clearing: bool = False) -> Judged:
+        """Pulls measured, and frozen if they keep the limits, or ``always``; the best of them is remembered.
+
+        clearing: judged by how far each freeze is from clearing by itself instead.
+        """
+        loads, scenes, pulls = self._settled(loads)
         excess = np.array([p.excess(self.tight) for p in pulls])
-        score = NEVER_S + 10.0 + 100.0 * np.minimum(excess, 10.0)
-        good = np.flatnonzero(excess == 0.0)
+        rows = [p.parts(self.tight) for p in pulls]
+        parts = np.full((len(rows), max(len(row) for row in rows)), np.nan)
+        for n, row in enumerate(rows):
+            parts[n, : len(row)] = row
+        good = np.flatnonzero(np.isfinite(excess) if always else excess == 0.0)
+        late = np.full((len(rows), len(self.job.freeze_rad)), np.nan)
         frozen = self.flights.freeze([unlike_slots(scenes[i]) for i in good], self.job.freeze_rad)
-        self.spent += len(good) * len(self.job.freeze_rad) + PULL_COSTS * len(scenes)
-        self.barren = 0 if len(good) else self.barren + 1
+        self.spent += len(good) * len(self.job.freeze_rad)
         for i, f in zip(good, frozen, strict=True):
-            score[i] = max(f.score_s, self.enough)
-        least = int(np.argmin(score))
-        if score[least] < self.best_score:
-            self.best_score, self.best_load = float(score[least]), loads[least].copy()
+            score = max(f.score_s, self.enough)
+            late[i] = np.maximum(short_of_clearing(f, self.job.scene.floor_m) if clearing else f.scores_s, self.enough)
+            if excess[i] == 0.0 and score < self.best_score:
+                self.best_score, self.best_load = score, loads[i].copy()
         if self.tell is not None:
             self.tell(self.what, self.before + self.spent, self.granted)
-        return score
+        return Judged(parts, excess, late)
+
+    def _settled(self, loads: Array) -> tuple[Array, list[Scene], list[Pull]]:
+        """Pulls as they would be written: at the load factor they are flown at, so that closing hardly scales them.
+
+        The scale comes in over the top, where a freeze answers to a hundredth of a g: what is judged is what is kept.
+        """
+        scenes = self.scenes(loads)
+        pulls = self.flights.measure(scenes)
+        off = [i for i, p in enumerate(pulls) if p.error is None and abs(p.scale - 1.0) > SETTLED]
+        loads = loads.copy()
+        for i in off:
+            loads[i] *= pulls[i].scale
+        again = self.scenes(loads[off])
+        for i, scene, pull in zip(off, again, self.flights.measure(again), strict=True):
+            scenes[i], pulls[i] = scene, pull
+        self.spent += PULL_COSTS * (len(scenes) + len(off))
+        return loads, scenes, pulls
+
+    def scores(self, loads: Array) -> Array:
+        """What each pull scores, (N,): beyond the limits, the worse the farther; within, its worst freeze."""
+        found = self.judge(loads)
+        inside = found.excess == 0.0
+        self.barren = 0 if inside.any() else self.barren + 1
+        beyond = NEVER_S + 10.0 + 100.0 * np.minimum(found.excess, 10.0)
+        scores: Array = np.where(inside, found.late_s.max(axis=1), beyond)
+        return scores
 
     def first(self, seeds: Sequence[Array]) -> Array:
         """The first generation: of many drawn, those that keep the limits best; (people, D)."""
@@ -234,10 +270,21 @@ class Search:
         drawn = np.clip(np.concatenate([np.array(near), drawn]), LEAST_LOAD, most)
         excess = np.array([p.excess(self.tight) for p in self.flights.measure(self.scenes(drawn))])
         self.spent += PULL_COSTS * len(drawn)
-        return drawn[np.argsort(excess, kind="stable")[: self.people]]
+        drawn = drawn[np.argsort(excess, kind="stable")[: self.people]]
+        if excess.min() > 0.0:
+            # none keeps the limits: what there is, led into them
+            for i in range(min(LED, len(drawn))):
+                drawn[i] = polish(self.judge, drawn[i], LEAST_LOAD, most,
+                                  lambda: np.isfinite(self.best_score) or self.spent >= 0.5 * self.budget)
+                if np.isfinite(self.best_score):
+                    break
+        return drawn
 
     def _done(self, budget: float) -> bool:
-        return self.best_score <= self.enough or self.spent >= budget or self.barren >= BARREN
+        return self._spent(budget) or self.barren >= BARREN
+
+    def _spent(self, until: float) -> bool:
+        return self.best_score <= self.enough or self.spent >= until
 
     def run(self, seeds: Sequence[Array]) -> Trade:
         """Search, check at finer freeze points, and search again with those that had been missed."""
@@ -246,7 +293,7 @@ class Search:
         for n in range(ROUNDS):
             until = self.budget if n == ROUNDS - 1 else self.spent + max(part, 0.6 * (self.budget - self.spent))
             self.best_score = np.inf
-            self._evolve(seeds if n == 0 else [*seeds, self.best_load], until)
+            self._evolve(seeds if n == 0 else [self.best_load, *seeds], until)
             now = self._finish(job)
             if _score(now) < _score(found):
                 found = now
@@ -259,25 +306,23 @@ class Search:
         return found
 
     def _evolve(self, seeds: Sequence[Array], until: float) -> None:
-        many = [(LEAST_LOAD, self.limits.load_factor)] * len(self.job.knots_rad)
+        most = self.limits.load_factor
+        people = self.first(seeds)
         split = self.spent + (1.0 - POLISH) * (until - self.spent)
-        differential_evolution(
-            lambda x: self.scores(x.T), many, init=self.first(seeds), maxiter=200, mutation=(0.4, 0.9),
-            recombination=0.8, rng=self.rng, polish=False, tol=0.0, vectorized=True, updating="deferred",
-            callback=lambda intermediate_result: self._done(split),
-        )
-        if self._done(until) or self.best_score > NEVER_S:
-            return
-        x0 = self.best_load.copy()
-        simplex = np.vstack([x0, x0 * (1.0 + 0.05 * np.eye(len(x0)))])
-        simplex = np.clip(simplex, LEAST_LOAD, self.limits.load_factor)
-
-        def stop(intermediate_result: object) -> None:
-            if self._done(until):
-                raise StopIteration
-
-        minimize(lambda x: float(self.scores(x[None])[0]), x0, method="Nelder-Mead", bounds=many, callback=stop,
-                 options={"initial_simplex": simplex, "maxfev": 60, "xatol": 1e-3, "fatol": 1e-3, "adaptive": True})
+        if not self._done(split):
+            differential_evolution(
+                lambda x: self.scores(x.T), [(LEAST_LOAD, most)] * people.shape[1], init=people, maxiter=200,
+                mutation=(0.4, 0.9), recombination=0.8, rng=self.rng, polish=False, tol=0.0, vectorized=True,
+                updating="deferred", callback=lambda intermediate_result: self._done(split),
+            )
+        elif not np.isfinite(self.best_score):
+            self.scores(people)
+        # first towards a pull whose every freeze clears; where there is none, towards the least late
+        for clearing in (True, False):
+            if np.isfinite(self.best_score) and not self._spent(until):
+                half = until if not clearing else 0.5 * (self.spent + until)
+                polish(partial(self.judge, clearing=clearing), self.best_load, LEAST_LOAD, most,
+                       partial(self._spent, half))
 
     def _finish(self, job: Job) -> Trade:
         """The best pull written as it is flown (scale near 1), rounded, measured, and frozen at the fine points."""
@@ -287,14 +332,17 @@ class Search:
         pull = self.flights.measure(self.scenes(self.best_load[None]))[0]
         flown = self.best_load * pull.scale
         end = float(min(self.end_load, self.best_load[-1])) * pull.scale
-        for digits in (2, 4):
+        points, kept = fine_points(job.freeze_rad), none
+        for digits in (2, 3, 4):
             scene = with_demand(job, np.round(flown, digits), round(end, digits))
             pull = self.flights.measure([scene])[0]
             if pull.excess(self.limits) == 0.0:
-                points = fine_points(job.freeze_rad)
                 self.spent += len(points)
-                return Trade(self.limits, scene, pull, self.flights.freeze([scene], points)[0])
-        return none
+                now = Trade(self.limits, scene, pull, self.flights.freeze([scene], points)[0])
+                kept = min((kept, now), key=_score)
+                if _score(kept) < self.best_score + MISSED_S:
+                    break
+        return kept
 
 
 def _peaks(frozen: Frozen) -> Array:
