@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import replace
 
 import numpy as np
 import pytest
 
 from render.errors import LatepullError
+from render.output.source import FrameSource
 from render.output.stage_options import StageOptions, picture_words, stage_spec
 from render.output.stage_source import GAP_PX, StageSource, open_stage, twin_part
 from render.picture.instant import instant_at
@@ -15,6 +17,13 @@ from render.picture.views import eye_of
 from render.types import Study
 
 SIZE = (320, 180)
+
+
+@pytest.fixture(scope="module")
+def plain(study: Study) -> Iterator[FrameSource]:
+    """The right seat as it is without any option."""
+    with open_stage(study, "right", SIZE) as source:
+        yield source
 
 
 @pytest.mark.draws
@@ -30,11 +39,10 @@ def test_a_seat_shows_its_own_lead_where_the_camera_says(study: Study) -> None:
 
 
 @pytest.mark.draws
-def test_the_same_instant_gives_the_same_frame(study: Study) -> None:
-    with open_stage(study, "right", SIZE) as source:
-        first = source.frame(9.0).copy()
-        source.frame(20.0)
-        assert np.array_equal(source.frame(9.0), first)
+def test_the_same_instant_gives_the_same_frame(plain: FrameSource) -> None:
+    first = plain.frame(9.0).copy()
+    plain.frame(20.0)
+    assert np.array_equal(plain.frame(9.0), first)
 
 
 @pytest.mark.draws
@@ -61,15 +69,15 @@ def test_twin_halves_are_one_until_the_fault_and_part_after_it(study: Study, twi
 
 
 @pytest.mark.draws
-def test_a_ghost_appears_only_when_the_leads_part(study: Study) -> None:
-    with open_stage(study, "right", SIZE, twin="ghost") as ghost, open_stage(study, "right", SIZE) as plain:
+def test_a_ghost_appears_only_when_the_leads_part(study: Study, plain: FrameSource) -> None:
+    with open_stage(study, "right", SIZE, twin="ghost") as ghost:
         assert np.array_equal(ghost.frame(15.0), plain.frame(15.0))
         assert not np.array_equal(ghost.frame(22.5), plain.frame(22.5))
 
 
 @pytest.mark.draws
-def test_the_peripheral_view_is_softer_away_from_the_lead(study: Study) -> None:
-    with open_stage(study, "right", SIZE) as plain, open_stage(study, "right", SIZE, peripheral=True) as soft:
+def test_the_peripheral_view_is_softer_away_from_the_lead(study: Study, plain: FrameSource) -> None:
+    with open_stage(study, "right", SIZE, peripheral=True) as soft:
         sharp, blurred = plain.frame(20.0).astype(float), soft.frame(20.0).astype(float)
         # second differences: the finest detail of all, on the side away from the lead
         detail = [np.abs(np.diff(frame[:, SIZE[0] * 3 // 4 :, 1], 2, axis=1)).mean() for frame in (sharp, blurred)]
@@ -102,12 +110,14 @@ def test_the_strip_is_kept_free_only_under_an_overlay() -> None:
 
 
 @pytest.mark.draws
-def test_what_the_strip_covers_is_not_drawn_and_the_rest_is_the_same_picture(study: Study) -> None:
+def test_what_the_strip_covers_is_not_drawn_and_the_rest_is_the_same_picture(
+    study: Study, plain: FrameSource
+) -> None:
     spec = stage_spec(StageOptions(), SIZE, overlay=True)
     rows = SIZE[1] - spec.options["unseen_px"]
-    with open_stage(study, "right", SIZE) as whole, open_stage(study, "right", SIZE, **spec.options) as cut:
+    with open_stage(study, "right", SIZE, **spec.options) as cut:
         for time_s in (9.0, 22.0):
-            first, second = whole.frame(time_s).astype(int), cut.frame(time_s).astype(int)
+            first, second = plain.frame(time_s).astype(int), cut.frame(time_s).astype(int)
             apart = np.abs(first - second)[:rows].max(axis=2)
             assert np.mean(apart > 2) < 0.005, "one camera: only roundings may differ"
             assert second[rows:].max() == 0 and first[rows:].max() > 0
