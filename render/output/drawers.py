@@ -82,6 +82,8 @@ class Drawers:
         total = len(job.time_s)
         done: dict[int, int] = {}
         while True:
+            if (self._process.poll() or 0) < 0:  # killed, though its workers may go on
+                self._check(self._process.wait(), sum(done.values()))
             # a finite wait, so that Ctrl-C is taken on every system
             try:
                 report = reports.get(timeout=0.5)

@@ -21,6 +21,7 @@ import pytest
 from render.errors import LatepullError, MachineError, OutputExists
 from render.output import encode
 from render.output.card import card_frame
+from render.output.drawers import Drawers
 from render.output.film import _job, write_film
 from render.output.film_worker import segment_paths
 from render.output.shot import Hold, Shot, plan_shot
@@ -156,6 +157,23 @@ def test_a_failing_worker_is_told_and_leaves_nothing(study: Study, tmp_path: Pat
     with pytest.raises(MachineError, match=words):
         write_film(study, "right", tmp_path / "film.mp4", shot=short_shot(study),
                    source=grey(fail=fail, fail_s=START_S + 0.5))  # fmt: skip
+    assert list(tmp_path.iterdir()) == [] and alive(tmp_path.name) == []
+
+
+@pytest.mark.skipif(os.name != "posix", reason="signals of POSIX")
+def test_a_killed_drawing_process_is_told_at_once_and_leaves_nothing(study: Study, tmp_path: Path) -> None:
+    spec, target = grey(slow_s=0.2), tmp_path / "film.mp4"
+    shot = short_shot(study, rate_fps=60)
+    with Drawers(str(target), spec.modules) as drawers:
+        begun = time.monotonic()
+
+        def kill(done: int, total: int) -> None:
+            if done:
+                os.kill(drawers._process.pid, signal.SIGKILL)
+
+        with pytest.raises(MachineError, match=r"ended by signal 9 \(SIGKILL\) after \d+ frames"):
+            write_film(study, "right", target, shot=shot, source=spec, drawers=drawers, progress=kill)
+        assert time.monotonic() - begun < 0.2 * len(shot) / 2, "it waited for the workers"
     assert list(tmp_path.iterdir()) == [] and alive(tmp_path.name) == []
 
 

@@ -34,8 +34,10 @@ def test_without_a_driver_the_probe_says_so(monkeypatch: pytest.MonkeyPatch) -> 
 def test_without_a_driver_a_stage_is_refused_in_the_same_words(monkeypatch: pytest.MonkeyPatch) -> None:
     code = (
         "from render.picture.stage import Stage\nfrom scenes.model import Day\nfrom terrain.ground import read_ground\n"
-        "from render.errors import MachineError\n"
-        "try: Stage((), read_ground('heath', 1), Day(), (64, 36))\n"
+        "from render.errors import MachineError\nfrom tests.picture.test_stage import NOBODY, LEVEL\n"
+        "from render.picture.camera import Camera\nimport numpy as np\n"
+        "stage = Stage((), read_ground('heath', 1), Day(), (64, 36))\n"
+        "try: stage.draw(NOBODY, Camera(np.array([0.0, 0.0, -300.0]), LEVEL, 1.0, 64, 36))\n"
         "except MachineError as exc: print(exc, exc.exit_code)\n"
     )
     monkeypatch.setenv("__EGL_VENDOR_LIBRARY_FILENAMES", "/dev/null")

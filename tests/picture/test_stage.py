@@ -85,10 +85,12 @@ def keyed(stage: Stage, instant: Instant, camera: Camera, only: tuple[int, ...])
     hidden = [actor for actor in stage.land_actors if actor.GetVisibility()]
     for actor in hidden:
         actor.SetVisibility(False)
+    see, stage._land.set_eye = stage._land.set_eye, lambda *_: None  # it would bring near woods back
     stage.renderer.SetBackground(1.0, 0.0, 1.0)
     shown = Instant(instant.time_s, instant.pos_e_m[list(only)], instant.quat_eb[list(only)],
                     instant.stabilator_rad[list(only)], instant.aileron_rad[list(only)], (True,) * len(only))
     frame = stage.draw(shown, camera).copy()
+    stage._land.set_eye = see
     for actor in hidden:
         actor.SetVisibility(True)
     return np.any(frame != MAGENTA.astype(np.uint8), axis=2)
