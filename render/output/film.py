@@ -29,7 +29,7 @@ from render.output.words import CAUTION
 from render.study_io import save_study
 from render.types import Study
 
-PIECE, LEAST_PIECE = 120, 15  # frames of a piece that is kept when the work is cut off: at most, at least
+PIECE, LEAST_PIECE = 60, 15  # frames of a piece that is kept when the work is cut off: at most, at least
 REPEATED_COST = 0.15  # a held frame or a card against a drawn one, to share the work evenly
 LEAST_WORK = 8  # drawn frames for which a second worker is worth its start
 
