@@ -153,9 +153,9 @@ def fly_faulted(
         at = int(begin[i])
         if at < 0:
             continue
+        y[:, i, :at], a[:, i, :at] = twin_y[:, w, :at], twin_a[:, w, :at]
         y0[:, i], mem[i] = twin_y[:, w, at], twins.lead[w, at]
         mem[i, s.M_INSIDE] = 1.0
-    passes.copy_beginnings(twin_y, twin_a, row, begin, y, a)
     passes.fly_leads(
         y0[0], np.concatenate([p.af[:1] for p in of]), case, script, np.stack([p.knots for p in of]),
         np.stack([p.coeffs for p in of]), row, heights, grid, DT_S, begin, end_step.astype(float), -1, y[0], a[0], mem,

@@ -25,6 +25,7 @@ TRIES = 25
 CHUNK = 64  # loops closed side by side, about 1.5 MB each
 # a ground far below, so that a loop that would hit has a bottom too
 BELOW, BELOW_GRID = np.full((1, 1), -20_000.0), np.array([0.0, 0.0, 1.0])
+BELOW.setflags(write=False)  # as ``ground_arrays`` has it
 
 Try = tuple[float, int]  # the bottom, m (NaN: none), and the limits met on the way
 Found = tuple[float, str | None]  # the scale, or why there is none

@@ -32,7 +32,8 @@ _WHY = {
 
 def ground_arrays(ground: Ground) -> tuple[Array, Array]:
     """Heights (I, J) and grid (origin north, origin east, spacing) as the kernels take them."""
-    heights = np.ascontiguousarray(ground.heights_m, dtype=float)
+    heights = np.ascontiguousarray(ground.heights_m, dtype=float).view()
+    heights.setflags(write=False)  # always, since a kernel is compiled again for arrays that may be written to
     return heights, np.array([ground.origin_n_m, ground.origin_e_m, ground.spacing_m])
 
 

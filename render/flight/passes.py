@@ -356,14 +356,3 @@ def fault_steps(
     for b in prange(step.shape[0]):
         w = int(row[b])
         step[b] = fault_step(case[b], twin_y[w], kept[w], int(last[w]), script[w], dt_s)
-
-
-@njit(cache=True, parallel=True)
-def copy_beginnings(twin_y: Array, twin_a: Array, row: Array, begin: Array, y: Array, a: Array) -> None:
-    """The steps before each one's beginning from its twin: twin_y (K, W, T, NY), y (K, B, T, NY), a alike."""
-    for b in prange(y.shape[1]):
-        at, w = int(begin[b]), int(row[b])
-        if at > 0:
-            for k in range(y.shape[0]):
-                y[k, b, :at] = twin_y[k, w, :at]
-                a[k, b, :at] = twin_a[k, w, :at]

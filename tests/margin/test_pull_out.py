@@ -8,11 +8,13 @@ import numpy as np
 import pytest
 from scipy.optimize import brentq
 
+from render.flight.fly import ground_arrays
 from render.margin.escape import escape_heights, find_margin
+from tests.flight.made import flat_ground
 from tests.margin.dives import exact_plan, straight_dive
 from tests.reference.closed_forms import DEG, G, pull_distance, pull_height_change, pull_speed
 
-FLAT, GRID = np.zeros((1, 1)), np.array([0.0, 0.0, 1.0])
+FLAT, GRID = ground_arrays(flat_ground())
 
 # speed m/s and height m at the start of the dive, dive deg, load factor of the pull-out
 DIVES = [(260.0, 2500.0, 60.0, 6.0), (280.0, 2500.0, 45.0, 9.0), (230.0, 1500.0, 30.0, 5.0)]
