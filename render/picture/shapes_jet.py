@@ -148,7 +148,7 @@ def _wing() -> tuple[Surf, Surf]:
     skin = paint(skin, lambda p: 3.55 + 0.35 * (p[:, 0] + 0.6) - p[:, 1], GOLD)
     skin = paint(skin, lambda p: 3.9 + 0.35 * (p[:, 0] + 0.6) - p[:, 1], TEAL)
     skin = _chevron(skin)
-    leading = _leading_edge(0.045)
+    leading = _leading_edge(0.11)
     skin = paint(skin, leading, METAL)
     aileron = WING.loft(np.linspace(inner, outer, 4).tolist(), WHITE, start=hinge, points=9)
     aileron = paint(aileron, lambda p: 3.55 + 0.35 * (p[:, 0] + 0.6) - p[:, 1], GOLD)
