@@ -83,12 +83,14 @@ def shape_command(args: argparse.Namespace) -> int:
     # by name from a table, so that a worker elsewhere needs none of our files
     job = make_job(scene, common_of(scene, read_airframe, ground).airframes.__getitem__, ground, points)
     folder = args.out or Path("out") / scene.name
-    force = args.force or args.out is None  # the default folder is the tool's own
+    unfinished = folder / "shape.unfinished"
+    # the default folder is the tool's own, and so is what an interrupted run has begun to write
+    force = args.force or args.out is None or (args.resume and unfinished.is_dir())
     new = f"{scene.name}_shaped.yaml"
     for name in (f"{CHART}.png", f"{CHART}.svg", TABLE, FIGURES, new, *([] if args.no_maps else MAPS)):
         claim_output(folder / name, force=force)
     bar = CaseBar(at_most=True)
-    expected = estimate(args.budget, False, len(unlike_slots(scene).formation))
+    expected = estimate(args.budget, True, len(unlike_slots(scene).formation))
     refuse_too_much(expected, force=args.force_size)
     if not args.json:
         bar.note(f"at most {expected.words()}" if args.cluster is None else
@@ -97,7 +99,7 @@ def shape_command(args: argparse.Namespace) -> int:
     slope = None if args.slope is None else args.slope / degree
     bend = None if args.bend is None else args.bend / degree**2
     asked = ["shape", max_g, onset, slope, bend, points.tolist(), args.trade, args.budget, args.seed]
-    work = Folder(folder / "shape.unfinished", work_hash(scene_text(args.scene), asked), None)
+    work = Folder(unfinished, work_hash(scene_text(args.scene), asked), None)
     with runner(args.cluster) as run:
         try:
             ledger = Ledger(run, work, resume=args.resume, force=args.force)
@@ -116,20 +118,22 @@ def shape_command(args: argparse.Namespace) -> int:
                 for name, one in (("map_before", scene), ("map_after", read_scene_text(text, folder / new))):
                     drawn = CaseBar()
                     maps[name] = map_of(one, job.airframe_of, ground, ledger, partial(drawn.show, stage=name))
+            bar.clear()
+            made = [*write_shape_chart(shape, folder / CHART, force=force)]
+            words, figures = shape_text(shape), plain_shape(shape)
+            made.append(write_text(folder / TABLE, words, force=force))
+            plain = json.dumps(figures, indent=2, allow_nan=False) + "\n"
+            made.append(write_text(folder / FIGURES, plain, force=force))
+            if text is not None:
+                made.append(write_text(folder / new, text, force=force))
+            for name, found in maps.items():
+                made += write_map_chart(found, folder / name, force=force)
+            ledger.close()
         except KeyboardInterrupt:
             bar.note(f"\ninterrupted; finished chunks are kept in {work.path}: give --resume to go on")
             return 130
         finally:
             bar.clear()
-    made = [*write_shape_chart(shape, folder / CHART, force=force)]
-    words, figures = shape_text(shape), plain_shape(shape)
-    made.append(write_text(folder / TABLE, words, force=force))
-    made.append(write_text(folder / FIGURES, json.dumps(figures, indent=2, allow_nan=False) + "\n", force=force))
-    if text is not None:
-        made.append(write_text(folder / new, text, force=force))
-    for name, found in maps.items():
-        made += write_map_chart(found, folder / name, force=force)
-    ledger.close()
     if args.json:
         print(json.dumps({**figures, "written": [str(p) for p in made]}, allow_nan=False))
     else:

@@ -7,6 +7,7 @@ others; versions and source are compared between this machine and every worker, 
 from __future__ import annotations
 
 import hashlib
+import re
 import threading
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
@@ -21,6 +22,7 @@ Work = Callable[[Any, Any], Result]
 """A pure function at the top of a module: what all chunks share, then the chunk."""
 
 CONNECT_S = 10.0
+ADDRESS = re.compile(r"([a-z]+://)?([\w.-]+|\[[0-9a-fA-F:.]+\]):\d{1,5}(/\S*)?")
 _ALONE = threading.Lock()
 RETRIES = 3  # how often a chunk is begun again after losing its worker or machine trouble there
 
@@ -152,6 +154,8 @@ def runner(cluster: str | None = None) -> Iterator[Runner]:
         from distributed import Client
     except ImportError:
         raise LatepullError("--cluster needs Dask, which is not installed: pip install 'latepull[cluster]'") from None
+    if not ADDRESS.fullmatch(cluster):
+        raise ClusterError(f"--cluster: read {cluster}, wanted the address of a Dask scheduler, such as tcp://host:8786")
     try:
         client = Client(cluster, timeout=CONNECT_S, set_as_default=False)
     except (OSError, ValueError, TimeoutError) as exc:

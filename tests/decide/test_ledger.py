@@ -21,6 +21,7 @@ from render.decide.shape_flights import Flights, freeze_work, frozen_of, measure
 from render.decide.shape_limits import measure_pulls
 from render.decide.shape_search import Shape, find_shape
 from render.decide.values import common_of
+from render.errors import LatepullError
 from render.output.shape_words import plain_shape
 from scenes.model import DEG
 from scenes.reader import read_airframe, read_scene
@@ -181,3 +182,9 @@ def test_a_search_on_a_cluster_that_loses_a_worker_is_the_local_one() -> None:
             far = search(Killing(run, pids))
     assert killed == [pids[0]]
     same(far, whole()[0])
+
+
+@pytest.mark.parametrize("address", ["nonsense", "tcp://host", "tcp:// host:1", ""])
+def test_what_is_no_address_is_said_at_once(address: str) -> None:
+    with pytest.raises(LatepullError, match="wanted the address of a Dask scheduler"), runner(address):
+        pass
