@@ -2,14 +2,28 @@
 
 from __future__ import annotations
 
+from functools import cache
+
 import numpy as np
 import pytest
 
 from render.picture.canopy import DESIGNS, HALF_EYES_M, build_cockpit, core_half_m
-from render.picture.shapes import Part, build_shape
+from render.picture.shapes import Part, Shape, build_shape
 from tests.picture.airframes_made import airframe
 
 NAMES = ("jet", "turboprop", "piston")
+
+
+@cache
+def shape_of(name: str) -> Shape:
+    """The whole aircraft, built once."""
+    return build_shape(airframe(name))
+
+
+@cache
+def cockpit_of(name: str) -> tuple[Part, Part]:
+    """Its cockpit, solid and clear, built once."""
+    return build_cockpit(airframe(name))
 
 
 def eye_of(name: str) -> np.ndarray:
@@ -44,7 +58,7 @@ ABEAM = [(side * b, e) for side in (-1, 1) for b in range(60, 101, 5) for e in (
 
 @pytest.mark.parametrize("name", NAMES)
 def test_nothing_of_the_cockpit_hides_a_lead_abeam(name: str) -> None:
-    solid, clear = build_cockpit(airframe(name))
+    solid, clear = cockpit_of(name)
     eye = eye_of(name)
     for bearing, elevation in ABEAM:
         ray = ray_b(bearing, elevation)
@@ -57,7 +71,7 @@ def test_nothing_of_the_cockpit_hides_a_lead_abeam(name: str) -> None:
 @pytest.mark.parametrize("name", NAMES)
 def test_nothing_of_the_own_aircraft_hides_a_lead_level_or_above(name: str) -> None:
     # The own wing may be seen below a lead, never before him down to 8 deg below the eye.
-    parts = [p for p in build_shape(airframe(name)).parts if p.own_view and p.name != "propeller"]
+    parts = [p for p in shape_of(name).parts if p.own_view and p.name != "propeller"]
     eye = eye_of(name)
     for bearing, elevation in ABEAM:
         if elevation >= -8:
@@ -69,8 +83,8 @@ def test_nothing_of_the_own_aircraft_hides_a_lead_level_or_above(name: str) -> N
 @pytest.mark.parametrize("side", [-1, 1])
 def test_looking_abeam_shows_rail_and_own_wing_tip(name: str, side: int) -> None:
     # In a 75 deg picture of 16:9 looking 85 deg: half 37.5 deg across, 23.3 deg down.
-    parts = build_shape(airframe(name)).parts
-    solid, _ = build_cockpit(airframe(name))
+    parts = shape_of(name).parts
+    solid, _ = cockpit_of(name)
     eye = eye_of(name)
     look, up = ray_b(85.0 * side, 0.0), np.array([0.0, 0.0, -1.0])
     right = np.cross(look, up)
@@ -95,7 +109,7 @@ def test_looking_abeam_shows_rail_and_own_wing_tip(name: str, side: int) -> None
 @pytest.mark.parametrize("name", NAMES)
 def test_eye_is_under_the_glass_with_room_for_a_helmet(name: str) -> None:
     eye = eye_of(name)
-    shape = build_shape(airframe(name))
+    shape = shape_of(name)
     above = hits(shape.part("glass"), eye, np.array([0.0, 0.0, -1.0]))[0]
     # From the eye to the crown of the helmet: about 0.16 m.
     assert len(above) == 1 and 0.18 < above[0] < 0.6
@@ -107,7 +121,7 @@ def test_eye_is_under_the_glass_with_room_for_a_helmet(name: str) -> None:
 @pytest.mark.parametrize("name", NAMES)
 def test_head_stays_under_the_glass_when_it_turns(name: str) -> None:
     lid, place = DESIGNS[name](airframe(name)).lid, DESIGNS[name](airframe(name)).place
-    points = np.asarray(build_shape(airframe(name)).part("head").mesh.points, float)
+    points = np.asarray(shape_of(name).part("head").mesh.points, float)
     neck = points.mean(axis=0)
     reach = np.hypot(*(points[:, :2] - neck[:2]).T)
     for turn in np.linspace(0, 2 * np.pi, 24, endpoint=False):
@@ -125,7 +139,7 @@ def test_bow_core_is_what_neither_eye_sees_past() -> None:
 
 @pytest.mark.parametrize("name", NAMES)
 def test_cockpit_parts(name: str) -> None:
-    solid, clear = build_cockpit(airframe(name))
+    solid, clear = cockpit_of(name)
     assert solid.own_view and clear.own_view and not clear.lit
     assert clear.mesh.point_data["colour"].shape[1] == 4
     assert solid.mesh.n_cells + clear.mesh.n_cells < 10_000
