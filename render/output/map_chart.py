@@ -87,7 +87,8 @@ def map_figure(found: Map) -> Figure:
         box = (MARGIN + 0.55, top + 0.30, WIDTH - 2 * MARGIN - 0.55, grid_height)
         _panel(page.axes(*box), found, group[0], box[2], grid_height)
     bottom = height - FOOT
-    page.say(MARGIN, bottom, reading(found), 7.6, colour=QUIET)
+    numbered = _number_size(*_cell(found, WIDTH - 2 * MARGIN - 0.55, grid_height)) > 0.0
+    page.say(MARGIN, bottom, reading(found, numbers=numbered), 7.6, colour=QUIET)
     page.say(MARGIN, height - 0.30, CAUTION, 8.4, weight="bold")
     return figure
 
@@ -144,14 +145,17 @@ def _bare(text: str, axis: Axis) -> str:
     return text.removesuffix(axis.unit).rstrip()
 
 
-def reading(found: Map) -> str:
-    """How to read the numbers, and what they rest on."""
+def reading(found: Map, *, numbers: bool = True) -> str:
+    """How to read the numbers, and what they rest on. numbers: whether there are any, or the cells are too small."""
     units = Units(found.scene.film.units)
-    return (
+    how = (
         "Numbers: seconds the likely observer has in hand when his hand moves, minus where it is too late; small grey "
-        f"ones: how far the flight clears the floor by itself, {units.length_unit}. Floor "
-        f"{units.length(found.scene.floor_m)} above the ground, as the scene asks. Early, likely and late are three "
-        "observers: a range, not a forecast of one pilot."
+        f"ones: how far the flight clears the floor by itself, {units.length_unit}. "
+        if numbers else "Too many cells for numbers here; they are in map.csv. "
+    )
+    return (
+        f"{how}Floor {units.length(found.scene.floor_m)} above the ground, as the scene asks. Early, likely and late "
+        "are three observers: a range, not a forecast of one pilot."
     )
 
 
@@ -182,17 +186,31 @@ def _legend(page: _Page, found: Map, y: float) -> None:
                                       solid_capstyle="butt", **GROUND_LINE))
 
 
+def _cell(found: Map, width: float, height: float) -> tuple[float, float]:
+    """Width and height of a cell, points, of a grid so many inches wide and high."""
+    nx, ny = found.shape
+    return 72.0 * width / nx, 72.0 * height / ny
+
+
+def _number_size(cell_w: float, cell_h: float) -> float:
+    """Size of the numbers in cells, points; 0 where they are too small for any."""
+    size = min(7.6, 0.27 * cell_w, 0.42 * cell_h)
+    return size if size >= 3.0 else 0.0
+
+
 def _panel(axes: Axes, found: Map, slot: int, width: float, height: float) -> None:
     """One grid of cells, 1 by 1 each, with numbers, regions, the scene's own place and the ground's line."""
     nx, ny = found.shape
     outcome = found.outcome[:, :, slot]
-    cell_w, cell_h = 72.0 * width / nx, 72.0 * height / ny
+    cell_w, cell_h = _cell(found, width, height)
+    size = _number_size(cell_w, cell_h)
     _cells(axes, outcome)
-    _numbers(axes, found, slot, min(7.6, 0.27 * cell_w, 0.42 * cell_h))
+    _numbers(axes, found, slot, size)
     contact = np.isfinite(found.grid("contact_s")[:, :, slot + 1]) | np.isfinite(found.grid("contact_s")[:, :, 0])
     edges = _edges(contact)
     _ground_line(axes, edges, TICK_PT / cell_w, TICK_PT / cell_h)
-    _name_regions(axes, outcome, cell_w, cell_h, _mark_scene(axes, found), edges)
+    # where no numbers stand, the words need not fit between them
+    _name_regions(axes, outcome, cell_w, cell_h if size > 0.0 else 25.0, _mark_scene(axes, found), edges)
     axes.set_xlim(0, nx)
     axes.set_ylim(0, ny)
     _ticks(axes, found.x, "x", cell_w)
@@ -217,7 +235,7 @@ def _cells(axes: Axes, outcome: NDArray[np.int64]) -> None:
 
 def _numbers(axes: Axes, found: Map, slot: int, size: float) -> None:
     """Seconds in hand where somebody has to act, the height over the floor where nobody has to."""
-    if size < 3.0:
+    if size <= 0.0:
         return
     units = Units(found.scene.film.units)
     late = found.grid("lateness_s")[:, :, slot, 1]

@@ -108,7 +108,7 @@ def _left(axes: Axes, study: ScatterStudy) -> None:
         said.append(f"never knew before it was over: {100.0 * never / hand.size:.0f} of 100")
     if not_needed:
         said.append(f"nothing needed: {100.0 * not_needed / hand.size:.0f} of 100")
-    axes.text(0.0, 0.97, "\n".join(said), transform=axes.transAxes, fontsize=8, color=INK, va="top",
+    axes.text(0.015, 0.97, "\n".join(said), transform=axes.transAxes, fontsize=8, color=INK, va="top",
               bbox={"facecolor": "white", "edgecolor": "none", "alpha": 0.8, "pad": 1.5})
 
 
