@@ -305,6 +305,7 @@ def _doctor(args: argparse.Namespace) -> int:
 
     from render.errors import MachineError
     from render.output.encode import encoder_path
+    from render.output.page_pdf import require_paper
     from render.picture.probe import probe_drawing
 
     lines = [f"Python {sys.version.split()[0]}"]
@@ -318,6 +319,11 @@ def _doctor(args: argparse.Namespace) -> int:
     report = probe_drawing()
     lines.append(f"drawing: {report}")
     good = good and bool(getattr(report, "ok", False))
+    try:
+        require_paper()
+        lines.append("paper: pages can be set as PDF")
+    except MachineError as exc:
+        lines.append(f"paper: {exc}")  # films and pages do without
     lines.append("The first flight compiles the flight code, about half a minute, once.")
     _say(args, {"ok": good, "report": lines}, "\n".join(lines))
     return 0 if good else 3

@@ -15,6 +15,15 @@ from render.files import whole_file
 FONTS = (("DejaVuSans.ttf", "normal"), ("DejaVuSans-Bold.ttf", "bold"))
 
 
+def require_paper() -> None:
+    """Raise MachineError, with what to install, where a page can't be set on paper."""
+    try:
+        import weasyprint  # noqa: F401
+    except (ImportError, OSError) as exc:
+        raise MachineError("the PDF needs Pango (on a Debian or Ubuntu server: apt-get install libpango-1.0-0 "
+                           "libpangoft2-1.0-0 libharfbuzz-subset0); or print the page from a browser") from exc
+
+
 def write_pdf(page: str | Path, path: str | Path, *, force: bool = False) -> Path:
     """Set a written page (its index.html or single file) as PDF; returns the path.
 
@@ -22,13 +31,11 @@ def write_pdf(page: str | Path, path: str | Path, *, force: bool = False) -> Pat
     MachineError (WeasyPrint's system libraries are missing, full disk).
     """
     page = Path(page)
-    try:
-        from weasyprint import CSS, HTML
-        from weasyprint.text.fonts import FontConfiguration
-        from weasyprint.urls import URLFetcher
-    except (ImportError, OSError) as exc:
-        raise MachineError("the PDF needs Pango (on a Debian or Ubuntu server: apt-get install libpango-1.0-0 "
-                           "libpangoft2-1.0-0 libharfbuzz-subset0); or print the page from a browser") from exc
+    require_paper()
+    from weasyprint import CSS, HTML
+    from weasyprint.text.fonts import FontConfiguration
+    from weasyprint.urls import URLFetcher
+
     missing: list[str] = []
     root = page.resolve().parent
 
