@@ -26,6 +26,7 @@ from scenes.model import Level, Loop
 
 FAR_BELOW = np.full((1, 1), -20_000.0)  # a ground that no pass meets
 FAR_GRID = np.array([0.0, 0.0, 1.0])
+FAR_BELOW.setflags(write=False)  # as ``ground_arrays`` has it
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -223,13 +223,13 @@ def last_pulls(
     floor_s, ground_s = np.empty((b, wings)), np.empty((b, wings))
     if wings == 0:
         return floor_s, ground_s
-    contact = contact_s.T
+    contact = np.ascontiguousarray(contact_s.T)  # as for one flight: compiled but once
     stop_s = np.where(np.isnan(contact), last * DT_S, contact)
     known = np.empty((0, wings, 0)) if shared is None else shared.low_m
     of = np.full(b, -1.0) if shared_of is None else shared_of.astype(float)
     same = np.zeros(b) if until is None else until.astype(float)
     _last_pulls(
-        y, a, np.broadcast_to(last, (wings, b)).astype(float), stop_s, np.isfinite(contact).astype(float),
+        y, a, np.broadcast_to(last, (wings, b)).astype(float, order="C"), stop_s, np.isfinite(contact).astype(float),
         *_records(plans, None), np.array([p.scene.floor_m for p in plans]), known, of, same, heights, grid, DT_S,
         floor_s, ground_s,
     )
