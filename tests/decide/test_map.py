@@ -11,7 +11,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from render.decide.cases import Cases, per_case
+from render.decide.cases import Cases, join, per_case
 from render.decide.map import Map, Outcome, grid_values, make_map, map_axes, outcomes, own_twins, same_slots
 from render.decide.map_words import map_sentences
 from render.decide.values import Axis, common_of, spoilt, work_values
@@ -46,6 +46,15 @@ def test_a_cell_is_the_flight_of_its_scene(coarse: Map) -> None:
         for name, wanted in columns_of_study(study).items():
             np.testing.assert_allclose(coarse.grid(name)[i, j], wanted, rtol=0.0, atol=1e-9, equal_nan=True,
                                        err_msg=f"{name} at {i}, {j}")
+
+
+def test_the_size_of_a_chunk_changes_no_bit(coarse: Map) -> None:
+    mapped, x, y = map_axes(HERO, "loop_angle=190:310:20deg", "fraction=0:80:40%")
+    common = common_of(mapped, read_airframe, read_ground(mapped.ground, mapped.seed))
+    values = grid_values(x, y)
+    made = make_map(HERO, mapped, x, y, join([work_values(common, values[at : at + 5]) for at in range(0, 21, 5)]))
+    for name in per_case():
+        np.testing.assert_array_equal(made.grid(name), coarse.grid(name), name)
 
 
 def test_a_freeze_is_an_authority_of_nothing(coarse: Map) -> None:
