@@ -5,7 +5,10 @@ from __future__ import annotations
 import pytest
 
 from render.types import Study
+from tests.built_once import built_once
 from tests.output.made_up import made_up_study
+
+__all__ = ["built_once", "healthy_study", "study"]
 
 
 @pytest.fixture(scope="session")
