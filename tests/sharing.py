@@ -19,7 +19,15 @@ except ImportError:  # no such locks here: both compile
 TOGETHER = ("tests/page",)
 # What takes longest comes first, else one worker sits idle at the end. The first of all compiles the flight code, while
 # the other worker has those that need none of it.
-FIRST: tuple[str, ...] = ("tests/decide/test_cases.py", "tests/page")
+FIRST: tuple[str, ...] = (
+    "tests/decide/test_cases.py", "tests/page", "tests/test_lint.py", "tests/output/test_film_same.py",
+    "tests/test_house.py", "tests/picture/test_baselines.py", "tests/decide/test_ledger.py",
+    "tests/decide/test_shape.py", "tests/test_study.py", "tests/decide/test_scatter.py", "tests/decide/test_gates.py",
+    "tests/margin/test_last_pull.py", "tests/test_command_map.py", "tests/picture/test_land.py",
+    "tests/scenes/test_fuzz.py", "tests/output/test_stage_source.py", "tests/decide/test_map.py",
+    "tests/decide/test_chunks.py", "tests/output/test_film.py", "tests/flight/test_numerics.py",
+    "tests/test_command.py", "tests/decide/test_gate_extras.py", "tests/margin/test_escape.py",
+)
 
 
 def group_of(nodeid: str) -> str:
@@ -30,7 +38,7 @@ def group_of(nodeid: str) -> str:
 
 def rank(nodeid: str) -> int:
     """Where a test's group stands in ``FIRST``."""
-    group = group_of(nodeid)
+    group = group_of(nodeid)  # what is not named there is over in seconds
     return FIRST.index(group) if group in FIRST else len(FIRST)
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import copy
 import random
 from typing import Any
 
@@ -67,15 +68,15 @@ def nodes(plain: Any, path: tuple[Any, ...] = ()) -> list[tuple[Any, ...]]:
     return [path, *below] if path else below
 
 
-PATHS = nodes(yaml.safe_load(WHOLE))
+PLAIN = yaml.safe_load(WHOLE)
+PATHS = nodes(PLAIN)
 
 
 @pytest.mark.parametrize("path", PATHS, ids=[".".join(map(str, path)) for path in PATHS])
 def test_any_value_in_any_place(path: tuple[Any, ...]) -> None:
     """Each odd value in place of each value of the scene: read or refused at that place or above it."""
     for value in random.Random(str(path)).sample(VALUES, 8):
-        plain = yaml.safe_load(WHOLE)
-        node = plain
+        node = plain = copy.deepcopy(PLAIN)
         for key in path[:-1]:
             node = node[key]
         node[path[-1]] = value
