@@ -218,24 +218,25 @@ def below(parent):
             os._exit(0)
         os.waitpid(child, 0)
 
-brings, after, draws = json.load(sys.stdin)
-if draws:
-    import pyvista
-below("")
+for brings, after, draws in json.load(sys.stdin):
+    if draws:
+        import pyvista
+    below("")
 """
 
 
 @pytest.mark.skipif(sys.platform == "win32", reason="needs fork")
-@pytest.mark.parametrize("draws", [False, True])
-def test_each_module_loads_alone_and_without_vtk(draws: bool) -> None:
-    """Those that bring the room that draws may load VTK; no other may."""
-    names = [n for n in TREES if any(room_of(m) == "render.picture" for m in brings(n)) is draws]
-    for room in ("render.picture",) if draws else ("terrain", "scenes", "render.flight", "render.margin",
-                                                   "render.sight", "render.study", "render.decide", "render.command"):
-        assert room in {room_of(n) for n in names}
-    given = [{n: sorted(brings(n)) for n in names}, {n: after(n, names) for n in names}, draws]
+def test_each_module_loads_alone_and_without_vtk() -> None:
+    """Those that bring the room that draws may load VTK, and come last; no other may."""
+    given: list[tuple[dict[str, list[str]], dict[str, str], bool]] = []
+    for draws in (False, True):
+        names = [n for n in TREES if any(room_of(m) == "render.picture" for m in brings(n)) is draws]
+        given.append(({n: sorted(brings(n)) for n in names}, {n: after(n, names) for n in names}, draws))
+    for room in ("terrain", "scenes", "render.flight", "render.margin", "render.sight", "render.study",
+                 "render.decide", "render.command"):
+        assert room in {room_of(n) for n in given[0][0]}
     done = subprocess.run([sys.executable, "-c", ALONE_SCRIPT], input=json.dumps(given), cwd=ROOT, capture_output=True,
                           text=True, timeout=300, check=True)
     said = dict(json.loads(line) for line in done.stdout.splitlines())
-    assert set(said) == set(names)
+    assert set(said) == set(TREES)
     assert {name: words for name, words in said.items() if words} == {}
