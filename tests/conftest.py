@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from typing import Any
 
 import pytest
@@ -19,9 +20,21 @@ def pytest_addoption(parser: pytest.Parser) -> None:
 
 
 def pytest_configure(config: pytest.Config) -> None:
-    """Workers compile in turn."""
+    """Workers compile in turn, and fly on one thread each."""
     if sharing.is_worker():
         sharing.compile_in_turn()
+        sharing.one_thread_each()
+
+
+@pytest.fixture
+def all_threads() -> Iterator[None]:
+    """Kernels on all cores, also where the tests are shared: for what may depend on it."""
+    import numba
+
+    before = numba.get_num_threads()
+    numba.set_num_threads(numba.config.NUMBA_NUM_THREADS)
+    yield
+    numba.set_num_threads(before)
 
 
 def pytest_xdist_make_scheduler(config: pytest.Config, log: Any) -> sharing.Share | None:

@@ -39,7 +39,7 @@ def assert_same(cases: Cases, row: int, scene: Scene, leave: tuple[str, ...] = (
     return study
 
 
-def test_freezes_that_share_a_twin_are_their_studies() -> None:
+def test_freezes_that_share_a_twin_are_their_studies(all_threads: None) -> None:
     """Contact, a dip under the floor alone, and a freeze that clears by itself, begun from one healthy flight."""
     base = read_scene("late_freeze")
     scenes = [with_value(base, "fault.at.loop_angle", f"{a} deg") for a in (195, 272, 320)]
@@ -96,7 +96,7 @@ def test_a_case_that_cannot_be_flown_is_a_row_with_the_complaint_of_fly() -> Non
         assert np.isnan(cases.lateness_s[i]).all() and (cases.cue[i] == -1).all()
 
 
-def test_chunks_threads_and_order_change_nothing() -> None:
+def test_chunks_threads_and_order_change_nothing(all_threads: None) -> None:
     base = read_scene("late_freeze")
     scenes = [with_value(base, "fault.at.loop_angle", a * DEG) for a in (200.0, 230.0, 260.0, 290.0, 215.0)]
     whole = work(scenes)

@@ -111,7 +111,7 @@ def test_a_mirrored_formation_mirrors(hero: Study) -> None:
         assert right["notice"][observer]["time_s"] == pytest.approx(left["notice"][observer]["time_s"], abs=1e-6)
 
 
-def test_a_batch_equals_its_single_flights() -> None:
+def test_a_batch_equals_its_single_flights(all_threads: None) -> None:
     heights, grid = ground_arrays(flat_ground())
     plans = [compile_scene(loop_scene(freeze(a)), (invented_jet(),) * 3) for a in np.linspace(200.0, 300.0, 8)]
     scale = np.ones(len(plans))

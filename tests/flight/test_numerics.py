@@ -90,7 +90,7 @@ def test_a_fault_between_two_steps_comes_on_in_between() -> None:
         assert mem[s.M_STAB] == pytest.approx(fine[s.M_STAB], abs=1e-6)
 
 
-def test_a_batch_of_64_equals_64_single_flights() -> None:
+def test_a_batch_of_64_equals_64_single_flights(all_threads: None) -> None:
     heights, grid = ground_arrays(flat_ground())
     angles = np.linspace(40.0, 330.0, 64)
     plans = [compile_scene(loop_scene(freeze(a), kt=380.0 + 0.3 * i), (invented_jet(),) * 3)
@@ -200,7 +200,7 @@ def arrays_of(flight: Flight) -> dict[str, Array]:
             if isinstance(getattr(flight, f.name), np.ndarray)}
 
 
-def test_the_same_scene_gives_the_same_bits_on_one_thread_or_all() -> None:
+def test_the_same_scene_gives_the_same_bits_on_one_thread_or_all(all_threads: None) -> None:
     first = fly_scene(loop_scene(freeze(245.0)), lambda _: invented_jet(), flat_ground())[1]
     threads = numba.get_num_threads()
     try:
