@@ -15,25 +15,28 @@ try:
 except ImportError:  # no such locks here: both compile
     fcntl = None  # type: ignore[assignment]
 
-# Rooms whose tests share what takes long to make, and stay with one worker.
-TOGETHER = ("tests/page",)
+# Rooms and files whose tests share what takes long to make, and stay with one worker.
+TOGETHER = {
+    "tests/page/": "tests/page", "tests/decide/test_shape.py": "shape", "tests/decide/test_ledger.py": "shape",
+    "tests/decide/test_shape_polish.py": "shape",
+}
 # What takes longest comes first, else one worker sits idle at the end. The first of all compiles the flight code, while
 # the other worker has those that need none of it.
 FIRST: tuple[str, ...] = (
-    "tests/decide/test_cases.py", "tests/page", "tests/test_lint.py", "tests/output/test_film_same.py",
-    "tests/test_house.py", "tests/picture/test_baselines.py", "tests/decide/test_ledger.py",
-    "tests/decide/test_shape.py", "tests/test_study.py", "tests/decide/test_scatter.py", "tests/decide/test_gates.py",
-    "tests/margin/test_last_pull.py", "tests/test_command_map.py", "tests/picture/test_land.py",
-    "tests/scenes/test_fuzz.py", "tests/output/test_stage_source.py", "tests/decide/test_map.py",
-    "tests/decide/test_chunks.py", "tests/output/test_film.py", "tests/flight/test_numerics.py",
-    "tests/test_command.py", "tests/decide/test_gate_extras.py", "tests/margin/test_escape.py",
+    "tests/decide/test_cases.py", "tests/page", "tests/test_lint.py", "tests/output/test_film_same.py", "shape",
+    "tests/test_house.py", "tests/picture/test_baselines.py", "tests/test_study.py", "tests/decide/test_scatter.py",
+    "tests/decide/test_gates.py", "tests/margin/test_last_pull.py", "tests/test_command_map.py",
+    "tests/picture/test_land.py", "tests/scenes/test_fuzz.py", "tests/output/test_stage_source.py",
+    "tests/decide/test_map.py", "tests/decide/test_chunks.py", "tests/output/test_film.py",
+    "tests/flight/test_numerics.py", "tests/test_command.py", "tests/decide/test_gate_extras.py",
+    "tests/margin/test_escape.py",
 )
 
 
 def group_of(nodeid: str) -> str:
     """The tests that stay with one worker: a file's, a room's."""
     file = nodeid.split("::", 1)[0]
-    return next((room for room in TOGETHER if file.startswith(f"{room}/")), file)
+    return next((group for start, group in TOGETHER.items() if file.startswith(start)), file)
 
 
 def rank(nodeid: str) -> int:

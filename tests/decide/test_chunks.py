@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -27,24 +26,9 @@ from render.decide.runner import Local
 from render.decide.values import Common, common_of
 from scenes.reader import read_airframe, read_scene
 from terrain.ground import read_ground
+from tests.decide.shaped import CutOff
 
 CHUNK = 3
-
-
-class CutOff:
-    """Does some chunks here and is then interrupted, as by Ctrl-C."""
-
-    where = "here"
-
-    def __init__(self, chunks: int) -> None:
-        self.left = chunks
-
-    def run(self, work: Any, common: Any, chunks: Sequence[tuple[int, Any]]) -> Iterator[tuple[int, Any]]:
-        for number, chunk in chunks:
-            if self.left == 0:
-                raise KeyboardInterrupt
-            self.left -= 1
-            yield number, work(common, chunk)
 
 
 @pytest.fixture(scope="module")

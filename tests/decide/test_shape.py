@@ -17,7 +17,7 @@ from render.command import main
 from render.decide.shape import CLEAR_S, LIKELY, Frozen, Job, freeze_all, make_job, unlike_slots, with_demand
 from render.decide.shape_limits import least_load_factor, measure_pulls, own_limits
 from render.decide.shape_scene import found_scene
-from render.decide.shape_search import Search, Shape, find_shape, fine_points
+from render.decide.shape_search import Search, find_shape, fine_points
 from render.errors import LatepullError
 from render.flight.fly import fly_scene
 from render.output.shape_chart import write_shape_chart
@@ -25,26 +25,13 @@ from render.output.shape_words import plain_shape, shape_text
 from render.study import work_through
 from scenes.model import DEG, Loop
 from scenes.reader import read_airframe, read_scene, scene_text
-from terrain.ground import read_ground
+from tests.decide.shaped import POINTS, hero, whole
 from tests.flight.made import FT, flat_ground, invented_jet, loop_scene
-
-POINTS = np.array([180.0, 215.0, 250.0, 285.0, 320.0]) * DEG
 
 
 @lru_cache
 def jet_job() -> Job:
     return make_job(loop_scene(), lambda _: invented_jet(), flat_ground(), POINTS)
-
-
-@lru_cache
-def hero() -> Job:
-    scene = read_scene("late_freeze")
-    return make_job(scene, read_airframe, read_ground(scene.ground, scene.seed), POINTS)
-
-
-@lru_cache
-def hero_shape() -> Shape:
-    return find_shape(hero(), load_factor=4.8, budget=150, seed=3, steps=1, people=6)
 
 
 def test_a_demand_is_put_into_the_back_half_alone() -> None:
@@ -86,7 +73,7 @@ def test_the_freezes_of_a_loop_are_those_of_single_flights() -> None:
 
 
 def test_found_is_never_worse_closes_and_keeps_every_limit(tmp_path: Path) -> None:
-    shape = hero_shape()
+    shape = whole()[0]
     assert shape.best is not None  # the hero loop's growing pull is far from the best within 4.8 g
     item = shape.trade[shape.best]
     assert item.frozen is not None and item.pull is not None and item.scene is not None
@@ -136,7 +123,7 @@ def test_the_same_seed_gives_the_same() -> None:
 
 
 def test_chart_and_figures_are_written_whole(tmp_path: Path) -> None:
-    shape = hero_shape()
+    shape = whole()[0]
     png, svg = write_shape_chart(shape, tmp_path / "shape")
     assert png.stat().st_size > 20_000 and "<svg" in svg.read_text(encoding="utf-8")[:2000]
     plain = json.loads(json.dumps(plain_shape(shape), allow_nan=False))
