@@ -71,10 +71,9 @@ def study_of_24() -> ScatterStudy:
 
 
 def test_a_seed_gives_the_same_passes_whatever_the_chunk() -> None:
-    one, other = flown(6, chunk=2), flown(6, chunk=64)
-    assert np.array_equal(one.gates, other.gates)
-    assert one.slots[0].in_hand_s == pytest.approx(other.slots[0].in_hand_s, abs=1e-9)
-    more = study_of_24()
+    """And a longer study begins with the passes of a shorter one."""
+    one, more = flown(6, chunk=2), study_of_24()
+    assert np.array_equal(one.gates, more.gates[:6])
     assert more.slots[0].in_hand_s[:6] == pytest.approx(one.slots[0].in_hand_s, abs=1e-9)
     assert dict(more.slots[0].technique) == dict(one.slots[0].technique)
     assert not np.array_equal(one.gates[:2], flown(2, seed=2, technique=False).gates)
