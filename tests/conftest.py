@@ -1,14 +1,18 @@
-"""For all tests: hypothesis without a deadline, since a test must not depend on how busy the machine is."""
+"""For all tests: how they are shared, commands as a user gives them; hypothesis has no deadline on a busy machine."""
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
+from pathlib import Path
 from typing import Any
 
 import pytest
 from hypothesis import settings
 
 from tests import sharing
+
+Ran = tuple[int, str, str]
+Run = Callable[..., Ran]
 
 settings.register_profile("latepull", deadline=None)
 settings.load_profile("latepull")
@@ -46,3 +50,20 @@ def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
     """What takes longest comes first, where the tests are shared."""
     if sharing.is_worker():
         items.sort(key=lambda item: sharing.rank(item.nodeid))
+
+
+@pytest.fixture
+def run(tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> Run:
+    """Run a command in an empty folder; returns exit code, what it printed and what it complained of."""
+    monkeypatch.chdir(tmp_path)
+
+    def command(*words: str) -> Ran:
+        capsys.readouterr()
+        from render.command import main
+
+        code = main(words)
+        out = capsys.readouterr()
+        assert "Traceback" not in out.err
+        return code, out.out, out.err
+
+    return command

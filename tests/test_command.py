@@ -6,30 +6,12 @@ import contextlib
 import io
 import json
 import shutil
-from collections.abc import Callable
 from pathlib import Path
 
 import pytest
 
 from render.command import CAUTION, main
-
-Ran = tuple[int, str, str]
-Run = Callable[..., Ran]
-
-
-@pytest.fixture
-def run(tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> Run:
-    """Run a command in an empty folder; returns exit code, what it printed and what it complained of."""
-    monkeypatch.chdir(tmp_path)
-
-    def command(*words: str) -> Ran:
-        capsys.readouterr()
-        code = main(words)
-        out = capsys.readouterr()
-        assert "Traceback" not in out.err
-        return code, out.out, out.err
-
-    return command
+from tests.conftest import Run
 
 
 @pytest.fixture(scope="module")

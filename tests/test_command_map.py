@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Callable
 from pathlib import Path
 
 import numpy as np
@@ -11,26 +10,10 @@ import pytest
 from PIL import Image
 
 from render import command_batch
-from render.command import CAUTION, main
+from render.command import CAUTION
+from tests.conftest import Run
 
-Ran = tuple[int, str, str]
-Run = Callable[..., Ran]
 SMALL = ("--x", "loop_angle=200:300:50deg", "--y", "fraction=0,80%")
-
-
-@pytest.fixture
-def run(tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> Run:
-    """Run a command in an empty folder; returns exit code, what it printed and what it complained of."""
-    monkeypatch.chdir(tmp_path)
-
-    def command(*words: str) -> Ran:
-        capsys.readouterr()
-        code = main(words)
-        out = capsys.readouterr()
-        assert "Traceback" not in out.err
-        return code, out.out, out.err
-
-    return command
 
 
 def test_map_writes_tables_arrays_words_and_chart(run: Run, tmp_path: Path) -> None:
