@@ -27,7 +27,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from render.command_map import CaseBar
+from render.command_work import CaseBar
 
 KINDS = ("fly", "film", "still", "map", "gates", "scatter", "shape")
 OWN = ("out", "force", "json", "resume", "cluster")  # options a batch decides itself

@@ -3,11 +3,10 @@
 from __future__ import annotations
 
 import argparse
-import json
 from collections.abc import Callable
 from pathlib import Path
 
-from render.command_map import CaseBar
+from render.command_work import CaseBar, may_replace, plain_json, say
 
 # stage, its part of the time in percent and its flights, as measured with late_freeze
 STAGES = (("the loop as briefed", 1, 0), ("the gate at top", 41, 1090), ("the gate at vertical down", 12, 550),
@@ -77,7 +76,7 @@ class Ticker:
 def gates_command(args: argparse.Namespace) -> int:
     """Solve and draw the gates; returns the exit code."""
     from render.decide.gate_sheet import solve_gates
-    from render.files import claim_output, write_text
+    from render.files import write_text
     from render.output.gate_card import write_gate_card
     from render.output.gate_words import plain_sheet, sheet_text
     from scenes.reader import read_airframe, read_scene
@@ -87,9 +86,7 @@ def gates_command(args: argparse.Namespace) -> int:
     spread_mps = option("--spread", "speed", args.spread, 0.5, 100.0)
     scene = read_scene(args.scene)
     folder = args.out or Path("out") / scene.name
-    force = args.force or args.out is None  # the default folder is the tool's own
-    for name in (f"{CARD}.png", f"{CARD}.pdf", TABLE, FIGURES):
-        claim_output(folder / name, force=force)
+    force = may_replace(args, folder, (f"{CARD}.png", f"{CARD}.pdf", TABLE, FIGURES))
     ticker = Ticker()
     try:
         sheet = solve_gates(scene, read_airframe, read_ground(scene.ground, scene.seed), want_s,
@@ -99,10 +96,5 @@ def gates_command(args: argparse.Namespace) -> int:
     made = [*write_gate_card(sheet, folder / CARD, force=force)]
     text, figures = sheet_text(sheet), plain_sheet(sheet)
     made.append(write_text(folder / TABLE, text, force=force))
-    made.append(write_text(folder / FIGURES, json.dumps(figures, indent=2, allow_nan=False) + "\n", force=force))
-    if args.json:
-        print(json.dumps({**figures, "written": [str(p) for p in made]}, allow_nan=False))
-    else:
-        print(text)
-        print(f"written: {', '.join(str(p) for p in made)}")
-    return 0
+    made.append(write_text(folder / FIGURES, plain_json(figures), force=force))
+    return say(args, text, figures, made)

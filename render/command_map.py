@@ -3,23 +3,10 @@
 from __future__ import annotations
 
 import argparse
-import json
-import sys
-import time
 from collections.abc import Callable
 from pathlib import Path
 
-
-def add_work_options(sub: argparse.ArgumentParser, *, chunk: bool = False) -> None:
-    """Options of every command that works through many cases; chunk: whether their number in a chunk can be given."""
-    sub.add_argument("--cluster", metavar="ADDRESS", help="a Dask scheduler, such as tcp://host:8786 (default: here)")
-    sub.add_argument("--resume", action="store_true", help="go on from the chunks an interrupted run has left")
-    sub.add_argument("--force", action="store_true", help="replace outputs and unfinished work that are there")
-    sub.add_argument("--force-size", action="store_true", help="start work above the limits of time, memory and cases")
-    if chunk:
-        sub.add_argument("--chunk", type=int, metavar="N", help="cases worked on and kept together (default 128, fewer "
-                         "on a cluster)")
-    sub.add_argument("--out", type=Path, help="output folder (default under out/<scene>)")
+from render.command_work import CaseBar, add_work_options, interrupted, may_replace, say
 
 
 def chunk_size(args: argparse.Namespace, cases: int) -> int:
@@ -44,52 +31,12 @@ def add_map(add: Callable[[str, str], argparse.ArgumentParser]) -> None:
     add_work_options(sub, chunk=True)
 
 
-class CaseBar:
-    """A bar with cases (or other things) done and time left on stderr, where somebody watches."""
-
-    def __init__(self, what: str = "cases", *, at_most: bool = False) -> None:
-        """at_most: the work may end before all that is granted is done."""
-        self._what, self._most = what, " at most" if at_most else ""
-        self._watched, self._begun = sys.stderr.isatty(), time.monotonic()
-        self._had: int | None = None
-
-    def before(self, done: int) -> None:
-        """So many were done before this run: they say nothing about its speed."""
-        self._begun, self._had = time.monotonic(), done
-
-    def show(self, done: int, total: int, stage: str = "") -> None:
-        """So many of all cases are done; the first call says how many were done before."""
-        if self._had is None:
-            self.before(done)
-        if not self._watched:
-            return
-        new, spent = done - (self._had or 0), time.monotonic() - self._begun
-        left = f"{spent / new * max(total - done, 0):5.0f} s left" if new > 0 else "   … s left"
-        bar = "#" * int(30 * min(done / max(total, 1), 1.0))
-        ends = "\n" if done >= total and not stage else ""
-        sys.stderr.write(f"\r\033[K{stage + ' ' if stage else ''}[{bar:<30}] {done:,}/{total:,} {self._what}, "
-                         f"{left}{self._most} {ends}")
-        sys.stderr.flush()
-
-    def clear(self) -> None:
-        """Leave the line clean."""
-        if self._watched:
-            sys.stderr.write("\r\033[K")
-            sys.stderr.flush()
-
-    def note(self, text: str) -> None:
-        """A line on stderr, watched or not."""
-        sys.stderr.write(f"{text}\n")
-        sys.stderr.flush()
-
-
 def map_command(args: argparse.Namespace) -> int:
     """Fly and draw a map; returns the exit code."""
     from render.decide.chunks import Folder, chunk_count, estimate, refuse_too_much, work_hash, work_in_chunks
     from render.decide.map import grid_values, make_map, map_axes, own_twins
     from render.decide.runner import runner
     from render.decide.values import common_of
-    from render.files import claim_output
     from render.output.map_tables import FILES, map_text, summary, write_map
     from scenes.reader import read_airframe, read_scene, scene_text
     from terrain.ground import read_ground
@@ -97,9 +44,7 @@ def map_command(args: argparse.Namespace) -> int:
     scene = read_scene(args.scene)
     mapped, x, y = map_axes(scene, args.x, args.y)
     folder = args.out or Path("out") / scene.name / "map"
-    for name in (*FILES, "map.png", "map.pdf", "map.svg"):
-        # the default folder is the tool's own; a named one is kept unless --force
-        claim_output(folder / name, force=args.force or args.out is None)
+    force = may_replace(args, folder, (*FILES, "map.png", "map.pdf", "map.svg"))
     bar = CaseBar()
     own = own_twins(x, y) or scene.briefed is not None
     expected = estimate(len(x.values) * len(y.values), own, len(scene.formation))
@@ -117,13 +62,6 @@ def map_command(args: argparse.Namespace) -> int:
             cases = work_in_chunks(common, values, run, work, resume=args.resume, force=args.force, chunk=chunk,
                                    progress=bar.show)
         except KeyboardInterrupt:
-            bar.note(f"\ninterrupted; finished chunks are kept in {work.path}: give --resume to go on")
-            return 130
+            return interrupted(bar, work.path)
     found = make_map(scene, mapped, x, y, cases)
-    paths = write_map(found, folder, force=args.force or args.out is None)
-    if args.json:
-        print(json.dumps({**summary(found), "files": [str(p) for p in paths]}))
-    else:
-        print(map_text(found))
-        print(f"written: {', '.join(str(p) for p in paths)}")
-    return 0
+    return say(args, map_text(found), summary(found), write_map(found, folder, force=force), "files")

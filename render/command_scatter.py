@@ -3,11 +3,10 @@
 from __future__ import annotations
 
 import argparse
-import json
 from collections.abc import Callable
 from pathlib import Path
 
-from render.command_map import CaseBar, add_work_options
+from render.command_work import CaseBar, add_work_options, interrupted, may_replace, plain_json, say
 
 SHEET, TABLE, FIGURES, PASSES = "scatter.png", "scatter.txt", "scatter.json", "scatter.csv"
 MOST_PASSES = 20_000
@@ -34,7 +33,7 @@ def scatter_command(args: argparse.Namespace) -> int:
     from render.decide.scatter_work import CHUNK, fly_passes, prepare
     from render.decide.tracks import measured_scatter
     from render.errors import LatepullError
-    from render.files import claim_output, write_text
+    from render.files import write_text
     from render.output.scatter_chart import write_scatter_chart
     from render.output.scatter_words import passes_csv, plain_study, study_text
     from scenes.reader import read_airframe, read_scene, scene_text
@@ -57,9 +56,7 @@ def scatter_command(args: argparse.Namespace) -> int:
                             "team's own figures, such as scatter: {entry_speed: 4 kt, load_factor: 4 %, reaction: 45 "
                             "%}, or --tracks with a folder of its recordings")
     folder = args.out or Path("out") / scene.name / "scatter"
-    force = args.force or args.out is None  # the default folder is the tool's own
-    for name in (SHEET, TABLE, FIGURES, PASSES):
-        claim_output(folder / name, force=force)
+    force = may_replace(args, folder, (SHEET, TABLE, FIGURES, PASSES))
     bar = CaseBar()
     expected = estimate(args.passes, True, len(scene.formation))
     refuse_too_much(expected, force=args.force_size)
@@ -75,17 +72,11 @@ def scatter_command(args: argparse.Namespace) -> int:
             found = fly_passes(work, args.passes, run=run, folder=kept, resume=args.resume, force=args.force,
                                progress=bar.show)
         except KeyboardInterrupt:
-            bar.note(f"\ninterrupted; finished chunks are kept in {kept.path}: give --resume to go on")
-            return 130
+            return interrupted(bar, kept.path)
     study = sum_up(work, *found)
     text, figures = study_text(study), plain_study(study)
     made = [write_scatter_chart(study, folder / SHEET, force=force),
             write_text(folder / TABLE, text, force=force),
-            write_text(folder / FIGURES, json.dumps(figures, indent=2, allow_nan=False) + "\n", force=force),
+            write_text(folder / FIGURES, plain_json(figures), force=force),
             write_text(folder / PASSES, passes_csv(study), force=force)]
-    if args.json:
-        print(json.dumps({**figures, "written": [str(p) for p in made]}, allow_nan=False))
-    else:
-        print(text)
-        print(f"written: {', '.join(str(p) for p in made)}")
-    return 0
+    return say(args, text, figures, made)

@@ -3,14 +3,13 @@
 from __future__ import annotations
 
 import argparse
-import json
 import math
 from collections.abc import Callable
 from functools import partial
 from pathlib import Path
 
 from render.command_gates import option
-from render.command_map import CaseBar, add_work_options
+from render.command_work import CaseBar, add_work_options, interrupted, may_replace, plain_json, say
 
 CHART, TABLE, FIGURES = "shape", "shape.txt", "shape.json"
 MAPS = tuple(f"map_{when}{suffix}" for when in ("before", "after") for suffix in (".png", ".pdf", ".svg"))
@@ -57,7 +56,7 @@ def shape_command(args: argparse.Namespace) -> int:
     from render.decide.shape_search import PEOPLE, find_shape
     from render.decide.values import common_of
     from render.errors import LatepullError
-    from render.files import claim_output, write_text
+    from render.files import write_text
     from render.output.map_chart import write_map_chart
     from render.output.shape_chart import write_shape_chart
     from render.output.shape_words import plain_shape, shape_text
@@ -84,11 +83,9 @@ def shape_command(args: argparse.Namespace) -> int:
     job = make_job(scene, common_of(scene, read_airframe, ground).airframes.__getitem__, ground, points)
     folder = args.out or Path("out") / scene.name
     unfinished = folder / "shape.unfinished"
-    # the default folder is the tool's own, and so is what an interrupted run has begun to write
-    force = args.force or args.out is None or (args.resume and unfinished.is_dir())
     new = f"{scene.name}_shaped.yaml"
-    for name in (f"{CHART}.png", f"{CHART}.svg", TABLE, FIGURES, new, *([] if args.no_maps else MAPS)):
-        claim_output(folder / name, force=force)
+    names = (f"{CHART}.png", f"{CHART}.svg", TABLE, FIGURES, new, *([] if args.no_maps else MAPS))
+    force = may_replace(args, folder, names, resumed=args.resume and unfinished.is_dir())
     bar = CaseBar(at_most=True)
     expected = estimate(args.budget, True, len(unlike_slots(scene).formation))
     refuse_too_much(expected, force=args.force_size)
@@ -122,21 +119,14 @@ def shape_command(args: argparse.Namespace) -> int:
             made = [*write_shape_chart(shape, folder / CHART, force=force)]
             words, figures = shape_text(shape), plain_shape(shape)
             made.append(write_text(folder / TABLE, words, force=force))
-            plain = json.dumps(figures, indent=2, allow_nan=False) + "\n"
-            made.append(write_text(folder / FIGURES, plain, force=force))
+            made.append(write_text(folder / FIGURES, plain_json(figures), force=force))
             if text is not None:
                 made.append(write_text(folder / new, text, force=force))
             for name, found in maps.items():
                 made += write_map_chart(found, folder / name, force=force)
             ledger.close()
         except KeyboardInterrupt:
-            bar.note(f"\ninterrupted; finished chunks are kept in {work.path}: give --resume to go on")
-            return 130
+            return interrupted(bar, work.path)
         finally:
             bar.clear()
-    if args.json:
-        print(json.dumps({**figures, "written": [str(p) for p in made]}, allow_nan=False))
-    else:
-        print(words)
-        print(f"written: {', '.join(str(p) for p in made)}")
-    return 0
+    return say(args, words, figures, made)
