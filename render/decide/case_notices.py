@@ -11,13 +11,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 from render.decide.case_flights import Flown
+from render.decide.seats import lead_eye, seat_of
 from render.flight import records as r
-from render.flight.plan import DT_S, Plan
+from render.flight.plan import DT_S
 from render.flight.states import body_motion
 from render.frames import Array, quat_rotate
 from render.sight import cues as c
 from render.sight.evidence import Evidence, first_notice, lead_evidence, wing_evidence
-from render.sight.geometry import HeightAt, eye_position
+from render.sight.geometry import HeightAt
 from render.sight.notice import SAMPLE_S
 from render.types import OBSERVERS
 from scenes.model import Watch
@@ -85,27 +86,6 @@ def _starts(flown: Flown, todo: Steps) -> Steps:
     return start
 
 
-def _seat(plan: Plan, y: Array, a: Array, wind: Array, lead_eye: Array | None, k: int) -> c.Seat:
-    """The seat of one aircraft: y (..., NY), a (..., NA) of it; wind (..., 1, 3) or (3,)."""
-    quat, rate, vel = body_motion(y, wind)
-    own = plan.airframes[k]
-    return c.Seat(
-        y[..., r.N : r.D + 1], vel, quat, rate, a[..., r.A_N], a[..., r.A_CAS], -y[..., r.D], own.eye_forward_m,
-        own.eye_up_m, lead_eye,
-    )
-
-
-def _lead_eye(plan: Plan, y: Array, wind: Array) -> Array:
-    lead = plan.airframes[0]
-    quat, _, _ = body_motion(y, wind)
-    return eye_position(y[..., r.N : r.D + 1], quat, lead.eye_forward_m, lead.eye_up_m)
-
-
-def _wind(plan: Plan) -> Array:
-    case = plan.case[0]
-    return np.array([case["wind_n_mps"], case["wind_e_mps"], 0.0])
-
-
 def _display_line(y: Array) -> Array:
     """Azimuth across the lead's wing at the start, as ``notice_all`` has it; y (..., NY) of that instant."""
     quat, _, _ = body_motion(y, np.zeros(3))
@@ -132,10 +112,10 @@ def _shared_views(flown: Flown, todo: Steps, start: Steps, height_at: HeightAt) 
             continue
         first, last = int(start[rows].min()), int(flown.last[todo[rows]].max())
         plan = flown.twins.plans[w]
-        y, a, wind = twin.y[w, first : last + 1], twin.a[w, first : last + 1], _wind(plan)
-        eye, line = _lead_eye(plan, y[:, 0], wind), float(_display_line(twin.y[w, 0, 0]))
+        y, a, wind = twin.y[w, first : last + 1], twin.a[w, first : last + 1], plan.wind_e_mps
+        eye, line = lead_eye(plan, y[:, 0], wind), float(_display_line(twin.y[w, 0, 0]))
         for k in range(1, y.shape[1]):
-            seat = _seat(plan, y[:, k], a[:, k], wind, eye, k)
+            seat = seat_of(plan, y[:, k], a[:, k], wind, eye, k)
             found[int(w), k] = _Shared(first, c.view(seat, height_at, line, next(iter(watch)).look_at))
     return found
 
@@ -161,11 +141,11 @@ def _look(
     here = np.minimum(index, last[:, None])
     twin = flown.twins.raw
     plan = flown.plans[int(rows[0])]
-    wind = np.stack([_wind(flown.plans[int(i)]) for i in rows])[:, None, :]
+    wind = np.stack([flown.plans[int(i)].wind_e_mps for i in rows])[:, None, :]
     yf, ah_index = flown.y[:, rows[:, None], here], (twin_of[:, None], here)
     af = flown.a[:, rows[:, None], here]
     yh, ah = twin.y[ah_index], twin.a[ah_index]  # (n, T, K, ...)
-    eye_f, eye_h = _lead_eye(plan, yf[0], wind), _lead_eye(plan, yh[:, :, 0], wind)
+    eye_f, eye_h = lead_eye(plan, yf[0], wind), lead_eye(plan, yh[:, :, 0], wind)
     line = _display_line(flown.y[0, rows, 0])[:, None]
     called = np.full((len(rows), len(OBSERVERS)), np.inf)
     for k in range(flown.y.shape[0]):
@@ -179,8 +159,8 @@ def _look(
                 ah[:, :, 0, r.A_STICK_FORCE], af[0, :, :, r.A_STICK_FORCE], time_s, counts,
             )
         else:
-            healthy = _seat(plan, yh[:, :, k], ah[:, :, k], wind, eye_h, k)
-            faulted = _seat(plan, yf[k], af[k], wind, eye_f, k)
+            healthy = seat_of(plan, yh[:, :, k], ah[:, :, k], wind, eye_h, k)
+            faulted = seat_of(plan, yf[k], af[k], wind, eye_f, k)
             one_twin = np.all(twin_of == twin_of[0])
             shared = views.get((int(twin_of[0]), k)) if one_twin else None
             view = None if shared is None else _pick(shared.view, here - shared.first)

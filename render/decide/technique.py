@@ -9,7 +9,7 @@ import numpy as np
 
 from render.decide.brief import compile_brief
 from render.decide.left import one_seat
-from render.decide.seats import seats, wind_of
+from render.decide.seats import seats
 from render.errors import FlightError
 from render.flight import records as r
 from render.flight import script as s
@@ -102,7 +102,7 @@ def _against(
     rows = np.arange(len(plans))[:, None]
     healthy = np.minimum(begin + steps, last)
     seat_h = one_seat(seats(whole, own.y[:, healthy], own.a[:, healthy], k))
-    winds = np.stack([wind_of(p) for p in plans])
+    winds = np.stack([p.wind_e_mps for p in plans])
     seat_f = seats(plans[0], raw.y[rows, mine], raw.a[rows, mine], k, winds)
     watch = dataclasses.replace(whole.scene.watch, gauges_every_s=None, call_after_s=None)
     everywhere = np.ones((len(plans), len(time_s)), dtype=bool)

@@ -220,9 +220,7 @@ def to_flight(plan: Plan, raw: Raw, b: int, last: int, scale: float) -> Flight:
     y = raw.y[b, : last + 1]
     a = raw.a[b, : last + 1]
     time_s: Array = np.arange(last + 1, dtype=np.float64) * DT_S
-    case = plan.case[0]
-    wind = np.array([case["wind_n_mps"], case["wind_e_mps"], 0.0])
-    quat_eb, rate_b, vel_e = body_motion(y, wind)
+    quat_eb, rate_b, vel_e = body_motion(y, plan.wind_e_mps)
     gamma = np.arcsin(np.clip(-(vel_e[..., 2] / y[..., r.V]), -1.0, 1.0))
     loop = a[:, :, r.A_LOOP].copy()
     loop[:, 1:] = np.nan

@@ -47,6 +47,11 @@ class Plan:
     longest_s: float  # how long the script can take at most
     memory: Array = field(default_factory=lambda: np.zeros(s.NM))  # (NM,) of the lead, if the plan begins inside
 
+    @property
+    def wind_e_mps(self) -> Array:
+        """Where the air goes, north east down, m/s, (3,)."""
+        return np.array([self.case[0]["wind_n_mps"], self.case[0]["wind_e_mps"], 0.0])
+
 
 def trim_level(airframe: Airframe, height_above_sea_m: float, temp_offset_k: float,
                speed_mps: float) -> tuple[float, float, float]:
