@@ -17,6 +17,7 @@ from render.flight.records import (
     NY,
     Q0,
     Q3,
+    YES,
     Array,
     D,
     E,
@@ -69,7 +70,7 @@ def fly_escape(
             _, _, rho, sound = air_of(k[4], case)
             n, onset, roll, thr, _ = escape_commands(t + c * dt_s, k[4], y0, n0, throttle, away, af, rho, esc)
             derivative_in(
-                k[4], af, case, rho, sound, n, onset, roll, thr, fault_on, stab_at_fault, True, 0.0, k[s]
+                k[4], af, case, rho, sound, n, onset, roll, thr, fault_on, stab_at_fault, YES, 0.0, k[s]
             )
         for m in range(NY):
             y[m] += dt_s / 6.0 * (k[0, m] + 2.0 * k[1, m] + 2.0 * k[2, m] + k[3, m])

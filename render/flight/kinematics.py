@@ -34,6 +34,7 @@ from render.flight.records import (
     LIMIT_N_MAX,
     LIMIT_NONE,
     NDEM,
+    NO,
     NY,
     PITCH,
     Q0,
@@ -283,10 +284,10 @@ def fly_fixed(
         s0 = np.interp(t, time_s, stab_rad)
         s1 = np.interp(t + dt_s, time_s, stab_rad)
         rate = (s1 - s0) / dt_s
-        derivative(y, af, case, 0.0, 0.0, 0.0, throttle, False, 0.0, False, rate, k1)
-        derivative(y + 0.5 * dt_s * k1, af, case, 0.0, 0.0, 0.0, throttle, False, 0.0, False, rate, k2)
-        derivative(y + 0.5 * dt_s * k2, af, case, 0.0, 0.0, 0.0, throttle, False, 0.0, False, rate, k3)
-        derivative(y + dt_s * k3, af, case, 0.0, 0.0, 0.0, throttle, False, 0.0, False, rate, k4)
+        derivative(y, af, case, 0.0, 0.0, 0.0, throttle, NO, 0.0, NO, rate, k1)
+        derivative(y + 0.5 * dt_s * k1, af, case, 0.0, 0.0, 0.0, throttle, NO, 0.0, NO, rate, k2)
+        derivative(y + 0.5 * dt_s * k2, af, case, 0.0, 0.0, 0.0, throttle, NO, 0.0, NO, rate, k3)
+        derivative(y + dt_s * k3, af, case, 0.0, 0.0, 0.0, throttle, NO, 0.0, NO, rate, k4)
         y = y + dt_s / 6.0 * (k1 + 2.0 * k2 + 2.0 * k3 + k4)
         y[STAB] = s1
         renormalise(y)

@@ -43,6 +43,7 @@ from render.flight.records import (
     CONTACT,
     ENGINE,
     LOOP,
+    NO,
     NOT_FINITE,
     NY,
     OK,
@@ -53,6 +54,7 @@ from render.flight.records import (
     STICK,
     TOO_FAST,
     TOO_HIGH_MACH,
+    YES,
     Array,
     D,
     E,
@@ -79,6 +81,13 @@ from render.flight.script import (
 from render.flight.station import learn_trim, wing_commands
 
 NOTHING = np.empty((0, 0))
+
+
+@njit(cache=True)
+def _put(into: Array, values: Array) -> None:
+    """Copy a row; numba would compile the words of an error about shapes for ``into[:] = values``, for seconds."""
+    for m in range(values.shape[0]):
+        into[m] = values[m]
 
 
 @njit(cache=True)
@@ -157,13 +166,13 @@ def _lead_step(
     stab = mem[M_STAB]
     if not known:
         n, onset, roll, throttle, _ = lead_commands(t, y, af, case, mem, script, knots, coeffs)
-        derivative(y, af, case, n, onset, roll, throttle, on, stab, True, 0.0, k[0])
+        derivative(y, af, case, n, onset, roll, throttle, on, stab, YES, 0.0, k[0])
     for s in range(1, 4):
         h = dt_s if s == 3 else 0.5 * dt_s
         for m in range(NY):
             k[4, m] = y[m] + h * k[s - 1, m]
         n, onset, roll, throttle, _ = lead_commands(t + h, k[4], af, case, mem, script, knots, coeffs)
-        derivative(k[4], af, case, n, onset, roll, throttle, on, stab, True, 0.0, k[s])
+        derivative(k[4], af, case, n, onset, roll, throttle, on, stab, YES, 0.0, k[s])
     new = np.empty(NY)
     for m in range(NY):
         new[m] = y[m] + dt_s / 6.0 * (k[0, m] + 2.0 * k[1, m] + 2.0 * k[2, m] + k[3, m])
@@ -200,11 +209,11 @@ def fly_lead(
     for i in range(begin, steps + 1):
         t = i * dt_s
         if kept.shape[0] > i:
-            kept[i] = mem
+            _put(kept[i], mem)
         n, onset, roll, throttle, limit = lead_commands(t, y, af, case, mem, script, knots, coeffs)
         on = mem[M_FAULT_ON] > 0.5
-        derivative(y, af, case, n, onset, roll, throttle, on, mem[M_STAB], True, 0.0, k[0])
-        out_y[i] = y
+        derivative(y, af, case, n, onset, roll, throttle, on, mem[M_STAB], YES, 0.0, k[0])
+        _put(out_y[i], y)
         status = _note(y, out_a[i], k[0], af, case, n, roll, throttle, limit, heights, grid)
         out_a[i, A_STEP] = mem[M_STEP]
         out_a[i, A_LOOP] = mem[M_LOOP]
@@ -212,10 +221,10 @@ def fly_lead(
         done = done or (tail >= 0 and mem[M_SCRIPT_END_S] >= 0.0 and t >= mem[M_SCRIPT_END_S] + tail * dt_s)
         if status != OK or i == steps or done:
             for j in range(i + 1, steps + 1):
-                out_y[j] = y
-                out_a[j] = out_a[i]
+                _put(out_y[j], y)
+                _put(out_a[j], out_a[i])
             return status, i
-        new = _lead_step(t, dt_s, y, af, case, mem, script, knots, coeffs, k, True)
+        new = _lead_step(t, dt_s, y, af, case, mem, script, knots, coeffs, k, YES)
         in_loop = int(script[int(mem[M_STEP]), S_KIND]) == LOOP
         if mem[M_FAULT_ON] < 0.5 and case.fault_kind > 0.5:
             before = _fault_reached(t, y, case, mem, mem[M_LOOP])
@@ -225,10 +234,10 @@ def fly_lead(
                 part = min(max(-before / max(after - before, 1e-12), 0.0), 1.0) if before < 0.0 else 0.0
                 mid = y
                 if part > 1e-9:
-                    mid = _lead_step(t, part * dt_s, y, af, case, mem, script, knots, coeffs, k, True)
+                    mid = _lead_step(t, part * dt_s, y, af, case, mem, script, knots, coeffs, k, YES)
                 mem[M_FAULT_ON], mem[M_FAULT_S], mem[M_STAB] = 1.0, t + part * dt_s, mid[STAB]
                 new = _lead_step(
-                    t + part * dt_s, (1.0 - part) * dt_s, mid, af, case, mem, script, knots, coeffs, k, False
+                    t + part * dt_s, (1.0 - part) * dt_s, mid, af, case, mem, script, knots, coeffs, k, NO
                 )
         y = new
         t += dt_s
@@ -267,26 +276,26 @@ def fly_wing(
     y = y0.copy()
     status = OK
     if begin > 0 and learnt.shape[0] >= begin:
-        trim[:] = learnt[begin - 1, :3]
-        error[:] = learnt[begin - 1, 3:]
+        _put(trim, learnt[begin - 1, :3])
+        _put(error, learnt[begin - 1, 3:])
     for i in range(begin, steps + 1):
-        out_y[i] = y
+        _put(out_y[i], y)
         if i > 0:
             learn_trim(trim, error, lead_y[i], lead_y[i - 1], dt_s)
         n, onset, roll, throttle, limit = wing_commands(
             i, 0.0, y, af, case, slot, lead_y, lead_a, out_y, out_a, trim, error, dt_s
         )
         if kept.shape[0] > i:
-            kept[i, :3] = trim
-            kept[i, 3:] = error
-        derivative(y, af, case, n, onset, roll, throttle, False, 0.0, True, 0.0, k[0])
+            _put(kept[i, :3], trim)
+            _put(kept[i, 3:], error)
+        derivative(y, af, case, n, onset, roll, throttle, NO, 0.0, YES, 0.0, k[0])
         status = _note(y, out_a[i], k[0], af, case, n, roll, throttle, limit, heights, grid)
         out_a[i, A_STEP] = lead_a[i, A_STEP]
         out_a[i, A_LOOP] = lead_a[i, A_LOOP]
         if status != OK or i == steps or i >= last:
             for j in range(i + 1, steps + 1):
-                out_y[j] = y
-                out_a[j] = out_a[i]
+                _put(out_y[j], y)
+                _put(out_a[j], out_a[i])
             return status, i
         for s in range(1, 4):
             c = 1.0 if s == 3 else 0.5
@@ -295,7 +304,7 @@ def fly_wing(
             n, onset, roll, throttle, _ = wing_commands(
                 i, c, k[4], af, case, slot, lead_y, lead_a, out_y, out_a, trim, unused, dt_s
             )
-            derivative(k[4], af, case, n, onset, roll, throttle, False, 0.0, True, 0.0, k[s])
+            derivative(k[4], af, case, n, onset, roll, throttle, NO, 0.0, YES, 0.0, k[s])
         new = np.empty(NY)
         for m in range(NY):
             new[m] = y[m] + dt_s / 6.0 * (k[0, m] + 2.0 * k[1, m] + 2.0 * k[2, m] + k[3, m])

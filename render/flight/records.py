@@ -24,6 +24,10 @@ NY = 18
  A_LIMIT) = range(12)
 NA = 12
 
+# Flags in calls between kernels: a bare True is a type of its own to numba, and all it is passed to compiled again.
+NO: Any = np.bool_(False)
+YES: Any = np.bool_(True)
+
 # Limits that held the demand back (A_LIMIT).
 LIMIT_NONE, LIMIT_BUFFET, LIMIT_N_MAX = 0, 1, 2
 

@@ -18,7 +18,7 @@ from numpy.typing import NDArray
 
 from render.flight.escapes import better_escape
 from render.flight.plan import DT_S, Plan, escape_pair
-from render.flight.records import A_N, A_THROTTLE, INTEG, NDEM, NY, Q0, Q3, WORK_D, WORK_T, Array
+from render.flight.records import A_N, A_THROTTLE, INTEG, NDEM, NO, NY, Q0, Q3, WORK_D, WORK_T, Array
 from render.margin.escape import EVERY_S, away_of
 
 STAGE = 8  # instants stepped over at first
@@ -27,6 +27,7 @@ DEEP_M = -150.0  # an escape that far under the ground has failed, however far i
 # scenes. So an instant with a large one needs no look at those shortly before it.
 RISE_MPS = 300.0
 HIGH_M = 15.0  # an escape that clears by so much clears; the other of the two needs no look
+NOWHERE: Any = np.int64(-1)  # no hint; a bare -1 is a type of its own to numba, see ``records.NO``
 DIP_M = 10.0  # a lowest clearance that close to zero is looked at instant by instant
 
 
@@ -57,7 +58,7 @@ def _clearance(
         at_s = stop_s if j == low.shape[0] - 1 else j * EVERY_S
         state = np.empty(NY)
         throttle = state_at(y, a, at_s / dt_s, last, state)
-        low[j] = better_escape(state, af, case, esc, away, throttle, False, 0.0, heights, grid, beat_m,
+        low[j] = better_escape(state, af, case, esc, away, throttle, NO, 0.0, heights, grid, beat_m,
                                enough_m)
     return low[j]
 
@@ -147,7 +148,7 @@ def _last_pulls(
         # neighbours cost much the same: dealt out in turn to the cores
         half = (y.shape[1] + 1) // 2
         b = 2 * i if i < half else 2 * (i - half) + 1
-        hint_floor, hint_ground, enough_m = -1, -1, floor_m[b] + HIGH_M
+        hint_floor, hint_ground, enough_m = NOWHERE, NOWHERE, floor_m[b] + HIGH_M
         w = int(known_of[b])
         for k in range(y.shape[0]):
             # as many tenths as there are before the end, and the end itself
@@ -180,7 +181,7 @@ def _stages(
         low[w, k, j] = np.nan
         if step + 1.0 < last[w]:
             throttle = state_at(y[k, w], a[k, w], step, int(last[w]), state)
-            low[w, k, j] = better_escape(state, af[k, w], case[w], esc[w], away[k, w], throttle, False, 0.0, heights,
+            low[w, k, j] = better_escape(state, af[k, w], case[w], esc[w], away[k, w], throttle, NO, 0.0, heights,
                                          grid, DEEP_M, enough_m)
 
 
@@ -249,7 +250,7 @@ def _clearances(
                 low_m[b, k, o] = np.nan
                 if not math.isnan(at_s[b, k, o]):
                     throttle = state_at(y[k, b], a[k, b], at_s[b, k, o] / dt_s, int(last[b]), state)
-                    low_m[b, k, o] = better_escape(state, af[k, b], case[b], esc[b], away[k, b], throttle, False, 0.0,
+                    low_m[b, k, o] = better_escape(state, af[k, b], case[b], esc[b], away[k, b], throttle, NO, 0.0,
                                                    heights, grid, -1e9, 1e9)
 
 
