@@ -5,6 +5,7 @@ from __future__ import annotations
 import os
 import signal
 from collections.abc import Iterator, Sequence
+from functools import partial
 from pathlib import Path
 from typing import Any
 
@@ -12,13 +13,14 @@ import numpy as np
 import pytest
 
 from render.command import main
+from render.decide import shape_search
 from render.decide.chunks import Folder, WorkChanged, WorkUnfinished
 from render.decide.ledger import Ledger
 from render.decide.runner import Local, Runner, runner
 from render.decide.shape import freeze_all
 from render.decide.shape_flights import freeze_work, frozen_of, measure_work, pulls_of
 from render.decide.shape_limits import measure_pulls
-from render.decide.shape_search import Shape
+from render.decide.shape_search import Shape, find_shape
 from render.errors import LatepullError
 from render.output.shape_words import plain_shape
 from scenes.model import DEG
@@ -93,7 +95,9 @@ def test_the_command_goes_on_and_refuses_a_changed_scene(
     scene, out = tmp_path / "mine.yaml", tmp_path / "o"
     scene.write_text("like: late_freeze\ntitle: mine\n", encoding="utf-8")
     words = ["shape", str(scene), "--out", str(out), "--max-g", "4.8 g", "--freeze-step", "45 deg", "--trade", "1",
-             "--budget", "100", "--no-maps"]
+             "--budget", "60", "--no-maps"]
+    monkeypatch.setattr(shape_search, "PEOPLE", 6)  # small generations, as in ``search``
+    monkeypatch.setattr(shape_search, "find_shape", partial(find_shape, people=6))
     real = Local.run
     cut = CutOff(5)
     monkeypatch.setattr(Local, "run", lambda self, work, common, chunks: cut.run(work, common, chunks))

@@ -191,6 +191,13 @@ class TestNoHalfPage:
         assert list(tmp_path.iterdir()) == []
 
 
+def with_pictures(folder: Path, *pictures: str) -> Path:
+    """A little page with these pictures in the folder of a page."""
+    page = folder / "little.html"
+    page.write_text("".join(f'<img src="{picture}">' for picture in pictures), encoding="utf-8")
+    return page
+
+
 def test_a_page_that_lost_a_file_is_named(pango: None, scenes: Any, page_folder: Path, tmp_path: Path) -> None:
     folder = tmp_path / "copy"
     shutil.copytree(page_folder, folder)
@@ -199,7 +206,7 @@ def test_a_page_that_lost_a_file_is_named(pango: None, scenes: Any, page_folder:
     with pytest.raises(LatepullError, match=r"files/scene1_still1\.jpg missing or changed"):
         stands(scenes, folder)
     with pytest.raises(LatepullError, match=r"scene1_still1\.jpg missing"):
-        write_pdf(folder / INDEX, tmp_path / "x.pdf")
+        write_pdf(with_pictures(folder, "files/scene1_still1.jpg", "files/scene1_still2.jpg"), tmp_path / "x.pdf")
     assert not (tmp_path / "x.pdf").exists()
     (folder / MANIFEST).write_text("{", encoding="utf-8")
     assert not stands(scenes, folder)
@@ -208,12 +215,10 @@ def test_a_page_that_lost_a_file_is_named(pango: None, scenes: Any, page_folder:
 def test_the_pdf_reads_nothing_else(pango: None, page_folder: Path, tmp_path: Path) -> None:
     folder = tmp_path / "copy"
     shutil.copytree(page_folder, folder)
-    page = folder / INDEX
-    text = page.read_text(encoding="utf-8")
-    page.write_text(text.replace("</main>", '<img src="file:///etc/hostname"><img src="http://127.0.0.2:9/x"></main>'),
-                    encoding="utf-8")
-    with pytest.raises(LatepullError, match="hostname"):
+    page = with_pictures(folder, "files/scene1_still1.jpg", "file:///etc/hostname", "http://127.0.0.2:9/x")
+    with pytest.raises(LatepullError, match="whole: hostname, x missing"):
         write_pdf(page, tmp_path / "x.pdf")
+    assert write_pdf(with_pictures(folder, "files/scene1_still1.jpg"), tmp_path / "x.pdf").read_bytes()[:5] == b"%PDF-"
 
 
 def test_pictures_are_kept_and_drawn_again_for_another_flight(scenes: Any, tmp_path: Path) -> None:
