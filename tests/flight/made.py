@@ -8,6 +8,10 @@ from typing import Any
 
 import numpy as np
 
+from render.flight import passes
+from render.flight import records as r
+from render.flight import script as s
+from render.frames import Array
 from scenes.airframe import Airframe
 from scenes.model import BreakOut, Day, Fault, FilmPlan, Level, Loop, Point, Power, Scene, Slot, Watch
 
@@ -51,3 +55,21 @@ def loop_scene(fault: Fault | None = None, *, close_ft: float = 300.0, kt: float
 def freeze(angle_deg: float) -> Fault:
     """A freeze at a loop angle."""
     return Fault("freeze", Point("loop_angle", angle_deg * DEG))
+
+
+def lead_alone(y0: Array, af: Any, case: Any, script: Array, knots: Array, coeffs: Array, dt_s: float,
+               steps: int) -> tuple[Array, Array, Array, tuple[int, int]]:
+    """A lead flown over ground far below, at any step: y (T, NY), a (T, NA), memory, why he stopped and where.
+
+    As a batch of one, for which the kernel is there already.
+    """
+    y, a = np.empty((1, steps + 1, r.NY)), np.empty((1, steps + 1, r.NA))
+    mem, status, none = np.zeros((1, s.NM)), np.zeros((1, 2)), np.zeros(1)
+    far = np.full((1, 1), -9e4)
+    far.setflags(write=False)
+    passes.fly_leads(
+        y0[None].copy(), np.array([af], af.dtype), np.array([case], case.dtype), script[None].copy(),
+        knots[None].copy(), coeffs[None].copy(), none, far, np.array([0.0, 0.0, 1.0]), dt_s, none, none - 1.0, -1, y, a,
+        mem, status, np.empty((1, 0, 0)),
+    )
+    return y[0], a[0], mem[0], (int(status[0, 0]), int(status[0, 1]))

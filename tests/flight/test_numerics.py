@@ -10,7 +10,6 @@ import numba
 import numpy as np
 import pytest
 
-from render.flight import passes
 from render.flight import records as r
 from render.flight import script as s
 from render.flight.batch import Raw, fly_batch
@@ -19,7 +18,7 @@ from render.flight.plan import Plan, compile_scene
 from render.frames import Array, quat_conj, quat_multiply
 from render.types import Flight
 from scenes.model import Day, Fault, Level, Point, Roll, Scene, Slot, Step, Wind
-from tests.flight.made import DEG, FT, KT, flat_ground, freeze, invented_jet, loop_scene
+from tests.flight.made import DEG, FT, KT, flat_ground, freeze, invented_jet, lead_alone, loop_scene
 from tests.reference.plane_cases import CASES, fly_ours
 
 PATH = [r.N, r.D, r.V, r.ALPHA, r.PITCH]
@@ -41,24 +40,22 @@ def test_a_smooth_flight_gains_sixteenfold_by_each_halving(name: str) -> None:
     assert orders == pytest.approx([4.0, 4.0], abs=0.25)
 
 
-def lead_alone(plan: Plan, dt_s: float, end_s: float, *, healthy: bool) -> tuple[Array, Array]:
-    """Final state and memory of a lead flown at another step, over ground far below."""
-    steps = round(end_s / dt_s)
-    y, a, mem = np.empty((steps + 1, r.NY)), np.empty((steps + 1, r.NA)), np.zeros(s.NM)
+def lead_at(plan: Plan, dt_s: float, end_s: float, *, healthy: bool) -> tuple[Array, Array]:
+    """Final state and memory of a lead flown at another step."""
     case = plan.case.copy()
     if healthy:
         case["fault_kind"] = 0.0
-    passes.fly_lead(plan.entry[0], plan.af[0], case[0], plan.script, plan.knots, plan.coeffs, np.full((1, 1), -9e4),
-                    np.array([0.0, 0.0, 1.0]), dt_s, y, a, mem)
+    y, _, mem, _ = lead_alone(plan.entry[0], plan.af[0], case[0], plan.script, plan.knots, plan.coeffs, dt_s,
+                              round(end_s / dt_s))
     return y[-1], mem
 
 
 def test_a_scripted_loop_is_far_finer_than_its_step_needs() -> None:
     """The demand has kinks (knots, rate limits), so no clean order: the step flown misses less than 0.1 mm."""
     plan = compile_scene(loop_scene(slots=()), (invented_jet(),))
-    best, _ = lead_alone(plan, 0.00125, 36.0, healthy=True)
+    best, _ = lead_at(plan, 0.00125, 36.0, healthy=True)
     for dt, allowed_m in ((0.04, 1e-3), (0.02, 1e-4), (0.01, 1e-5)):
-        y, _ = lead_alone(plan, dt, 36.0, healthy=True)
+        y, _ = lead_at(plan, dt, 36.0, healthy=True)
         assert np.hypot(y[r.N] - best[r.N], y[r.D] - best[r.D]) < allowed_m
 
 
@@ -68,10 +65,10 @@ def test_the_step_of_the_fault_is_split_at_its_point() -> None:
     An unsplit step would miss the fault by up to 20 ms; this one misses by microseconds, whatever the step.
     """
     plan = compile_scene(loop_scene(freeze(245.0), slots=()), (invented_jet(),))
-    best, known = lead_alone(plan, 0.000625, 36.0, healthy=False)
+    best, known = lead_at(plan, 0.000625, 36.0, healthy=False)
     late, path = [], []
     for dt in (0.08, 0.04, 0.02):
-        y, mem = lead_alone(plan, dt, 36.0, healthy=False)
+        y, mem = lead_at(plan, dt, 36.0, healthy=False)
         late.append(abs(mem[s.M_FAULT_S] - known[s.M_FAULT_S]))
         path.append(np.hypot(y[r.N] - best[r.N], y[r.D] - best[r.D]))
     assert late[2] < 5e-6
@@ -84,8 +81,8 @@ def test_a_fault_between_two_steps_comes_on_in_between() -> None:
     for when in (10.003, 10.01, 10.0199):
         fault = Fault("freeze", Point("time", when))
         plan = compile_scene(loop_scene(fault, slots=()), (invented_jet(),))
-        _, mem = lead_alone(plan, 0.02, 12.0, healthy=False)
-        _, fine = lead_alone(plan, 0.001, 12.0, healthy=False)
+        _, mem = lead_at(plan, 0.02, 12.0, healthy=False)
+        _, fine = lead_at(plan, 0.001, 12.0, healthy=False)
         assert mem[s.M_FAULT_S] == pytest.approx(when, abs=1e-9)
         assert mem[s.M_STAB] == pytest.approx(fine[s.M_STAB], abs=1e-6)
 

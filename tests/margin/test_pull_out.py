@@ -104,6 +104,7 @@ def test_rising_ground_ahead_counts_after_the_path_has_turned_up(foot_m: float, 
     north = np.arange(-100.0, 12_001.0, 10.0)
     rise = np.maximum(north - foot_m, 0.0) * math.tan(slope_deg * DEG)
     heights, grid = np.stack([rise, rise], axis=1), np.array([-100.0, 0.0, 10.0])
+    heights.setflags(write=False)  # as ``ground_arrays`` has it: the kernel is there already
     gammas = np.linspace(0.0, 60.0 * DEG, 600)
     above = []
     for gamma in gammas:

@@ -8,13 +8,13 @@ import numpy as np
 import pytest
 from scipy.optimize import brentq
 
-from render.flight import passes
 from render.flight import records as r
 from render.flight import script as s
 from render.flight.airframe import stab_for_steady
 from render.flight.kinematics import derivative
 from render.flight.plan import MAX_KNOTS
 from render.frames import Array
+from tests.flight.made import lead_alone
 from tests.reference.bare import alpha_of, bare_airframe, bare_case, fly_load_factor, path_direction, state
 from tests.reference.closed_forms import DEG, FT, KT, G
 
@@ -68,11 +68,9 @@ def test_level_turn_through_the_leads_hand(row: tuple[float, ...]) -> None:
     # a "roll" of no rate that never ends holds its load factor
     row_of = np.zeros((1, s.NS))
     row_of[0, s.S_KIND], row_of[0, s.S_LOAD], row_of[0, s.S_ANGLE] = r.ROLL_STEP, n, 9.0
-    y, a, mem = np.empty((steps + 1, r.NY)), np.empty((steps + 1, r.NA)), np.zeros(s.NM)
-    far, grid = np.full((1, 1), -9e4), np.array([0.0, 0.0, 1.0])
     knots, coeffs = np.arange(float(MAX_KNOTS))[None], np.zeros((1, MAX_KNOTS - 1, 4))
-    status, last = passes.fly_lead(y0, af, bare_case(), row_of, knots, coeffs, far, grid, dt, y, a, mem)
-    assert (status, last) == (r.OK, steps)
+    y, a, _, stopped = lead_alone(y0, af, bare_case(), row_of, knots, coeffs, dt, steps)
+    assert stopped == (r.OK, steps)
     rate, radius = rate_and_radius(y, dt)
     assert rate / DEG == pytest.approx(degps, rel=1e-3)
     assert radius == pytest.approx(radius_m, rel=1e-3)
